@@ -1,0 +1,1 @@
+"""Errors, progress, array checks, units, tolerances and the assets folder."""

@@ -1,0 +1,1 @@
+"""Grades, wires, machines, block sizes and label sheets from TOML files."""

@@ -1,0 +1,1 @@
+"""Reads the command line."""

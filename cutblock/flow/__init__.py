@@ -1,0 +1,1 @@
+"""Joins the rooms: one function a step, and the whole chain."""

@@ -1,0 +1,1 @@
+"""The two volumes of each sweep: litres, masses and closed meshes."""

@@ -1,0 +1,1 @@
+"""The volume account and the money."""

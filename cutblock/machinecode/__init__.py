@@ -1,0 +1,1 @@
+"""Writes the code of a four-axis machine and reads it back."""

@@ -1,0 +1,1 @@
+"""Decides which halves serve what."""

@@ -1,0 +1,1 @@
+"""Divides faces into panels, each in a frame of its own."""

@@ -1,0 +1,45 @@
+"""A panel: one cell of a face, in a frame of its own."""
+
+from dataclasses import dataclass
+
+from cutblock.base.arrays import Floats, frozen_floats
+from cutblock.records.record import Record
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Panel(Record):
+    """One cell of a face's division; needs one mould.
+
+    The panel frame is a right-handed rigid frame: z points out of the mould (up on the bed), and the panel's plan
+    outline touches x = 0, x = length, y = 0 and y = width. A point p of the panel frame is at
+    `origin_mm + p @ axes` in the form; the rows of `axes` are the unit x, y, z of the panel frame in form coordinates.
+    `heights_mm` is the wanted surface as a height field on a uniform grid over [0, length] x [0, width], smoothly
+    continued where the rectangle reaches beyond the outline; `samples_mm` and `normals` are points and unit upward
+    normals of the wanted surface inside the outline, each standing for `areas_mm2` of it.
+    """
+
+    id: str
+    face: str
+    copy: int  # 1 to the face's count
+    row: int  # cell index along v, from 1
+    column: int  # cell index along u, from 1
+    length_mm: float
+    width_mm: float
+    origin_mm: Floats  # (3,)
+    axes: Floats  # (3, 3)
+    outline: tuple[Floats, ...]  # rings (n, 2) in the panel's plan, not closed: first the outer one, then holes
+    is_rectangle: bool  # the outline is the whole rectangle
+    heights_mm: Floats  # (n_x, n_y)
+    samples_mm: Floats  # (m, 3)
+    normals: Floats  # (m, 3)
+    areas_mm2: Floats  # (m,)
+    neighbours: tuple[tuple[str, str], ...] = ()  # (edge "west" x=0 | "east" | "south" y=0 | "north", panel id)
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "origin_mm", frozen_floats(self.origin_mm, (3,), "origin_mm"))
+        object.__setattr__(self, "axes", frozen_floats(self.axes, (3, 3), "axes"))
+        object.__setattr__(self, "outline", tuple(frozen_floats(ring, (None, 2), "outline") for ring in self.outline))
+        object.__setattr__(self, "heights_mm", frozen_floats(self.heights_mm, (None, None), "heights_mm"))
+        object.__setattr__(self, "samples_mm", frozen_floats(self.samples_mm, (None, 3), "samples_mm"))
+        object.__setattr__(self, "normals", frozen_floats(self.normals, (None, 3), "normals"))
+        object.__setattr__(self, "areas_mm2", frozen_floats(self.areas_mm2, (None,), "areas_mm2"))

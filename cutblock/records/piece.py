@@ -1,0 +1,22 @@
+"""A piece: one half of a sweep, as the workshop handles it."""
+
+from dataclasses import dataclass
+
+from cutblock.records.record import Record
+from cutblock.records.words import Duty, Half
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Piece(Record):
+    """One half of one sweep."""
+
+    id: str
+    partner: str  # the other half's id
+    sweep: str
+    half: Half
+    duty: Duty
+    code: str  # what the QR symbol holds
+    panel: str | None = None  # the panel it moulds or supports
+    block: str | None = None
+    volume_mm3: float = 0.0
+    mass_kg: float = 0.0

@@ -1,0 +1,1 @@
+"""Speed and time along each sweep, and the hours of a job."""

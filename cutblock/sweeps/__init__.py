@@ -1,0 +1,1 @@
+"""Fits every panel with ruled sweeps a straight wire can make."""

@@ -1,0 +1,1 @@
+"""Piece tags: described once, drawn on paper and on screen."""

@@ -1,0 +1,1 @@
+"""Shows a plan and turns clicks into requests; the only Qt."""

@@ -1,0 +1,1 @@
+"""Runs one long request in a process of its own."""
