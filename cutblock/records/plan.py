@@ -51,6 +51,7 @@ class Plan(Record):
     blocks: tuple[Block, ...] = ()
     n_blocks_bound: int = 0
     bound_proof: str = ""  # what proved the bound
+    cost_bound: float | None = None  # money; no packing can cost less
     ledger: Ledger | None = None
     hours: Hours | None = None
     cost: Cost | None = None

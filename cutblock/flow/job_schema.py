@@ -1,0 +1,131 @@
+"""The shape of a job file: every key, its type and its default, as people write them (in the job's own unit)."""
+
+from typing import Annotated, Literal
+
+import msgspec
+
+Positive = Annotated[float, msgspec.Meta(gt=0.0)]
+NotNegative = Annotated[float, msgspec.Meta(ge=0.0)]
+Point = tuple[float, float, float]
+
+
+class _Table(msgspec.Struct, forbid_unknown_fields=True, frozen=True, kw_only=True):
+    """A TOML table in which every key must be known."""
+
+
+class JobTable(_Table):
+    """`[job]`."""
+
+    id: Annotated[str, msgspec.Meta(pattern="^[A-Z0-9]{1,4}$")]
+    title: str
+    units: str
+    revision: Annotated[str, msgspec.Meta(pattern="^[A-Z0-9]{1,4}$")] = "A"
+    currency: str = ""
+
+
+class RailsTable(_Table):
+    """`rails = { near, far }`."""
+
+    near: str
+    far: str
+
+
+class WavesTable(_Table):
+    """`waves = { ... }`; rows are amplitude, period, phase in degrees."""
+
+    length: Positive
+    width: Positive
+    base: float = 0.0
+    along_x: list[Point] = []
+    along_y: list[Point] = []
+
+
+class PanelsTable(_Table):
+    """`panels = { length, width }`, or the cuts."""
+
+    length: Positive | None = None
+    width: Positive | None = None
+    cuts_x: list[float] | None = None
+    cuts_y: list[float] | None = None
+
+
+class FaceTable(_Table):
+    """`[[form.face]]`."""
+
+    name: Annotated[str, msgspec.Meta(pattern="^[A-Za-z0-9][A-Za-z0-9 _-]{0,23}$")]
+    corners: Annotated[list[Point], msgspec.Meta(min_length=4, max_length=4)] | None = None
+    rails: RailsTable | None = None
+    heights: str | None = None
+    mesh: str | None = None
+    waves: WavesTable | None = None
+    panels: PanelsTable | None = None
+    cuts_x: list[float] | None = None
+    cuts_y: list[float] | None = None
+    count: Annotated[int, msgspec.Meta(ge=1, le=10_000)] = 1
+
+
+class FormTable(_Table):
+    """`[form]`."""
+
+    layup: Literal["bed", "bench"]
+    tolerance: Positive
+    face: Annotated[list[FaceTable], msgspec.Meta(min_length=1)]
+    coat: NotNegative = 0.0
+    margin: NotNegative | None = None
+
+
+class BlockTable(_Table):
+    """`[[foam.block]]`."""
+
+    length: Positive
+    width: Positive
+    height: Positive
+    count: Annotated[int, msgspec.Meta(ge=0)] | None = None
+    price: NotNegative | None = None
+    skin: NotNegative = 0.0
+    grade: str | None = None
+
+
+class FoamTable(_Table):
+    """`[foam]`."""
+
+    block: Annotated[list[BlockTable], msgspec.Meta(min_length=1)]
+    grade: str | None = None
+    density: Positive | None = None
+    offcut: tuple[Positive, Positive, Positive] | None = None
+
+
+class CuttingTable(_Table):
+    """`[cutting]`."""
+
+    machine: str
+    wire: str
+    power: Positive
+    wall: Positive
+    kerf: Positive | None = None
+    favour: Literal["lower", "upper", "share"] = "share"
+
+
+class DutiesTable(_Table):
+    """`[duties]`."""
+
+    unpaired: Literal["counter-mould", "cradle", "filler", "surplus"] = "surplus"
+    thickness: NotNegative = 0.0
+
+
+class CostTable(_Table):
+    """`[cost]`."""
+
+    machine_hour: NotNegative | None = None
+
+
+class JobFile(_Table):
+    """The whole file."""
+
+    format: Literal[1]
+    job: JobTable
+    form: FormTable
+    foam: FoamTable
+    cutting: CuttingTable
+    duties: DutiesTable = DutiesTable()
+    cost: CostTable = CostTable()

@@ -1,0 +1,96 @@
+"""One function a step: a plan goes in, the plan with one more thing worked out comes back.
+
+The speeds are settled before the halves are measured, because the kerf at the two ends of the wire follows from them;
+the hours come after the packing, because the set-ups do.
+"""
+
+from dataclasses import replace
+
+from cutblock.base.errors import NotCuttable
+from cutblock.base.progress import Progress
+from cutblock.records.plan import Finding, Plan
+from cutblock.records.words import Severity
+
+
+def take_form(plan: Plan, progress: Progress) -> Plan:
+    """Read every face of the job into a smooth surface."""
+    from cutblock.form.read import read_faces
+
+    faces, findings = read_faces(plan.job, progress)
+    return _with(plan, findings, faces=faces)
+
+
+def divide(plan: Plan, progress: Progress) -> Plan:
+    """Divide the faces into panels."""
+    from cutblock.panels.divide import divide_faces
+
+    panels, findings = divide_faces(plan.job, plan.faces, progress)
+    return _with(plan, findings, panels=panels)
+
+
+def fit(plan: Plan, progress: Progress) -> Plan:
+    """Fit every panel with the sweeps a straight wire can make."""
+    from cutblock.sweeps.fitting import fit_panels
+
+    sweeps, findings = fit_panels(plan.job, plan.panels, plan.conditions, progress)
+    if not sweeps:
+        worst = next((finding for finding in findings if finding.severity is Severity.ERROR), None)
+        raise NotCuttable(worst.text if worst else "no panel can be cut", worst.subject if worst else plan.job.id)
+    return _with(plan, findings, sweeps=sweeps)
+
+
+def pair(plan: Plan, progress: Progress) -> Plan:
+    """Give both halves of every sweep a duty."""
+    from cutblock.pairing.match import pair_sweeps
+
+    sweeps, pieces, findings = pair_sweeps(plan.job, plan.panels, plan.sweeps, plan.conditions, progress)
+    return _with(plan, findings, sweeps=sweeps, pieces=pieces)
+
+
+def set_speeds(plan: Plan, progress: Progress) -> Plan:
+    """Settle the speed along every sweep and the kerf at both ends that follows."""
+    from cutblock.schedule.times import time_sweeps
+
+    sweeps, timings, findings = time_sweeps(plan.sweeps, plan.conditions, plan.machine, progress)
+    return _with(plan, findings, sweeps=sweeps, timings=timings)
+
+
+def measure(plan: Plan, progress: Progress) -> Plan:
+    """Measure both halves of every sweep."""
+    from cutblock.halves.measure import measure_halves
+
+    volumes, pieces = measure_halves(plan.job, plan.panels, plan.sweeps, plan.pieces, plan.conditions, progress)
+    return replace(plan, volumes=volumes, pieces=pieces)
+
+
+def pack(plan: Plan, progress: Progress) -> Plan:
+    """Pack the billets into blocks and settle the cut order."""
+    from cutblock.packing.blocks import pack_sweeps
+
+    packed = pack_sweeps(plan.job, plan.sweeps, plan.pieces, plan.conditions, plan.settings, progress)
+    return _with(
+        plan,
+        packed.findings,
+        blocks=packed.blocks,
+        pieces=packed.pieces,
+        n_blocks_bound=packed.n_blocks_bound,
+        bound_proof=packed.bound_proof,
+        cost_bound=packed.cost_bound,
+    )
+
+
+def account(plan: Plan, progress: Progress) -> Plan:
+    """Count hours, litres and money."""
+    from cutblock.ledger.account import account_job
+    from cutblock.ledger.cost import count_cost
+    from cutblock.schedule.hours import count_hours
+
+    progress(0.0, "Counting hours and litres")
+    hours = count_hours(plan.blocks, plan.timings, plan.machine, plan.conditions)
+    ledger = account_job(plan.blocks, plan.volumes, plan.pieces, plan.n_blocks_bound)
+    cost = count_cost(plan.job, plan.blocks, hours, plan.cost_bound)
+    return replace(plan, hours=hours, ledger=ledger, cost=cost)
+
+
+def _with(plan: Plan, findings: tuple[Finding, ...], **changes: object) -> Plan:
+    return replace(plan, findings=plan.findings + findings, **changes)  # type: ignore[arg-type]
