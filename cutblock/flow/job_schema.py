@@ -13,7 +13,7 @@ class _Table(msgspec.Struct, forbid_unknown_fields=True, frozen=True, kw_only=Tr
     """A TOML table in which every key must be known."""
 
 
-class JobTable(_Table):
+class JobTable(_Table, frozen=True):
     """`[job]`."""
 
     id: Annotated[str, msgspec.Meta(pattern="^[A-Z0-9]{1,4}$")]
@@ -23,14 +23,14 @@ class JobTable(_Table):
     currency: str = ""
 
 
-class RailsTable(_Table):
+class RailsTable(_Table, frozen=True):
     """`rails = { near, far }`."""
 
     near: str
     far: str
 
 
-class WavesTable(_Table):
+class WavesTable(_Table, frozen=True):
     """`waves = { ... }`; rows are amplitude, period, phase in degrees."""
 
     length: Positive
@@ -40,7 +40,7 @@ class WavesTable(_Table):
     along_y: list[Point] = []
 
 
-class PanelsTable(_Table):
+class PanelsTable(_Table, frozen=True):
     """`panels = { length, width }`, or the cuts."""
 
     length: Positive | None = None
@@ -49,7 +49,7 @@ class PanelsTable(_Table):
     cuts_y: list[float] | None = None
 
 
-class FaceTable(_Table):
+class FaceTable(_Table, frozen=True):
     """`[[form.face]]`."""
 
     name: Annotated[str, msgspec.Meta(pattern="^[A-Za-z0-9][A-Za-z0-9 _-]{0,23}$")]
@@ -64,7 +64,7 @@ class FaceTable(_Table):
     count: Annotated[int, msgspec.Meta(ge=1, le=10_000)] = 1
 
 
-class FormTable(_Table):
+class FormTable(_Table, frozen=True):
     """`[form]`."""
 
     layup: Literal["bed", "bench"]
@@ -74,7 +74,7 @@ class FormTable(_Table):
     margin: NotNegative | None = None
 
 
-class BlockTable(_Table):
+class BlockTable(_Table, frozen=True):
     """`[[foam.block]]`."""
 
     length: Positive
@@ -86,7 +86,7 @@ class BlockTable(_Table):
     grade: str | None = None
 
 
-class FoamTable(_Table):
+class FoamTable(_Table, frozen=True):
     """`[foam]`."""
 
     block: Annotated[list[BlockTable], msgspec.Meta(min_length=1)]
@@ -95,7 +95,7 @@ class FoamTable(_Table):
     offcut: tuple[Positive, Positive, Positive] | None = None
 
 
-class CuttingTable(_Table):
+class CuttingTable(_Table, frozen=True):
     """`[cutting]`."""
 
     machine: str
@@ -106,20 +106,20 @@ class CuttingTable(_Table):
     favour: Literal["lower", "upper", "share"] = "share"
 
 
-class DutiesTable(_Table):
+class DutiesTable(_Table, frozen=True):
     """`[duties]`."""
 
     unpaired: Literal["counter-mould", "cradle", "filler", "surplus"] = "surplus"
     thickness: NotNegative = 0.0
 
 
-class CostTable(_Table):
+class CostTable(_Table, frozen=True):
     """`[cost]`."""
 
     machine_hour: NotNegative | None = None
 
 
-class JobFile(_Table):
+class JobFile(_Table, frozen=True):
     """The whole file."""
 
     format: Literal[1]

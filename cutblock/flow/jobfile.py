@@ -11,9 +11,9 @@ from typing import Any, NoReturn
 import msgspec
 import numpy as np
 
-from cutblock.catalog import load as catalog
 from cutblock.base.errors import InputError
 from cutblock.base.units import mm_per
+from cutblock.catalog import load as catalog
 from cutblock.flow.job_schema import BlockTable, FaceTable, FoamTable, JobFile
 from cutblock.flow.toml_lines import Path as KeyPath
 from cutblock.flow.toml_lines import key_lines, line_of
@@ -91,7 +91,7 @@ class _Reader:
         margin = file.form.margin * scale if file.form.margin is not None else _BENCH_MARGIN_MM
         offcut = tuple(size * scale for size in file.foam.offcut) if file.foam.offcut else _LEAST_OFFCUT_MM
         duties = file.duties
-        if duties.unpaired == Duty.COUNTER_MOULD and duties.thickness == 0.0:
+        if Duty(duties.unpaired) is Duty.COUNTER_MOULD and duties.thickness == 0.0:
             self._refuse(
                 ("duties", "thickness"), "a counter-mould needs the concrete's thickness", "Give duties.thickness."
             )

@@ -23,6 +23,8 @@ class Serving(Record):
     max_mm: float
     rms_mm: float
     p95_mm: float
+    fit_max_mm: float = 0.0  # the same without the offset that kerf and coat leave on purpose: the ruled fit alone
+    fit_rms_mm: float = 0.0
     strip: int = 1  # from 1
     n_strips: int = 1
 
@@ -63,13 +65,14 @@ class Sweep(Record):
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class SweepVolumes(Record):
-    """Volumes of one sweep in its billet: lower + upper + kerf = length x width x height."""
+    """Volumes of one sweep in its billet: lower + upper + kerf + trimmed = length x width x height."""
 
     sweep: str
     lower_mm3: float
     upper_mm3: float
     kerf_mm3: float
     face_mm2: float  # area of the cut surface
+    trimmed_mm3: float = 0.0  # cut away outside the outline of the panel (bed lay-up)
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)

@@ -1,0 +1,305 @@
+"""The shape of plan.json; its keys are a contract with whoever reads plan folders."""
+
+from typing import Final, Literal
+
+import msgspec
+
+Vector = tuple[float, float, float]
+Pair = tuple[float, float]
+FORMAT: Final = 1
+
+
+class _Entry(msgspec.Struct, frozen=True, kw_only=True):
+    """An object of plan.json; keys of later programs are passed over."""
+
+
+class JobEntry(_Entry, frozen=True):
+    """What the job was, lengths in mm."""
+
+    id: str
+    title: str
+    revision: str
+    units: str
+    layup: Literal["bed", "bench"]
+    tolerance_mm: float
+    coat_mm: float
+    margin_mm: float
+    wall_mm: float
+    grade: str
+    favour: Literal["lower", "upper", "share"]
+    unpaired: str
+    thickness_mm: float
+    least_offcut_mm: Vector
+    currency: str
+    hour_rate: float | None
+
+
+class InputEntry(_Entry, frozen=True):
+    """A file the plan was made from, as the job names it."""
+
+    path: str
+    sha256: str
+
+
+class SettingsEntry(_Entry, frozen=True):
+    """How hard the packing searched."""
+
+    seed: int
+    seconds: float | None
+    moves: int | None
+
+
+class PanelEntry(_Entry, frozen=True):
+    """One panel; its frame is `origin_mm` and `axes` (rows x, y, z) in form coordinates."""
+
+    id: str
+    face: str
+    copy: int
+    row: int
+    column: int
+    length_mm: float
+    width_mm: float
+    fit_max_mm: float | None  # None: the wire cannot make it, see the findings
+    fit_rms_mm: float | None
+    finished_max_mm: float | None
+    finished_rms_mm: float | None
+    paired_with: str | None
+    area_mm2: float
+    origin_mm: Vector
+    axes: tuple[Vector, Vector, Vector]
+    outline_mm: list[list[Pair]]
+    neighbours: list[tuple[str, str]]
+
+
+class ServingEntry(_Entry, frozen=True):
+    """A half as the mould of a panel: billet point p lies at rotation p + shift in the panel frame."""
+
+    panel: str
+    half: Literal["lower", "upper"]
+    rotation: tuple[Vector, Vector, Vector]
+    shift_mm: Vector
+    max_mm: float
+    rms_mm: float
+    p95_mm: float
+    fit_max_mm: float
+    fit_rms_mm: float
+    strip: int
+    n_strips: int
+
+
+class SpeedEntry(_Entry, frozen=True):
+    """Wire-normal speeds at mid-wire, mm/s."""
+
+    low: float
+    high: float
+    planned: float
+
+
+class SweepEntry(_Entry, frozen=True):
+    """One pass of the wire through a billet; row i of near and far is ruling i."""
+
+    id: str
+    length_mm: float
+    width_mm: float
+    height_mm: float
+    near_mm: list[Pair]
+    far_mm: list[Pair]
+    wire_along: Literal["x", "y"]
+    serves: list[str]
+    lower_litres: float
+    upper_litres: float
+    kerf_litres: float
+    trimmed_litres: float  # outside the panel's outline
+    kerf_mm: Pair
+    speed_mm_s: SpeedEntry
+    seconds: float
+    end_speed_ratio: float
+    twist_deg_per_m: float
+    fit_max_mm: float
+    fit_rms_mm: float
+    skew_mm: float
+    face_mm2: float
+    step_seconds: list[float]
+    serving: list[ServingEntry]
+
+
+class PieceEntry(_Entry, frozen=True):
+    """One half of one sweep."""
+
+    id: str
+    partner: str
+    sweep: str
+    half: Literal["lower", "upper"]
+    duty: Literal["mould", "counter-mould", "cradle", "filler", "surplus"]
+    panel: str | None
+    block: str | None
+    litres: float
+    mass_kg: float
+    code: str
+
+
+class BilletEntry(_Entry, frozen=True):
+    """Where a billet lies in its block."""
+
+    sweep: str
+    at_mm: Vector
+    size_mm: Vector
+    turned: bool
+
+
+class CutEntry(_Entry, frozen=True):
+    """One pass of the wire, in order; a trim or through cut melts `position_mm` to `position_mm` + the block's kerf."""
+
+    order: int
+    kind: Literal["trim", "through", "sweep"]
+    setup: int
+    part_at_mm: Vector
+    part_size_mm: Vector
+    axis: str
+    position_mm: float
+    sweep: str | None
+    turn: bool
+
+
+class OffcutEntry(_Entry, frozen=True):
+    """A leftover box worth keeping."""
+
+    size_mm: Vector
+    at_mm: Vector
+
+
+class BlockEntry(_Entry, frozen=True):
+    """One stock block."""
+
+    id: str
+    length_mm: float
+    width_mm: float
+    height_mm: float
+    grade: str
+    skin_mm: float
+    kerf_mm: float
+    price: float | None
+    from_offcut: bool
+    billets: list[BilletEntry]
+    cuts: list[CutEntry]
+    offcuts: list[OffcutEntry]
+
+
+class LedgerEntry(_Entry, frozen=True):
+    """The volume account; every key ending in _litres but bought_litres sums to bought_litres."""
+
+    bought_litres: float
+    trim_litres: float
+    kerf_litres: float
+    mould_litres: float
+    counter_mould_litres: float
+    cradle_litres: float
+    filler_litres: float
+    surplus_litres: float
+    offcut_litres: float
+    scrap_litres: float
+    used_percent: float
+    waste_percent: float
+    blocks: int
+    blocks_lower_bound: int
+
+
+class TimeEntry(_Entry, frozen=True):
+    """Machine time, hours."""
+
+    cutting_h: float
+    setup_h: float
+    total_h: float
+    blocks_h: dict[str, float]
+
+
+class CostEntry(_Entry, frozen=True):
+    """Money; null where no price was given."""
+
+    currency: str
+    foam: float | None
+    machine: float | None
+    total: float | None
+    foam_lower_bound: float | None
+
+
+class FindingEntry(_Entry, frozen=True):
+    """Something someone must look at."""
+
+    severity: Literal["info", "warning", "error"]
+    code: str
+    subject: str
+    text: str
+
+
+class ConditionsEntry(_Entry, frozen=True):
+    """What the wire does in this foam at this power."""
+
+    density_kg_m3: float
+    power_w_m: float
+    kerf_rate_mm2_s: float
+    least_kerf_mm: float
+    low_mm_s: float
+    high_mm_s: float
+    planned_mm_s: float
+    kerf_mm: float
+    widest_kerf_mm: float
+    is_calibrated: bool
+
+
+class WireEntry(_Entry, frozen=True):
+    """The wire the plan was made for."""
+
+    name: str
+    alloy: str
+    diameter_mm: float
+    resistivity_ohm_m: float
+    density_kg_m3: float
+    clearance_mm: float
+
+
+class MachineEntry(_Entry, frozen=True):
+    """The machine the code was written for."""
+
+    name: str
+    title: str
+    travel_mm: float
+    lift_mm: float
+    span_mm: float
+    near_gap_mm: float
+    table_offset_mm: float
+    table_height_mm: float
+    speed_mm_s: float
+    acceleration_mm_s2: float
+    air_speed_mm_s: float
+    longest_wire_mm: float
+    setup_s: float
+    turn_s: float
+    axes: tuple[str, str, str, str]
+    decimals: int
+    header: tuple[str, ...]
+    footer: tuple[str, ...]
+    heater_on: str
+    heater_off: str
+
+
+class PlanFile(_Entry, frozen=True):
+    """The whole file."""
+
+    format: Literal[1]
+    program: str
+    job: JobEntry
+    inputs: list[InputEntry]
+    settings: SettingsEntry
+    conditions: ConditionsEntry
+    wire: WireEntry
+    machine: MachineEntry
+    panels: list[PanelEntry]
+    sweeps: list[SweepEntry]
+    pieces: list[PieceEntry]
+    blocks: list[BlockEntry]
+    ledger: LedgerEntry
+    bound_proof: str
+    time: TimeEntry
+    cost: CostEntry
+    findings: list[FindingEntry]
