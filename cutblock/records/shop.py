@@ -60,6 +60,16 @@ class Machine(Record):
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class BlockSize(Record):
+    """A usual size of stock block."""
+
+    name: str
+    length_mm: float
+    width_mm: float
+    height_mm: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class LabelSheet(Record):
     """A sheet of labels; lengths in mm."""
 

@@ -1,0 +1,175 @@
+"""The shape of the catalogue's TOML files: every key, its type and the range it must lie in."""
+
+from collections.abc import Iterator
+from typing import Annotated
+
+import msgspec
+
+Name = Annotated[str, msgspec.Meta(min_length=1, max_length=60)]
+Positive = Annotated[float, msgspec.Meta(gt=0.0, lt=1e7)]
+NotNegative = Annotated[float, msgspec.Meta(ge=0.0, lt=1e7)]
+Density = Annotated[float, msgspec.Meta(ge=8.0, le=60.0)]
+Count = Annotated[int, msgspec.Meta(ge=1, le=100)]
+Axis = Annotated[str, msgspec.Meta(pattern="^[XYZUVWABC]$")]
+Words = Annotated[str, msgspec.Meta(pattern="^[ -~]+$")]  # printable ASCII, as controllers read it
+
+# What is wrong with a table that its types allow: (key, what, remedy).
+Complaint = tuple[str, str, str]
+
+_NEEDED_WORDS = ("G21", "G90", "G61")
+
+
+class _Table(msgspec.Struct, forbid_unknown_fields=True, kw_only=True):
+    """A TOML table in which every key must be known."""
+
+    def complaints(self) -> Iterator[Complaint]:
+        """Yield what does not fit together."""
+        yield from ()
+
+
+class GradeTable(_Table):
+    """`[[grade]]` of grades.toml; the keys are the fields of `records.shop.Grade`."""
+
+    name: Name
+    density_kg_m3: Density
+    density_low_kg_m3: Density
+    density_high_kg_m3: Density
+    strength_kpa: Positive
+    bending_kpa: Positive
+
+    def complaints(self) -> Iterator[Complaint]:
+        """Yield a density outside its own range."""
+        low, high = self.density_low_kg_m3, self.density_high_kg_m3
+        if not low <= self.density_kg_m3 <= high:
+            text = f"{self.density_kg_m3:g} kg/m3 does not lie between {low:g} and {high:g} kg/m3"
+            yield "density_kg_m3", text, "Give the typical density between the low and the high one."
+
+
+class WireTable(_Table):
+    """`[[wire]]` of wires.toml; the keys are the fields of `records.shop.Wire`."""
+
+    name: Name
+    alloy: Name
+    diameter_mm: Annotated[float, msgspec.Meta(ge=0.05, le=5.0)]
+    resistivity_ohm_m: Annotated[float, msgspec.Meta(ge=1e-8, le=1e-5)]
+    density_kg_m3: Annotated[float, msgspec.Meta(ge=1000.0, le=25000.0)]
+    clearance_mm: Annotated[float, msgspec.Meta(ge=0.0, le=2.0)]
+
+
+class BlockTable(_Table):
+    """`[[block]]` of blocks.toml; the keys are the fields of `records.shop.BlockSize`."""
+
+    name: Name
+    length_mm: Positive
+    width_mm: Positive
+    height_mm: Positive
+
+
+class SheetTable(_Table):
+    """`[[sheet]]` of labels.toml; the keys are the fields of `records.shop.LabelSheet`."""
+
+    name: Name
+    title: Name
+    page_width_mm: Positive
+    page_height_mm: Positive
+    columns: Count
+    rows: Count
+    label_width_mm: Positive
+    label_height_mm: Positive
+    left_mm: NotNegative
+    top_mm: NotNegative
+    pitch_x_mm: Positive
+    pitch_y_mm: Positive
+
+    def complaints(self) -> Iterator[Complaint]:
+        """Yield labels that overlap or leave the page."""
+        yield from self._along("x", self.columns, self.label_width_mm, self.left_mm, self.page_width_mm)
+        yield from self._along("y", self.rows, self.label_height_mm, self.top_mm, self.page_height_mm)
+
+    def _along(self, axis: str, count: int, label: float, start: float, page: float) -> Iterator[Complaint]:
+        pitch = self.pitch_x_mm if axis == "x" else self.pitch_y_mm
+        side = "width" if axis == "x" else "height"
+        if count > 1 and pitch < label - 1e-6:
+            yield f"pitch_{axis}_mm", f"{pitch:g} mm is less than the label's {label:g} mm", "Labels must not overlap."
+        end = start + (count - 1) * pitch + label
+        if end > page + 1e-6:
+            text = f"the labels end at {end:g} mm, the page at {page:g} mm"
+            yield f"page_{side}_mm", text, "Correct the page, the margin, the pitch or the number of labels."
+
+
+class MachineTable(_Table):
+    """A file in machines/; the keys are the fields of `records.shop.Machine` but the name, which is the file's."""
+
+    title: Name
+    travel_mm: Positive
+    lift_mm: Positive
+    span_mm: Positive
+    near_gap_mm: NotNegative
+    table_offset_mm: NotNegative
+    table_height_mm: float
+    speed_mm_s: Positive
+    acceleration_mm_s2: Positive
+    air_speed_mm_s: Positive
+    longest_wire_mm: Positive
+    setup_s: NotNegative
+    turn_s: NotNegative
+    axes: tuple[Axis, Axis, Axis, Axis]
+    decimals: Annotated[int, msgspec.Meta(ge=2, le=6)]
+    header: tuple[Words, ...]
+    footer: tuple[Words, ...]
+    heater_on: Words
+    heater_off: Words
+
+    def complaints(self) -> Iterator[Complaint]:
+        """Yield sizes, speeds and words that cannot work together."""
+        if self.near_gap_mm >= self.span_mm:
+            yield "near_gap_mm", f"{self.near_gap_mm:g} mm leaves nothing of the span", "Give less than span_mm."
+        if self.table_offset_mm >= self.travel_mm:
+            yield "table_offset_mm", f"{self.table_offset_mm:g} mm leaves no travel", "Give less than travel_mm."
+        if not 0.0 <= self.table_height_mm < self.lift_mm:
+            text = f"{self.table_height_mm:g} mm leaves no lift"
+            yield "table_height_mm", text, "Give the table's top above the towers' zero, less than lift_mm."
+        if self.longest_wire_mm < self.span_mm:
+            text = f"{self.longest_wire_mm:g} mm is shorter than the span of {self.span_mm:g} mm"
+            yield "longest_wire_mm", text, "The wire is at least as long as the towers are apart."
+        if self.air_speed_mm_s > self.speed_mm_s:
+            text = f"{self.air_speed_mm_s:g} mm/s is over the axes' {self.speed_mm_s:g} mm/s"
+            yield "air_speed_mm_s", text, "Give no more than speed_mm_s."
+        yield from self._word_complaints()
+
+    def _word_complaints(self) -> Iterator[Complaint]:
+        if len(set(self.axes)) < len(self.axes):
+            yield "axes", f"an axis stands twice in {', '.join(self.axes)}", "Give four different letters."
+        words = " ".join(self.header).split()
+        missing = [word for word in _NEEDED_WORDS if word not in words]
+        if missing:
+            remedy = "Programs are written in mm (G21), absolute (G90), and must follow the path exactly (G61)."
+            yield "header", f"{', '.join(missing)} is missing", remedy
+        if "{power}" not in self.heater_on:
+            yield "heater_on", "has no {power}", 'Say where the power in W goes, such as "M3 S{power}".'
+        if "{" in self.heater_on.replace("{power}", ""):
+            yield "heater_on", "has a brace that is not {power}", 'Write it like "M3 S{power}".'
+
+
+class GradesFile(_Table):
+    """grades.toml."""
+
+    grade: tuple[GradeTable, ...] = ()
+
+
+class WiresFile(_Table):
+    """wires.toml."""
+
+    wire: tuple[WireTable, ...] = ()
+
+
+class BlocksFile(_Table):
+    """blocks.toml."""
+
+    block: tuple[BlockTable, ...] = ()
+
+
+class LabelsFile(_Table):
+    """labels.toml."""
+
+    sheet: tuple[SheetTable, ...] = ()
