@@ -1,0 +1,136 @@
+"""The command line: commands, exit codes and how errors are told."""
+
+import argparse
+import sys
+import traceback
+from collections.abc import Sequence
+
+import cutblock
+from cutblock.base.errors import Cancelled, CutblockError
+
+EXIT_CLEAN, EXIT_FINDINGS, EXIT_INPUT, EXIT_BUG, EXIT_CANCELLED = 0, 1, 2, 3, 130
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run one command.
+
+    Args:
+        arguments: Words after the program's name; None takes those of the process.
+
+    Returns:
+        0 clean, 1 findings of severity error, 2 unusable input, 3 a bug, 130 cancelled.
+    """
+    chosen = _parser().parse_args(arguments)
+    try:
+        return _run(chosen)
+    except CutblockError as error:
+        print(f"cutblock: {error}", file=sys.stderr)
+        return EXIT_INPUT
+    except (KeyboardInterrupt, Cancelled):
+        print("cutblock: cancelled, nothing was written.", file=sys.stderr)
+        return EXIT_CANCELLED
+    except BrokenPipeError:
+        sys.stderr.close()
+        return EXIT_CLEAN
+    except Exception:  # noqa: BLE001 - the one place where a bug is caught and shown with its text
+        traceback.print_exc()
+        print(
+            "cutblock: this is a bug in the program, not in your files. Please report the text above.", file=sys.stderr
+        )
+        return EXIT_BUG
+
+
+def _run(chosen: argparse.Namespace) -> int:
+    # Each command imports its own module only, so that help stays quick and no command needs Qt but `window`.
+    match chosen.command:
+        case "plan":
+            from cutblock.cli.plan import run_plan
+
+            return run_plan(chosen)
+        case "check":
+            from cutblock.cli.check import run_check
+
+            return run_check(chosen)
+        case "tags":
+            from cutblock.cli.tags import run_tags
+
+            return run_tags(chosen)
+        case "wire":
+            from cutblock.cli.wire import run_wire
+
+            return run_wire(chosen)
+        case _:
+            from cutblock.cli.window import run_window
+
+            return run_window(chosen)
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(
+        prog="cutblock",
+        description="Plan hot-wire cut EPS formwork: ruled sweeps, both halves used, blocks packed, litres accounted for.",
+        epilog="Without a command the window opens. Exit: 0 clean, 1 errors among the findings, 2 unusable input, 3 a bug.",
+    )
+    parser.add_argument("--version", action="version", version=f"cutblock {cutblock.__version__}")
+    commands = parser.add_subparsers(dest="command", metavar="COMMAND")
+
+    window = commands.add_parser(
+        "window", help="open the window", description="Open the window, with a job if one is named."
+    )
+    window.add_argument("job", nargs="?", metavar="JOB", help="a job file, or a folder that holds job.toml")
+
+    plan = commands.add_parser(
+        "plan", help="make the plan of a job", description="Make the plan of a job and print its summary."
+    )
+    plan.add_argument("job", metavar="JOB", help="a job file, or a folder that holds job.toml")
+    plan.add_argument("--out", metavar="DIR", help="write the plan folder here; without it nothing is written")
+    plan.add_argument("--json", action="store_true", help="print the whole plan as JSON instead of the summary")
+    plan.add_argument("--seed", type=_count, default=0, metavar="N", help="seed of the packing search (0)")
+    effort = plan.add_mutually_exclusive_group()
+    effort.add_argument("--seconds", type=_seconds, metavar="S", help="search this long for a better packing")
+    effort.add_argument("--moves", type=_count, metavar="N", help="search this many moves: the same answer every time")
+
+    check = commands.add_parser(
+        "check",
+        help="prove a plan folder",
+        description="Read every file of a plan folder again and prove it against the plan.",
+    )
+    check.add_argument("folder", metavar="DIR", help="a plan folder")
+    check.add_argument("--json", action="store_true", help="print what was found as JSON")
+
+    tags = commands.add_parser(
+        "tags",
+        help="write the tag sheets again",
+        description="Write tags.pdf of a plan folder again, on another label sheet.",
+    )
+    tags.add_argument("folder", metavar="DIR", help="a plan folder")
+    tags.add_argument("--sheet", metavar="NAME", default=None, help="label sheet; an unknown name lists them all")
+    tags.add_argument("--start", type=_count, default=1, metavar="N", help="first free label of a part-used sheet (1)")
+
+    wire = commands.add_parser(
+        "wire",
+        help="kerf, speed window and currents of a wire",
+        description="What a hot wire does in foam of a given density.",
+    )
+    wire.add_argument("--density", type=float, required=True, metavar="KG_M3", help="density of the foam, kg/m3")
+    wire.add_argument("--power", type=float, required=True, metavar="W_M", help="electric power, W per metre of wire")
+    wire.add_argument("--diameter", type=float, required=True, metavar="MM", help="diameter of the wire, mm")
+    wire.add_argument(
+        "--speed", type=float, metavar="MM_S", help="wire-normal speed, mm/s; without it the planned speed"
+    )
+    wire.add_argument("--json", action="store_true", help="print the numbers as JSON")
+    return parser
+
+
+def _count(text: str) -> int:
+    value = int(text)
+    if value < 0:
+        raise argparse.ArgumentTypeError(f"{text} is below 0")
+    return value
+
+
+def _seconds(text: str) -> float:
+    value = float(text)
+    if not 0.0 <= value <= 86_400.0:
+        raise argparse.ArgumentTypeError(f"{text} is not between 0 and 86400 seconds")
+    return value

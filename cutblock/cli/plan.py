@@ -1,0 +1,55 @@
+"""`cutblock plan`."""
+
+import argparse
+import sys
+from pathlib import Path
+
+from cutblock.base.progress import part_of
+from cutblock.cli.progress import terminal_progress
+from cutblock.records.plan import Plan, Settings
+from cutblock.records.words import Severity
+
+
+def run_plan(chosen: argparse.Namespace) -> int:
+    """Make a plan, write its folder if asked, print the summary or JSON.
+
+    Returns:
+        0, or 1 when a finding is of severity error.
+    """
+    from cutblock.flow.chain import make_plan
+    from cutblock.flow.folder import write_plan
+    from cutblock.flow.jobfile import read_job
+    from cutblock.flow.plan_json import plan_text
+
+    settings = Settings(seed=chosen.seed, seconds=chosen.seconds, moves=chosen.moves)
+    progress = terminal_progress()
+    plan = make_plan(read_job(job_path(chosen.job)), part_of(progress, 0.0, 0.8), settings)
+    if chosen.out is not None:
+        write_plan(plan, chosen.out, part_of(progress, 0.8, 1.0))
+    progress(1.0, "Done")
+    if chosen.json:
+        sys.stdout.write(plan_text(plan))
+    else:
+        _print_summary(plan, chosen.out)
+    return 1 if any(finding.severity is Severity.ERROR for finding in plan.findings) else 0
+
+
+def job_path(given: str) -> Path:
+    """Return the job file that `given` names: itself, or the job.toml in the folder it is."""
+    path = Path(given)
+    return path / "job.toml" if path.is_dir() else path
+
+
+def _print_summary(plan: Plan, out: str | None) -> None:
+    from cutblock.flow.views import summary
+
+    lines = summary(plan)
+    print(f"{plan.job.id}  {plan.job.title}  (revision {plan.job.revision})")
+    width = max(len(label) for label, _ in lines)
+    for label, value in lines:
+        print(f"  {label:<{width}}  {value}")
+    for severity in (Severity.ERROR, Severity.WARNING, Severity.INFO):
+        for finding in plan.findings:
+            if finding.severity is severity:
+                print(f"  {severity}: {finding.subject}: {finding.text}")
+    print("  Nothing written; add --out DIR for the plan folder." if out is None else f"  Plan folder: {out}")
