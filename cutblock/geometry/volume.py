@@ -210,7 +210,7 @@ def _integrate(
         corners = floats(ring, (None, 2), "outline")
         turned = np.roll(corners, -1, axis=0)
         around = float(np.sum(corners[:, 0] * turned[:, 1] - corners[:, 1] * turned[:, 0]))
-        sign = np.sign(around) * (1.0 if index == 0 else -1.0)
+        sign = float(np.sign(around)) * (1.0 if index == 0 else -1.0)
         for start, end in zip(corners, turned, strict=True):  # a handful of edges
             if start[1] != end[1]:
                 total += sign * _along_edge(near, far, width_mm, start, end, integral)

@@ -1,0 +1,38 @@
+"""The two halves of a sweep and the foam the wire melts between them, as closed solids."""
+
+from cutblock.base.errors import GeometryError
+from cutblock.geometry.solids import Mesh, check_height, halves_about, sheet_over, solid_of
+from cutblock.geometry.volume import check_rails
+from cutblock.records.sweep import Sweep
+
+
+def half_meshes(sweep: Sweep) -> tuple[Mesh, Mesh, Mesh]:
+    """Return the lower half, the upper half and the kerf body of a sweep, in its billet frame.
+
+    The wire's centreline is the sheet; half the kerf is melted on each side of it, measured along the sheet's
+    normal, and the kerf runs linearly from the near to the far value. All three bodies stand on the same plan points,
+    so together they are the billet to rounding.
+
+    Args:
+        sweep: Rails, billet and kerf.
+
+    Returns:
+        Closed meshes, wound outwards, mm. The kerf body encloses nothing where the kerf is 0.
+
+    Raises:
+        GeometryError: The rails cross or do not cover the billet, or a cut face leaves it; names the sweep.
+    """
+    try:
+        near, far = check_rails(sweep.near, sweep.far, sweep.width_mm)
+        sheet = sheet_over(near, far, sweep.length_mm, sweep.width_mm)
+        at_near, at_far = sweep.kerf_mm
+        # To second order in the kerf the faces at +-w/2 along the normal stand w/2 times the steepness off in height.
+        offsets = (at_near + sheet.across * (at_far - at_near)) / 2.0 * sheet.steepness
+        plan, heights = sheet.vertices[:, :2], sheet.vertices[:, 2]
+        tops, bottoms = heights - offsets, heights + offsets
+        check_height(tops, sweep.height_mm)
+        check_height(bottoms, sweep.height_mm)
+    except GeometryError as error:
+        raise GeometryError(error.message, f"sweep {sweep.id}", error.remedy) from error
+    lower, upper = halves_about(sheet, tops, bottoms, sweep.height_mm)
+    return lower, upper, solid_of(plan, bottoms, tops, sheet.triangles)

@@ -1,0 +1,147 @@
+import numpy as np
+import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
+from cutblock.base.errors import GeometryError
+from cutblock.geometry import split_billet, volume_below
+from cutblock.geometry.plan_clip import boundary_edges
+from cutblock.geometry.solids import mesh_volume
+from cutblock.geometry.volume import volume_below_within
+
+SIZE = (1200.0, 1000.0, 500.0)
+BILLET = 1200.0 * 1000.0 * 500.0
+HYPAR = np.array([[0.0, 310.0], [1200.0, 190.0]]), np.array([[0.0, 190.0], [1200.0, 310.0]])
+
+
+def wavy_rails(seed, run_out=0.0, n=31):
+    rng = np.random.default_rng(seed)
+    phases = rng.uniform(0.0, 6.0, 2)
+    skew = rng.uniform(-0.8, 0.8) * run_out
+    x = np.linspace(-run_out, SIZE[0] + run_out, n)
+    near = np.column_stack([x - skew, 240 + 60 * np.sin(x / 250 + phases[0])])
+    far = np.column_stack([x + skew, 260 + 70 * np.sin(x / 310 + phases[1])])
+    return near, far
+
+
+def is_closed(mesh):
+    edges = np.concatenate([mesh.triangles[:, [0, 1]], mesh.triangles[:, [1, 2]], mesh.triangles[:, [2, 0]]])
+    keys = edges @ [len(mesh.vertices), 1]
+    return len(boundary_edges(mesh.triangles)) == 0 and len(np.unique(keys)) == len(keys)
+
+
+@given(seed=st.integers(0, 2**32 - 1), n_across=st.integers(1, 9))
+def test_square_ended_halves_have_exactly_the_volume_of_the_closed_form(seed, n_across):
+    near, far = wavy_rails(seed)
+
+    lower, upper = split_billet(near, far, SIZE, n_across=n_across, facet_mm=5.0)
+
+    assert mesh_volume(lower) == pytest.approx(volume_below(near, far, SIZE[1]), rel=1e-12)
+    assert mesh_volume(lower) + mesh_volume(upper) == pytest.approx(BILLET, rel=1e-13)
+
+
+@given(seed=st.integers(0, 2**32 - 1))
+def test_halves_of_a_skewed_sheet_that_runs_out_are_closed_and_add_up(seed):
+    near, far = wavy_rails(seed, run_out=120.0)
+
+    lower, upper = split_billet(near, far, SIZE, n_across=8)
+
+    assert is_closed(lower)
+    assert is_closed(upper)
+    assert mesh_volume(lower) == pytest.approx(volume_below_within(near, far, 1200.0, 1000.0), rel=1e-6)
+    assert mesh_volume(lower) + mesh_volume(upper) == pytest.approx(BILLET, rel=1e-12)
+    assert lower.vertices[:, :2].min(axis=0) == pytest.approx([0.0, 0.0], abs=1e-9)
+    assert lower.vertices[:, :2].max(axis=0) == pytest.approx(SIZE[:2], abs=1e-9)
+
+
+@given(
+    seed=st.integers(0, 2**32 - 1),
+    angles=st.lists(st.integers(0, 359), min_size=3, max_size=9, unique=True),
+    is_clockwise=st.booleans(),
+)
+def test_halves_over_any_convex_outline_are_closed_and_hold_what_lies_under_it(seed, angles, is_clockwise):
+    near, far = wavy_rails(seed, run_out=120.0)
+    turns = np.radians(sorted(angles, reverse=is_clockwise))
+    outline = np.column_stack([600.0 + 500.0 * np.cos(turns), 500.0 + 400.0 * np.sin(turns)])
+
+    lower, upper = split_billet(near, far, SIZE, outline, n_across=12)
+
+    below = volume_below_within(near, far, 1200.0, 1000.0, [outline])
+    flat = np.array([[-9.0, 1.0], [1209.0, 1.0]])
+    prism = 500.0 * volume_below_within(flat, flat, 1200.0, 1000.0, [outline])
+    assert is_closed(lower)
+    assert is_closed(upper)
+    assert abs(mesh_volume(lower) - below) <= 0.01 * prism / 500.0  # the facet tolerance over the footprint
+    assert mesh_volume(lower) + mesh_volume(upper) == pytest.approx(prism, rel=1e-8)
+
+
+def test_an_outline_flush_with_the_billet_changes_nothing():
+    near, far = wavy_rails(3, run_out=120.0)
+    flush = np.array([[0.0, 0.0], [600.0, 0.0], [1200.0, 0.0], [1200.0, 1000.0], [0.0, 1000.0]])
+
+    lower, _ = split_billet(near, far, SIZE, flush)
+
+    assert is_closed(lower)
+    assert mesh_volume(lower) == pytest.approx(mesh_volume(split_billet(near, far, SIZE)[0]), rel=1e-12)
+
+
+def test_an_l_shaped_outline_holds_the_sum_of_its_two_rectangles():
+    near, far = wavy_rails(4, run_out=120.0)
+    shape = np.array([[0, 0], [1200, 0], [1200, 500], [600, 500], [600, 1000], [0, 1000]], dtype=float)
+    parts = [
+        np.array([[0, 0], [1200, 0], [1200, 500], [0, 500]], dtype=float),
+        np.array([[0, 500], [600, 500], [600, 1000], [0, 1000]], dtype=float),
+    ]
+
+    halves = split_billet(near, far, SIZE, shape)
+
+    for half in range(2):
+        apart = sum(mesh_volume(split_billet(near, far, SIZE, part)[half]) for part in parts)
+        assert mesh_volume(halves[half]) == pytest.approx(apart, rel=1e-7)
+        assert is_closed(halves[half])
+
+
+def test_a_hole_goes_through_both_halves():
+    near, far = wavy_rails(5, run_out=120.0)
+    outer = np.array([[0, 0], [1200, 0], [1200, 1000], [0, 1000]], dtype=float)
+    hole = np.array([[300, 300], [300, 700], [700, 700], [700, 300]], dtype=float)
+
+    halves = split_billet(near, far, SIZE, [outer, hole])
+
+    plugs = split_billet(near, far, SIZE, hole)
+    wholes = split_billet(near, far, SIZE)
+    for half, plug, whole in zip(halves, plugs, wholes, strict=True):
+        assert is_closed(half)
+        assert mesh_volume(half) == pytest.approx(mesh_volume(whole) - mesh_volume(plug), rel=1e-7)
+
+
+@pytest.mark.parametrize("outline", [None, np.array([[0, 0], [1000, 0], [200, 200], [0, 900]], dtype=float)])
+def test_a_sheet_that_leaves_the_billet_is_refused(outline):
+    near, far = HYPAR
+
+    with pytest.raises(GeometryError, match="leaves the billet"):
+        split_billet(near - [0, 280.0], far - [0, 180.0], SIZE, outline)
+    with pytest.raises(GeometryError, match="leaves the billet"):
+        split_billet(near + [0, 280.0], far + [0, 200.0], SIZE, outline)
+
+
+@pytest.mark.parametrize(
+    "outline",
+    [
+        np.array([[2000, 0], [2100, 0], [2100, 100]], dtype=float),
+        np.array([[2000, 0], [2100, 0], [2020, 20], [2000, 100]], dtype=float),
+    ],
+)
+def test_an_outline_beside_the_billet_is_refused(outline):
+    with pytest.raises(GeometryError, match="encloses nothing"):
+        split_billet(*HYPAR, SIZE, outline)
+
+
+def test_crossing_rails_are_refused():
+    near = np.array([[0.0, 250.0], [700.0, 250.0], [600.0, 250.0], [1200.0, 250.0]])
+    far = np.array([[0.0, 250.0], [400.0, 250.0], [800.0, 250.0], [1200.0, 250.0]])
+
+    with pytest.raises(GeometryError, match="cross"):
+        split_billet(near, far, SIZE)
+    with pytest.raises(GeometryError, match="shape"):
+        split_billet(*HYPAR, (1200.0, 1000.0))
