@@ -118,11 +118,12 @@ def test_a_hole_goes_through_both_halves():
 @pytest.mark.parametrize("outline", [None, np.array([[0, 0], [1000, 0], [200, 200], [0, 900]], dtype=float)])
 def test_a_sheet_that_leaves_the_billet_is_refused(outline):
     near, far = HYPAR
+    up = np.array([0.0, 280.0])
 
     with pytest.raises(GeometryError, match="leaves the billet"):
-        split_billet(near - [0, 280.0], far - [0, 180.0], SIZE, outline)
+        split_billet(near - up, far - up, SIZE, outline)
     with pytest.raises(GeometryError, match="leaves the billet"):
-        split_billet(near + [0, 280.0], far + [0, 200.0], SIZE, outline)
+        split_billet(near + up, far + up, SIZE, outline)
 
 
 @pytest.mark.parametrize(

@@ -102,7 +102,7 @@ def test_a_hole_and_the_way_round_it_is_given_do_not_change_what_is_left():
 @given(tilt=st.floats(-0.8, 0.8), skew=st.floats(-100.0, 100.0))
 def test_the_area_of_a_tilted_plane_is_its_plan_over_the_cosine(tilt, skew):
     near = np.array([[-200.0, 500.0 - 200.0 * tilt], [1400.0, 500.0 + 1400.0 * tilt]])
-    far = near + [skew, skew * tilt]
+    far = near + np.array([skew, skew * tilt])
 
     area = sheet_area(near, far, LENGTH, WIDTH)
 

@@ -33,7 +33,8 @@ def measure(sweep, panels, job=None, duty=Duty.MOULD):
 @given(at_near=st.floats(0.2, 8.0), at_far=st.floats(0.2, 8.0), lift=st.floats(-60.0, 60.0))
 def test_halves_and_kerf_are_the_billet(at_near, at_far, lift):
     sweep = sample_sweep(kerf_mm=(at_near, at_far))
-    sweep = replace(sweep, near=sweep.near + [0.0, lift], far=sweep.far + [0.0, lift])
+    up = np.array([0.0, lift])
+    sweep = replace(sweep, near=sweep.near + up, far=sweep.far + up)
 
     volumes, _ = measure(sweep, (sample_panel(), sample_panel("S2-A01")))
 

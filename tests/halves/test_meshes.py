@@ -16,7 +16,8 @@ from cutblock.halves.meshes import half_meshes
 @given(at_near=st.floats(0.3, 6.0), at_far=st.floats(0.3, 6.0), skew=st.floats(-18.0, 18.0))
 def test_halves_and_kerf_body_are_closed_and_fill_the_billet(at_near, at_far, skew):
     sweep = sample_sweep(kerf_mm=(at_near, at_far))
-    sweep = replace(sweep, near=sweep.near - [skew, 0.0], far=sweep.far + [skew, 0.0])
+    aside = np.array([skew, 0.0])
+    sweep = replace(sweep, near=sweep.near - aside, far=sweep.far + aside)
     billet = sweep.length_mm * sweep.width_mm * sweep.height_mm
 
     bodies = half_meshes(sweep)
