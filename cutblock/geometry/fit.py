@@ -1,0 +1,210 @@
+"""The ruled sheet a straight wire can sweep that comes closest to a wanted surface."""
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from cutblock.base.arrays import Bools, Floats, Ints
+from cutblock.base.errors import GeometryError
+from cutblock.geometry.deviation import deviation_measures, face_deviation
+from cutblock.geometry.fit_refine import N_CONTROLS, Fits, improve, recentre, refine
+from cutblock.geometry.fit_start import Paths, best_paths
+from cutblock.geometry.fit_target import Patch, Target, make_target
+from cutblock.geometry.heights import HeightField, height_field
+from cutblock.geometry.rails import SheetFit, polyline_rails
+
+BATCH = 16
+FINE_CONTROLS = 32
+FINE_SAG_MM = 1e-4
+GRIDS = (65, 129, 257)
+SPLINE_ERROR_MM = 1e-5
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class RuledFit:
+    """A ruled fit over [0, length] x [0, width]: row i of `near` (at y = 0) and `far` (at y = width) is ruling i.
+
+    Deviations are along the surface's normal, of the sheet between the polyline rails, over a dense grid.
+    """
+
+    near: Floats  # (n, 2) x and z, mm, x rising; starts at or before 0, ends at or behind the length
+    far: Floats
+    max_mm: float
+    rms_mm: float
+    p95_mm: float
+    skew_mm: float  # largest |x far - x near|
+    curves: SheetFit  # the B-spline rails the polylines were taken from
+
+
+def fit_ruled(
+    height: Callable[[Floats, Floats], Floats], length_mm: float, width_mm: float, tolerance_mm: float
+) -> RuledFit:
+    """Return the ruled sheet closest to a height field, rulings running from y = 0 to y = width.
+
+    The rulings may lie askew in plan by up to 1.2 widths at either side. A sheet within the tolerance is not
+    guaranteed: compare `max_mm`.
+
+    Args:
+        height: z of x and y, called with float64 arrays of one shape; smooth.
+        length_mm: Extent along x, the travel; over 0.
+        width_mm: Extent along y, the wire; over 0.
+        tolerance_mm: Wanted largest normal deviation, over 0; below a tenth of it less skew counts for more than a
+            closer fit.
+
+    Raises:
+        GeometryError: An extent or the tolerance is not over 0, or `height` gives another shape or no finite number.
+
+    Example:
+        >>> def saddle(x, y):
+        ...     return 100.0 + 1e-4 * (x - 600.0) * (y - 500.0)
+        >>> fit = fit_ruled(saddle, 1200.0, 1000.0, 2.0)
+        >>> fit.max_mm < 1e-6
+        True
+    """
+    for value, name in ((length_mm, "length"), (width_mm, "width"), (tolerance_mm, "tolerance")):
+        if not (np.isfinite(value) and value > 0.0):
+            raise GeometryError(f"the {name} is {value:g} mm", name, "Give a number over 0.")
+    grid, field = _sampled(height, length_mm, width_mm)
+    patch = Patch(
+        heights_mm=grid,
+        low_x_mm=0.0,
+        high_x_mm=length_mm,
+        low_y_mm=0.0,
+        high_y_mm=width_mm,
+        width_mm=width_mm,
+        strip_low_y_mm=0.0,
+        strip_high_y_mm=width_mm,
+    )
+    curves = fit_patches([patch], tolerance_mm, n_controls=FINE_CONTROLS)[0]
+    near, far = polyline_rails(curves, 0.0, length_mm, FINE_SAG_MM, most_rulings=2001)
+    x, y = np.meshgrid(np.linspace(0.0, length_mm, 97), np.linspace(0.0, width_mm, 81), indexing="ij")
+    normals = field.normals(x.ravel(), y.ravel())[1]
+    samples = np.stack([x.ravel(), y.ravel(), _called(height, x, y).ravel()], axis=1)
+    deviations = face_deviation(near, far, width_mm, samples, normals)
+    largest, rms, p95 = deviation_measures(deviations, np.ones(len(samples)))
+    skew = float(np.abs(far[:, 0] - near[:, 0]).max())
+    return RuledFit(near=near, far=far, max_mm=largest, rms_mm=rms, p95_mm=p95, skew_mm=skew, curves=curves)
+
+
+def _called(height: Callable[[Floats, Floats], Floats], x: Floats, y: Floats) -> Floats:
+    """Return the heights at x and y, checked."""
+    values = np.asarray(height(x, y), dtype=np.float64)
+    if values.shape not in ((), x.shape):
+        raise GeometryError(
+            f"height gave an array of shape {values.shape} for points of shape {x.shape}",
+            "height",
+            "It must work on whole arrays, one height for each point.",
+        )
+    values = np.broadcast_to(values, x.shape)
+    if not np.isfinite(values).all():
+        where = int(np.argmin(np.isfinite(values.ravel())))
+        raise GeometryError(
+            f"height is not a finite number at x = {x.ravel()[where]:g} mm, y = {y.ravel()[where]:g} mm", "height"
+        )
+    return values
+
+
+def _sampled(
+    height: Callable[[Floats, Floats], Floats], length_mm: float, width_mm: float
+) -> tuple[Floats, HeightField]:
+    """Return a grid of heights fine enough that its spline meets the surface between the grid points too."""
+    n = GRIDS[0]
+    grid, field = _grid(height, length_mm, width_mm, n)
+    for finer in GRIDS[1:]:
+        middle_x = (np.arange(n - 1) + 0.5) * (length_mm / (n - 1))
+        middle_y = (np.arange(n - 1) + 0.5) * (width_mm / (n - 1))
+        x, y = np.meshgrid(middle_x, middle_y, indexing="ij")
+        if float(np.abs(field.values(x, y) - _called(height, x, y)).max()) <= SPLINE_ERROR_MM:
+            break
+        n = finer
+        grid, field = _grid(height, length_mm, width_mm, n)
+    return grid, field
+
+
+def _grid(
+    height: Callable[[Floats, Floats], Floats], length_mm: float, width_mm: float, n: int
+) -> tuple[Floats, HeightField]:
+    x, y = np.meshgrid(np.linspace(0.0, length_mm, n), np.linspace(0.0, width_mm, n), indexing="ij")
+    grid = _called(height, x, y)
+    return grid, height_field(grid, length_mm, width_mm)
+
+
+def fit_patches(patches: Sequence[Patch], tolerance_mm: float, n_controls: int = N_CONTROLS) -> tuple[SheetFit, ...]:
+    """Return for each patch the ruled sheet closest to it.
+
+    Both families of rulings and rulings of one constant skew are tried. The closest sheet is kept; of sheets that
+    differ by less than a tenth of the tolerance, the one with the least skew.
+
+    Args:
+        patches: Any number, of any sizes; those with equally many grid values are fitted together.
+        tolerance_mm: Wanted largest normal deviation.
+        n_controls: Control values of each rail.
+    """
+    results: list[SheetFit | None] = [None] * len(patches)
+    groups: dict[tuple[int, int], list[int]] = {}
+    for number, patch in enumerate(patches):
+        n_weights = 1 if patch.weights is None else len(patch.weights)
+        groups.setdefault((patch.heights_mm.shape[0], n_weights), []).append(number)
+    for numbers in groups.values():
+        for first in range(0, len(numbers), BATCH):
+            batch = numbers[first : first + BATCH]
+            target = make_target([patches[number] for number in batch])
+            fits = _fit_batch(target, tolerance_mm, n_controls)
+            for place, number in enumerate(batch):
+                results[number] = _with_plane(target, fits, place)
+    return tuple(fit for fit in results if fit is not None)
+
+
+def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
+    first, second, constant = best_paths(target)
+    best = refine(target, first)
+    is_worth = (second.rms_mm <= 2.0 * first.rms_mm + 0.1 * tolerance_mm) & ~_alike(first, second)
+    best = _rival(target, best, second, is_worth, tolerance_mm)
+    is_worth = (constant.rms_mm <= 2.0 * first.rms_mm + 0.1 * tolerance_mm) & (best.max_mm > 0.1 * tolerance_mm)
+    is_worth &= ~_alike(first, constant)
+    best = _rival(target, best, constant, is_worth, tolerance_mm)
+    straight = Paths(first.stations, np.zeros_like(first.skews), first.rms_mm)
+    best = _rival(target, best, straight, best.max_mm > tolerance_mm, tolerance_mm)
+    if n_controls == N_CONTROLS:
+        return best
+    return improve(target, recentre(target, best, n_controls), n_steps=20)
+
+
+def _alike(paths: Paths, others: Paths) -> Bools:
+    """Return which paths differ by less than a step of the skew table."""
+    reach = np.abs(paths.stations[:, -1] - paths.stations[:, 0])
+    result: Bools = np.abs(paths.skews - others.skews).max(axis=1) < 0.01 * reach
+    return result
+
+
+def _rival(target: Target, best: Fits, paths: Paths, is_worth: Bools, tolerance_mm: float) -> Fits:
+    """Return the better of the fits so far and those that start from other paths."""
+    index: Ints = np.flatnonzero(is_worth)
+    if not len(index):
+        return best
+    rivals = refine(target.take(index), paths.take(index))
+    old = best.take(index)
+    gain = old.max_mm - rivals.max_mm
+    less_skew = np.abs(rivals.controls[:, 0]).max(axis=1) < np.abs(old.controls[:, 0]).max(axis=1) - 1e-6
+    is_better = np.where(np.abs(gain) < 0.1 * tolerance_mm, less_skew, gain > 0.0)
+    winners = index[is_better]
+    merged = {name: getattr(best, name).copy() for name in Fits.__slots__}
+    for name, values in merged.items():
+        values[winners] = getattr(rivals, name)[is_better]
+    return Fits(**merged)
+
+
+def _with_plane(target: Target, fits: Fits, place: int) -> SheetFit:
+    """Return one fit of a batch with the plane taken off its target put back."""
+    level, slope_x, slope_y = target.planes[place]
+    controls = fits.controls[place].copy()
+    start, end = float(fits.start[place]), float(fits.end[place])
+    n_controls = controls.shape[1]
+    # A B-spline with the Greville abscissae as control values is the station itself.
+    knots = np.concatenate([np.zeros(3), np.linspace(0.0, 1.0, n_controls - 2), np.ones(3)])
+    greville = (knots[1:-3] + knots[2:-2] + knots[3:-1]) / 3.0
+    stations = start + (end - start) * greville
+    controls[1] += level + slope_x * (stations - controls[0] / 2.0)
+    controls[2] += level + slope_x * (stations + controls[0] / 2.0) + slope_y * float(target.width[place, 0, 0])
+    return SheetFit(controls, start, end, float(fits.max_mm[place]), float(fits.rms_mm[place]))

@@ -1,0 +1,79 @@
+"""From fitted B-spline rails to the polyline rails a sweep is made of."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from cutblock.base.arrays import Floats
+from cutblock.geometry.fit_refine import basis_at
+
+FEWEST_RULINGS = 33
+MOST_RULINGS = 1001
+TANGENT_SHARE = 0.3  # how much of a stray along a rail shows across it, at slopes of the trade
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class SheetFit:
+    """A ruled sheet in the frame of its billet: cubic B-splines on equal knots over stations from start to end.
+
+    Row 0 of `controls` is the skew x far - x near, rows 1 and 2 the elevations of the near and the far rail; station s
+    is the x at mid-wire. Beyond the ends the skew stays and the elevations go on with constant slope.
+    """
+
+    controls: Floats  # (3, c)
+    start_mm: float
+    end_mm: float
+    max_mm: float  # normal deviation on the fit's own nodes
+    rms_mm: float
+
+    @property
+    def skew_mm(self) -> float:
+        """Largest size of the skew among the control values."""
+        return float(np.abs(self.controls[0]).max())
+
+    def rails_at(self, stations: Floats) -> tuple[Floats, Floats]:
+        """Return near and far rail points (s, 2), x and z, at stations (s,)."""
+        length = self.end_mm - self.start_mm
+        u = (stations - self.start_mm) / length
+        inside = np.clip(u, 0.0, 1.0)
+        n_controls = self.controls.shape[1]
+        skew, near_z, far_z = self.controls @ basis_at(inside, n_controls).T
+        _, near_slope, far_slope = self.controls @ basis_at(inside, n_controls, 1).T
+        beyond = u - inside
+        near = np.stack([stations - skew / 2.0, near_z + near_slope * beyond], axis=1)
+        far = np.stack([stations + skew / 2.0, far_z + far_slope * beyond], axis=1)
+        return near, far
+
+
+def polyline_rails(
+    fit: SheetFit, low_x_mm: float, high_x_mm: float, sag_mm: float, most_rulings: int = MOST_RULINGS
+) -> tuple[Floats, Floats]:
+    """Return rails (n, 2) whose chords stay within `sag_mm` of the curves.
+
+    Both rails start at or before `low_x_mm` and end at or behind `high_x_mm`; coordinates are rounded to 1e-6 mm.
+
+    Args:
+        fit: The curves.
+        low_x_mm: No wire end starts behind this.
+        high_x_mm: No wire end ends before this.
+        sag_mm: Largest distance of a chord from its curve.
+        most_rulings: Between the fit's ends, whatever the sag.
+    """
+    n_rulings = _count(fit, sag_mm, most_rulings)
+    stations = np.linspace(fit.start_mm, fit.end_mm, n_rulings)
+    first = low_x_mm - abs(float(fit.controls[0, 0])) / 2.0
+    last = high_x_mm + abs(float(fit.controls[0, -1])) / 2.0
+    before = [first] if first < fit.start_mm - 1e-3 else []
+    behind = [last] if last > fit.end_mm + 1e-3 else []
+    near, far = fit.rails_at(np.concatenate([before, stations, behind]))
+    # Adding zero turns minus zero into zero, so that equal rails print alike.
+    return np.round(near, 6) + 0.0, np.round(far, 6) + 0.0
+
+
+def _count(fit: SheetFit, sag_mm: float, most_rulings: int) -> int:
+    """Return how many equal steps keep the sag: a chord of step h strays |curve''| h^2 / 8."""
+    u = np.linspace(0.0, 1.0, 129)
+    skew, near_z, far_z = np.abs(fit.controls @ basis_at(u, fit.controls.shape[1], 2).T)
+    bend = float(np.hypot(np.maximum(near_z, far_z), TANGENT_SHARE * skew / 2.0).max())
+    n_rulings = int(np.ceil(np.sqrt(bend / (8.0 * sag_mm)))) + 1
+    return max(FEWEST_RULINGS, min(n_rulings, most_rulings))
