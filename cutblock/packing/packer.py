@@ -1,0 +1,196 @@
+"""Packs boxes into stock blocks by through cuts, with what no packing could undercut."""
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+from typing import NamedTuple
+
+import numpy as np
+from numpy.typing import ArrayLike
+
+from cutblock.base.errors import InputError, StockError
+from cutblock.base.progress import Progress, part_of, silent
+from cutblock.packing.bound import Bound, lower_bound
+from cutblock.packing.compiled import plain
+from cutblock.packing.construct import Solution, construct
+from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task
+from cutblock.packing.tree import Part, all_parts, block_trees
+
+_AXIS_NAMES = "xyz"
+
+
+class Placement(NamedTuple):
+    """Where a billet lies: lower corner in the raw block's frame (skin included), mm."""
+
+    billet: int
+    block: int
+    stock_row: int
+    x: float
+    y: float
+    z: float
+    turned: bool  # a quarter about the vertical: the billet's length lies along the block's width
+
+
+class ThroughCut(NamedTuple):
+    """One through cut: the kerf's slab begins at `at` on `axis` of the part at x, y, z; mm, raw block's frame."""
+
+    axis: str
+    at: float
+    x: float
+    y: float
+    z: float
+    length: float
+    width: float
+    height: float
+
+
+class Leftover(NamedTuple):
+    """A box left over when all is cut; mm, raw block's frame."""
+
+    block: int
+    x: float
+    y: float
+    z: float
+    length: float
+    width: float
+    height: float
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Packing:
+    """Billets packed into blocks.
+
+    Attributes:
+        n_blocks: Blocks used.
+        cost: Their price; None where a stock row has none.
+        lower_bound: Blocks no packing can go under, whatever the way of cutting.
+        cost_lower_bound: Money no packing can go under; None without prices.
+        bound_proof: What proves the bound.
+        placements: One row for each billet, in the order given.
+        stock_rows: The stock row of each block.
+        cuts: For each block its through cuts, in an order that can be made, after the skin trims.
+        leftovers: Boxes left over, block by block.
+        moves: Search moves made; the same number with the same seed gives the same packing.
+        trees: For each block the tree of its cuts.
+    """
+
+    n_blocks: int
+    cost: float | None
+    lower_bound: int
+    cost_lower_bound: float | None
+    bound_proof: str
+    placements: tuple[Placement, ...]
+    stock_rows: tuple[int, ...]
+    cuts: tuple[tuple[ThroughCut, ...], ...]
+    leftovers: tuple[Leftover, ...]
+    moves: int
+    trees: tuple[Part, ...]
+
+
+def pack(
+    sizes_mm: ArrayLike,
+    stock: Iterable[tuple[float, float, float, int | None, float | None]],
+    kerf_mm: float,
+    skin_mm: ArrayLike = 0.0,
+    may_turn: ArrayLike = True,
+    seed: int = 0,
+    moves: int | None = None,
+    seconds: float | None = None,
+    progress: Progress | None = None,
+) -> Packing:
+    """Pack boxes into blocks: least money first, then fewest blocks; every layout can be made by through cuts.
+
+    Args:
+        sizes_mm: (n, 3) length, width, height of the billets.
+        stock: Rows length, width, height, count (None: as many as needed) and price (may be None).
+        kerf_mm: What the wire melts between neighbours.
+        skin_mm: Trimmed off every face of a block before use; one for all or one for each stock row.
+        may_turn: Whether billets may be turned a quarter about the vertical; one flag or n.
+        seed: Of the search.
+        moves: Search moves; None: a fixed number that depends on the billets only.
+        seconds: Wall limit of the search instead of a number of moves.
+        progress: Told how far it is; may raise Cancelled.
+
+    Returns:
+        The packing; the same input, seed and moves give the same packing.
+
+    Raises:
+        InputError: A size, count, price, kerf or skin is not a number in range.
+        StockError: A billet fits no block, the blocks do not suffice, or the kerf is wider than a billet.
+
+    Example:
+        >>> packing = pack([(600, 400, 300)] * 8, [(1215, 1000, 1000, None, 90)], kerf_mm=2, skin_mm=5)
+        >>> packing.n_blocks, packing.lower_bound
+        (1, 1)
+    """
+    rows = [_stock_row(row) for row in stock]
+    task = make_task(sizes_mm, rows, kerf_mm, skin_mm, may_turn)
+    return pack_task(task, seed, moves, seconds, progress or silent)
+
+
+def pack_task(task: Task, seed: int, moves: int | None, seconds: float | None, progress: Progress) -> Packing:
+    """Pack a checked task; arguments and errors as `pack`."""
+    _check_effort(moves, seconds)
+    progress(0.0, "Finding what no packing can undercut")
+    bound = lower_bound(task)
+    solution, n_moves = _solve(task, bound, seed, moves, seconds, part_of(progress, 0.1, 1.0))
+    return _packing(task, solution, bound, n_moves)
+
+
+def _solve(
+    task: Task, bound: Bound, seed: int, moves: int | None, seconds: float | None, progress: Progress
+) -> tuple[Solution, int]:
+    target = (float(bound.blocks) if bound.cost is None else bound.cost, bound.blocks)
+    solution = construct(task, plain(), target, progress)
+    if solution.n_missing:
+        raise StockError("the blocks do not suffice", "stock")
+    return solution, 0
+
+
+def _check_effort(moves: int | None, seconds: float | None) -> None:
+    if moves is not None and (int(moves) != moves or moves < 0):
+        raise InputError(f"the number of moves is {moves}", "moves", "Give a whole number, 0 or more.")
+    if seconds is not None and not (np.isfinite(seconds) and seconds >= 0.0):
+        raise InputError(f"the time for the search is {seconds:g} s", "seconds", "Give a number of seconds, 0 or more.")
+
+
+def _stock_row(row: Iterable[float | None]) -> tuple[float, float, float, int | None, float | None]:
+    length, width, height, count, price = row
+    if length is None or width is None or height is None:
+        raise InputError("a block size is missing", "stock", "Give length, width, height, count and price.")
+    return length, width, height, None if count is None else int(count), price
+
+
+def _packing(task: Task, solution: Solution, bound: Bound, n_moves: int) -> Packing:
+    trees = block_trees(task, solution)
+    placements: list[Placement] = []
+    cuts: list[tuple[ThroughCut, ...]] = []
+    leftovers: list[Leftover] = []
+    for block, (row, root) in enumerate(zip(solution.kinds.tolist(), trees, strict=True)):
+        parts = all_parts(root)
+        for part in parts:
+            if part.billet >= 0:
+                placements.append(Placement(part.billet, block, row, *_mm(part.at), part.is_turned))
+            elif part.axis < 0:
+                leftovers.append(Leftover(block, *_mm(part.at), *_mm(part.size)))
+        cuts.append(tuple(_through_cut(part) for part in parts if part.axis >= 0))
+    return Packing(
+        n_blocks=len(trees),
+        cost=None if task.prices is None else float(task.prices[solution.kinds].sum()),
+        lower_bound=bound.blocks,
+        cost_lower_bound=bound.cost,
+        bound_proof=bound.proof,
+        placements=tuple(sorted(placements)),
+        stock_rows=tuple(solution.kinds.tolist()),
+        cuts=tuple(cuts),
+        leftovers=tuple(leftovers),
+        moves=n_moves,
+        trees=tuple(trees),
+    )
+
+
+def _through_cut(part: Part) -> ThroughCut:
+    return ThroughCut(_AXIS_NAMES[part.axis], part.cut_at / STEPS_PER_MM, *_mm(part.at), *_mm(part.size))
+
+
+def _mm(steps: tuple[int, int, int]) -> tuple[float, float, float]:
+    return steps[0] / STEPS_PER_MM, steps[1] / STEPS_PER_MM, steps[2] / STEPS_PER_MM

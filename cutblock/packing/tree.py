@@ -1,0 +1,103 @@
+"""The tree of through cuts a packing means: which part is cut where, what falls off, where each billet ends."""
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from cutblock.packing.construct import Solution
+from cutblock.packing.kernels import ORDERS
+from cutblock.packing.lattice import Task
+
+Steps3 = tuple[int, int, int]
+
+
+@dataclass(slots=True, eq=False)
+class Part:
+    """A box of foam on the way from block to billets; whole steps of 0.01 mm in the raw block's frame.
+
+    Attributes:
+        at: Lower corner.
+        size: Sizes, without kerf.
+        axis: Axis it is cut across, or -1 where it is not cut any more.
+        cut_at: Where the kerf's slab begins on that axis.
+        low: What lies below the cut; always there when it is cut.
+        high: What lies above; None where the kerf leaves nothing of it.
+        billet: The billet it is, or -1.
+        is_turned: Whether the billet's length lies along the block's width.
+    """
+
+    at: Steps3
+    size: Steps3
+    axis: int = -1
+    cut_at: int = 0
+    low: "Part | None" = None
+    high: "Part | None" = None
+    billet: int = -1
+    is_turned: bool = False
+
+    @property
+    def children(self) -> list["Part"]:
+        """What is left of it after its cut, low before high."""
+        return [part for part in (self.low, self.high) if part is not None]
+
+
+def block_trees(task: Task, solution: Solution) -> list[Part]:
+    """Return the tree of cuts of every block, from its usable box down."""
+    block, _, slot, turned, order = solution.layout.tolist()
+    sequences: list[list[int]] = [[] for _ in solution.kinds]
+    for cell in np.argsort(solution.layout[1], kind="stable").tolist():
+        sequences[block[cell]].append(cell)
+    cells = (task.cells - task.kerf).tolist()
+    roots = []
+    for kind, members in zip(solution.kinds.tolist(), sequences, strict=True):
+        skin = int(task.skins[kind])
+        x, y, z = (task.kinds[kind] - task.kerf).tolist()
+        root = Part((skin, skin, skin), (x, y, z))
+        slots = {0: root}
+        for place, cell in enumerate(members):
+            x, y, z = cells[cell]
+            size = (y, x, z) if turned[cell] else (x, y, z)
+            rests = _cut_out(slots.pop(slot[cell]), size, ORDERS[order[cell]], task.kerf)
+            slots.update({3 * place + 1 + i: rest for i, rest in enumerate(rests[:3]) if rest is not None})
+            billet = rests[3]
+            if billet is None:
+                raise AssertionError("a billet is never cut away")
+            billet.billet = cell
+            billet.is_turned = bool(turned[cell]) != bool(task.is_swapped[cell])
+        roots.append(root)
+    return roots
+
+
+def _cut_out(part: Part, size: Steps3, order: Steps3, kerf: int) -> list[Part | None]:
+    """Cut a box out of the lower corner of a part; return the three rests in order, then the box."""
+    rests: list[Part | None] = []
+    for axis in order:
+        gap = part.size[axis] - size[axis]
+        if gap == 0:
+            rests.append(None)
+            continue
+        part.axis, part.cut_at = axis, part.at[axis] + size[axis]
+        part.low = Part(part.at, _with(part.size, axis, size[axis]))
+        if gap > kerf:
+            at = _with(part.at, axis, part.cut_at + kerf)
+            part.high = Part(at, _with(part.size, axis, gap - kerf))
+        rests.append(part.high)
+        part = part.low
+    rests.append(part)
+    return rests
+
+
+def _with(values: Steps3, axis: int, value: int) -> Steps3:
+    changed = list(values)
+    changed[axis] = value
+    return changed[0], changed[1], changed[2]
+
+
+def all_parts(root: Part) -> list[Part]:
+    """Return every part of a tree, a part before what is cut from it, low before high."""
+    found, waiting = [], [root]
+    while waiting:
+        part = waiting.pop()
+        found.append(part)
+        waiting.extend(reversed(part.children))
+    return found
