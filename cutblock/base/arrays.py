@@ -32,8 +32,14 @@ def floats(values: ArrayLike, shape: tuple[int | None, ...], name: str) -> Float
 
 
 def frozen_floats(values: ArrayLike, shape: tuple[int | None, ...], name: str) -> Floats:
-    """Return a read-only copy of `values` as finite float64 of the given shape; raises like `floats`."""
-    array: Floats = floats(values, shape, name).copy()
+    """Return a read-only copy of `values` as finite float64 of the given shape; raises like `floats`.
+
+    An array that came out of here before is returned as it is, so that records made of one another share it.
+    """
+    array = floats(values, shape, name)
+    if array is values and array.base is None and not array.flags.writeable:
+        return array
+    array = array.copy()
     array.flags.writeable = False
     return array
 

@@ -1,5 +1,6 @@
 """Everything that turns the inside units (mm, s, kg, rad, W, degC) into what people read, and back."""
 
+from collections.abc import Iterable
 from enum import StrEnum
 
 from cutblock.base.errors import InputError
@@ -40,6 +41,26 @@ def mm_per(unit: str) -> float:
     except ValueError:
         known = ", ".join(unit.value for unit in LengthUnit)
         raise InputError(f'"{unit}" is no unit of length', "units", f"Use one of {known}.") from None
+
+
+_DECIMALS = {
+    LengthUnit.MM: 0,
+    LengthUnit.CM: 1,
+    LengthUnit.M: 3,
+    LengthUnit.INCH: 2,
+    LengthUnit.FOOT: 3,
+}
+
+
+def length_text(length_mm: float, unit: str, extra_decimals: int = 0) -> str:
+    """Return a length in the unit people read, to about a mm (or finer by `extra_decimals`), such as "1.2 m"."""
+    value = round(length_mm / mm_per(unit), _DECIMALS[LengthUnit(unit)] + extra_decimals) + 0.0
+    return f"{value:.12g} {unit}"
+
+
+def place_text(point_mm: Iterable[float], unit: str) -> str:
+    """Return a point of the form in the unit people read, such as "x 1.2 m, y 0.4 m, z 0.03 m"."""
+    return ", ".join(f"{axis} {length_text(float(value), unit)}" for axis, value in zip("xyz", point_mm, strict=False))
 
 
 def litres(volume_mm3: float) -> float:
