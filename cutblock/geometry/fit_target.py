@@ -8,7 +8,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from cutblock.base.arrays import Floats
+from cutblock.base.arrays import Floats, Ints
 from cutblock.geometry.heights import spline_basis, spline_matrix
 
 N_NODES = 9
@@ -70,7 +70,7 @@ class Target:
         """Number of grid values along x."""
         return self.rows.shape[2] - 2
 
-    def take(self, index: Floats) -> "Target":
+    def take(self, index: Ints) -> "Target":
         """Return the patches of the given indices."""
         return Target(*(getattr(self, name)[index] for name in self.__slots__))
 

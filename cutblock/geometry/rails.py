@@ -6,6 +6,7 @@ import numpy as np
 
 from cutblock.base.arrays import Floats
 from cutblock.geometry.fit_refine import basis_at
+from cutblock.geometry.sheet import sheet_heights
 
 FEWEST_RULINGS = 33
 MOST_RULINGS = 1001
@@ -77,3 +78,30 @@ def _count(fit: SheetFit, sag_mm: float, most_rulings: int) -> int:
     bend = float(np.hypot(np.maximum(near_z, far_z), TANGENT_SHARE * skew / 2.0).max())
     n_rulings = int(np.ceil(np.sqrt(bend / (8.0 * sag_mm)))) + 1
     return max(FEWEST_RULINGS, min(n_rulings, most_rulings))
+
+
+def sheet_range(near: Floats, far: Floats, width_mm: float, length_mm: float) -> tuple[float, float]:
+    """Return the lowest and the highest point of the sheet over the billet's plan [0, length] x [0, width].
+
+    Heights are linear along each ruling, so they are looked for where rulings end or pass x = 0 and x = length, and
+    at the four corners.
+
+    Args:
+        near: (n, 2) x and z at y = 0, x rising strictly, from before the billet to behind it.
+        far: (n, 2) likewise at y = `width_mm`.
+        width_mm: Along the wire.
+        length_mm: Along the travel.
+    """
+    skew = far[:, 0] - near[:, 0]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        crossings = np.stack([-near[:, 0] / skew, (length_mm - near[:, 0]) / skew])
+    is_askew = np.abs(skew) > 1e-9
+    first = np.where(is_askew, crossings.min(axis=0), 0.0).clip(0.0, 1.0)
+    last = np.where(is_askew, crossings.max(axis=0), 1.0).clip(0.0, 1.0)
+    middle = near[:, 0] + 0.5 * (first + last) * skew
+    is_over = (first <= last) & (middle >= -1e-9) & (middle <= length_mm + 1e-9)
+    rise = far[:, 1] - near[:, 1]
+    ends = np.concatenate([(near[:, 1] + first * rise)[is_over], (near[:, 1] + last * rise)[is_over]])
+    x, y = np.array([0.0, length_mm, 0.0, length_mm]), np.array([0.0, 0.0, width_mm, width_mm])
+    heights = np.concatenate([ends, sheet_heights(near, far, width_mm, x, y)])
+    return float(heights.min()), float(heights.max())

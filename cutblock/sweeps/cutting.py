@@ -1,0 +1,109 @@
+"""Ruled sheets for strips of panels: fitted, laid out as rails, measured as finished faces."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from cutblock.base.arrays import Floats
+from cutblock.geometry.deviation import deviation_measures, face_deviation
+from cutblock.geometry.fit import fit_patches
+from cutblock.geometry.rails import polyline_rails
+from cutblock.sweeps.lie import Lie, Strip
+
+SAG_MM = 0.002
+CLEAR_MM = 10.0  # the wire starts and ends at least this and the kerf away from the billet
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CutStrip:
+    """A strip with the rails that cut it, z still the panel's, and how well the finished face fits."""
+
+    strip: Strip
+    near: Floats
+    far: Floats
+    max_mm: float
+    rms_mm: float
+    p95_mm: float
+    fit_max_mm: float
+    fit_rms_mm: float
+
+    @property
+    def skew_mm(self) -> float:
+        """Largest size of x far - x near."""
+        return float(np.abs(self.far[:, 0] - self.near[:, 0]).max())
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class CutPanel:
+    """All strips of a panel in one wire direction."""
+
+    strips: tuple[CutStrip, ...]
+
+    @property
+    def max_mm(self) -> float:
+        """Largest deviation of all strips."""
+        return max(strip.max_mm for strip in self.strips)
+
+    @property
+    def skew_mm(self) -> float:
+        """Largest skew of all strips."""
+        return max(strip.skew_mm for strip in self.strips)
+
+    @property
+    def wire_along(self) -> str:
+        """The panel axis the wire lies along."""
+        return self.strips[0].strip.lie.wire_along
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Aim:
+    """What every sheet of a job is fitted and measured for."""
+
+    tolerance_mm: float  # of the finished face
+    kerf_mm: float
+    face_offset_mm: float  # of the lower half's finished face above the centreline
+    kerf_error_mm: float  # what kerf and coat alone leave between finished face and form
+
+    @property
+    def room_mm(self) -> float:
+        """What kerf and coat leave of the tolerance for the ruled fit."""
+        return self.tolerance_mm - abs(self.kerf_error_mm)
+
+
+def cut_panels(lies: Sequence[tuple[Lie, int]], aim: Aim) -> list[CutPanel]:
+    """Return every given lie cut in the given number of strips, whether it meets the tolerance or not."""
+    strips = [Strip(lie, number, count) for lie, count in lies for number in range(1, count + 1)]
+    fits = fit_patches([strip.patch() for strip in strips], aim.room_mm)
+    cuts = []
+    for strip, fit in zip(strips, fits, strict=True):
+        away = CLEAR_MM + aim.kerf_mm
+        near, far = polyline_rails(fit, -away, strip.lie.size_mm[0] + away, SAG_MM)
+        cuts.append(measured(strip, near, far, aim))
+    panels, first = [], 0
+    for _, count in lies:
+        panels.append(CutPanel(tuple(cuts[first : first + count])))
+        first += count
+    return panels
+
+
+def measured(strip: Strip, near: Floats, far: Floats, aim: Aim) -> CutStrip:
+    """Return a strip's rails with the deviations of its finished face."""
+    samples, normals, areas = strip.samples()
+    if len(samples):
+        deviations = face_deviation(near, far, strip.width_mm, samples, normals, aim.face_offset_mm)
+        face = deviation_measures(deviations, areas)
+        # The finished face and the surface the centreline was fitted to are parallel to sheet and form.
+        fit = deviation_measures(deviations - aim.kerf_error_mm, areas)
+    else:
+        face = fit = (0.0, 0.0, 0.0)
+    return CutStrip(
+        strip=strip,
+        near=near,
+        far=far,
+        max_mm=face[0],
+        rms_mm=face[1],
+        p95_mm=face[2],
+        fit_max_mm=fit[0],
+        fit_rms_mm=fit[1],
+    )

@@ -1,0 +1,158 @@
+"""Every panel of a job fitted with the sweeps that cut it."""
+
+from collections.abc import Sequence
+
+import numpy as np
+
+from cutblock.base.errors import NotCuttable
+from cutblock.base.progress import Progress, silent
+from cutblock.geometry.heights import is_domed, offset_heights
+from cutblock.geometry.outline import is_inside
+from cutblock.records.job import Job
+from cutblock.records.panel import Panel
+from cutblock.records.plan import Finding
+from cutblock.records.shop import Conditions
+from cutblock.records.sweep import Sweep
+from cutblock.records.words import Severity
+from cutblock.sweeps.build import sweeps_of
+from cutblock.sweeps.checks import check_sweep
+from cutblock.sweeps.cutting import Aim
+from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm
+from cutblock.sweeps.lie import Lie, lie_of
+from cutblock.sweeps.strips import MOST_STRIPS, NARROWEST_MM, Choice, choose_cuts
+
+BATCH = 16
+
+
+def fit_panels(
+    job: Job, panels: Sequence[Panel], conditions: Conditions, progress: Progress = silent
+) -> tuple[tuple[Sweep, ...], tuple[Finding, ...]]:
+    """Return the sweeps that cut every panel within the job's tolerance, each serving one panel with its lower half.
+
+    Panels alike in shape are fitted once. A panel one sweep cannot cut is divided into strips across the wire; one
+    that strips cannot cut either gets no sweep but an error finding.
+
+    Args:
+        job: Tolerance, kerf, coat, favour, wall and margin.
+        panels: In the order the sweeps shall have.
+        conditions: The kerf at the planned speed.
+        progress: Called after every few panels.
+
+    Raises:
+        NotCuttable: No panel at all can be cut.
+    """
+    aim = _aim(job, conditions)
+    alike = _alike(panels)
+    firsts = list(dict.fromkeys(alike))
+    choices: dict[int, Choice] = {}
+    for start in range(0, len(firsts), BATCH):
+        progress(start / len(firsts), f"fitting panel {panels[firsts[start]].id}")
+        batch = firsts[start : start + BATCH]
+        lies = [_lies(job, panels[number], conditions) for number in batch]
+        choices.update(zip(batch, choose_cuts(lies, aim), strict=True))
+    sweeps: list[Sweep] = []
+    findings: list[Finding] = []
+    for panel, first in zip(panels, alike, strict=True):
+        choice = choices[first]
+        if choice.is_within:
+            made = sweeps_of(job.id, panel.id, choice.panel, conditions.kerf_mm, job.wall_mm)
+            sweeps += made
+            findings += [finding for sweep in made for finding in check_sweep(sweep)]
+        else:
+            findings.append(_not_cuttable(panel, choice, aim))
+    if panels and not sweeps:
+        worst = findings[0]
+        raise NotCuttable(f"no panel can be cut; the first: {worst.text}", worst.subject)
+    findings += _domed_faces(panels, alike, choices)
+    progress(1.0, "panels fitted")
+    return tuple(sweeps), tuple(findings)
+
+
+def _aim(job: Job, conditions: Conditions) -> Aim:
+    kerf = conditions.kerf_mm
+    aim = Aim(
+        tolerance_mm=job.tolerance_mm,
+        kerf_mm=kerf,
+        face_offset_mm=face_offset_mm(kerf, job.coat_mm),
+        kerf_error_mm=kerf_error_mm(job.favour, kerf, job.coat_mm),
+    )
+    if aim.room_mm <= 0.0:
+        raise NotCuttable(
+            f"a kerf of {kerf:.2f} mm with a coat of {job.coat_mm:.2f} mm alone leaves the mould face "
+            f"{abs(aim.kerf_error_mm):.2f} mm off the form, the whole tolerance of {job.tolerance_mm:.2f} mm",
+            f"job {job.id}, kerf",
+            f'Set favour = "lower", or a coat of {kerf / 2.0:.2f} mm (half the kerf), or a wider tolerance.',
+        )
+    return aim
+
+
+def _lies(job: Job, panel: Panel, conditions: Conditions) -> tuple[Lie, Lie]:
+    offset = centreline_offset_mm(job.favour, conditions.kerf_mm, job.coat_mm)
+    heights = panel.heights_mm
+    if offset:
+        heights = offset_heights(heights, panel.length_mm, panel.width_mm, offset)
+    return lie_of(panel, heights, "y", job.margin_mm), lie_of(panel, heights, "x", job.margin_mm)
+
+
+def _alike(panels: Sequence[Panel]) -> list[int]:
+    """Return for each panel the index of the first one of the same shape (to 1e-9 mm), itself if there is none."""
+    known: dict[bytes, int] = {}
+    return [known.setdefault(_shape_key(panel), number) for number, panel in enumerate(panels)]
+
+
+def _shape_key(panel: Panel) -> bytes:
+    values = [panel.heights_mm, panel.samples_mm, panel.normals, panel.areas_mm2, *panel.outline]
+    sizes = np.array([panel.length_mm, panel.width_mm, *(v.size for v in values), panel.is_rectangle])
+    digits = [(np.round(v.ravel() * 1e9) + 0.0).tobytes() for v in (sizes, *values)]
+    return b"".join(digits)
+
+
+def _not_cuttable(panel: Panel, choice: Choice, aim: Aim) -> Finding:
+    n_tried = len(choice.panel.strips)
+    return Finding(
+        severity=Severity.ERROR,
+        code="not-cuttable",
+        subject=panel.id,
+        text=f"Panel {panel.id} cannot be cut within the tolerance of {aim.tolerance_mm:.2f} mm: in {n_tried} "
+        f"strip{'s' if n_tried > 1 else ''} (at most {MOST_STRIPS}, none under {NARROWEST_MM:g} mm wide) "
+        f"it still strays {choice.panel.max_mm:.2f} mm; about {choice.n_needed} strips would be needed. "
+        "Make its cells smaller or the tolerance wider.",
+    )
+
+
+def _domed_faces(panels: Sequence[Panel], alike: Sequence[int], choices: dict[int, Choice]) -> list[Finding]:
+    """Return a finding for each face with panels in strips: how much of it is domed, which no straight wire follows."""
+    findings = []
+    shares: dict[int, tuple[float, float]] = {}
+    for face in dict.fromkeys(panel.face for panel in panels):
+        members = [number for number, panel in enumerate(panels) if panel.face == face]
+        in_strips = [n for n in members if choices[alike[n]].is_within and len(choices[alike[n]].panel.strips) > 1]
+        if not in_strips:
+            continue
+        for number in members:
+            if alike[number] not in shares:
+                shares[alike[number]] = _domed_area(panels[alike[number]])
+        domed = sum(shares[alike[number]][0] for number in members)
+        whole = sum(shares[alike[number]][1] for number in members)
+        findings.append(
+            Finding(
+                severity=Severity.INFO,
+                code="domed-area",
+                subject=face,
+                text=f"{100.0 * domed / whole:.0f} % of face {face} is domed (curved alike in all directions), which a "
+                f"straight wire only follows in strips: {len(in_strips)} of {len(members)} panels are cut in strips.",
+            )
+        )
+    return findings
+
+
+def _domed_area(panel: Panel) -> tuple[float, float]:
+    """Return how much of a panel is domed, and the whole, counted in grid points inside the outline."""
+    domed = is_domed(panel.heights_mm, panel.length_mm, panel.width_mm)
+    counts = np.full(domed.shape, 1.0 / domed.size) * panel.length_mm * panel.width_mm
+    if not panel.is_rectangle:
+        n_x, n_y = domed.shape
+        x, y = np.meshgrid(np.linspace(0.0, panel.length_mm, n_x), np.linspace(0.0, panel.width_mm, n_y), indexing="ij")
+        points = np.stack([x.ravel(), y.ravel()], axis=1)
+        counts = counts * is_inside(panel.outline, points).reshape(domed.shape)
+    return float((counts * domed).sum()), max(float(counts.sum()), 1e-12)

@@ -1,0 +1,111 @@
+"""How few strips, in which wire direction, cut a panel within the tolerance."""
+
+from collections.abc import Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from cutblock.geometry.heights import height_field, is_domed
+from cutblock.sweeps.cutting import Aim, CutPanel, cut_panels
+from cutblock.sweeps.lie import Lie
+
+MOST_STRIPS = 12
+NARROWEST_MM = 60.0
+SAME_SKEW_MM = 1.0
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class Choice:
+    """The best way found to cut a panel; within the tolerance or, where that is out of reach, the closest."""
+
+    panel: CutPanel
+    is_within: bool
+    n_needed: int  # strips it would take
+
+
+@dataclass(slots=True, eq=False)
+class _Search:
+    """One wire direction of one panel: cut in more strips until it fits, then in fewer while it still does."""
+
+    lie: Lie
+    aim: Aim
+    n_next: int = 1
+    n_failed: int = 0  # this many and fewer are known not to do
+    best: CutPanel | None = None  # fewest strips that do
+    last: CutPanel | None = None
+    limit: int = field(init=False)
+
+    def __post_init__(self) -> None:
+        self.limit = max(1, min(MOST_STRIPS, int(self.lie.extent_mm[1] // NARROWEST_MM)))
+
+    @property
+    def is_done(self) -> bool:
+        if self.best is not None:
+            return len(self.best.strips) <= self.n_failed + 1
+        return self.n_failed >= self.limit
+
+    def take(self, cut: CutPanel) -> None:
+        n_strips = len(cut.strips)
+        self.last = cut
+        if cut.max_mm <= self.aim.tolerance_mm:
+            self.best = cut
+            self.n_next = n_strips - 1
+        else:
+            self.n_failed = n_strips
+            self.n_next = max(n_strips + 1, min(self._predicted(), self.limit) if n_strips == 1 else 0)
+            self.n_next = min(self.n_next, self.limit)
+
+    def _predicted(self) -> int:
+        """Return ceil(w sqrt(kappa / (16 tolerance))): a ruled strip across a dome strays kappa w^2 / 16 at best."""
+        length, width = self.lie.extent_mm
+        field = height_field(self.lie.heights_mm, length, width)
+        bend = np.abs(field.grid(0, 2)) / (1.0 + field.grid(0, 1) ** 2) ** 1.5
+        domed = bend[is_domed(self.lie.heights_mm, length, width)]
+        if not domed.size:
+            return 2
+        return int(np.ceil(width * np.sqrt(float(domed.max()) / (16.0 * self.aim.room_mm)) - 1e-9))
+
+    def n_needed(self) -> int:
+        """Return the strips it would take, from the second-order law where the limit was met."""
+        if self.best is not None or self.last is None:
+            return len(self.best.strips) if self.best is not None else 1
+        excess = max(self.last.max_mm - abs(self.aim.kerf_error_mm), 0.0) / self.aim.room_mm
+        return max(self.limit + 1, int(np.ceil(len(self.last.strips) * np.sqrt(excess))))
+
+
+def choose_cuts(lies: Sequence[tuple[Lie, Lie]], aim: Aim) -> list[Choice]:
+    """Return for each panel, given with the wire along its y and along its x, the best way to cut it.
+
+    Fewest strips first, then the least deviation, then, where two differ by less than a tenth of the tolerance, the
+    least skew, then the wire along y.
+    """
+    searches = [tuple(_Search(lie, aim) for lie in pair) for pair in lies]
+    while True:
+        open_searches = [search for pair in searches for search in pair if not _is_settled(search, pair)]
+        if not open_searches:
+            break
+        cuts = cut_panels([(search.lie, search.n_next) for search in open_searches], aim)
+        for search, cut in zip(open_searches, cuts, strict=True):
+            search.take(cut)
+    return [_chosen(pair, aim) for pair in searches]
+
+
+def _is_settled(search: _Search, pair: tuple[_Search, ...]) -> bool:
+    """Tell whether a search has ended, or cannot beat the other direction any more."""
+    rivals = [len(other.best.strips) for other in pair if other is not search and other.best is not None]
+    return search.is_done or (bool(rivals) and search.n_failed >= min(rivals))
+
+
+def _chosen(pair: tuple[_Search, ...], aim: Aim) -> Choice:
+    within = [search.best for search in pair if search.best is not None]
+    n_needed = min(search.n_needed() for search in pair)
+    if not within:
+        closest = min((search.last for search in pair if search.last is not None), key=lambda cut: cut.max_mm)
+        return Choice(closest, is_within=False, n_needed=n_needed)
+    fewest = min(len(cut.strips) for cut in within)
+    best, *rest = [cut for cut in within if len(cut.strips) == fewest]
+    for other in rest:
+        gain = best.max_mm - other.max_mm
+        is_squarer = other.skew_mm < best.skew_mm - SAME_SKEW_MM
+        best = other if (gain > 0.0 if abs(gain) >= 0.1 * aim.tolerance_mm else is_squarer) else best
+    return Choice(best, is_within=True, n_needed=fewest)
