@@ -6,36 +6,42 @@ from functools import cache
 from types import ModuleType
 from typing import Any
 
-import numpy as np
-
 from cutblock.packing import kernels
+from cutblock.packing.sequences import Make
 
 # In the order they call each other; numba looks a called function up by its name when the caller is compiled.
-_COMPILED = ("find_place", "choose_order", "set_rests", "set_least", "open_block", "put", "fill")
+_COMPILED = (
+    "find_place",
+    "choose_order",
+    "set_rests",
+    "set_least",
+    "open_block",
+    "put",
+    "fill",
+    "draw",
+    "choose_blocks",
+    "take_out",
+    "disturb",
+    "offer_kinds",
+    "weigh",
+    "keep",
+    "is_kept",
+    "one",
+    "search",
+)
 _COPY = "cutblock.packing.kernels_compiled"
 
 
-class Inner:
+class Inner(Make):
     """The inner loops with the kind of sequence they take.
 
     Attributes:
         loops: The module of `kernels`, or its compiled copy.
-        is_compiled: Whether the sequences are arrays.
     """
 
     def __init__(self, loops: ModuleType, is_compiled: bool) -> None:
+        super().__init__(is_compiled)
         self.loops: Any = loops
-        self.is_compiled = is_compiled
-
-    def integers(self, values: Any) -> Any:  # noqa: ANN401 - a list or an array
-        """Return whole numbers as a sequence of this kind."""
-        array = np.array(values, dtype=np.int64)
-        return array if self.is_compiled else array.tolist()
-
-    def reals(self, values: Any) -> Any:  # noqa: ANN401 - a list or an array
-        """Return numbers as a sequence of this kind."""
-        array = np.array(values, dtype=np.float64)
-        return array if self.is_compiled else array.tolist()
 
 
 def plain() -> Inner:

@@ -8,8 +8,9 @@ import numpy as np
 from cutblock.base.arrays import Ints
 from cutblock.base.progress import Progress
 from cutblock.packing.compiled import Inner
-from cutblock.packing.kernels import N_MODES, N_RULES, Cells, Desk, Kinds, Layout
+from cutblock.packing.kernels import N_MODES, N_RULES
 from cutblock.packing.lattice import Task
+from cutblock.packing.sequences import cells_of, kinds_of, new_desk, new_layout
 
 _PLACINGS = 12_000  # billets placed by all rules together; about half a second without a compiler
 _LEAST_RULES = 3
@@ -82,29 +83,6 @@ def construct(task: Task, inner: Inner, target: tuple[float, int], progress: Pro
     if best is None:
         return evaluate(task, np.zeros((5, 0), dtype=np.int64), np.zeros(0, dtype=np.int64))
     return best
-
-
-def cells_of(task: Task, inner: Inner) -> Cells:
-    """Return the billets as the inner loops take them."""
-    x, y, z = (inner.integers(task.cells[:, axis]) for axis in range(3))
-    return Cells(x, y, z, inner.integers(task.may_turn))
-
-
-def kinds_of(task: Task, inner: Inner) -> Kinds:
-    """Return the kinds of block as the inner loops take them."""
-    return Kinds(*(inner.integers(task.kinds[:, axis]) for axis in range(3)))
-
-
-def new_layout(n_cells: int, inner: Inner) -> Layout:
-    """Return a layout to be written."""
-    return Layout(*(inner.integers(np.full(n_cells, -1)) for _ in range(5)))
-
-
-def new_desk(n_cells: int, inner: Inner) -> Desk:
-    """Return room to work in for so many billets."""
-    x, y, z, block, slot = (inner.integers(np.zeros(3 * n_cells + 4)) for _ in range(5))
-    kind, n_placed = (inner.integers(np.zeros(n_cells + 1)) for _ in range(2))
-    return Desk(x, y, z, block, slot, kind, n_placed, inner.integers(np.zeros(9)), inner.integers(np.zeros(3)))
 
 
 def sort_keys(task: Task) -> list[Ints]:

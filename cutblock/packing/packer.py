@@ -141,9 +141,18 @@ def _solve(
 ) -> tuple[Solution, int]:
     target = (float(bound.blocks) if bound.cost is None else bound.cost, bound.blocks)
     solution = construct(task, plain(), target, progress)
+    if moves is None and seconds is None:
+        moves = 2000
+    import os
+    from cutblock.packing.compiled import compiled
+    from cutblock.packing.search import improve, Effort
+
+    solution, n_moves = improve(
+        task, compiled() if os.environ.get("JIT") else plain(), solution, target, seed, Effort(moves, seconds), progress
+    )
     if solution.n_missing:
         raise StockError("the blocks do not suffice", "stock")
-    return solution, 0
+    return solution, n_moves
 
 
 def _check_effort(moves: int | None, seconds: float | None) -> None:

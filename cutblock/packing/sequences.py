@@ -1,0 +1,134 @@
+"""The flat sequences the inner loops read and write: lists of Python numbers, or arrays of int64 and float64."""
+
+from collections.abc import MutableSequence
+from typing import Any, NamedTuple
+
+import numpy as np
+
+from cutblock.packing.lattice import Task
+
+Integers = MutableSequence[int]
+Reals = MutableSequence[float]
+
+
+class Make:
+    """Makes sequences of one kind.
+
+    Attributes:
+        is_compiled: Whether they are arrays.
+    """
+
+    def __init__(self, is_compiled: bool) -> None:
+        self.is_compiled = is_compiled
+
+    def integers(self, values: Any) -> Any:  # noqa: ANN401 - a list or an array
+        """Return whole numbers as a sequence of this kind."""
+        array = np.array(values, dtype=np.int64)
+        return array if self.is_compiled else array.tolist()
+
+    def reals(self, values: Any) -> Any:  # noqa: ANN401 - a list or an array
+        """Return numbers as a sequence of this kind."""
+        array = np.array(values, dtype=np.float64)
+        return array if self.is_compiled else array.tolist()
+
+
+class Cells(NamedTuple):
+    """The billets: sizes with one kerf added, and whether a quarter turn about the vertical is allowed (0 or 1)."""
+
+    x: Integers
+    y: Integers
+    z: Integers
+    may_turn: Integers
+
+
+class Kinds(NamedTuple):
+    """The kinds of block: usable sizes with one kerf added."""
+
+    x: Integers
+    y: Integers
+    z: Integers
+
+
+class Layout(NamedTuple):
+    """Where each billet lies: block (-1: nowhere), place in the sequence, slot, turned or not, order of its cuts."""
+
+    block: Integers
+    rank: Integers
+    slot: Integers
+    turned: Integers
+    order: Integers
+
+
+class Desk(NamedTuple):
+    """Room to work in while filling: the free boxes, then kind and number of billets of each opened block."""
+
+    x: Integers
+    y: Integers
+    z: Integers
+    block: Integers
+    slot: Integers
+    kind: Integers
+    n_placed: Integers
+    rest: Integers  # (9,) sizes of the three rests of the last placing
+    least: Integers  # (3,) shorter side, longer side and height that a rest must have to be of use
+
+
+class State(NamedTuple):
+    """A packing under search; blocks have numbers that stay while they are in use."""
+
+    layout: Layout
+    kind: Integers  # of each block number
+    filled: Reals  # volume of the billets in each block
+    alive: Integers  # all block numbers, those in use first
+    spare: Integers  # blocks left of each kind
+    counts: Integers  # (4,) blocks in use, billets without a place, next random number, moves since the list began
+    score: Reals  # (3,) squared fill of all blocks, volume without a place, money
+
+
+class Goods(NamedTuple):
+    """What does not change during a search."""
+
+    cells: Cells
+    kinds: Kinds
+    volumes: Reals  # of the billets
+    kind_volumes: Reals
+    weights: Reals  # money, or 1, for each kind
+
+
+class Trial(NamedTuple):
+    """Room to work in for one move: the billets taken out, how they are put back, and the blocks concerned."""
+
+    layout: Layout
+    desk: Desk
+    sequence: Integers
+    forced: Integers
+    prefer: Integers
+    remaining: Integers
+    chosen: Integers  # (8,) block numbers
+    is_chosen: Integers  # for each block number
+    filled: Reals  # of each new block
+
+
+def cells_of(task: Task, make: Make) -> Cells:
+    """Return the billets of a task."""
+    x, y, z = (make.integers(task.cells[:, axis]) for axis in range(3))
+    return Cells(x, y, z, make.integers(task.may_turn))
+
+
+def kinds_of(task: Task, make: Make) -> Kinds:
+    """Return the kinds of block of a task."""
+    x, y, z = (make.integers(task.kinds[:, axis]) for axis in range(3))
+    return Kinds(x, y, z)
+
+
+def new_layout(n_cells: int, make: Make) -> Layout:
+    """Return a layout to be written."""
+    block, rank, slot, turned, order = (make.integers(np.full(n_cells, -1)) for _ in range(5))
+    return Layout(block, rank, slot, turned, order)
+
+
+def new_desk(n_cells: int, make: Make) -> Desk:
+    """Return room to work in for so many billets."""
+    x, y, z, block, slot = (make.integers(np.zeros(3 * n_cells + 4)) for _ in range(5))
+    kind, n_placed = (make.integers(np.zeros(n_cells + 1)) for _ in range(2))
+    return Desk(x, y, z, block, slot, kind, n_placed, make.integers(np.zeros(9)), make.integers(np.zeros(3)))
