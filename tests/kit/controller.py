@@ -1,0 +1,83 @@
+"""Run as a script: hands one program to the interpreter of a CNC controller and prints what it would do, as JSON.
+
+Arguments: the folder the controller's packages are unpacked in, the program, a parameter file that exists.
+The interpreter works in inches; the lines printed are in mm and mm/min.
+"""
+
+import json
+import sys
+from pathlib import Path
+
+INCH_MM = 25.4
+XYUV = 0b011000011  # of X Y Z A B C U V W, X lowest
+PLACES = (0, 1, 6, 7)
+
+
+class Canon:
+    """Takes the interpreter's canonical calls; whatever is not a move is kept by name."""
+
+    def __init__(self, parameters):
+        self.parameter_file = parameters
+        self.calls = []
+        self.feed = 0.0
+        self.state = None
+
+    def get_axis_mask(self):
+        return XYUV
+
+    def get_external_length_units(self):
+        return 1.0
+
+    def get_external_angular_units(self):
+        return 1.0
+
+    def get_block_delete(self):
+        return False
+
+    def get_tool(self, pocket):
+        return (-1, *(0.0,) * 12, 0)
+
+    def check_abort(self):
+        return False
+
+    def next_line(self, state):
+        # The state before the first line shows a stop that is none.
+        if self.state is not None and state.stopping == 0:
+            self.calls.append(["pause", state.spindle])
+        self.state = state
+
+    def set_feed_rate(self, feed):
+        self.feed = feed * INCH_MM
+
+    def straight_feed(self, *position):
+        self._move("feed", position)
+
+    def straight_traverse(self, *position):
+        self._move("rapid", position)
+
+    def _move(self, kind, position):
+        values = [value * INCH_MM for value in position]
+        others = [value for index, value in enumerate(values) if index not in PLACES]
+        modes = [self.state.spindle, self.state.feed_mode, self.state.path_mode, self.state.units]
+        self.calls.append([kind, [values[index] for index in PLACES], others, self.feed, modes])
+
+    def __getattr__(self, name):
+        if name.startswith("__"):
+            raise AttributeError(name)
+        return lambda *arguments: self.calls.append([name, [str(argument) for argument in arguments]])
+
+
+def main():
+    folder, program, parameters = sys.argv[1:]
+    sys.path.insert(0, str(Path(folder) / "usr/lib/python3/dist-packages"))
+    import gcode  # type: ignore[import-not-found]
+
+    canon = Canon(parameters)
+    result, line = gcode.parse(program, canon, "G21", "")
+    error = gcode.strerror(result) if result > gcode.MIN_ERROR else ""
+    told = {"error": error, "has_ended": result == 1, "line": line, "calls": canon.calls}  # 1: left by an end word
+    sys.stdout.write(json.dumps(told))
+
+
+if __name__ == "__main__":
+    main()
