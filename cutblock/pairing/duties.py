@@ -1,0 +1,83 @@
+"""Pieces: the two halves of each sweep with their duties, ids and codes, and what must be said about them."""
+
+import binascii
+from collections.abc import Mapping, Sequence
+
+from cutblock.base.arrays import Floats
+from cutblock.records.job import Job
+from cutblock.records.panel import Panel
+from cutblock.records.piece import Piece
+from cutblock.records.plan import Finding
+from cutblock.records.sweep import Sweep
+from cutblock.records.words import Duty, Half, Severity
+
+_ENDINGS = {Half.LOWER: "L", Half.UPPER: "U"}
+
+
+def piece_code(piece_id: str, revision: str) -> str:
+    """Return what a piece's QR symbol holds: its id and revision with a checksum (CRC-16 of CCITT, start 0).
+
+    Args:
+        piece_id: Capitals, digits, `-` and `.` only: the alphanumeric mode of ISO/IEC 18004.
+        revision: Likewise.
+    """
+    body = f"CB1:{piece_id}:{revision}"
+    return f"{body}:{binascii.crc_hqx(body.encode('ascii'), 0):04X}"
+
+
+def make_pieces(job: Job, sweeps: Sequence[Sweep]) -> tuple[Piece, ...]:
+    """Return the lower and upper half of every sweep; volume and mass are not known yet.
+
+    An upper half that moulds no panel takes the job's duty for unpaired halves. A counter-mould and a cradle belong
+    to the panel of the lower half, a filler and a surplus half to none.
+    """
+    return tuple(_piece(job, sweep, half) for sweep in sweeps for half in Half)
+
+
+def _piece(job: Job, sweep: Sweep, half: Half) -> Piece:
+    moulds = {serving.half: serving.panel for serving in sweep.serving}
+    duty, panel = Duty.MOULD, moulds.get(half)
+    if panel is None:
+        duty = job.unpaired
+        panel = moulds[Half.LOWER] if duty in {Duty.COUNTER_MOULD, Duty.CRADLE} else None
+    piece_id = f"{sweep.id}-{_ENDINGS[half]}"
+    other = Half.UPPER if half is Half.LOWER else Half.LOWER
+    return Piece(
+        id=piece_id,
+        partner=f"{sweep.id}-{_ENDINGS[other]}",
+        sweep=sweep.id,
+        half=half,
+        duty=duty,
+        code=piece_code(piece_id, job.revision),
+        panel=panel,
+    )
+
+
+def duty_findings(
+    job: Job, panels: Mapping[str, Panel], sweeps: Sequence[Sweep], pieces: Sequence[Piece]
+) -> tuple[Finding, ...]:
+    """Return what lifted counter-moulds lose in thickness, and how many halves have no use."""
+    findings = []
+    by_sweep = {sweep.id: sweep for sweep in sweeps}
+    lifted = [piece for piece in pieces if piece.duty is Duty.COUNTER_MOULD and piece.panel is not None]
+    if lifted:
+        worst_cosine, worst = min(
+            (least_cosine(panels[piece.panel or ""], by_sweep[piece.sweep]), piece.id) for piece in lifted
+        )
+        text = (
+            f"A counter-mould lifted {job.thickness_mm:g} mm leaves the concrete "
+            f"{job.thickness_mm * worst_cosine:.1f} mm thick at its steepest place."
+        )
+        findings.append(Finding(severity=Severity.INFO, code="counter-mould-by-lift", subject=worst, text=text))
+    n_surplus = sum(piece.duty is Duty.SURPLUS for piece in pieces)
+    if n_surplus:
+        halves = "1 upper half has" if n_surplus == 1 else f"{n_surplus} upper halves have"
+        text = f"{halves} no use yet. Give them a duty in the job, or choose panels that pair up."
+        findings.append(Finding(severity=Severity.WARNING, code="surplus", subject=job.id, text=text))
+    return tuple(findings)
+
+
+def least_cosine(panel: Panel, sweep: Sweep) -> float:
+    """Return the least cosine between the panel's normals and the vertical of the billet."""
+    vertical: Floats = sweep.serving[0].rotation[:, 2]
+    return float((panel.normals @ vertical).min())
