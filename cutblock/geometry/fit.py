@@ -8,7 +8,7 @@ import numpy as np
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.base.errors import GeometryError
 from cutblock.geometry.deviation import deviation_measures, face_deviation
-from cutblock.geometry.fit_refine import N_CONTROLS, Fits, improve, recentre, refine
+from cutblock.geometry.fit_refine import N_CONTROLS, Fits, improve, polish, recentre, refine
 from cutblock.geometry.fit_start import Paths, best_paths
 from cutblock.geometry.fit_target import Patch, Target, make_target
 from cutblock.geometry.heights import HeightField, height_field
@@ -19,6 +19,10 @@ FINE_CONTROLS = 32
 FINE_SAG_MM = 1e-4
 GRIDS = (65, 129, 257)
 SPLINE_ERROR_MM = 1e-5
+# A least-squares fit whose largest deviation lies between these shares of the tolerance is worth polishing: the least
+# largest deviation is about half to three quarters of it.
+NEARLY = 0.9
+POLISH_REACH = 2.2
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -166,9 +170,17 @@ def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
     best = _rival(target, best, constant, is_worth, tolerance_mm)
     straight = Paths(first.stations, np.zeros_like(first.skews), first.rms_mm)
     best = _rival(target, best, straight, best.max_mm > tolerance_mm, tolerance_mm)
-    if n_controls == N_CONTROLS:
-        return best
-    return improve(target, recentre(target, best, n_controls), n_steps=20)
+    if n_controls != N_CONTROLS:
+        best = improve(target, recentre(target, best, n_controls), n_steps=20)
+    is_near = (best.max_mm > NEARLY * tolerance_mm) & (best.max_mm < POLISH_REACH * tolerance_mm)
+    return _polished(target, best, np.flatnonzero(is_near))
+
+
+def _polished(target: Target, fits: Fits, index: Ints) -> Fits:
+    """Return the fits with those of the given indices brought closer to the least largest deviation."""
+    if not len(index):
+        return fits
+    return fits.put(index, polish(target.take(index), fits.take(index)))
 
 
 def _alike(paths: Paths, others: Paths) -> Bools:
@@ -188,11 +200,7 @@ def _rival(target: Target, best: Fits, paths: Paths, is_worth: Bools, tolerance_
     gain = old.max_mm - rivals.max_mm
     less_skew = np.abs(rivals.controls[:, 0]).max(axis=1) < np.abs(old.controls[:, 0]).max(axis=1) - 1e-6
     is_better = np.where(np.abs(gain) < 0.1 * tolerance_mm, less_skew, gain > 0.0)
-    winners = index[is_better]
-    merged = {name: getattr(best, name).copy() for name in Fits.__slots__}
-    for name, values in merged.items():
-        values[winners] = getattr(rivals, name)[is_better]
-    return Fits(**merged)
+    return best.put(index[is_better], rivals.take(np.flatnonzero(is_better)))
 
 
 def _with_plane(target: Target, fits: Fits, place: int) -> SheetFit:

@@ -12,7 +12,7 @@ import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.geometry.fit_start import LEAST_ADVANCE, Paths
-from cutblock.geometry.fit_target import Target
+from cutblock.geometry.fit_target import NODE_WEIGHTS, Target
 
 N_CONTROLS = 16
 N_STATIONS = 65
@@ -76,6 +76,13 @@ class Fits:
     def take(self, index: Ints) -> "Fits":
         """Return the fits of the given indices."""
         return Fits(*(getattr(self, name)[index] for name in self.__slots__))
+
+    def put(self, index: Ints, others: "Fits") -> "Fits":
+        """Return the fits with those of the given indices replaced."""
+        columns = [getattr(self, name).copy() for name in self.__slots__]
+        for column, name in zip(columns, self.__slots__, strict=True):
+            column[index] = getattr(others, name)
+        return Fits(*columns)
 
 
 def refine(target: Target, paths: Paths) -> Fits:
@@ -155,6 +162,7 @@ class _State:
     weights: Floats  # (p, s, q)
     slopes: Floats  # (p, s, q) rate of the residual by the skew at the node
     cosines: Floats  # (p, s, q)
+    counts: Bools  # (p, s, q) nodes over the wanted area
     cost: Floats  # (p,)
 
 
@@ -170,12 +178,14 @@ def _evaluate(target: Target, fits: Fits, basis: Basis, emphasis: Floats | None)
     cosines = 1.0 / np.sqrt(1.0 + (slope_x + plane_x) ** 2 + slope_y**2)
     ramp = (0.5 * length / len(basis.values))[:, None, None]
     advance = 1.0 + (fits.controls[:, 0] @ basis.rates.T / length[:, None])[:, :, None] * lean
-    weights = target.weight(x, ramp) * np.maximum(advance, 0.0)
+    weights = target.weight(x, ramp)
+    counts = weights >= 0.5 * NODE_WEIGHTS
+    weights = weights * np.maximum(advance, 0.0)
     if emphasis is not None:
         weights = weights * emphasis
     residuals = (sheet - heights) * cosines
     cost = np.einsum("psq,psq,psq->p", weights, residuals, residuals)
-    return _State(residuals, weights, -slope_x * cosines * lean, cosines, cost)
+    return _State(residuals, weights, -slope_x * cosines * lean, cosines, counts, cost)
 
 
 def _normal_equations(target: Target, state: _State, basis: Basis) -> tuple[Floats, Floats]:
@@ -196,7 +206,13 @@ def _normal_equations(target: Target, state: _State, basis: Basis) -> tuple[Floa
 
 
 def improve(
-    target: Target, fits: Fits, *, first: bool = False, n_steps: int = N_STEPS, emphasis: Floats | None = None
+    target: Target,
+    fits: Fits,
+    *,
+    first: bool = False,
+    n_steps: int = N_STEPS,
+    emphasis: Floats | None = None,
+    start_damping: float = 1e-4,
 ) -> Fits:
     """Return the fits after damped Gauss-Newton steps (Levenberg, Marquardt); each patch keeps its own damping.
 
@@ -206,11 +222,12 @@ def improve(
         first: The elevations are not set yet; find them for the given skews before anything moves.
         n_steps: Most steps.
         emphasis: Extra weights (p, s, q) of the nodes.
+        start_damping: Relative to the diagonal of the normal equations.
     """
     basis = spline_stations(fits.controls.shape[2])
     state = _evaluate(target, fits, basis, emphasis)
     n_p, _, n_c = fits.controls.shape
-    damping = np.full(n_p, 1e-4)
+    damping = np.full(n_p, start_damping)
     length = fits.end - fits.start
     for step in range(n_steps + int(first)):
         matrix, gradient = _normal_equations(target, state, basis)
@@ -221,15 +238,39 @@ def improve(
         change = np.linalg.solve(matrix, -gradient[:, :, None])[:, :, 0].reshape(n_p, 3, n_c)
         trial = replace(fits, controls=fits.controls + change)
         trial_state = _evaluate(target, trial, basis, emphasis)
-        is_better = (trial_state.cost < state.cost) & (_room(trial.controls[:, 0], length, basis) >= 1.0)
-        gain = np.where(is_better, state.cost - trial_state.cost, 0.0)
+        fall = state.cost - trial_state.cost
+        is_better = (fall > 0.0) & (_room(trial.controls[:, 0], length, basis) >= 1.0)
+        gain = np.where(is_better, fall, 0.0)
         damping = np.where(is_better, np.maximum(damping / 50.0, 1e-14), np.minimum(damping * 30.0, 1e8))
         fits = replace(fits, controls=np.where(is_better[:, None, None], trial.controls, fits.controls))
         state = _pick(is_better, trial_state, state)
         is_done = is_better & (gain <= 1e-6 * state.cost + 1e-22) | (damping >= 1e6)
-        if step > 0 and is_done.all():
+        if is_done.all() and not (first and step == 0):
             break
     return _measured(fits, state)
+
+
+def polish(target: Target, fits: Fits, n_turns: int = 16) -> Fits:
+    """Return the fits brought closer to the least largest deviation, each the best met on the way.
+
+    Lawson's weights: points far off count for more from turn to turn, in proportion to how far off they are (Lawson
+    1961; Rice and Usow, Mathematics of Computation 22 (1968) 118-127). Linear convergence, and no guarantee where the
+    skew moves; a few turns take most of what there is to gain.
+    """
+    basis = spline_stations(fits.controls.shape[2])
+    emphasis = np.ones((len(fits.start), N_STATIONS, target.places.shape[2]))
+    best = current = fits
+    for _ in range(n_turns):
+        state = _evaluate(target, current, basis, None)
+        sizes = np.where(state.counts, np.abs(state.residuals), 0.0)
+        largest = sizes.max(axis=(1, 2), keepdims=True)
+        emphasis = emphasis * np.where(state.counts, sizes / np.maximum(largest, 1e-12), 1.0)
+        mean = np.where(state.counts, emphasis, 0.0).sum(axis=(1, 2)) / state.counts.sum(axis=(1, 2))
+        emphasis = np.maximum(emphasis / np.maximum(mean, 1e-12)[:, None, None], 1e-3)
+        current = improve(target, current, n_steps=3, emphasis=emphasis, start_damping=1e-2)
+        better = np.flatnonzero(current.max_mm < best.max_mm)
+        best = best.put(better, current.take(better))
+    return best
 
 
 def _pick(is_new: Bools, new: _State, old: _State) -> _State:
@@ -243,7 +284,7 @@ def _pick(is_new: Bools, new: _State, old: _State) -> _State:
 
 
 def _measured(fits: Fits, state: _State) -> Fits:
-    counts = state.weights > 1e-5
+    counts = state.counts
     largest = np.where(counts, np.abs(state.residuals), 0.0).max(axis=(1, 2))
     total = np.where(counts, state.weights, 0.0).sum(axis=(1, 2))
     squares = np.where(counts, state.weights * state.residuals**2, 0.0).sum(axis=(1, 2))

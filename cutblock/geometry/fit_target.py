@@ -12,7 +12,10 @@ from cutblock.base.arrays import Floats, Ints
 from cutblock.geometry.heights import spline_basis, spline_matrix
 
 N_NODES = 9
-BEYOND_WEIGHT = 1e-7  # of points outside the wanted area: holds the rails' ends without pulling the fit
+# Points outside the wanted area count a little, ever less with distance: they hold rulings that only cross a corner.
+OVERRUN_WEIGHT = 0.001
+OVERRUN_REACH = 0.03  # of the width
+BEYOND_WEIGHT = 1e-7
 
 
 def _lobatto(n: int) -> tuple[Floats, Floats]:
@@ -98,7 +101,8 @@ class Target:
             flat = self.weights.ravel()
             before = flat[base]
             inside = inside * (before + (along - cells) * (flat[base + 1] - before))
-        weight: Floats = np.maximum(inside, BEYOND_WEIGHT) * NODE_WEIGHTS
+        fading = OVERRUN_WEIGHT * np.exp(-beyond / (OVERRUN_REACH * self.width))
+        weight: Floats = np.maximum(inside, np.maximum(fading, BEYOND_WEIGHT)) * NODE_WEIGHTS
         return weight
 
 

@@ -60,8 +60,7 @@ def polyline_rails(
         sag_mm: Largest distance of a chord from its curve.
         most_rulings: Between the fit's ends, whatever the sag.
     """
-    n_rulings = _count(fit, sag_mm, most_rulings)
-    stations = np.linspace(fit.start_mm, fit.end_mm, n_rulings)
+    stations = fit.start_mm + (fit.end_mm - fit.start_mm) * _places(fit, sag_mm, most_rulings)
     first = low_x_mm - abs(float(fit.controls[0, 0])) / 2.0
     last = high_x_mm + abs(float(fit.controls[0, -1])) / 2.0
     before = [first] if first < fit.start_mm - 1e-3 else []
@@ -71,13 +70,19 @@ def polyline_rails(
     return np.round(near, 6) + 0.0, np.round(far, 6) + 0.0
 
 
-def _count(fit: SheetFit, sag_mm: float, most_rulings: int) -> int:
-    """Return how many equal steps keep the sag: a chord of step h strays |curve''| h^2 / 8."""
-    u = np.linspace(0.0, 1.0, 129)
+def _places(fit: SheetFit, sag_mm: float, most_rulings: int) -> Floats:
+    """Return places in [0, 1], closer where the rails bend more: a chord of step h strays |curve''| h^2 / 8."""
+    u = np.linspace(0.0, 1.0, 257)
     skew, near_z, far_z = np.abs(fit.controls @ basis_at(u, fit.controls.shape[1], 2).T)
-    bend = float(np.hypot(np.maximum(near_z, far_z), TANGENT_SHARE * skew / 2.0).max())
-    n_rulings = int(np.ceil(np.sqrt(bend / (8.0 * sag_mm)))) + 1
-    return max(FEWEST_RULINGS, min(n_rulings, most_rulings))
+    bend = np.hypot(np.maximum(near_z, far_z), TANGENT_SHARE * skew / 2.0)
+    density = np.sqrt(bend / (8.0 * sag_mm))
+    # The larger of neighbouring densities, and never far below the mean: steps must not jump.
+    density = np.maximum(np.maximum(density[:-1], density[1:]), 0.5 * density.mean())
+    steps = np.maximum(density, FEWEST_RULINGS - 1.0) / (len(u) - 1.0)
+    counts = np.concatenate([[0.0], np.cumsum(steps)])
+    n_steps = max(FEWEST_RULINGS - 1, min(int(np.ceil(counts[-1] - 1e-6)), most_rulings - 1))
+    places: Floats = np.interp(np.linspace(0.0, counts[-1], n_steps + 1), counts, u)
+    return places
 
 
 def sheet_range(near: Floats, far: Floats, width_mm: float, length_mm: float) -> tuple[float, float]:
