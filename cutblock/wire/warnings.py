@@ -5,7 +5,7 @@ from typing import NamedTuple
 from cutblock.wire.kerf import DENSITY_RANGE_KG_M3, POWER_RANGE_W_M, UNCALIBRATED_SPREAD
 
 HOT_IN_AIR_C = 400.0  # vapours of polystyrene catch fire from 350 to 490 degC
-TOO_HOT_IN_AIR_C = 450.0
+IGNITION_C = 450.0
 GLOWING_C = 550.0
 EXTRA_LOW_VOLTAGE_V = 50.0  # alternating; the usual limit below which a touch is taken to be harmless in dry rooms
 
@@ -30,13 +30,12 @@ def air_cautions(free_air_c: float, air_power_w_m: float, power_w_m: float) -> t
     if free_air_c <= HOT_IN_AIR_C:
         return ()
     drop = f"turn it down to {air_power_w_m:.0f} W/m in air moves (cutting takes {power_w_m:g} W/m)"
-    if free_air_c <= TOO_HOT_IN_AIR_C:
-        text = f"In free air the wire reaches about {free_air_c:.0f} degC, near where foam vapours catch fire: {drop}."
-        return (Caution("warning", text),)
-    glow = " and glows" if free_air_c > GLOWING_C else ""
-    text = (
-        f"In free air the wire reaches about {free_air_c:.0f} degC{glow}; foam and its vapours can catch fire: {drop}."
-    )
+    seen = f"In free air the wire reaches about {free_air_c:.0f} degC"
+    if free_air_c <= IGNITION_C:
+        return (Caution("warning", f"{seen}, near where foam vapours catch fire: {drop}."),)
+    if free_air_c <= GLOWING_C:
+        return (Caution("warning", f"{seen}; foam and its vapours catch fire at that: {drop}."),)
+    text = f"{seen} and glows: far too hot. Take less power or a thicker wire, and {drop}."
     return (Caution("error", text),)
 
 

@@ -68,7 +68,7 @@ def test_an_unknown_name_is_refused_with_the_near_ones():
 def test_a_hopeless_name_is_answered_with_what_there_is():
     with pytest.raises(InputError) as caught:
         load.label_sheet("###")
-    assert "A4 3x7 63.5x38.1" in caught.value.remedy
+    assert "a4-3x7" in caught.value.remedy
 
 
 def test_the_users_own_entry_adds_or_replaces_by_name(own_folder):

@@ -1,0 +1,179 @@
+"""How long the wire takes from each ruling to the next, and the kerf that follows at both ends."""
+
+from collections.abc import Sequence
+from dataclasses import replace
+
+import numpy as np
+
+from cutblock.base.arrays import Floats, Ints
+from cutblock.base.progress import Progress, silent
+from cutblock.records.plan import Finding
+from cutblock.records.shop import Conditions, Machine
+from cutblock.records.sweep import Sweep, SweepTiming
+from cutblock.records.words import Severity
+from cutblock.schedule.passes import Steps, sweep_steps
+
+WARN_RATIO = 2.0
+LARGEST_RATIO = 4.0
+
+_BATCH = 200  # sweeps worked on together: a fraction of a second
+_N_ROUNDS = 100
+_ROUNDING = 1e-9  # a limit met to this part is kept
+_MELT_SLACK = 0.01  # the ramps at the ends of a sweep take less than this part of a step
+
+
+def time_sweeps(
+    sweeps: Sequence[Sweep], conditions: Conditions, machine: Machine, progress: Progress = silent
+) -> tuple[tuple[Sweep, ...], tuple[SweepTiming, ...], tuple[Finding, ...]]:
+    """Settle the speed along every sweep and the kerf at both billet faces that follows.
+
+    Mid-wire moves across itself at the planned speed. Where an end in foam would then pass the contact limit, where a
+    tower's axis would pass its speed, or where its speed would change faster than it can, the step takes longer. The
+    normal speed is linear along the wire, so its largest value is at an end of the part in foam and is kept exactly.
+
+    Args:
+        sweeps: Any number, each with its own count of rulings.
+        conditions: The kerf rate and the speed window.
+        machine: Its towers, speed and acceleration.
+        progress: Told now and then.
+
+    Returns:
+        The sweeps with `kerf_mm` at the near and the far face, the mean over the foam; their timings; and findings:
+        `over-melt` where part of the wire in foam is slower than the over-melt limit, `uneven-ends` where one end is
+        more than twice as fast as the other.
+    """
+    timed: list[Sweep] = []
+    timings: list[SweepTiming] = []
+    findings: list[Finding] = []
+    for first in range(0, len(sweeps), _BATCH):
+        progress(first / len(sweeps), "Setting speeds")
+        batch = sweeps[first : first + _BATCH]
+        steps = sweep_steps(batch, machine)
+        seconds = step_times(steps, conditions, machine)
+        near_kerfs = _mean_kerfs(steps, seconds, steps.near_moves, steps.near_shares, conditions)
+        far_kerfs = _mean_kerfs(steps, seconds, steps.far_moves, steps.far_shares, conditions)
+        ratios = _largest(_end_ratios(steps), steps)
+        twists = _largest(_twists_deg_per_m(steps), steps)
+        for index, sweep in enumerate(batch):
+            part = slice(int(steps.firsts[index]), int(steps.firsts[index + 1]))
+            timed.append(replace(sweep, kerf_mm=(float(near_kerfs[index]), float(far_kerfs[index]))))
+            timings.append(
+                SweepTiming(
+                    sweep=sweep.id,
+                    low_mm_s=conditions.low_mm_s,
+                    high_mm_s=conditions.high_mm_s,
+                    planned_mm_s=conditions.planned_mm_s,
+                    seconds=float(seconds[part].sum()),
+                    step_seconds=seconds[part],
+                    end_speed_ratio=float(ratios[index]),
+                    twist_deg_per_m=float(twists[index]),
+                )
+            )
+        findings += _ratio_findings(batch, ratios)
+        findings += _melt_findings(batch, steps, seconds, conditions)
+    return tuple(timed), tuple(timings), tuple(findings)
+
+
+def step_times(steps: Steps, conditions: Conditions, machine: Machine) -> Floats:
+    """Return the seconds each step takes, (m,)."""
+    planned = steps.middle / conditions.planned_mm_s
+    contact = steps.moves.largest / conditions.high_mm_s
+    axes = np.abs(steps.axes).max(axis=1) / machine.speed_mm_s
+    seconds = _eased(steps, np.maximum(np.maximum(planned, contact), axes), machine.acceleration_mm_s2)
+    # From rest and to rest: a ramp at the largest acceleration loses half its own time.
+    ends = np.concatenate([steps.firsts[:-1], steps.firsts[1:] - 1])
+    ramps = np.abs(steps.axes[ends]).max(axis=1) / seconds[ends] / (2.0 * machine.acceleration_mm_s2)
+    np.add.at(seconds, ends, ramps)
+    return seconds
+
+
+def _eased(steps: Steps, seconds: Floats, acceleration: float) -> Floats:
+    """Return step times long enough that no axis changes its speed faster than it can.
+
+    The change of speed between two steps is spread over half of each. Both are stretched until it fits; stretching
+    both by a factor divides the acceleration by its square.
+    """
+    joints = np.flatnonzero(steps.sweeps[:-1] == steps.sweeps[1:])
+    for _ in range(_N_ROUNDS):
+        excess = _excess(steps, seconds, joints, acceleration)
+        bad = excess > 1.0 + _ROUNDING
+        if not bad.any():
+            return seconds
+        factors = np.ones_like(seconds)
+        stretch = np.sqrt(excess[bad])
+        np.maximum.at(factors, joints[bad], stretch)
+        np.maximum.at(factors, joints[bad] + 1, stretch)
+        seconds = seconds * factors
+    # Slow the whole of a sweep that is still too rough.
+    worst = np.ones(len(steps.firsts) - 1)
+    np.maximum.at(worst, steps.sweeps[joints], _excess(steps, seconds, joints, acceleration))
+    return seconds * np.sqrt(worst)[steps.sweeps]
+
+
+def _excess(steps: Steps, seconds: Floats, joints: Ints, acceleration: float) -> Floats:
+    """Return the acceleration at each joint over the largest one."""
+    speeds = steps.axes / seconds[:, None]
+    change = np.abs(speeds[joints + 1] - speeds[joints]).max(axis=1)
+    result: Floats = change / (0.5 * (seconds[joints] + seconds[joints + 1]) * acceleration)
+    return result
+
+
+def _mean_kerfs(steps: Steps, seconds: Floats, moves: Floats, shares: Floats, conditions: Conditions) -> Floats:
+    """Return the kerf at one face of each billet: w0 + G x time in foam / way in foam, the mean over the way."""
+    times = np.add.reduceat(seconds * shares, steps.firsts[:-1])
+    ways = np.add.reduceat(moves * shares, steps.firsts[:-1])
+    slowness = np.divide(times, ways, out=np.full_like(ways, 1.0 / conditions.planned_mm_s), where=ways > 0.0)
+    result: Floats = conditions.least_kerf_mm + conditions.kerf_rate_mm2_s * slowness
+    return result
+
+
+def _end_ratios(steps: Steps) -> Floats:
+    slower = np.minimum(steps.moves.at_start, steps.moves.at_end)
+    ratios = np.divide(steps.moves.largest, slower, out=np.full_like(slower, 1e6), where=slower > 1e-6 * steps.middle)
+    return np.where(steps.is_in_foam, ratios, 1.0)
+
+
+def _twists_deg_per_m(steps: Steps) -> Floats:
+    ways_m = 0.5e-3 * np.linalg.norm(steps.near + steps.far, axis=1)
+    twists = np.degrees(np.divide(steps.turns, ways_m, out=np.zeros_like(ways_m), where=ways_m > 0.0))
+    return np.where(steps.is_in_foam, twists, 0.0)
+
+
+def _largest(values: Floats, steps: Steps) -> Floats:
+    result: Floats = np.maximum.reduceat(values, steps.firsts[:-1])
+    return result
+
+
+def _ratio_findings(sweeps: Sequence[Sweep], ratios: Floats) -> list[Finding]:
+    findings = []
+    for index in np.flatnonzero(ratios > WARN_RATIO).tolist():
+        is_error = ratios[index] > LARGEST_RATIO
+        text = (
+            f"One end of the wire runs {ratios[index]:.1f} times as fast as the other; over {WARN_RATIO:g} the kerf at"
+            f" the two ends differs visibly{f', over {LARGEST_RATIO:g} it cannot be kept' if is_error else ''}."
+            " Divide the panel, or lay the wire the other way."
+        )
+        severity = Severity.ERROR if is_error else Severity.WARNING
+        findings.append(Finding(severity=severity, code="uneven-ends", subject=sweeps[index].id, text=text))
+    return findings
+
+
+def _melt_findings(sweeps: Sequence[Sweep], steps: Steps, seconds: Floats, conditions: Conditions) -> list[Finding]:
+    """Return where part of the wire in foam is slower than the over-melt limit."""
+    slowest = steps.moves.least / seconds
+    is_slow = steps.is_in_foam & (slowest < conditions.low_mm_s * (1.0 - _MELT_SLACK))
+    findings = []
+    for index in np.unique(steps.sweeps[is_slow]).tolist():
+        rows = np.flatnonzero(is_slow & (steps.sweeps == index))
+        worst = rows[np.argmin(slowest[rows])]
+        place_mm = steps.moves.least_at[worst] * sweeps[index].width_mm
+        speed = max(float(slowest[worst]), 1e-3)
+        kerf_mm = conditions.least_kerf_mm + conditions.kerf_rate_mm2_s / speed
+        text = (
+            f"From {steps.travel[rows[0]]:.0f} to {steps.travel[rows[-1]]:.0f} mm of the travel the wire falls to"
+            f" {speed:.2f} mm/s at {place_mm:.0f} mm from the near face, under the {conditions.low_mm_s:.2f} mm/s that"
+            f" keep the kerf at {conditions.widest_kerf_mm:g} mm: up to {kerf_mm:.1f} mm may melt there."
+            " Divide the panel, lay the wire the other way, or cut with less power."
+        )
+        findings.append(Finding(severity=Severity.WARNING, code="over-melt", subject=sweeps[index].id, text=text))
+    return findings
