@@ -1,0 +1,87 @@
+"""Shows one drawing, fitted to the room there is, on a sheet of paper."""
+# ruff: noqa: N802 - Qt names the methods that are overridden
+
+from PySide6.QtCore import QEvent, QMarginsF, QPointF, QRectF, QSize, Qt
+from PySide6.QtGui import QHelpEvent, QPainter, QPaintEvent, QPen
+from PySide6.QtWidgets import QSizePolicy, QToolTip, QWidget
+
+from cutblock.records.drawing import Drawing, Polygon
+from cutblock.window.paint import fitted, paint_drawing, painting, polygon_of
+from cutblock.window.theme import ink_of, paper_colour
+
+_MARGIN_PX = 8.0
+
+
+class DrawingView(QWidget):
+    """A picture of a drawing; `show_drawing` replaces it. What a polygon is shows as a tool-tip."""
+
+    def __init__(self, name: str, empty_text: str, parent: QWidget | None = None) -> None:
+        """Make it empty.
+
+        Args:
+            name: What the pictures are of, for screen readers.
+            empty_text: Shown while there is no drawing.
+            parent: Qt parent.
+        """
+        super().__init__(parent)
+        self._name = name
+        self._empty_text = empty_text
+        self._drawing: Drawing | None = None
+        self.setAccessibleName(name)
+        self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Expanding)
+        self.setMinimumSize(160, 110)
+
+    def show_drawing(self, drawing: Drawing | None) -> None:
+        """Replace the picture; None empties it."""
+        self._drawing = drawing
+        self.setAccessibleDescription(drawing.title if drawing is not None else self._empty_text)
+        self.update()
+
+    def sizeHint(self) -> QSize:
+        """Return a comfortable size."""
+        return QSize(420, 300)
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        """Paint paper and marks."""
+        ink = ink_of(self.palette())
+        with painting(self) as painter:
+            painter.fillRect(self.rect(), ink.ground)
+            if self._drawing is None:
+                painter.setPen(ink.faint)
+                flags = Qt.AlignmentFlag.AlignCenter | Qt.TextFlag.TextWordWrap
+                painter.drawText(self.rect().adjusted(12, 12, -12, -12), flags, self._empty_text)
+                return
+            sheet = self._sheet()
+            painter.setRenderHint(QPainter.RenderHint.Antialiasing)
+            painter.fillRect(sheet, paper_colour(self.palette()))
+            paint_drawing(painter, self._drawing, sheet)
+            painter.setPen(QPen(ink.faint, 1.0))
+            painter.drawRect(sheet)
+
+    def event(self, event: QEvent) -> bool:
+        """Show the title of the polygon under the mouse as a tool-tip."""
+        if event.type() == QEvent.Type.ToolTip and isinstance(event, QHelpEvent) and self._drawing is not None:
+            QToolTip.showText(event.globalPos(), self.title_at(QPointF(event.pos())), self)
+            return True
+        return super().event(event)
+
+    def title_at(self, place: QPointF) -> str:
+        """Return the title of the topmost polygon at a place of the widget, empty where there is none."""
+        if self._drawing is None:
+            return ""
+        sheet = self._sheet()
+        scale = self._drawing.width_mm / sheet.width()
+        point = (place - sheet.topLeft()) * scale
+        for mark in reversed(self._drawing.marks):
+            if isinstance(mark, Polygon) and mark.title and _holds(mark, point):
+                return mark.title
+        return ""
+
+    def _sheet(self) -> QRectF:
+        assert self._drawing is not None
+        margins = QMarginsF(_MARGIN_PX, _MARGIN_PX, _MARGIN_PX, _MARGIN_PX)
+        return fitted(self._drawing, QRectF(self.rect()).marginsRemoved(margins))
+
+
+def _holds(mark: Polygon, point: QPointF) -> bool:
+    return polygon_of(mark).containsPoint(point, Qt.FillRule.OddEvenFill)

@@ -1,0 +1,43 @@
+"""The parts of the foam bought, each with a letter, a colour and a hatch."""
+
+from typing import NamedTuple
+
+from cutblock.records.account import Ledger
+from cutblock.window.theme import BLUE, GREEN, GREY, ORANGE, PURPLE, SKY, VERMILLION, YELLOW
+
+USED, KEPT, WASTE = "used", "kept", "waste"
+
+# name, letter, field of the ledger, colour, hatch, what it counts as; in the order they are shown
+_PARTS = (
+    ("Moulds", "M", "mould_mm3", BLUE, "", USED),
+    ("Counter-moulds", "C", "counter_mould_mm3", SKY, "/", USED),
+    ("Cradles", "R", "cradle_mm3", GREEN, "", USED),
+    ("Fillers", "F", "filler_mm3", GREEN, "\\", USED),
+    ("Offcuts kept", "O", "offcut_mm3", YELLOW, "", KEPT),
+    ("Surplus halves", "H", "surplus_mm3", PURPLE, "/", WASTE),
+    ("Kerf melted", "K", "kerf_mm3", VERMILLION, "", WASTE),
+    ("Skin trimmed", "T", "trim_mm3", ORANGE, "\\", WASTE),
+    ("Scrap", "S", "scrap_mm3", GREY, "x", WASTE),
+)
+
+
+class LedgerPart(NamedTuple):
+    """One part of the foam bought."""
+
+    name: str
+    letter: str
+    volume_mm3: float
+    percent: float
+    colour: str
+    hatch: str
+    counts_as: str
+
+
+def ledger_parts(ledger: Ledger) -> tuple[LedgerPart, ...]:
+    """Return every part in the order it is shown; they add up to the foam bought."""
+    whole = ledger.bought_mm3 or 1.0
+    parts = []
+    for name, letter, field, colour, hatch, counts_as in _PARTS:
+        volume_mm3 = float(getattr(ledger, field))
+        parts.append(LedgerPart(name, letter, volume_mm3, 100.0 * volume_mm3 / whole, colour, hatch, counts_as))
+    return tuple(parts)

@@ -1,0 +1,223 @@
+"""The panels in plan, coloured by how far their finished mould faces lie from the form."""
+# ruff: noqa: N802 - Qt names the methods that are overridden
+
+from PySide6.QtCore import QEvent, QPointF, QRectF, QSize, Qt, Signal
+from PySide6.QtGui import (
+    QColor,
+    QFontMetricsF,
+    QHelpEvent,
+    QKeyEvent,
+    QMouseEvent,
+    QPainter,
+    QPainterPath,
+    QPaintEvent,
+    QPen,
+    QPolygonF,
+)
+from PySide6.QtWidgets import QSizePolicy, QToolTip, QWidget
+
+from cutblock.records.plan import Plan
+from cutblock.window.deviation import NOT_CUT, STEPS, Step, legend_text, step_of, worst_by_panel
+from cutblock.window.map_layout import Layout, PlacedPanel, lay_out
+from cutblock.window.paint import hatch_brush, painting
+from cutblock.window.theme import ink_of, text_on
+
+_EMPTY = Layout((), (), (1.0, 1.0))
+_MARGIN_PX = 10.0
+_STEPS_BY_KEY = {Qt.Key.Key_Left: -1, Qt.Key.Key_Up: -1, Qt.Key.Key_Right: 1, Qt.Key.Key_Down: 1}
+
+
+class PlanMap(QWidget):
+    """A picture of all panels; `show_plan` replaces it. Click a panel, or move with the arrow keys.
+
+    Signals:
+        panel_picked(str): The panel the user chose.
+    """
+
+    panel_picked = Signal(str)
+
+    def __init__(self, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self._layout = _EMPTY
+        self._worst: dict[str, float | None] = {}
+        self._tolerance_mm = 1.0
+        self._picked = ""
+        self.setAccessibleName("Panels in plan, coloured by deviation")
+        self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
+        self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Expanding)
+        self.setMinimumSize(260, 180)
+
+    def show_plan(self, plan: Plan) -> None:
+        """Replace the picture."""
+        self._layout = lay_out(plan.panels, plan.job.layup)
+        self._worst = worst_by_panel(plan.panels, plan.sweeps)
+        self._tolerance_mm = plan.job.tolerance_mm
+        self._picked = ""
+        n_over = sum(not self._step(panel.id).is_within for panel in plan.panels)
+        self.setAccessibleDescription(f"{len(plan.panels)} panels, {n_over} not within the tolerance")
+        self.update()
+
+    def pick(self, panel: str) -> None:
+        """Mark a panel without telling anyone."""
+        self._picked = panel
+        self.update()
+
+    def sizeHint(self) -> QSize:
+        """Return a comfortable size."""
+        return QSize(560, 320)
+
+    def panel_at(self, place: QPointF) -> str:
+        """Return the panel at a place of the widget, empty where there is none."""
+        for panel in self._layout.panels:
+            if self._path(panel).contains(place):
+                return panel.panel
+        return ""
+
+    def paintEvent(self, event: QPaintEvent) -> None:
+        """Paint panels, titles and the legend."""
+        ink = ink_of(self.palette())
+        with painting(self) as painter:
+            painter.fillRect(self.rect(), ink.ground)
+            painter.setRenderHint(QPainter.RenderHint.Antialiasing)
+            picked = None
+            for panel in self._layout.panels:
+                path = self._path(panel)
+                self._paint_panel(painter, panel, path)
+                if panel.panel == self._picked:
+                    picked = path
+            if picked is not None:
+                painter.setBrush(Qt.BrushStyle.NoBrush)
+                painter.setPen(QPen(ink.ground, 5.0))
+                painter.drawPath(picked)
+                painter.setPen(QPen(ink.text, 3.0))
+                painter.drawPath(picked)
+            painter.setPen(ink.text)
+            for x, y, title in self._layout.titles:
+                painter.drawText(self._place(x, y), title)
+            self._paint_legend(painter)
+
+    def mousePressEvent(self, event: QMouseEvent) -> None:
+        """Pick the panel under the mouse."""
+        panel = self.panel_at(event.position())
+        if panel:
+            self._choose(panel)
+
+    def keyPressEvent(self, event: QKeyEvent) -> None:
+        """Move to the panel before or behind in the plan's order."""
+        step = _STEPS_BY_KEY.get(Qt.Key(event.key()))
+        if step is None or not self._layout.panels:
+            super().keyPressEvent(event)
+            return
+        ids = [panel.panel for panel in self._layout.panels]
+        at = ids.index(self._picked) + step if self._picked in ids else 0
+        self._choose(ids[at % len(ids)])
+
+    def event(self, event: QEvent) -> bool:
+        """Say which panel is under the mouse and how far off it is."""
+        if event.type() == QEvent.Type.ToolTip and isinstance(event, QHelpEvent):
+            panel = self.panel_at(QPointF(event.pos()))
+            QToolTip.showText(event.globalPos(), self._describe(panel) if panel else "", self)
+            return True
+        return super().event(event)
+
+    def _describe(self, panel: str) -> str:
+        worst = self._worst.get(panel)
+        if worst is None:
+            return f"{panel}: no sweep"
+        word = "within" if self._step(panel).is_within else "over"
+        return f"{panel}: {worst:.2f} mm from the form at most, {word} the tolerance of {self._tolerance_mm:.2f} mm"
+
+    def _choose(self, panel: str) -> None:
+        self.pick(panel)
+        self.panel_picked.emit(panel)
+
+    def _step(self, panel: str) -> Step:
+        worst = self._worst.get(panel)
+        return NOT_CUT if worst is None else step_of(worst, self._tolerance_mm)
+
+    def _paint_panel(self, painter: QPainter, panel: PlacedPanel, path: QPainterPath) -> None:
+        step = self._step(panel.panel)
+        fill = QColor(step.colour)
+        on_it = text_on(fill)
+        painter.setPen(QPen(ink_of(self.palette()).ground, 1.5))
+        painter.setBrush(fill)
+        painter.drawPath(path)
+        if step.hatch:
+            faint = QColor(on_it)
+            faint.setAlpha(90)
+            painter.fillPath(path, hatch_brush(step.hatch, faint))
+        box = path.boundingRect()
+        metrics = QFontMetricsF(painter.font())
+        for text in (f"{panel.label} {step.letter}", step.letter):
+            wanted = metrics.horizontalAdvance(text) + 6
+            if wanted <= box.width() and metrics.height() <= box.height():
+                if step.hatch:
+                    plate = QRectF(0, 0, wanted, metrics.height())
+                    plate.moveCenter(box.center())
+                    painter.fillRect(plate, fill)
+                painter.setPen(on_it)
+                painter.drawText(box, Qt.AlignmentFlag.AlignCenter, text)
+                break
+
+    def _paint_legend(self, painter: QPainter) -> None:
+        ink = ink_of(self.palette())
+        metrics = QFontMetricsF(painter.font())
+        line = metrics.height()
+        x, y = _MARGIN_PX, self._legend_top()
+        painter.setPen(ink.faint)
+        painter.drawText(QPointF(x, y + metrics.ascent()), self._legend_title())
+        y += line + 4
+        for step, text in self._legend_entries():
+            width = line + 6 + metrics.horizontalAdvance(text) + 16
+            if x + width > self.width() and x > _MARGIN_PX:
+                x, y = _MARGIN_PX, y + line + 4
+            swatch = QRectF(x, y, line, line)
+            painter.fillRect(swatch, QColor(step.colour))
+            painter.setPen(text_on(QColor(step.colour)))
+            painter.drawText(swatch, Qt.AlignmentFlag.AlignCenter, step.letter)
+            painter.setPen(ink.text)
+            painter.drawText(QPointF(x + line + 6, y + metrics.ascent()), text)
+            x += width
+
+    def _legend_title(self) -> str:
+        return f"Finished mould face from the form, at most (tolerance {self._tolerance_mm:.2f} mm)"
+
+    def _legend_entries(self) -> list[tuple[Step, str]]:
+        entries = [(step, legend_text(step, self._tolerance_mm)) for step in STEPS]
+        if any(worst is None for worst in self._worst.values()):
+            entries.append((NOT_CUT, legend_text(NOT_CUT, self._tolerance_mm)))
+        return entries
+
+    def _legend_top(self) -> float:
+        metrics = QFontMetricsF(self.font())
+        line = metrics.height()
+        n_lines, x = 1, _MARGIN_PX
+        for _, text in self._legend_entries():
+            width = line + 6 + metrics.horizontalAdvance(text) + 16
+            if x + width > self.width() and x > _MARGIN_PX:
+                n_lines, x = n_lines + 1, _MARGIN_PX
+            x += width
+        return self.height() - _MARGIN_PX - line - n_lines * (line + 4)
+
+    def _scale(self) -> tuple[float, QPointF]:
+        """Return pixels per mm and where the picture's upper left corner lies."""
+        width, height = self._layout.size_mm
+        room = QRectF(_MARGIN_PX, _MARGIN_PX, self.width() - 2 * _MARGIN_PX, self._legend_top() - 2 * _MARGIN_PX)
+        scale = max(min(room.width() / width, room.height() / height), 1e-6)
+        left = room.center().x() - width * scale / 2
+        return scale, QPointF(left, room.center().y() - height * scale / 2)
+
+    def _place(self, x_mm: float, y_mm: float) -> QPointF:
+        scale, corner = self._scale()
+        return QPointF(corner.x() + x_mm * scale, corner.y() + (self._layout.size_mm[1] - y_mm) * scale)
+
+    def _path(self, panel: PlacedPanel) -> QPainterPath:
+        scale, corner = self._scale()
+        path = QPainterPath()
+        for ring in panel.rings_mm:
+            points = [
+                QPointF(corner.x() + x * scale, corner.y() + (self._layout.size_mm[1] - y) * scale)
+                for x, y in ring.tolist()
+            ]
+            path.addPolygon(QPolygonF([*points, points[0]]))
+        return path

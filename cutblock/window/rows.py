@@ -1,0 +1,265 @@
+"""The plan as rows of text, one function a table; every number carries its unit in the column's title."""
+
+from cutblock.base.units import MM3_PER_LITRE, hours, litres, mm_per_minute
+from cutblock.records.account import Ledger
+from cutblock.records.block import Block, Cut, Size
+from cutblock.records.panel import Panel
+from cutblock.records.piece import Piece
+from cutblock.records.plan import Finding, Plan
+from cutblock.records.sweep import Serving, Sweep, SweepTiming
+from cutblock.records.words import Duty, Half, Severity
+from cutblock.window.deviation import NOT_CUT, servings_by_panel, step_of
+from cutblock.window.parts import LedgerPart
+from cutblock.window.tables import Cell, Column, Row
+from cutblock.window.theme import SKY, VERMILLION, YELLOW
+
+PANEL_COLUMNS = (
+    Column("Panel"),
+    Column("Face"),
+    Column("Length, mm", is_number=True),
+    Column("Width, mm", is_number=True),
+    Column("Finished, max mm", is_number=True, tip="Largest distance of the finished mould face from the form"),
+    Column("Tolerance", tip="A to D: within, in quarters of the tolerance; E: over"),
+    Column("Fit, max mm", is_number=True, tip="What the straight wire leaves, kerf and coat set aside"),
+    Column("Fit, rms mm", is_number=True),
+    Column("Wire along", tip="The axis of the panel the wire lies along"),
+    Column("Shares its cut with"),
+    Column("Lower half"),
+    Column("Upper half"),
+)
+PIECE_COLUMNS = (
+    Column("Piece"),
+    Column("Half"),
+    Column("Duty"),
+    Column("Panel"),
+    Column("Block"),
+    Column("Other half"),
+    Column("Volume, l", is_number=True),
+    Column("Mass, kg", is_number=True),
+    Column("Code on the tag"),
+)
+CUT_COLUMNS = (
+    Column("Order", is_number=True),
+    Column("Set-up", is_number=True, tip="One clamping of one part; the number rises with each new clamping or turn"),
+    Column("Clamped", tip="How the part lies on the machine"),
+    Column("Cut"),
+    Column("At", tip="Where the wire's slab begins, in the frame of the raw block"),
+    Column("Speed, mm/min", is_number=True),
+    Column("Time, min", is_number=True),
+    Column("Part, mm", tip="Length × width × height of the part that is cut"),
+    Column("Part lies at, mm", tip="Its lower corner in the raw block: along, across, up"),
+)
+BLOCK_COLUMNS = (
+    Column("Block"),
+    Column("Size, mm"),
+    Column("Grade"),
+    Column("Billets", is_number=True),
+    Column("Used, %", is_number=True, tip="Halves with a duty, of the block as bought"),
+    Column("Machine, h", is_number=True),
+    Column("Left over, mm", tip="Leftover boxes worth keeping"),
+)
+LEDGER_COLUMNS = (
+    Column("Part of the foam"),
+    Column("Volume, l", is_number=True),
+    Column("Share, %", is_number=True),
+    Column("Counts as"),
+)
+FINDING_COLUMNS = (Column("Severity"), Column("Where"), Column("Code"), Column("What"))
+
+_SEVERITIES = {
+    Severity.ERROR: ("Error", VERMILLION, 0),
+    Severity.WARNING: ("Warning", YELLOW, 1),
+    Severity.INFO: ("Note", SKY, 2),
+}
+
+
+def panel_rows(plan: Plan) -> list[Row]:
+    """Return a row for every panel, or every strip of one; its key is "panel sweep"."""
+    halves = servings_by_panel(plan.sweeps)
+    duties = {(piece.sweep, piece.half): piece for piece in plan.pieces}
+    rows = []
+    for panel in plan.panels:
+        if panel.id in halves:
+            rows += [
+                _panel_row(panel, sweep, serving, duties, plan.job.tolerance_mm) for sweep, serving in halves[panel.id]
+            ]
+        else:
+            rows.append(_uncut_row(panel))
+    return rows
+
+
+def panel_key(panel: str, sweep: str) -> str:
+    """Return the key of a panel's row."""
+    return f"{panel} {sweep}"
+
+
+def piece_rows(plan: Plan) -> list[Row]:
+    """Return a row for every piece; a scanned code finds it."""
+    return [
+        Row(
+            piece.id,
+            (
+                Cell(piece.id),
+                Cell(piece.half.value),
+                Cell(piece.duty.value),
+                Cell(piece.panel or "none"),
+                Cell(piece.block or "none"),
+                Cell(piece.partner),
+                _number(litres(piece.volume_mm3), 1),
+                _number(piece.mass_kg, 2),
+                Cell(piece.code),
+            ),
+        )
+        for piece in plan.pieces
+    ]
+
+
+def cut_rows(block: Block, timings: tuple[SweepTiming, ...]) -> list[Row]:
+    """Return a row for every pass of the wire through a block, in order."""
+    by_sweep = {timing.sweep: timing for timing in timings}
+    return [_cut_row(cut, by_sweep) for cut in block.cuts]
+
+
+def block_rows(plan: Plan) -> list[Row]:
+    """Return a row for every block."""
+    used: dict[str, float] = {}
+    for piece in plan.pieces:
+        if piece.block is not None and piece.duty is not Duty.SURPLUS:
+            used[piece.block] = used.get(piece.block, 0.0) + piece.volume_mm3
+    seconds = dict(plan.hours.by_block_s) if plan.hours is not None else {}
+    return [_block_row(block, used.get(block.id, 0.0), seconds.get(block.id)) for block in plan.blocks]
+
+
+def ledger_rows(parts: tuple[LedgerPart, ...], ledger: Ledger) -> list[Row]:
+    """Return a row for every part of the foam bought, and their sum."""
+    rows = [
+        Row(
+            part.letter,
+            (
+                Cell(f"{part.letter}  {part.name}", colour=part.colour),
+                _number(litres(part.volume_mm3), 1),
+                _number(part.percent, 2),
+                Cell(part.counts_as),
+            ),
+        )
+        for part in parts
+    ]
+    total = sum(part.volume_mm3 for part in parts)
+    share = 100.0 * total / ledger.bought_mm3 if ledger.bought_mm3 else 0.0
+    rows.append(
+        Row("sum", (Cell("Foam bought"), Cell(f"{total / MM3_PER_LITRE:.1f}"), Cell(f"{share:.2f}"), Cell("all of it")))
+    )
+    return rows
+
+
+def finding_rows(findings: tuple[Finding, ...]) -> list[Row]:
+    """Return a row for every finding, the gravest first; its key is the finding's number."""
+    ordered = sorted(enumerate(findings), key=lambda numbered: _SEVERITIES[numbered[1].severity][2])
+    rows = []
+    for number, finding in ordered:
+        word, colour, rank = _SEVERITIES[finding.severity]
+        cells = (
+            Cell(word, key=float(rank), colour=colour),
+            Cell(finding.subject),
+            Cell(finding.code),
+            Cell(finding.text, tip=finding.text),
+        )
+        rows.append(Row(str(number), cells))
+    return rows
+
+
+def size_text(size_mm: Size) -> str:
+    """Return a size as length × width × height."""
+    return " × ".join(f"{side:.1f}".removesuffix(".0") for side in size_mm)
+
+
+def _panel_row(
+    panel: Panel, sweep: Sweep, serving: Serving, duties: dict[tuple[str, Half], Piece], tolerance_mm: float
+) -> Row:
+    step = step_of(serving.max_mm, tolerance_mm)
+    word = "within" if step.is_within else "over"
+    name = panel.id if serving.n_strips == 1 else f"{panel.id}, strip {serving.strip} of {serving.n_strips}"
+    others = [other for other in sweep.serves if other != panel.id]
+    return Row(
+        panel_key(panel.id, sweep.id),
+        (
+            Cell(name),
+            Cell(panel.face),
+            _number(panel.length_mm, 1),
+            _number(panel.width_mm, 1),
+            _number(serving.max_mm, 2),
+            Cell(f"{step.letter}  {word}", colour=step.colour, tip=f"Tolerance {tolerance_mm:.2f} mm"),
+            _number(sweep.fit_max_mm, 3),
+            _number(sweep.fit_rms_mm, 3),
+            Cell(sweep.wire_along),
+            Cell(", ".join(others) or "no panel"),
+            _duty_cell(duties.get((sweep.id, Half.LOWER)), panel.id),
+            _duty_cell(duties.get((sweep.id, Half.UPPER)), panel.id),
+        ),
+    )
+
+
+def _uncut_row(panel: Panel) -> Row:
+    none = Cell("none", key=float("inf"))
+    return Row(
+        panel_key(panel.id, ""),
+        (
+            Cell(panel.id),
+            Cell(panel.face),
+            _number(panel.length_mm, 1),
+            _number(panel.width_mm, 1),
+            none,
+            Cell(f"{NOT_CUT.letter}  not cut", colour=NOT_CUT.colour, tip="No sweep moulds it: see the findings"),
+            *((none,) * 6),
+        ),
+    )
+
+
+def _duty_cell(piece: Piece | None, panel: str) -> Cell:
+    if piece is None:
+        return Cell("none")
+    if piece.duty is Duty.MOULD and piece.panel is not None and piece.panel != panel:
+        return Cell(f"{piece.duty.value} of {piece.panel}")
+    return Cell(piece.duty.value)
+
+
+def _cut_row(cut: Cut, timings: dict[str, SweepTiming]) -> Row:
+    timing = timings.get(cut.sweep or "")
+    place = f"{cut.axis} = {cut.at_mm:.1f} mm" if cut.axis else (cut.sweep or "")
+    speed = _number(mm_per_minute(timing.planned_mm_s), 0) if timing else Cell("as set", key=float("inf"))
+    time = _number(timing.seconds / 60.0, 1) if timing else Cell("", key=float("inf"))
+    return Row(
+        str(cut.order),
+        (
+            _number(cut.order, 0),
+            _number(cut.setup, 0),
+            Cell("turned 90°" if cut.turn else "as laid"),
+            Cell(cut.kind.value),
+            Cell(place),
+            speed,
+            time,
+            Cell(size_text(cut.part_size_mm)),
+            Cell(size_text(cut.part_at_mm).replace(" × ", ", ")),
+        ),
+    )
+
+
+def _block_row(block: Block, used_mm3: float, seconds: float | None) -> Row:
+    left = "; ".join(size_text(offcut.size_mm) for offcut in block.offcuts) or "nothing worth keeping"
+    name = f"{block.id} (from an offcut)" if block.from_offcut else block.id
+    return Row(
+        block.id,
+        (
+            Cell(name),
+            Cell(size_text((block.length_mm, block.width_mm, block.height_mm)), key=block.volume_mm3),
+            Cell(block.grade),
+            _number(len(block.billets), 0),
+            _number(100.0 * used_mm3 / block.volume_mm3, 1),
+            _number(hours(seconds), 2) if seconds is not None else Cell("none", key=float("inf")),
+            Cell(left, tip=left),
+        ),
+    )
+
+
+def _number(value: float, decimals: int) -> Cell:
+    return Cell(f"{value:.{decimals}f}", key=float(value))

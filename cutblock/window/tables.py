@@ -1,0 +1,237 @@
+"""Read-only tables: one model for all of them, and the view that shows it."""
+# ruff: noqa: N802 - Qt names the methods that are overridden
+
+from collections.abc import Sequence
+from typing import Any, NamedTuple
+
+from PySide6.QtCore import (
+    QAbstractTableModel,
+    QEvent,
+    QItemSelection,
+    QModelIndex,
+    QPersistentModelIndex,
+    Qt,
+    Signal,
+    Slot,
+)
+from PySide6.QtGui import QColor
+from PySide6.QtWidgets import QAbstractItemView, QTableView, QWidget
+
+Index = QModelIndex | QPersistentModelIndex
+NOWHERE = QModelIndex()
+
+_ROWS_MEASURED = 50  # for the column widths; measuring thousands takes most of a second
+_WIDEST_PX = 420
+_RIGHT = Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter
+_LEFT = Qt.AlignmentFlag.AlignLeft | Qt.AlignmentFlag.AlignVCenter
+
+
+class Column(NamedTuple):
+    """A column: its title with the unit, and what the title's tool-tip says."""
+
+    title: str
+    is_number: bool = False
+    tip: str = ""
+
+
+class Cell(NamedTuple):
+    """What one field shows; rows sort by `key` where it is given, else by the text."""
+
+    text: str
+    key: float | None = None
+    colour: str = ""  # of a square before the text
+    tip: str = ""
+
+
+class Row(NamedTuple):
+    """One row; `key` names what it is about."""
+
+    key: str
+    cells: tuple[Cell, ...]
+    words: str = ""  # found by the filter beside the texts, e.g. a scanned code
+
+
+class RowsModel(QAbstractTableModel):
+    """Read-only rows; replace them all with `show_rows`. Sorts and filters itself: a proxy is 100 times slower."""
+
+    def __init__(self, columns: Sequence[Column], parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self._columns = tuple(columns)
+        self._all: tuple[Row, ...] = ()
+        self._rows: list[Row] = []
+        self._text = ""
+        self._order: tuple[int, Qt.SortOrder] = (-1, Qt.SortOrder.AscendingOrder)
+
+    def show_rows(self, rows: Sequence[Row]) -> None:
+        """Replace all rows."""
+        self.beginResetModel()
+        self._all = tuple(rows)
+        self._rows = self._arranged()
+        self.endResetModel()
+
+    def filter_by(self, text: str) -> None:
+        """Keep the rows that hold every word of `text` somewhere, whatever the case."""
+        self.beginResetModel()
+        self._text = text
+        self._rows = self._arranged()
+        self.endResetModel()
+
+    def key_at(self, row: int) -> str:
+        """Return what the row is about."""
+        return self._rows[row].key
+
+    def row_of(self, key: str) -> int:
+        """Return the first row about `key`, -1 where none is shown."""
+        return next((number for number, row in enumerate(self._rows) if row.key == key), -1)
+
+    @property
+    def n_rows_in_all(self) -> int:
+        """How many rows there are without the filter."""
+        return len(self._all)
+
+    def rowCount(self, parent: Index = NOWHERE) -> int:
+        """Return how many rows are shown."""
+        return 0 if parent.isValid() else len(self._rows)
+
+    def columnCount(self, parent: Index = NOWHERE) -> int:
+        """Return how many columns there are."""
+        return 0 if parent.isValid() else len(self._columns)
+
+    def data(self, index: Index, role: int = Qt.ItemDataRole.DisplayRole) -> Any:  # noqa: ANN401 - Qt's signature
+        """Return what Qt asks of a field."""
+        if not index.isValid():
+            return None
+        cell = self._rows[index.row()].cells[index.column()]
+        if role == Qt.ItemDataRole.DisplayRole:
+            return cell.text
+        if role == Qt.ItemDataRole.TextAlignmentRole:
+            return _RIGHT if self._columns[index.column()].is_number else _LEFT
+        if role == Qt.ItemDataRole.DecorationRole and cell.colour:
+            return QColor(cell.colour)
+        if role == Qt.ItemDataRole.ToolTipRole and cell.tip:
+            return cell.tip
+        return None
+
+    def headerData(  # noqa: D102 - Qt's
+        self, section: int, orientation: Qt.Orientation, role: int = Qt.ItemDataRole.DisplayRole
+    ) -> Any:  # noqa: ANN401 - Qt's signature
+        if orientation != Qt.Orientation.Horizontal or not 0 <= section < len(self._columns):
+            return None
+        column = self._columns[section]
+        if role == Qt.ItemDataRole.DisplayRole:
+            return column.title
+        if role == Qt.ItemDataRole.TextAlignmentRole:
+            return _RIGHT if column.is_number else _LEFT
+        if role == Qt.ItemDataRole.ToolTipRole and column.tip:
+            return column.tip
+        return None
+
+    def sort(self, column: int, order: Qt.SortOrder = Qt.SortOrder.AscendingOrder) -> None:
+        """Sort by a column; -1 restores the plan's order."""
+        self.layoutAboutToBeChanged.emit()
+        before = self.persistentIndexList()
+        keys = [self._rows[index.row()] for index in before]
+        self._order = (column, order)
+        self._rows = self._arranged()
+        places = {id(row): number for number, row in enumerate(self._rows)}
+        after = [self.index(places[id(row)], index.column()) for row, index in zip(keys, before, strict=True)]
+        self.changePersistentIndexList(before, after)
+        self.layoutChanged.emit()
+
+    def _arranged(self) -> list[Row]:
+        words = self._text.casefold().split()
+        rows = [row for row in self._all if _holds(row, words)]
+        column, order = self._order
+        if column >= 0:
+            rows.sort(key=lambda row: _sort_key(row.cells[column]), reverse=order == Qt.SortOrder.DescendingOrder)
+        return rows
+
+
+class RowsView(QTableView):
+    """A table of `RowsModel`; rows are picked whole.
+
+    Signals:
+        picked(str): The key of the row now current; empty where there is none.
+    """
+
+    picked = Signal(str)
+
+    def __init__(self, model: RowsModel, name: str, *, is_sortable: bool = True, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self._rows_model = model
+        model.setParent(self)
+        self.setModel(model)
+        self.setAccessibleName(name)
+        self.setSelectionBehavior(QAbstractItemView.SelectionBehavior.SelectRows)
+        self.setSelectionMode(QAbstractItemView.SelectionMode.SingleSelection)
+        self.setAlternatingRowColors(True)
+        self.setShowGrid(False)
+        self.setWordWrap(False)
+        self.setTabKeyNavigation(False)
+        self.setHorizontalScrollMode(QAbstractItemView.ScrollMode.ScrollPerPixel)
+        self.verticalHeader().hide()
+        header = self.horizontalHeader()
+        header.setHighlightSections(False)
+        header.setResizeContentsPrecision(_ROWS_MEASURED)
+        header.setStretchLastSection(True)
+        if is_sortable:
+            header.setSortIndicator(-1, Qt.SortOrder.AscendingOrder)
+            header.setSortIndicatorClearable(True)
+            self.setSortingEnabled(True)
+        self._set_row_height()
+        model.modelReset.connect(self._tell_picked)
+
+    def fit_columns(self) -> None:
+        """Make every column as wide as its text, within reason."""
+        self.resizeColumnsToContents()
+        for column in range(self._rows_model.columnCount() - 1):
+            self.setColumnWidth(column, min(self.columnWidth(column), _WIDEST_PX))
+
+    def pick(self, key: str) -> None:
+        """Make the first row about `key` current and bring it into view; does nothing where none is shown."""
+        row = self._rows_model.row_of(key)
+        if row >= 0 and row != self.currentIndex().row():
+            self.setCurrentIndex(self._rows_model.index(row, 0))
+
+    def pick_first(self) -> None:
+        """Make the first row current, where there is one."""
+        if self._rows_model.rowCount():
+            self.setCurrentIndex(self._rows_model.index(0, 0))
+
+    @property
+    def picked_key(self) -> str:
+        """The key of the current row, empty where there is none."""
+        index = self.currentIndex()
+        return self._rows_model.key_at(index.row()) if index.isValid() else ""
+
+    def selectionChanged(self, selected: QItemSelection, deselected: QItemSelection) -> None:
+        """Tell which row is current."""
+        super().selectionChanged(selected, deselected)
+        self._tell_picked()
+
+    def changeEvent(self, event: QEvent) -> None:
+        """Follow the text size."""
+        super().changeEvent(event)
+        if event.type() == QEvent.Type.FontChange:
+            self._set_row_height()
+            self.fit_columns()
+
+    @Slot()
+    def _tell_picked(self) -> None:
+        self.picked.emit(self.picked_key)
+
+    def _set_row_height(self) -> None:
+        self.verticalHeader().setMinimumSectionSize(1)
+        self.verticalHeader().setDefaultSectionSize(self.fontMetrics().height() + 8)
+
+
+def _holds(row: Row, words: list[str]) -> bool:
+    if not words:
+        return True
+    text = " ".join([row.key, row.words, *(cell.text for cell in row.cells)]).casefold()
+    return all(word in text for word in words)
+
+
+def _sort_key(cell: Cell) -> tuple[bool, float, str]:
+    """Sort numbers before texts, and A2 before A10 only where ids carry leading zeros, which ours do."""
+    return (cell.key is None, cell.key if cell.key is not None else 0.0, cell.text)

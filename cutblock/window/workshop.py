@@ -1,0 +1,258 @@
+"""The workshop's desk: what to cut in which order, how fast, and the tags to stick on."""
+
+from PySide6.QtCore import Qt, Signal, Slot
+from PySide6.QtWidgets import (
+    QComboBox,
+    QFrame,
+    QHBoxLayout,
+    QPushButton,
+    QSpinBox,
+    QSplitter,
+    QTabWidget,
+    QVBoxLayout,
+    QWidget,
+)
+
+from cutblock.base.units import mm_per_minute
+from cutblock.records.plan import Plan
+from cutblock.window.cautions import CUTTING_CAUTIONS, DEFERENCE, UNCALIBRATED
+from cutblock.window.desk_parts import filter_field, titled
+from cutblock.window.drawing_view import DrawingView
+from cutblock.window.labels import counted, label
+from cutblock.window.rows import CUT_COLUMNS, PIECE_COLUMNS, cut_rows, piece_rows
+from cutblock.window.speed_chart import SpeedChartView
+from cutblock.window.tables import RowsModel, RowsView
+from cutblock.worker.requests import ShownPlan
+
+
+class WorkshopDesk(QWidget):
+    """Cut list, tags and wire speed of a plan, with the cautions of the cutting always in sight.
+
+    Signals:
+        export_asked(): The tags shall be written as PDF; `sheet` and `start` say how.
+    """
+
+    export_asked = Signal()
+
+    def __init__(self, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self._shown: ShownPlan | None = None
+        self.cuts = CutListPage()
+        self.tags = TagsPage()
+        self.speed = SpeedPage()
+        self.pages = QTabWidget()
+        self.pages.setDocumentMode(True)
+        self.pages.addTab(self.cuts, "Cut &list")
+        self.pages.addTab(self.tags, "Piece &tags")
+        self.pages.addTab(self.speed, "Wire &speed")
+        strip = QFrame()
+        strip.setFrameShape(QFrame.Shape.StyledPanel)
+        strip.setAccessibleName("Cautions")
+        inside = QVBoxLayout(strip)
+        inside.setContentsMargins(10, 6, 10, 6)
+        beside = QHBoxLayout()
+        beside.setSpacing(18)
+        for head, text in CUTTING_CAUTIONS:
+            column = QVBoxLayout()
+            column.setSpacing(2)
+            column.addWidget(label(head, "heading"))
+            column.addWidget(label(text, wraps=True), 1)
+            beside.addLayout(column, 1)
+        inside.addLayout(beside)
+        inside.addWidget(label(DEFERENCE, "note", wraps=True))
+        layout = QVBoxLayout(self)
+        layout.addWidget(self.pages, 1)
+        layout.addWidget(strip)
+        self.tags.export_asked.connect(self.export_asked)
+
+    def show_plan(self, shown: ShownPlan) -> None:
+        """Replace everything by this plan."""
+        self.cuts.show_plan(shown)
+        self.tags.show_plan(shown)
+        self.speed.show_plan(shown)
+
+
+class CutListPage(QWidget):
+    """The passes of the wire through one block, in order, beside its picture."""
+
+    def __init__(self, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self._shown: ShownPlan | None = None
+        self.block = QComboBox()
+        self.block.setAccessibleName("Block")
+        self.block.setMinimumWidth(180)
+        self._count = label(kind="note")
+        self.rows = RowsModel(CUT_COLUMNS)
+        self.table = RowsView(self.rows, "Cut list")
+        self.picture = DrawingView("Picture of the block", "No block has been packed.")
+        bar = QHBoxLayout()
+        bar.addWidget(label("&Block", buddy=self.block))
+        bar.addWidget(self.block)
+        bar.addWidget(self._count)
+        bar.addStretch(1)
+        left = QWidget()
+        column = QVBoxLayout(left)
+        column.setContentsMargins(0, 0, 0, 0)
+        column.addLayout(bar)
+        column.addWidget(self.table)
+        split = QSplitter(Qt.Orientation.Horizontal)
+        split.addWidget(left)
+        split.addWidget(self.picture)
+        split.setSizes([900, 400])
+        split.setChildrenCollapsible(False)
+        layout = QVBoxLayout(self)
+        layout.addWidget(split)
+        self.block.currentIndexChanged.connect(self._show_block)
+
+    def show_plan(self, shown: ShownPlan) -> None:
+        """Replace the blocks and show the first."""
+        self._shown = shown
+        self.block.blockSignals(True)
+        self.block.clear()
+        self.block.addItems([block.id for block in shown.plan.blocks])
+        self.block.blockSignals(False)
+        self._show_block(self.block.currentIndex())
+
+    @Slot(int)
+    def _show_block(self, number: int) -> None:
+        if self._shown is None or not 0 <= number < len(self._shown.plan.blocks):
+            self.rows.show_rows([])
+            self.picture.show_drawing(None)
+            self._count.setText("")
+            return
+        plan = self._shown.plan
+        block = plan.blocks[number]
+        self.rows.show_rows(cut_rows(block, plan.timings))
+        self.table.fit_columns()
+        self.picture.show_drawing(self._shown.views.blocks[number])
+        cuts, setups = counted(len(block.cuts), "cut"), counted(len({cut.setup for cut in block.cuts}), "set-up")
+        self._count.setText(f"{number + 1} of {len(plan.blocks)}: {cuts} in {setups}")
+
+
+class TagsPage(QWidget):
+    """All pieces, the tag of the one picked, and the choice of label sheet.
+
+    Signals:
+        export_asked(): The tags shall be written as PDF.
+    """
+
+    export_asked = Signal()
+
+    def __init__(self, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self._shown: ShownPlan | None = None
+        self._numbers: dict[str, int] = {}
+        self.rows = RowsModel(PIECE_COLUMNS)
+        self.table = RowsView(self.rows, "Pieces")
+        self.filter = filter_field("Find a piece, or scan its tag", self.rows, self)
+        self.picture = DrawingView("Tag of the piece", "Pick a piece to see its tag.")
+        self.sheet = QComboBox()
+        self.sheet.setAccessibleName("Label sheet")
+        self.start = QSpinBox()
+        self.start.setAccessibleName("First free label of the sheet")
+        self.start.setMinimum(1)
+        self.export = QPushButton("Export tags as &PDF…")
+        left = QWidget()
+        column = QVBoxLayout(left)
+        column.setContentsMargins(0, 0, 0, 0)
+        column.addWidget(self.filter)
+        column.addWidget(self.table)
+        right = QWidget()
+        beside = QVBoxLayout(right)
+        beside.setContentsMargins(0, 0, 0, 0)
+        beside.addWidget(titled("Tag", self.picture), 1)
+        beside.addWidget(label("Label s&heet", buddy=self.sheet))
+        beside.addWidget(self.sheet)
+        line = QHBoxLayout()
+        line.addWidget(label("Start at label n&umber", buddy=self.start))
+        line.addWidget(self.start)
+        line.addStretch(1)
+        line.addWidget(self.export)
+        beside.addLayout(line)
+        split = QSplitter(Qt.Orientation.Horizontal)
+        split.addWidget(left)
+        split.addWidget(right)
+        split.setSizes([900, 400])
+        split.setChildrenCollapsible(False)
+        layout = QVBoxLayout(self)
+        layout.addWidget(split)
+        self.table.picked.connect(self._show_tag)
+        self.sheet.currentIndexChanged.connect(self._set_most_labels)
+        self.export.clicked.connect(self.export_asked)
+
+    def show_plan(self, shown: ShownPlan) -> None:
+        """Replace the pieces and show the first tag."""
+        self._shown = shown
+        self._numbers = {piece.id: number for number, piece in enumerate(shown.plan.pieces)}
+        chosen = self.sheet.currentData()
+        self.sheet.clear()
+        for sheet in shown.views.sheets:
+            size = f"{sheet.label_width_mm:g} × {sheet.label_height_mm:g} mm"
+            self.sheet.addItem(f"{sheet.title} ({size}, {sheet.columns * sheet.rows} a sheet)", sheet.name)
+        self.sheet.setCurrentIndex(max(self.sheet.findData(chosen), 0))
+        self.rows.show_rows(piece_rows(shown.plan))
+        self.table.fit_columns()
+        self.table.pick_first()
+        self._show_tag(self.table.picked_key)
+
+    @property
+    def sheet_name(self) -> str:
+        """The label sheet chosen; empty where the catalogue has none."""
+        return self.sheet.currentData() or ""
+
+    @Slot(str)
+    def _show_tag(self, piece: str) -> None:
+        number = self._numbers.get(piece)
+        if self._shown is None or number is None:
+            self.picture.show_drawing(None)
+        else:
+            self.picture.show_drawing(self._shown.views.tags[number])
+
+    @Slot(int)
+    def _set_most_labels(self, number: int) -> None:
+        if self._shown is not None and 0 <= number < len(self._shown.views.sheets):
+            sheet = self._shown.views.sheets[number]
+            self.start.setMaximum(sheet.columns * sheet.rows)
+
+
+class SpeedPage(QWidget):
+    """The speed window against density, and this job's settings in words."""
+
+    def __init__(self, parent: QWidget | None = None) -> None:
+        super().__init__(parent)
+        self.chart = SpeedChartView()
+        self._settings = label("", "figure", wraps=True)
+        self._limits = label("", wraps=True)
+        self._basis = label("", "note", wraps=True)
+        layout = QVBoxLayout(self)
+        layout.addWidget(self._settings)
+        layout.addWidget(self._limits)
+        layout.addWidget(self.chart, 1)
+        layout.addWidget(self._basis)
+
+    def show_plan(self, shown: ShownPlan) -> None:
+        """Replace chart and words."""
+        self.chart.show_chart(shown.views.chart)
+        plan = shown.plan
+        self._settings.setText(_settings_text(plan))
+        self._limits.setText(_limits_text(plan))
+        is_calibrated = plan.conditions.is_calibrated
+        self._basis.setText("Calibrated with coupon cuts in this foam." if is_calibrated else UNCALIBRATED)
+
+
+def _settings_text(plan: Plan) -> str:
+    conditions = plan.conditions
+    grade = f"{plan.job.grade}, " if plan.job.grade else ""
+    foam = f"{grade}{conditions.density_kg_m3:.1f} kg/m³"
+    speed = f"{mm_per_minute(conditions.planned_mm_s):.0f} mm/min ({conditions.planned_mm_s:.2f} mm/s)"
+    wire = f"wire {plan.wire.name} mm at {conditions.power_w_m:g} W/m"
+    return f"{foam}; {wire}: {speed}, kerf {conditions.kerf_mm:.2f} mm"
+
+
+def _limits_text(plan: Plan) -> str:
+    conditions = plan.conditions
+    low, high = mm_per_minute(conditions.low_mm_s), mm_per_minute(conditions.high_mm_s)
+    return (
+        f"Keep between {low:.0f} and {high:.0f} mm/min ({conditions.low_mm_s:.2f} and {conditions.high_mm_s:.2f} mm/s) "
+        f"at mid-wire. At the slowest the kerf is {conditions.widest_kerf_mm:.2f} mm."
+    )
