@@ -20,7 +20,8 @@ class CutblockError(Exception):
 
     def __str__(self) -> str:
         head = f"{self.subject}: {self.message}" if self.subject else self.message
-        return f"{head} {self.remedy}" if self.remedy else head
+        sentence = head if head.endswith((".", "!", "?")) else f"{head}."
+        return f"{sentence} {self.remedy}" if self.remedy else sentence
 
     def __reduce__(self) -> tuple[Any, ...]:
         return type(self), (self.message, self.subject, self.remedy)

@@ -68,8 +68,8 @@ def _run(chosen: argparse.Namespace) -> int:
 def _parser() -> argparse.ArgumentParser:
     parser = argparse.ArgumentParser(
         prog="cutblock",
-        description="Plan hot-wire cut EPS formwork: ruled sweeps, both halves used, blocks packed, litres accounted for.",
-        epilog="Without a command the window opens. Exit: 0 clean, 1 errors among the findings, 2 unusable input, 3 a bug.",
+        description="Plan hot-wire cut EPS formwork: ruled sweeps, both halves used, every litre accounted for.",
+        epilog="Without a command the window opens. Exit: 0 clean, 1 errors found, 2 unusable input, 3 a bug.",
     )
     parser.add_argument("--version", action="version", version=f"cutblock {cutblock.__version__}")
     commands = parser.add_subparsers(dest="command", metavar="COMMAND")

@@ -1,0 +1,33 @@
+import numpy as np
+import pytest
+
+from cutblock.base.arrays import floats, frozen_floats, frozen_integers
+from cutblock.base.errors import GeometryError
+
+
+def test_a_frozen_array_is_a_copy_that_cannot_be_written():
+    given = np.zeros((2, 3))
+
+    frozen = frozen_floats(given, (None, 3), "points")
+    given[0, 0] = 5.0
+
+    assert frozen[0, 0] == 0.0
+    with pytest.raises(ValueError, match="read-only"):
+        frozen[0, 0] = 1.0
+
+
+@pytest.mark.parametrize("value", [np.nan, np.inf, -np.inf])
+def test_a_value_that_is_no_number_is_refused_with_its_row(value):
+    points = np.zeros((4, 3))
+    points[2, 1] = value
+
+    with pytest.raises(GeometryError, match="row 3"):
+        floats(points, (None, 3), "points")
+
+
+@pytest.mark.parametrize("shape", [(3,), (2, 2), (1, 2, 3)])
+def test_another_shape_is_refused_with_what_was_wanted(shape):
+    with pytest.raises(GeometryError, match="n x 3"):
+        floats(np.zeros(shape), (None, 3), "points")
+    with pytest.raises(GeometryError, match="n x 3"):
+        frozen_integers(np.zeros(shape, dtype=int), (None, 3), "triangles")
