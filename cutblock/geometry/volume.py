@@ -1,8 +1,9 @@
 """Volumes and areas of the ruled sheet between two rails: exact for polyline rails, over any footprint.
 
 Between neighbouring rulings the sheet is bilinear. Volumes over a footprint are integrated round its edges (Green's
-theorem: the integral of f over a region is that of F dy round it, F being the integral of f along x), split where
-an edge passes under a ruling, so that every piece is smooth and Gauss points integrate it to rounding.
+theorem: the integral of f over a region is that of F dy round it, F being the integral of f along x). F is a sum over
+the strips from ruling to ruling; each strip's part is split where the edge passes under its two rulings, so that every
+piece is smooth and Gauss points integrate it to rounding.
 """
 
 from collections.abc import Callable, Sequence
@@ -13,12 +14,13 @@ from cutblock.base.arrays import Floats, floats
 from cutblock.base.errors import GeometryError
 from cutblock.base.tolerances import PLAN_MM
 
-_EDGE_POINTS = 16  # Gauss points on each smooth piece of an edge
+_EDGE_POINTS = 16  # Gauss points on each of the three smooth pieces of an edge
 _RULING_POINTS = 8  # Gauss points from ruling to ruling
 _FINE_RULING_POINTS = 4  # likewise where the rulings lie close together
 _FINE_RULINGS = 24
 
-# Takes the rails' rows seen at each y (m, n) and x (m,) and returns the integral along x up to there (m,).
+# Takes, for each of the n - 1 strips, m places across the wire in [0, 1] and m values of x, (n - 1, m) each; returns
+# the integral over the strip along x, from its first ruling to there, likewise.
 _Integral = Callable[[Floats, Floats], Floats]
 
 
@@ -114,12 +116,10 @@ def volume_below_within(
     near, far = check_rails(near, far, width_mm)
 
     def below(across: Floats, x: Floats) -> Floats:
-        begins, ends = _rows_at(near, far, across)
-        fractions = np.clip((x[:, None] - begins[..., 0]) / (ends - begins)[..., 0], 0.0, 1.0)
-        rises = (ends - begins)[..., 1]
-        strips: Floats = fractions * (ends - begins)[..., 0] * (begins[..., 1] + fractions * rises / 2.0)
-        total: Floats = strips.sum(axis=1)
-        return total
+        begins, steps = _strips_at(near, far, across)
+        fractions = np.clip((x - begins[..., 0]) / steps[..., 0], 0.0, 1.0)
+        integral: Floats = fractions * steps[..., 0] * (begins[..., 1] + fractions * steps[..., 1] / 2.0)
+        return integral
 
     return _integrate(near, far, length_mm, width_mm, outline, below)
 
@@ -173,22 +173,21 @@ def kerf_volume(
     near, far = check_rails(near, far, width_mm)
     n_points = _RULING_POINTS if len(near) <= _FINE_RULINGS else _FINE_RULING_POINTS
     nodes, weights = _gauss(n_points)
-    # The ruling's vector d = (k, W, dz) runs linearly from row to row.
-    skews, rises = far[:, 0] - near[:, 0], far[:, 1] - near[:, 1]
+    # The ruling's vector d = (skew, W, rise) runs linearly from ruling to ruling.
+    skews, rises = (far - near).T[..., None]
 
     def melted(across: Floats, x: Floats) -> Floats:
-        begins, ends = _rows_at(near, far, across)
-        run, climb = np.moveaxis(ends - begins, -1, 0)
-        fractions = np.clip((x[:, None] - begins[..., 0]) / run, 0.0, 1.0)
-        strips = np.zeros_like(run)
+        begins, steps = _strips_at(near, far, across)
+        run, climb = steps[..., 0], steps[..., 1]
+        fractions = np.clip((x - begins[..., 0]) / run, 0.0, 1.0)
+        areas = np.zeros_like(run)
         for node, weight in zip(nodes, weights, strict=True):  # a handful of Gauss points
             at = fractions * node
-            skew, rise = skews[:-1] + at * np.diff(skews), rises[:-1] + at * np.diff(rises)
+            skew, rise = skews[:-1] + at * np.diff(skews, axis=0), rises[:-1] + at * np.diff(rises, axis=0)
             # |P_s x d| with P_s = (run, 0, climb), d = (skew, W, rise); per unit of y, hence / W.
-            strips += weight * np.hypot(np.hypot(run, climb), (climb * skew - run * rise) / width_mm)
-        width = kerf_mm[0] + across * (kerf_mm[1] - kerf_mm[0])
-        total: Floats = width * (fractions * strips).sum(axis=1)
-        return total
+            areas += weight * np.sqrt(run**2 + climb**2 + ((climb * skew - run * rise) / width_mm) ** 2)
+        integral: Floats = (kerf_mm[0] + across * (kerf_mm[1] - kerf_mm[0])) * fractions * areas
+        return integral
 
     return _integrate(near, far, length_mm, width_mm, outline, melted)
 
@@ -218,23 +217,26 @@ def _integrate(
 
 
 def _along_edge(near: Floats, far: Floats, width_mm: float, start: Floats, end: Floats, integral: _Integral) -> float:
-    """Return the integral of F dy along one edge of the footprint, split where it passes under a ruling."""
+    """Return the integral of F dy along one edge of the footprint."""
     skews = (far - near)[:, 0] / width_mm
-    beyond = start[0] - near[:, 0] - skews * start[1], end[0] - near[:, 0] - skews * end[1]
-    is_crossed = beyond[0] * beyond[1] < 0.0
-    crossings = (beyond[0] / np.where(is_crossed, beyond[0] - beyond[1], 1.0))[is_crossed]
-    breaks = np.concatenate([[0.0], np.sort(crossings), [1.0]])
+    before, behind = (point[0] - near[:, 0] - skews * point[1] for point in (start, end))
+    is_crossed = before * behind < 0.0
+    crossings = np.where(is_crossed, before / np.where(is_crossed, before - behind, 1.0), 0.0)
+    ends = np.zeros(len(near) - 1), np.ones(len(near) - 1)
+    breaks = np.sort(np.stack([ends[0], crossings[:-1], crossings[1:], ends[1]], axis=1), axis=1)
     nodes, weights = _gauss(_EDGE_POINTS)
-    steps = np.diff(breaks)
-    along = (breaks[:-1, None] + steps[:, None] * nodes).ravel()
+    lengths = np.diff(breaks, axis=1)[..., None]
+    along = (breaks[:, :-1, None] + lengths * nodes).reshape(len(breaks), -1)
     x, y = start[0] + along * (end[0] - start[0]), start[1] + along * (end[1] - start[1])
-    return float((steps[:, None] * weights).ravel() @ integral(y / width_mm, x) * (end[1] - start[1]))
+    parts = (lengths * weights).reshape(len(breaks), -1) * integral(y / width_mm, x)
+    return float(parts.sum() * (end[1] - start[1]))
 
 
-def _rows_at(near: Floats, far: Floats, across: Floats) -> tuple[Floats, Floats]:
-    """Return x and z where each ruling passes `across` (m,), and where the next one does: (m, n - 1, 2) each."""
-    rows = near + across[:, None, None] * (far - near)
-    return rows[:, :-1], rows[:, 1:]
+def _strips_at(near: Floats, far: Floats, across: Floats) -> tuple[Floats, Floats]:
+    """Return x and z of each strip's first ruling at places across (n - 1, m), and the steps to its second one."""
+    begins = near[:-1, None] + across[..., None] * (far - near)[:-1, None]
+    ends = near[1:, None] + across[..., None] * (far - near)[1:, None]
+    return begins, ends - begins
 
 
 def check_cover(near: Floats, far: Floats, length_mm: float) -> None:

@@ -45,6 +45,8 @@ def check_partner(
     """
     serving = partner.serving[0]
     samples, normals, areas = _turned_samples(lower, partner, panel, turn)
+    if not len(samples):
+        return None
     raised = conditions.kerf_mm / 2.0 - job.coat_mm
     aimed = {Favour.LOWER: -raised, Favour.SHARE: 0.0, Favour.UPPER: raised}[job.favour]
 
@@ -55,12 +57,15 @@ def check_partner(
     lift = best_lift(off(0.0, aimed), normals[:, 2])
     packing = 0.0
     deviations = off(lift, raised)
+    # What the half was meant to leave at each point of its face is the same everywhere, along the normal.
+    fitted = deviations - (raised - aimed)
     if np.abs(deviations).max() > job.tolerance_mm:
         packing = best_lift(deviations, normals[:, 2])
         deviations = off(lift + packing, raised)
         if np.abs(deviations).max() > job.tolerance_mm:
             return None
     max_mm, rms_mm, p95_mm = deviation_measures(deviations, areas)
+    fit_max_mm, fit_rms_mm, _ = deviation_measures(fitted, areas)
     rotation = serving.rotation @ TURNS[turn]
     shift = serving.rotation @ (_middle(partner) - TURNS[turn] @ _middle(lower) + [0.0, 0.0, lift + packing])
     return Partnership(
@@ -72,6 +77,8 @@ def check_partner(
             max_mm=max_mm,
             rms_mm=rms_mm,
             p95_mm=p95_mm,
+            fit_max_mm=fit_max_mm,
+            fit_rms_mm=fit_rms_mm,
             strip=serving.strip,
             n_strips=serving.n_strips,
         ),
