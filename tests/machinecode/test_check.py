@@ -56,6 +56,12 @@ def test_every_change_of_one_digit_is_found(written):
         assert is_refused(plan, program.name, text[:place] + other + text[place + 1 :]), text[place - 30 : place + 10]
 
 
+def test_every_added_digit_is_found(written):
+    plan, program = written
+    for place in (match.end() for match in re.finditer(r"[XYUVFSGM]-?[\d.]+", program.text)):
+        assert is_refused(plan, program.name, program.text[:place] + "7" + program.text[place:])
+
+
 def test_every_missing_line_is_found(written):
     plan, program = written
     lines = program.text.splitlines(keepends=True)
@@ -92,6 +98,21 @@ def test_every_truncation_is_found(written):
 def test_other_line_ends_words_and_signs_are_found(written, old, new):
     plan, program = written
     assert is_refused(plan, program.name, program.text.replace(old, new))
+
+
+def test_axes_that_change_their_values_are_found(written):
+    plan, program = written
+    assert is_refused(plan, program.name, re.sub(r"X(\S+) Y(\S+)", r"Y\1 X\2", program.text))
+
+
+def test_a_missing_last_line_is_found_after_an_end_word():
+    plan = PLANS["sweep"]
+    plan = replace(plan, machine=replace(plan.machine, header=("%", "G21", "G90", "G61"), footer=("M2", "%")))
+    (program,) = write_programs(plan)
+    check_program(plan, program.name, program.text)
+
+    with pytest.raises(CheckFailed, match='the file ends where the plan wants "%"'):
+        check_program(plan, program.name, program.text.removesuffix("%\n"))
 
 
 def test_a_failure_names_file_and_line_and_both_values():

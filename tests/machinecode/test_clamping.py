@@ -84,6 +84,11 @@ SWEEP = {"kind": CutKind.SWEEP, "sweep": "SM-S1-A01"}
             "part of cut 3",
         ),
         (
+            [cut(1, 1, AT, SIZE, "x", 500.0), cut(2, 1, *BEHIND, "z", 130.0), cut(3, 1, *FRONT, "z", 130.0)],
+            NotCuttable,
+            "part of cut 3",
+        ),
+        (
             [cut(1, 1, AT, SIZE, "x", 500.0), cut(2, 1, *FRONT, "z", 130.0), cut(3, 1, *BEHIND, "z", 130.0)],
             NotCuttable,
             "part of cut 3",

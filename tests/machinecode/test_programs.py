@@ -105,6 +105,47 @@ def test_a_turned_billet_is_cut_as_one_that_is_not():
     assert "turned a quarter" not in straight.text
 
 
+def cutting_moves(text, sweep):
+    """The moves of one sweep of a program."""
+    start = text.index(f"sweep {sweep.id})")
+    return moves_of(text[text.index("M3", start) : text.index("M5", start)])
+
+
+@pytest.mark.parametrize("turned", [False, True])
+def test_sweeps_of_parts_cut_apart_in_one_clamping_run_where_the_parts_stand(turned):
+    # Two billets one above the other and one behind them: the level cut first, the upright one from the top down.
+    lower, upper = skew_sweep("SM-K-A01", seed=1), skew_sweep("SM-K-A02", seed=2)
+    size = (700.0, 900.0, 250.0) if turned else (900.0, 700.0, 250.0)
+    whole = (700.0, 1000.0, 501.2) if turned else (1000.0, 700.0, 501.2)
+    ahead = (0.0, 100.0, 0.0) if turned else (100.0, 0.0, 0.0)
+    places = [tuple(np.add(AT, ahead)), tuple(np.add(np.add(AT, ahead), (0.0, 0.0, 251.2)))]
+    stack = places[0], (*size[:2], 501.2)
+    axis = "y" if turned else "x"
+    cuts = [
+        cut(1, 1, AT, whole, axis, places[0]["xyz".index(axis)] - 1.2, turn=turned),
+        cut(2, 1, *stack, "z", places[0][2] + 250.0, turn=turned),
+        cut(3, 1, places[1], size, kind=CutKind.SWEEP, sweep=upper.id, turn=turned),
+        cut(4, 1, places[0], size, kind=CutKind.SWEEP, sweep=lower.id, turn=turned),
+    ]
+    billets = [
+        PlacedBillet(sweep=sweep.id, at_mm=place, size_mm=size, turned=turned)
+        for sweep, place in zip((lower, upper), places, strict=True)
+    ]
+    plan = roomy_plan(
+        sweeps=(lower, upper), timings=(timing_of(lower), timing_of(upper)), blocks=(block_of(cuts, billets),)
+    )
+
+    (program,) = write_programs(plan)
+
+    for sweep, up_mm in ((lower, 0.0), (upper, 251.2)):
+        (alone,) = write_programs(billet_plan(sweep, turned=turned))
+        here, there = cutting_moves(program.text, sweep), cutting_moves(alone.text, sweep)
+        np.testing.assert_allclose(here[0], there[0] + [100.0, up_mm, 100.0, up_mm], atol=1.1e-3)
+        np.testing.assert_array_equal(here[1], there[1])
+    assert "Take away both halves of SM-K-A02" in program.text
+    assert "Take away both halves of SM-K-A01" not in program.text
+
+
 def test_a_billet_clamped_across_its_length_is_refused():
     plan = billet_plan(skew_sweep())
     (block,) = plan.blocks
@@ -263,13 +304,33 @@ def test_a_machine_no_safe_program_can_be_written_for_is_refused(changes, words)
     assert [finding.code for finding in find_uncuttable(plan)] == ["machine-cannot-cut"]
 
 
-def test_a_sweep_that_begins_or_ends_in_foam_is_refused():
+@pytest.mark.parametrize(
+    ("ruling", "x_mm", "words"), [(0, 0.5, r"begins at 0\.50 mm"), (-1, 899.5, r"ends at 899\.50 mm along a billet")]
+)
+def test_a_sweep_that_begins_or_ends_in_foam_is_refused(ruling, x_mm, words):
     sweep = skew_sweep()
     near = sweep.near.copy()
-    near[0, 0] = 0.5
+    near[ruling, 0] = x_mm
 
-    with pytest.raises(NotCuttable, match=r"SM-K-A01: its wire begins at 0\.50 mm"):
+    with pytest.raises(NotCuttable, match=words) as caught:
         write_programs(billet_plan(replace(sweep, near=near)))
+    assert caught.value.subject == "SM-K-A01"
+
+
+def test_a_sweep_above_the_lift_of_a_tower_is_refused():
+    plan = billet_plan(sample_sweep("SM-K-A01"), machine=roomy_machine(lift_mm=800.0))
+
+    # At the end of the run-out the faces have 88 and 212, so the far tower 400 + 212 + 1.8 x 124.
+    with pytest.raises(NotCuttable, match=r"ruling 63 the far vertical axis V would be at 835\.20 mm; it reaches"):
+        write_programs(plan)
+
+
+def test_air_moves_keep_to_the_speed_of_the_axes():
+    (program,) = write_programs(billet_plan(skew_sweep(), machine=roomy_machine(air_speed_mm_s=90.0, speed_mm_s=30.0)))
+
+    positions, seconds = moves_of(program.text)
+    speeds = np.abs(np.diff(positions, axis=0)).max(axis=1) / seconds[1:]
+    assert speeds.max() == pytest.approx(30.0, rel=1e-4)
 
 
 def test_a_sweep_without_its_times_is_refused():
