@@ -173,7 +173,7 @@ def _melt_findings(sweeps: Sequence[Sweep], steps: Steps, seconds: Floats, condi
             f"From {steps.travel[rows[0]]:.0f} to {steps.travel[rows[-1]]:.0f} mm of the travel the wire falls to"
             f" {speed:.2f} mm/s at {place_mm:.0f} mm from the near face, under the {conditions.low_mm_s:.2f} mm/s that"
             f" keep the kerf at {conditions.widest_kerf_mm:g} mm: up to {kerf_mm:.1f} mm may melt there."
-            " Divide the panel, lay the wire the other way, or cut with less power."
+            " Divide the panel or lay the wire the other way."
         )
         findings.append(Finding(severity=Severity.WARNING, code="over-melt", subject=sweeps[index].id, text=text))
     return findings
