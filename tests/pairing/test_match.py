@@ -134,9 +134,7 @@ def test_a_thousand_repeated_panels_of_a_shape_and_its_complement_pair_quickly()
     assert sum(len(sweep.serving) == 1 for sweep in sweeps) == 1
 
 
-@pytest.mark.parametrize(
-    ("favour", "expected_mm"), [(Favour.SHARE, 0.6), (Favour.LOWER, 1.2), (Favour.UPPER, 0.0)]
-)
+@pytest.mark.parametrize(("favour", "expected_mm"), [(Favour.SHARE, 0.6), (Favour.LOWER, 1.2), (Favour.UPPER, 0.0)])
 def test_the_kerf_falls_on_the_half_that_favour_says(favour, expected_mm):
     raised = {Favour.SHARE: 0.0, Favour.LOWER: 0.6, Favour.UPPER: -0.6}[favour]
     (a, cut), b = conoid("A", 1e-3), conoid("B", 1e-3, is_turned=True)
@@ -202,7 +200,7 @@ def test_billets_of_other_sizes_do_not_pair():
 
 def test_outlines_pair_only_with_their_mirrored_like():
     trapezoid = np.array([[0.0, 0.0], [LENGTH, 0.0], [LENGTH, 700.0], [0.0, WIDTH]])
-    about_x = (trapezoid * [1.0, -1.0])[::-1] + [0.0, WIDTH]
+    about_x = np.array([[0.0, 0.0], [LENGTH, 300.0], [LENGTH, WIDTH], [0.0, WIDTH]])
 
     def hypar(name, ring):
         return sample_panel(name, outline=(ring,), is_rectangle=False), sample_sweep(f"SM-{name}", (name,))
@@ -215,7 +213,7 @@ def test_outlines_pair_only_with_their_mirrored_like():
 
 def test_triangles_in_a_corner_pair_too():
     triangle = np.array([[0.0, 0.0], [LENGTH, 0.0], [0.0, WIDTH]])
-    about_y = (triangle * [-1.0, 1.0])[::-1] + [LENGTH, 0.0]
+    about_y = np.array([[0.0, 0.0], [LENGTH, 0.0], [LENGTH, WIDTH]])
 
     def hypar(name, ring):
         return sample_panel(name, outline=(ring,), is_rectangle=False), sample_sweep(f"SM-{name}", (name,))
