@@ -6,7 +6,8 @@ from cutblock.base.arrays import Floats
 from cutblock.base.errors import GeometryError
 from cutblock.geometry.ruled import sheet_normals
 
-N_TURNS = 4
+N_TURNS = 6
+SETTLED_MM = 1e-5  # the steps after it are of second order
 
 
 def face_deviation(
@@ -30,17 +31,17 @@ def face_deviation(
         (m,) mm; positive where the finished face stands above the wanted surface.
     """
     deviations = np.zeros(len(samples))
-    moved = samples
+    # The sheet's normal where the last foot lay; the first guess moves the foot by the offset along the form's normal.
+    sheet_normal = normals
     for _ in range(N_TURNS):
-        _, sheet_normal = sheet_normals(near, far, width_mm, moved[:, 0], moved[:, 1])
         foot = samples + deviations[:, None] * normals - offset_mm * sheet_normal
         height, sheet_normal = sheet_normals(near, far, width_mm, foot[:, 0], foot[:, 1])
         facing = np.einsum("ij,ij->i", normals, sheet_normal)
         facing = np.where(np.abs(facing) < 0.1, np.copysign(0.1, facing), facing)
+        # Distance of the foot from the tangent plane, and how the offset surface lies to its own normal.
         step = (height - foot[:, 2]) * sheet_normal[:, 2] / facing
         deviations = deviations + step
-        moved = foot
-        if not step.size or float(np.abs(step).max()) < 1e-9:
+        if not step.size or float(np.abs(step).max()) < SETTLED_MM:
             break
     return deviations
 

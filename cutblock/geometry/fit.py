@@ -21,7 +21,8 @@ GRIDS = (65, 129, 257)
 SPLINE_ERROR_MM = 1e-5
 # A least-squares fit whose largest deviation lies between these shares of the tolerance is worth polishing: the least
 # largest deviation is about half to three quarters of it.
-NEARLY = 0.9
+NEARLY = 0.95
+ENOUGH = 0.9
 POLISH_REACH = 2.2
 
 
@@ -134,7 +135,9 @@ def _grid(
     return grid, height_field(grid, length_mm, width_mm)
 
 
-def fit_patches(patches: Sequence[Patch], tolerance_mm: float, n_controls: int = N_CONTROLS) -> tuple[SheetFit, ...]:
+def fit_patches(
+    patches: Sequence[Patch], tolerance_mm: float, *, is_polished: bool = True, n_controls: int = N_CONTROLS
+) -> tuple[SheetFit, ...]:
     """Return for each patch the ruled sheet closest to it.
 
     Both families of rulings and rulings of one constant skew are tried. The closest sheet is kept; of sheets that
@@ -143,6 +146,7 @@ def fit_patches(patches: Sequence[Patch], tolerance_mm: float, n_controls: int =
     Args:
         patches: Any number, of any sizes; those with equally many grid values are fitted together.
         tolerance_mm: Wanted largest normal deviation.
+        is_polished: Whether sheets that just miss the tolerance are brought closer to the least largest deviation.
         n_controls: Control values of each rail.
     """
     results: list[SheetFit | None] = [None] * len(patches)
@@ -155,6 +159,7 @@ def fit_patches(patches: Sequence[Patch], tolerance_mm: float, n_controls: int =
             batch = numbers[first : first + BATCH]
             target = make_target([patches[number] for number in batch])
             fits = _fit_batch(target, tolerance_mm, n_controls)
+            fits = _polished(target, fits, tolerance_mm) if is_polished else fits
             for place, number in enumerate(batch):
                 results[number] = _with_plane(target, fits, place)
     return tuple(fit for fit in results if fit is not None)
@@ -162,7 +167,8 @@ def fit_patches(patches: Sequence[Patch], tolerance_mm: float, n_controls: int =
 
 def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
     first, second, constant = best_paths(target)
-    best = refine(target, first)
+    give_up_mm = 2.0 * POLISH_REACH * tolerance_mm
+    best = refine(target, first, give_up_mm)
     is_worth = (second.rms_mm <= 2.0 * first.rms_mm + 0.1 * tolerance_mm) & ~_alike(first, second)
     best = _rival(target, best, second, is_worth, tolerance_mm)
     is_worth = (constant.rms_mm <= 2.0 * first.rms_mm + 0.1 * tolerance_mm) & (best.max_mm > 0.1 * tolerance_mm)
@@ -171,16 +177,16 @@ def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
     straight = Paths(first.stations, np.zeros_like(first.skews), first.rms_mm)
     best = _rival(target, best, straight, best.max_mm > tolerance_mm, tolerance_mm)
     if n_controls != N_CONTROLS:
-        best = improve(target, recentre(target, best, n_controls), n_steps=20)
-    is_near = (best.max_mm > NEARLY * tolerance_mm) & (best.max_mm < POLISH_REACH * tolerance_mm)
-    return _polished(target, best, np.flatnonzero(is_near))
+        best = improve(target, recentre(target, best, n_controls), n_steps=20, precision=1e-7)
+    return best
 
 
-def _polished(target: Target, fits: Fits, index: Ints) -> Fits:
-    """Return the fits with those of the given indices brought closer to the least largest deviation."""
+def _polished(target: Target, fits: Fits, tolerance_mm: float) -> Fits:
+    """Return the fits with those that miss the tolerance by little brought closer to the least largest deviation."""
+    index = np.flatnonzero((fits.max_mm > NEARLY * tolerance_mm) & (fits.max_mm < POLISH_REACH * tolerance_mm))
     if not len(index):
         return fits
-    return fits.put(index, polish(target.take(index), fits.take(index)))
+    return fits.put(index, polish(target.take(index), fits.take(index), ENOUGH * tolerance_mm))
 
 
 def _alike(paths: Paths, others: Paths) -> Bools:
@@ -195,7 +201,7 @@ def _rival(target: Target, best: Fits, paths: Paths, is_worth: Bools, tolerance_
     index: Ints = np.flatnonzero(is_worth)
     if not len(index):
         return best
-    rivals = refine(target.take(index), paths.take(index))
+    rivals = refine(target.take(index), paths.take(index), 2.0 * POLISH_REACH * tolerance_mm)
     old = best.take(index)
     gain = old.max_mm - rivals.max_mm
     less_skew = np.abs(rivals.controls[:, 0]).max(axis=1) < np.abs(old.controls[:, 0]).max(axis=1) - 1e-6

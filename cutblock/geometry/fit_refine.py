@@ -15,14 +15,27 @@ from cutblock.geometry.fit_start import LEAST_ADVANCE, Paths
 from cutblock.geometry.fit_target import NODE_WEIGHTS, Target
 
 N_CONTROLS = 16
-N_STATIONS = 65
+N_STATIONS = 57
 N_ROUNDS = 3
 N_STEPS = 8
+PRECISION = 1e-3
+FLOOR_MM = 1e-6  # no patch is improved below this root mean square
+RECENTRE_MM = 1.0
+
+
+def _stations(crowding: float = 0.6) -> tuple[Floats, Floats]:
+    """Return places in [0, 1] that crowd towards both ends, where rulings only cross a corner, and their weights."""
+    even = np.linspace(0.0, 1.0, N_STATIONS)
+    places = even - crowding * np.sin(2.0 * np.pi * even) / (2.0 * np.pi)
+    return places, 1.0 - crowding * np.cos(2.0 * np.pi * even)
+
+
+STATIONS, STATION_WEIGHTS = _stations()
 
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Basis:
-    """Cubic B-splines on equal knots over [0, 1], at equally spaced stations."""
+    """Cubic B-splines on equal knots over [0, 1], at the stations of every fit."""
 
     values: Floats  # (s, c)
     rates: Floats  # (s, c) first derivatives by u
@@ -39,13 +52,12 @@ class Basis:
 @lru_cache(maxsize=8)
 def spline_stations(n_controls: int) -> Basis:
     """Return the basis of n control values at the stations every fit uses."""
-    stations = np.linspace(0.0, 1.0, N_STATIONS)
-    values = basis_at(stations, n_controls)
+    values = basis_at(STATIONS, n_controls)
     differences = np.diff(np.eye(n_controls), n=3, axis=0)
     normal = values.T @ values
     return Basis(
         values=values,
-        rates=basis_at(stations, n_controls, 1),
+        rates=basis_at(STATIONS, n_controls, 1),
         products=(values[:, :, None] * values[:, None, :]).reshape(N_STATIONS, -1),
         inverse=np.linalg.pinv(values),
         smooth_inverse=np.linalg.solve(normal + 3.0 * differences.T @ differences, values.T),
@@ -85,23 +97,24 @@ class Fits:
         return Fits(*columns)
 
 
-def refine(target: Target, paths: Paths) -> Fits:
-    """Return least-squares fits that start from paths of skews."""
+def refine(target: Target, paths: Paths, give_up_mm: float = np.inf) -> Fits:
+    """Return least-squares fits that start from paths of skews; those still worse than `give_up_mm` are left rough."""
     basis = spline_stations(N_CONTROLS)
     start, end = _reach(target, paths.stations, paths.skews)
-    stations = start[:, None] + (end - start)[:, None] * np.linspace(0.0, 1.0, N_STATIONS)
+    stations = start[:, None] + (end - start)[:, None] * STATIONS
     skews = np.stack([np.interp(s, a, k) for s, a, k in zip(stations, paths.stations, paths.skews, strict=True)])
     controls = np.zeros((len(skews), 3, N_CONTROLS))
     controls[:, 0] = skews @ basis.smooth_inverse.T
     controls[:, 0] *= _room(controls[:, 0], end - start, basis)[:, None]
     no_fit = np.full(len(start), np.inf)
-    fits = Fits(controls, start, end, no_fit, no_fit)
-    for turn in range(N_ROUNDS):
-        fits = improve(target, fits, first=turn == 0)
+    fits = improve(target, _raised(target, Fits(controls, start, end, no_fit, no_fit)))
+    for _ in range(N_ROUNDS - 1):
         moved = recentre(target, fits, N_CONTROLS)
-        if turn == N_ROUNDS - 1 or float(np.abs(moved.start - fits.start).max()) < 1.0:
+        shift = np.maximum(np.abs(moved.start - fits.start), np.abs(moved.end - fits.end))
+        index = np.flatnonzero((shift > RECENTRE_MM) & (fits.max_mm < give_up_mm))
+        if not len(index):
             break
-        fits = moved
+        fits = fits.put(index, improve(target.take(index), moved.take(index), n_steps=N_STEPS // 2))
     return fits
 
 
@@ -123,7 +136,7 @@ def recentre(target: Target, fits: Fits, n_controls: int) -> Fits:
     skew_start, skew_end = fits.controls[:, 0, 0], fits.controls[:, 0, -1]
     start = target.low[:, 0, 0] - np.maximum(skew_start * lean[:, 0], skew_start * lean[:, -1])
     end = target.high[:, 0, 0] - np.minimum(skew_end * lean[:, 0], skew_end * lean[:, -1])
-    stations = start[:, None] + (end - start)[:, None] * np.linspace(0.0, 1.0, N_STATIONS)
+    stations = start[:, None] + (end - start)[:, None] * STATIONS
     values = sheet_at(fits, stations)[0]
     return replace(fits, controls=values @ basis.inverse.T, start=start, end=end)
 
@@ -165,22 +178,26 @@ class _State:
     counts: Bools  # (p, s, q) nodes over the wanted area
     cost: Floats  # (p,)
 
+    def take(self, index: Ints) -> "_State":
+        """Return the state of the patches of the given indices."""
+        return _State(*(getattr(self, name)[index] for name in self.__slots__))
+
 
 def _evaluate(target: Target, fits: Fits, basis: Basis, emphasis: Floats | None) -> _State:
     values = fits.controls @ basis.values.T  # (p, 3, s)
     length = fits.end - fits.start
-    stations = fits.start[:, None] + length[:, None] * np.linspace(0.0, 1.0, len(basis.values))
+    stations = fits.start[:, None] + length[:, None] * STATIONS
     lean = target.places - 0.5
     x = stations[:, :, None] + values[:, 0, :, None] * lean
     heights, slope_x, slope_y = target.heights(x)
     sheet = values[:, 1, :, None] * (1.0 - target.places) + values[:, 2, :, None] * target.places
     plane_x = target.planes[:, 1][:, None, None]
     cosines = 1.0 / np.sqrt(1.0 + (slope_x + plane_x) ** 2 + slope_y**2)
-    ramp = (0.5 * length / len(basis.values))[:, None, None]
+    ramp = (0.5 / N_STATIONS) * length[:, None, None] * STATION_WEIGHTS[:, None]
     advance = 1.0 + (fits.controls[:, 0] @ basis.rates.T / length[:, None])[:, :, None] * lean
     weights = target.weight(x, ramp)
     counts = weights >= 0.5 * NODE_WEIGHTS
-    weights = weights * np.maximum(advance, 0.0)
+    weights = weights * np.maximum(advance, 0.0) * STATION_WEIGHTS[:, None]
     if emphasis is not None:
         weights = weights * emphasis
     residuals = (sheet - heights) * cosines
@@ -209,8 +226,8 @@ def improve(
     target: Target,
     fits: Fits,
     *,
-    first: bool = False,
     n_steps: int = N_STEPS,
+    precision: float = PRECISION,
     emphasis: Floats | None = None,
     start_damping: float = 1e-4,
 ) -> Fits:
@@ -219,58 +236,105 @@ def improve(
     Args:
         target: What is fitted.
         fits: Where to start.
-        first: The elevations are not set yet; find them for the given skews before anything moves.
         n_steps: Most steps.
+        precision: A patch is left alone once a step promises less than this share of its squared residual.
         emphasis: Extra weights (p, s, q) of the nodes.
         start_damping: Relative to the diagonal of the normal equations.
     """
     basis = spline_stations(fits.controls.shape[2])
+    result = fits
+    index: Ints = np.arange(len(fits.start))
+    damping = np.full(len(index), start_damping)
     state = _evaluate(target, fits, basis, emphasis)
-    n_p, _, n_c = fits.controls.shape
-    damping = np.full(n_p, start_damping)
-    length = fits.end - fits.start
-    for step in range(n_steps + int(first)):
-        matrix, gradient = _normal_equations(target, state, basis)
-        diagonal = np.einsum("pii->pi", matrix).copy()
-        weight = np.where(np.arange(3 * n_c) < n_c, 1e12, 0.0) if first and step == 0 else damping[:, None]
-        extra = weight * diagonal + 1e-13 * diagonal.max(axis=1, keepdims=True)
-        matrix[:, np.arange(3 * n_c), np.arange(3 * n_c)] += extra
-        change = np.linalg.solve(matrix, -gradient[:, :, None])[:, :, 0].reshape(n_p, 3, n_c)
+    for _ in range(n_steps):
+        change, promise = _step(target, state, basis, damping)
         trial = replace(fits, controls=fits.controls + change)
         trial_state = _evaluate(target, trial, basis, emphasis)
-        fall = state.cost - trial_state.cost
-        is_better = (fall > 0.0) & (_room(trial.controls[:, 0], length, basis) >= 1.0)
-        gain = np.where(is_better, fall, 0.0)
-        damping = np.where(is_better, np.maximum(damping / 50.0, 1e-14), np.minimum(damping * 30.0, 1e8))
+        has_room = _room(trial.controls[:, 0], fits.end - fits.start, basis) >= 1.0
+        is_better = (trial_state.cost < state.cost) & has_room
+        damping = np.where(is_better, np.maximum(damping / 20.0, 1e-12), damping * 10.0)
         fits = replace(fits, controls=np.where(is_better[:, None, None], trial.controls, fits.controls))
         state = _pick(is_better, trial_state, state)
-        is_done = is_better & (gain <= 1e-6 * state.cost + 1e-22) | (damping >= 1e6)
-        if is_done.all() and not (first and step == 0):
+        is_open = (promise > precision * state.cost + FLOOR_MM**2 * N_STATIONS) & (damping < 1e4)
+        result = result.put(index, _measured(fits, state))
+        left = np.flatnonzero(is_open)
+        if not len(left):
             break
-    return _measured(fits, state)
+        if len(left) < len(index):
+            index, damping, fits, target, state = (
+                index[left],
+                damping[left],
+                fits.take(left),
+                target.take(left),
+                state.take(left),
+            )
+            emphasis = None if emphasis is None else emphasis[left]
+    return result
 
 
-def polish(target: Target, fits: Fits, n_turns: int = 16) -> Fits:
+def _step(target: Target, state: _State, basis: Basis, damping: Floats) -> tuple[Floats, Floats]:
+    """Return the change of the control values (p, 3, c), and how much of the cost it would take if all were linear."""
+    matrix, gradient = _normal_equations(target, state, basis)
+    n_unknowns = gradient.shape[1]
+    diagonal = np.einsum("pii->pi", matrix).copy()
+    extra = damping[:, None] * diagonal + 1e-13 * diagonal.max(axis=1, keepdims=True)
+    matrix[:, np.arange(n_unknowns), np.arange(n_unknowns)] += extra
+    change = np.linalg.solve(matrix, -gradient[:, :, None])[:, :, 0]
+    promise = -np.einsum("pi,pi->p", change, gradient)
+    return change.reshape(len(change), 3, -1), promise
+
+
+def _raised(target: Target, fits: Fits) -> Fits:
+    """Return the fits with the elevations that are best for their skews, a linear problem."""
+    basis = spline_stations(fits.controls.shape[2])
+    matrix, gradient = _normal_equations(target, _evaluate(target, fits, basis, None), basis)
+    n_c = basis.n_controls
+    matrix, gradient = matrix[:, n_c:, n_c:], gradient[:, n_c:]
+    diagonal = np.einsum("pii->pi", matrix).copy()
+    matrix[:, np.arange(2 * n_c), np.arange(2 * n_c)] += 1e-13 * diagonal.max(axis=1, keepdims=True)
+    change = np.linalg.solve(matrix, -gradient[:, :, None])[:, :, 0].reshape(-1, 2, n_c)
+    controls = fits.controls.copy()
+    controls[:, 1:] += change
+    return replace(fits, controls=controls)
+
+
+def polish(target: Target, fits: Fits, enough_mm: float, n_turns: int = 16) -> Fits:
     """Return the fits brought closer to the least largest deviation, each the best met on the way.
 
     Lawson's weights: points far off count for more from turn to turn, in proportion to how far off they are (Lawson
     1961; Rice and Usow, Mathematics of Computation 22 (1968) 118-127). Linear convergence, and no guarantee where the
     skew moves; a few turns take most of what there is to gain.
+
+    Args:
+        target: What is fitted.
+        fits: Where to start.
+        enough_mm: A patch is left alone once its largest deviation is below this.
+        n_turns: Most changes of the weights.
     """
     basis = spline_stations(fits.controls.shape[2])
-    emphasis = np.ones((len(fits.start), N_STATIONS, target.places.shape[2]))
     best = current = fits
+    index: Ints = np.arange(len(fits.start))
+    emphasis = np.ones((len(index), N_STATIONS, target.places.shape[2]))
     for _ in range(n_turns):
-        state = _evaluate(target, current, basis, None)
-        sizes = np.where(state.counts, np.abs(state.residuals), 0.0)
-        largest = sizes.max(axis=(1, 2), keepdims=True)
-        emphasis = emphasis * np.where(state.counts, sizes / np.maximum(largest, 1e-12), 1.0)
-        mean = np.where(state.counts, emphasis, 0.0).sum(axis=(1, 2)) / state.counts.sum(axis=(1, 2))
-        emphasis = np.maximum(emphasis / np.maximum(mean, 1e-12)[:, None, None], 1e-3)
-        current = improve(target, current, n_steps=3, emphasis=emphasis, start_damping=1e-2)
-        better = np.flatnonzero(current.max_mm < best.max_mm)
-        best = best.put(better, current.take(better))
+        left = np.flatnonzero(best.max_mm[index] > enough_mm)
+        if not len(left):
+            break
+        index, emphasis, current = index[left], emphasis[left], current.take(left)
+        part = target.take(index)
+        emphasis = _shifted(emphasis, _evaluate(part, current, basis, None))
+        current = improve(part, current, n_steps=3, emphasis=emphasis, start_damping=1e-2)
+        better = np.flatnonzero(current.max_mm < best.max_mm[index])
+        best = best.put(index[better], current.take(better))
     return best
+
+
+def _shifted(emphasis: Floats, state: _State) -> Floats:
+    """Return Lawson's next weights, of mean 1 over the nodes that count."""
+    sizes = np.where(state.counts, np.abs(state.residuals), 0.0)
+    largest = np.maximum(sizes.max(axis=(1, 2), keepdims=True), 1e-12)
+    emphasis = emphasis * np.where(state.counts, sizes / largest, 1.0)
+    mean = np.where(state.counts, emphasis, 0.0).sum(axis=(1, 2)) / np.maximum(state.counts.sum(axis=(1, 2)), 1)
+    return np.maximum(emphasis / np.maximum(mean, 1e-12)[:, None, None], 1e-3)
 
 
 def _pick(is_new: Bools, new: _State, old: _State) -> _State:

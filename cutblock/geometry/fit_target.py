@@ -60,7 +60,7 @@ class Target:
     """A batch of p patches along q node rows."""
 
     rows: Floats  # (p, q, n + 2) spline coefficients of z along x, less a plane
-    slopes: Floats  # (p, q, n + 2) the same of dz/dy, the plane included
+    slopes: Floats  # (p, q, n) dz/dy at the grid values, the plane included
     planes: Floats  # (p, 3) level, slope along x, slope along y (from x = 0, y = 0 of the billet)
     low: Floats  # (p, 1, 1) x of the first grid value
     high: Floats  # (p, 1, 1) x of the last
@@ -86,7 +86,11 @@ class Target:
         n_p, n_q, n_c = self.rows.shape
         base = cells.astype(np.int64) + (np.arange(n_p * n_q) * n_c).reshape(n_p, 1, n_q)
         z, z_x = _cubic(self.rows.ravel(), base, fraction)
-        z_y, _ = _cubic(self.slopes.ravel(), base, fraction)
+        # The slope along the wire only weighs the residuals: linear between the spline's knots is close enough.
+        flat = self.slopes.ravel()
+        before = base - (2 * np.arange(n_p * n_q)).reshape(n_p, 1, n_q)
+        z_y = flat[before]
+        z_y = z_y + fraction * (flat[before + 1] - z_y)
         return z, z_x / step, z_y
 
     def weight(self, x: Floats, ramp: Floats) -> Floats:
@@ -149,5 +153,6 @@ def _rows(patch: Patch) -> tuple[Floats, Floats, Floats]:
     coefficients = spline_matrix(n_x) @ rest @ spline_matrix(n_y).T
     places = (patch.node_y_mm - patch.low_y_mm) / step
     rows = coefficients @ spline_basis(places, n_y).T
-    slopes = coefficients @ spline_basis(places, n_y, 1).T / step + slope_y
+    at_values = spline_basis(np.arange(n_x, dtype=np.float64), n_x) @ coefficients
+    slopes = at_values @ spline_basis(places, n_y, 1).T / step + slope_y
     return rows.T, slopes.T, np.array([level + float(patch.heights_mm[0, 0]), slope_x, slope_y])

@@ -71,10 +71,16 @@ class Aim:
         return self.tolerance_mm - abs(self.kerf_error_mm)
 
 
-def cut_panels(lies: Sequence[tuple[Lie, int]], aim: Aim) -> list[CutPanel]:
-    """Return every given lie cut in the given number of strips, whether it meets the tolerance or not."""
+def cut_panels(lies: Sequence[tuple[Lie, int]], aim: Aim, *, is_polished: bool) -> list[CutPanel]:
+    """Return every given lie cut in the given number of strips, whether it meets the tolerance or not.
+
+    Args:
+        lies: Lies, each with a number of strips.
+        aim: What is fitted for.
+        is_polished: Whether sheets that just miss are fitted for the least largest deviation, which takes longer.
+    """
     strips = [Strip(lie, number, count) for lie, count in lies for number in range(1, count + 1)]
-    fits = fit_patches([strip.patch() for strip in strips], aim.room_mm)
+    fits = fit_patches([strip.patch() for strip in strips], aim.room_mm, is_polished=is_polished)
     cuts = []
     for strip, fit in zip(strips, fits, strict=True):
         away = CLEAR_MM + aim.kerf_mm

@@ -5,6 +5,7 @@ from dataclasses import dataclass, field
 
 import numpy as np
 
+from cutblock.geometry.fit import POLISH_REACH
 from cutblock.geometry.heights import height_field, is_domed
 from cutblock.sweeps.cutting import Aim, CutPanel, cut_panels
 from cutblock.sweeps.lie import Lie
@@ -33,6 +34,7 @@ class _Search:
     n_failed: int = 0  # this many and fewer are known not to do
     best: CutPanel | None = None  # fewest strips that do
     last: CutPanel | None = None
+    is_polished: bool = False  # the first, quick try was close
     limit: int = field(init=False)
 
     def __post_init__(self) -> None:
@@ -50,10 +52,19 @@ class _Search:
         if cut.max_mm <= self.aim.tolerance_mm:
             self.best = cut
             self.n_next = n_strips - 1
+        elif not self.is_polished:
+            self.is_polished = True
+            if max(strip.fit_max_mm for strip in cut.strips) > POLISH_REACH * self.aim.room_mm:
+                self._divide(n_strips)
         else:
-            self.n_failed = n_strips
-            self.n_next = max(n_strips + 1, min(self._predicted(), self.limit) if n_strips == 1 else 0)
-            self.n_next = min(self.n_next, self.limit)
+            self._divide(n_strips)
+
+    def _divide(self, n_failed: int) -> None:
+        self.n_failed = n_failed
+        n_next = n_failed + 1
+        if n_failed == 1:
+            n_next = max(n_next, self._predicted())
+        self.n_next = min(n_next, self.limit)
 
     def _predicted(self) -> int:
         """Return ceil(w sqrt(kappa / (16 tolerance))): a ruled strip across a dome strays kappa w^2 / 16 at best."""
@@ -84,16 +95,20 @@ def choose_cuts(lies: Sequence[tuple[Lie, Lie]], aim: Aim) -> list[Choice]:
         open_searches = [search for pair in searches for search in pair if not _is_settled(search, pair)]
         if not open_searches:
             break
-        cuts = cut_panels([(search.lie, search.n_next) for search in open_searches], aim)
-        for search, cut in zip(open_searches, cuts, strict=True):
-            search.take(cut)
+        for is_polished in (False, True):
+            group = [search for search in open_searches if search.is_polished is is_polished]
+            cuts = cut_panels([(search.lie, search.n_next) for search in group], aim, is_polished=is_polished)
+            for search, cut in zip(group, cuts, strict=True):
+                search.take(cut)
     return [_chosen(pair, aim) for pair in searches]
 
 
 def _is_settled(search: _Search, pair: tuple[_Search, ...]) -> bool:
     """Tell whether a search has ended, or cannot beat the other direction any more."""
     rivals = [len(other.best.strips) for other in pair if other is not search and other.best is not None]
-    return search.is_done or (bool(rivals) and search.n_failed >= min(rivals))
+    if search.is_done or not rivals:
+        return search.is_done
+    return search.n_failed >= min(rivals) or (search.last is not None and min(rivals) == 1)
 
 
 def _chosen(pair: tuple[_Search, ...], aim: Aim) -> Choice:
