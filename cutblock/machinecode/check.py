@@ -6,6 +6,7 @@ from cutblock.base.arrays import Floats
 from cutblock.base.errors import CheckFailed, CutblockError
 from cutblock.machinecode.clamping import clampings
 from cutblock.machinecode.expected import Boxes, Step, expected_steps
+from cutblock.machinecode.passes import choose_place, plan_sources
 from cutblock.machinecode.reader import Line, read_program
 from cutblock.machinecode.rules import find_block, heater_words
 from cutblock.records.plan import Plan
@@ -35,9 +36,10 @@ def check_program(plan: Plan, name: str, text: str) -> None:
     lines = read_program(text, name, plan.machine.axes)
     try:
         clamping = next(clamping for clamping in clampings(block) if clamping.number == setup)
+        place = choose_place(plan, clamping, plan_sources(plan))
     except CutblockError as error:
         raise CheckFailed(f"the plan cannot be cut: {error}", name, "Plan the job anew.") from error
-    steps, boxes = expected_steps(plan, block, clamping)
+    steps, boxes = expected_steps(plan, block, clamping, place)
     for line, step in zip(lines, steps, strict=False):
         _check_line(line, step, plan.machine, name)
     if len(lines) != len(steps):

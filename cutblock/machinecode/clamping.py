@@ -10,8 +10,8 @@ whose size is (sx, sy, sz) lies
 
 The turn is a rotation about the vertical, no reflection, and the same one by which a billet with `turned` lies in its
 block: billet x along block y, billet y against block x. A billet clamped with `Cut.turn` equal to
-`PlacedBillet.turned` therefore has its own frame parallel to the clamped frame. On the machine the travel starts at
-`table_offset_mm`, the bottom stands at `table_height_mm`, and the wire coordinate counts from the table's near edge.
+`PlacedBillet.turned` therefore has its own frame parallel to the clamped frame. Where the clamped frame stands on the
+machine is in `placing`.
 
 Nothing moves in a clamping but what a pause tells the hand to take away or to shim, so every cut of a set-up stays
 where the block frame has it.

@@ -2,7 +2,7 @@
 
 The reading of a program is compared with this, so it shares no step with the writer: it carries points of the wire as
 points of space from the billet over the block to the machine, with the rotation about the vertical as a matrix and the
-place on the table found from the corners of the part, and meets the towers' planes with the line through them.
+shift found from the corners of the part, and meets the towers' planes with the line through them.
 """
 
 from collections.abc import Iterator
@@ -13,6 +13,7 @@ import numpy as np
 from cutblock.base.arrays import Floats
 from cutblock.base.tolerances import PLAN_MM
 from cutblock.machinecode.clamping import Clamping
+from cutblock.machinecode.placing import Place
 from cutblock.machinecode.rules import (
     BELOW_MM,
     CLEARANCE_MM,
@@ -48,14 +49,14 @@ class Boxes(NamedTuple):
     high: Floats  # (n, 3)
 
 
-class _Place:
+class _Carrier:
     """Carries points of a block into the machine, the part clamped as the set-up says."""
 
-    def __init__(self, machine: Machine, first: Cut) -> None:
+    def __init__(self, machine: Machine, first: Cut, place: Place) -> None:
         self._turn = _QUARTER if first.turn else np.eye(3)
         corners = np.array([first.part_at_mm, np.add(first.part_at_mm, first.part_size_mm)])
         low = (corners @ self._turn.T).min(axis=0)
-        self._shift = np.array([machine.table_offset_mm, 0.0, machine.table_height_mm]) - low
+        self._shift = np.array([place.start_mm, place.setback_mm, place.bottom_mm]) - low
         self._planes = (-machine.near_gap_mm, machine.span_mm - machine.near_gap_mm)
 
     def points(self, block_points: Floats) -> Floats:
@@ -78,24 +79,25 @@ class _Place:
         return np.concatenate(ends, axis=1)
 
 
-def expected_steps(plan: Plan, block: Block, clamping: Clamping) -> tuple[tuple[Step, ...], Boxes]:
+def expected_steps(plan: Plan, block: Block, clamping: Clamping, place: Place) -> tuple[tuple[Step, ...], Boxes]:
     """Return every line the program of a set-up must have, and where the parts of its cuts stand.
 
     Args:
         plan: With its sweeps timed and its blocks packed.
         block: The block the set-up is of.
-        clamping: The set-up; only its cuts and the wording of its comments are taken from it.
+        clamping: The set-up, for the wording of its comments.
+        place: Where its part is clamped.
     """
     cuts = tuple(cut for cut in sorted(block.cuts, key=lambda cut: cut.order) if cut.setup == clamping.number)
-    place = _Place(plan.machine, cuts[0])
-    boxes = [place.box(cut) for cut in cuts]
-    clear_mm = plan.machine.table_height_mm + cuts[0].part_size_mm[2] + CLEARANCE_MM
-    texts = (*opening(plan), *header_comments(plan, clamping), *mode_lines(plan))
+    carrier = _Carrier(plan.machine, cuts[0], place)
+    boxes = [carrier.box(cut) for cut in cuts]
+    clear_mm = place.bottom_mm + cuts[0].part_size_mm[2] + CLEARANCE_MM
+    texts = (*opening(plan), *header_comments(plan, clamping, place), *mode_lines(plan))
     steps = [Step(text=text) for text in texts]
     position = np.array([0.0, clear_mm, 0.0, clear_mm])
     steps.append(Step(position=(clear_mm, clear_mm), subject="lift clear of the part"))
     for index, cut in enumerate(cuts):
-        wire, seconds = _cut_path(plan, block, cut, place, boxes[0][0][2])
+        wire, seconds = _cut_path(plan, block, cut, carrier, boxes[0][0][2])
         steps.append(Step(text=cut_comment(clamping, cut)))
         for target in (_above(wire[0], clear_mm), wire[0]):
             steps += _air(plan.machine, position, target, index)
@@ -114,20 +116,20 @@ def expected_steps(plan: Plan, block: Block, clamping: Clamping) -> tuple[tuple[
     return tuple(steps), Boxes(low, high)
 
 
-def _cut_path(plan: Plan, block: Block, cut: Cut, place: _Place, table_mm: float) -> tuple[Floats, Floats]:
+def _cut_path(plan: Plan, block: Block, cut: Cut, carrier: _Carrier, table_mm: float) -> tuple[Floats, Floats]:
     """Return the towers' positions (n, 4) along a cut and the seconds (n - 1,) between them."""
     if cut.kind is CutKind.SWEEP:
         sweep = next(sweep for sweep in plan.sweeps if sweep.id == cut.sweep)
         timing = next(timing for timing in plan.timings if timing.sweep == cut.sweep)
         billet = next(billet for billet in block.billets if billet.sweep == cut.sweep)
-        near = place.points(_in_block(sweep.near, 0.0, billet))
-        far = place.points(_in_block(sweep.far, sweep.width_mm, billet))
-        return place.towers(near, far), timing.step_seconds
-    low, high = place.box(cut)
+        near = carrier.points(_in_block(sweep.near, 0.0, billet))
+        far = carrier.points(_in_block(sweep.far, sweep.width_mm, billet))
+        return carrier.towers(near, far), timing.step_seconds
+    low, high = carrier.box(cut)
     axis = "xyz".index(cut.axis)
     middle = np.array(cut.part_at_mm)
     middle[axis] = cut.at_mm + block.kerf_mm / 2.0
-    through = place.points(middle[None, :])[0]
+    through = carrier.points(middle[None, :])[0]
     if cut.axis == "z":
         ends = [(low[0] - CLEARANCE_MM, through[2]), (high[0] + CLEARANCE_MM, through[2])]
     else:

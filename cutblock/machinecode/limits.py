@@ -6,6 +6,7 @@ from cutblock.base.errors import InputError, NotCuttable
 from cutblock.base.tolerances import PLAN_MM
 from cutblock.machinecode.clamping import Clamping
 from cutblock.machinecode.passes import Pass
+from cutblock.machinecode.placing import Place
 from cutblock.machinecode.rules import CLEARANCE_MM, LEAST_TABLE_HEIGHT_MM
 from cutblock.records.shop import Machine
 
@@ -48,7 +49,7 @@ def check_machine(machine: Machine) -> None:
         raise InputError("footer must end with M2, M30 or %", subject, "Write the end word of the controller.")
 
 
-def check_part(clamping: Clamping, machine: Machine) -> None:
+def check_part(clamping: Clamping, place: Place, machine: Machine) -> None:
     """Refuse a part that does not fit between the towers or under the lifted wire.
 
     Raises:
@@ -63,7 +64,7 @@ def check_part(clamping: Clamping, machine: Machine) -> None:
             subject,
             "Cut the block across its length first, turn it the other way, or use a wider machine.",
         )
-    top_mm = machine.table_height_mm + part.height_mm + CLEARANCE_MM
+    top_mm = place.bottom_mm + part.height_mm + CLEARANCE_MM
     if top_mm > machine.lift_mm + PLAN_MM:
         raise NotCuttable(
             f"clear of the part the wire is at {top_mm:.1f} mm; the near and far vertical axes reach "

@@ -11,7 +11,9 @@ import numpy as np
 
 from cutblock.base.arrays import Floats
 from cutblock.base.errors import GeometryError, NotCuttable
+from cutblock.base.tolerances import PLAN_MM, POSITION_MM
 from cutblock.machinecode.clamping import ClampedBox, Clamping, cut_subject, lowest_mm
+from cutblock.machinecode.placing import Place, middle_setback_mm, moved_into_reach, plain_place
 from cutblock.machinecode.rules import BELOW_MM, CLEARANCE_MM
 from cutblock.records.block import Cut, PlacedBillet
 from cutblock.records.plan import Plan
@@ -47,36 +49,58 @@ def plan_sources(plan: Plan) -> Sources:
     )
 
 
-def tower_positions(near: Floats, far: Floats, box: ClampedBox, machine: Machine) -> Floats:
+def tower_positions(near: Floats, far: Floats, box: ClampedBox, place: Place, machine: Machine) -> Floats:
     """Return where rails at the two faces of a clamped box have the wire's ends at the towers.
 
     Args:
         near: Travel and height at the near face of the box, from its start and bottom, (n, 2), mm.
         far: The same at the far face, (n, 2), mm.
-        box: Where the box is clamped.
+        box: In the clamped frame.
+        place: Where the clamped part stands.
         machine: Of the shop.
 
     Returns:
         (n, 4) near horizontal, near vertical, far horizontal, far vertical in machine coordinates, mm.
     """
-    origin = np.array([machine.table_offset_mm + box.travel_mm, machine.table_height_mm + box.up_mm])
+    origin = np.array([place.start_mm + box.travel_mm, place.bottom_mm + box.up_mm])
     slope = (far - near) / box.width_mm
-    at_near = near - slope * (box.wire_mm + machine.near_gap_mm)
-    at_far = near + slope * (machine.span_mm - machine.near_gap_mm - box.wire_mm)
+    from_near_mm = machine.near_gap_mm + place.setback_mm + box.wire_mm
+    at_near = near - slope * from_near_mm
+    at_far = near + slope * (machine.span_mm - from_near_mm)
     return np.concatenate([origin + at_near, origin + at_far], axis=1)
 
 
-def clamping_passes(plan: Plan, clamping: Clamping, sources: Sources) -> tuple[Pass, ...]:
-    """Return the passes of a set-up in order; raises like `sweep_pass` and `plane_pass`."""
+def choose_place(plan: Plan, clamping: Clamping, sources: Sources) -> Place:
+    """Return where the part of a set-up is clamped: plainly, unless a sweep of it can be reached elsewhere only.
+
+    Raises:
+        GeometryError: The plan lacks a sweep, its timing or its place, or they do not belong together.
+        NotCuttable: A sweep does not begin and end in air.
+    """
+    machine, part = plan.machine, clamping.part
+    plain = plain_place(machine)
+    sweeps = [cut for cut in clamping.cuts if cut.kind is CutKind.SWEEP]
+    for setback_mm in (0.0, middle_setback_mm(machine, part.width_mm)) if sweeps else ():
+        here = plain._replace(setback_mm=setback_mm)
+        rails = [sweep_pass(plan, clamping, cut, here, sources).positions for cut in sweeps]
+        place = moved_into_reach(np.concatenate(rails), setback_mm, part[3:], machine)
+        if place is not None:
+            return place
+    return plain
+
+
+def clamping_passes(plan: Plan, clamping: Clamping, place: Place, sources: Sources) -> tuple[Pass, ...]:
+    """Return the passes of a set-up in order; raises like `sweep_pass`."""
     return tuple(
-        sweep_pass(plan, clamping, cut, sources) if cut.kind is CutKind.SWEEP else plane_pass(plan, clamping, cut)
+        sweep_pass(plan, clamping, cut, place, sources)
+        if cut.kind is CutKind.SWEEP
+        else plane_pass(plan, clamping, cut, place)
         for cut in clamping.cuts
     )
 
 
-def plane_pass(plan: Plan, clamping: Clamping, cut: Cut) -> Pass:
+def plane_pass(plan: Plan, clamping: Clamping, cut: Cut, place: Place) -> Pass:
     """Return a trim or through cut at the planned speed, the wire level and square to the travel."""
-    machine = plan.machine
     box = clamping.box(cut.part_at_mm, cut.part_size_mm)
     middle = clamping.plane_mm(cut)
     if cut.axis == "z":
@@ -85,14 +109,14 @@ def plane_pass(plan: Plan, clamping: Clamping, cut: Cut) -> Pass:
         lowest = lowest_mm(clamping, cut)
         top = box.up_mm + box.height_mm + CLEARANCE_MM
         ends = [(middle, top), (middle, -BELOW_MM if lowest is None else lowest)]
-    rail = np.array(ends) + np.array([machine.table_offset_mm, machine.table_height_mm])
+    rail = np.array(ends) + np.array([place.start_mm, place.bottom_mm])
     length_mm = float(np.abs(rail[1] - rail[0]).sum())
     seconds = np.array([length_mm / plan.conditions.planned_mm_s])
     subject = cut_subject(clamping.block, cut)
     return Pass(cut, subject, np.concatenate([rail, rail], axis=1), seconds, ends_in_slot=cut.axis != "z")
 
 
-def sweep_pass(plan: Plan, clamping: Clamping, cut: Cut, sources: Sources) -> Pass:
+def sweep_pass(plan: Plan, clamping: Clamping, cut: Cut, place: Place, sources: Sources) -> Pass:
     """Return a sweep with the times of its timing.
 
     Raises:
@@ -112,7 +136,7 @@ def sweep_pass(plan: Plan, clamping: Clamping, cut: Cut, sources: Sources) -> Pa
             "Clamp a billet so that its length lies along the travel.",
         )
     wanted = (sweep.length_mm, sweep.width_mm, sweep.height_mm)
-    if not np.allclose(box[3:], wanted, rtol=0.0, atol=1e-6):
+    if not np.allclose(box[3:], wanted, rtol=0.0, atol=POSITION_MM + PLAN_MM):
         raise GeometryError(
             f"the part clamped is {box[3]:.2f} x {box[4]:.2f} x {box[5]:.2f} mm, "
             f"the billet {wanted[0]:.2f} x {wanted[1]:.2f} x {wanted[2]:.2f} mm",
@@ -135,4 +159,7 @@ def sweep_pass(plan: Plan, clamping: Clamping, cut: Cut, sources: Sources) -> Pa
             name,
             "Begin and end at least half a kerf outside the billet at both ends of the wire.",
         )
-    return Pass(cut, name, tower_positions(sweep.near, sweep.far, box, plan.machine), seconds, ends_in_slot=False)
+    # The packing may have rounded the box up; the billet's near face lies on that of the box.
+    billet_box = box._replace(width_mm=sweep.width_mm)
+    positions = tower_positions(sweep.near, sweep.far, billet_box, place, plan.machine)
+    return Pass(cut, name, positions, seconds, ends_in_slot=False)

@@ -11,7 +11,8 @@ from cutblock.base.progress import Progress, silent
 from cutblock.machinecode.check import check_program
 from cutblock.machinecode.clamping import Clamping, clampings
 from cutblock.machinecode.limits import check_machine, check_part, check_pass
-from cutblock.machinecode.passes import Pass, Sources, clamping_passes, plan_sources
+from cutblock.machinecode.passes import Pass, Sources, choose_place, clamping_passes, plan_sources
+from cutblock.machinecode.placing import Place
 from cutblock.machinecode.rules import CLEARANCE_MM, STANDING_MM, heater_words, mode_lines, opening, program_name
 from cutblock.machinecode.wording import cut_comment, header_comments, pause_comment
 from cutblock.records.block import Block
@@ -31,12 +32,13 @@ class Program(Record):
     setup: int
 
 
-def write_programs(plan: Plan, progress: Progress = silent) -> tuple[Program, ...]:
+def write_programs(plan: Plan, progress: Progress = silent, *, leave_out: bool = False) -> tuple[Program, ...]:
     """Return the programs of every block, set-up after set-up, each read back and compared with the plan.
 
     Args:
         plan: With its sweeps timed and its blocks packed.
         progress: Told after every program.
+        leave_out: Leave out the set-ups this machine cannot cut instead of raising; `find_uncuttable` names them.
 
     Raises:
         NotCuttable: The machine cannot reach a position, run an axis so fast or hold a part; the message names it.
@@ -49,12 +51,25 @@ def write_programs(plan: Plan, progress: Progress = silent) -> tuple[Program, ..
     programs = []
     for index, block in enumerate(plan.blocks):
         for clamping in clampings(block):
+            if leave_out and _trouble(plan, clamping, sources) is not None:
+                continue
             program = _write(plan, clamping, sources)
             check_program(plan, program.name, program.text)
             programs.append(program)
             progress(index / len(plan.blocks), f"Wrote {program.name}")
     progress(1.0, "Wrote the machine code")
     return tuple(programs)
+
+
+def program_names(plan: Plan) -> tuple[str, ...]:
+    """Return the names of the programs of every set-up this machine can cut, in the order of `write_programs`."""
+    sources = plan_sources(plan)
+    return tuple(
+        program_name(block.id, clamping.number)
+        for block in plan.blocks
+        for clamping in clampings(block)
+        if _trouble(plan, clamping, sources) is None
+    )
 
 
 def find_uncuttable(plan: Plan) -> tuple[Finding, ...]:
@@ -75,13 +90,17 @@ def _block_findings(plan: Plan, block: Block, sources: Sources) -> list[Finding]
         setups = clampings(block)
     except CutblockError as error:
         return [_finding(block.id, error)]
-    findings = []
-    for clamping in setups:
-        try:
-            _checked_passes(plan, clamping, sources)
-        except CutblockError as error:
-            findings.append(_finding(block.id, error))
-    return findings
+    troubles = [_trouble(plan, clamping, sources) for clamping in setups]
+    return [_finding(block.id, error) for error in troubles if error is not None]
+
+
+def _trouble(plan: Plan, clamping: Clamping, sources: Sources) -> CutblockError | None:
+    """Return why the machine cannot cut a set-up, or None where it can."""
+    try:
+        _checked_passes(plan, clamping, sources)
+    except CutblockError as error:
+        return error
+    return None
 
 
 def _finding(subject: str, error: CutblockError) -> Finding:
@@ -93,20 +112,21 @@ def _finding(subject: str, error: CutblockError) -> Finding:
     )
 
 
-def _checked_passes(plan: Plan, clamping: Clamping, sources: Sources) -> tuple[Pass, ...]:
-    check_part(clamping, plan.machine)
-    passes = clamping_passes(plan, clamping, sources)
+def _checked_passes(plan: Plan, clamping: Clamping, sources: Sources) -> tuple[Place, tuple[Pass, ...]]:
+    place = choose_place(plan, clamping, sources)
+    check_part(clamping, place, plan.machine)
+    passes = clamping_passes(plan, clamping, place, sources)
     for wire_pass in passes:
         check_pass(wire_pass, plan.machine)
-    return passes
+    return place, passes
 
 
 def _write(plan: Plan, clamping: Clamping, sources: Sources) -> Program:
     machine = plan.machine
-    passes = _checked_passes(plan, clamping, sources)
-    lift_mm = machine.table_height_mm + clamping.part.height_mm + CLEARANCE_MM
+    place, passes = _checked_passes(plan, clamping, sources)
+    lift_mm = place.bottom_mm + clamping.part.height_mm + CLEARANCE_MM
     text = _Text(machine)
-    text.add(*opening(plan), *header_comments(plan, clamping), *mode_lines(plan))
+    text.add(*opening(plan), *header_comments(plan, clamping, place), *mode_lines(plan))
     text.lift_from_anywhere(lift_mm)
     for wire_pass in passes:
         _write_cut(plan, clamping, wire_pass, text, lift_mm)

@@ -6,6 +6,7 @@ line with its position in full. What is not of that language is refused, not pas
 """
 
 import re
+from functools import lru_cache
 from typing import NamedTuple
 
 from cutblock.base.errors import CheckFailed
@@ -154,6 +155,7 @@ def _check_move(line: Line, name: str, feed_text: str, state: _State) -> None:
         raise _failure(name, number, f'"{row}" has no inverse-time feed above 0')
 
 
+@lru_cache(maxsize=64)
 def _code(digits: str) -> str:
     """Return the number of a G or M word without needless zeros."""
     whole, _, part = digits.partition(".")

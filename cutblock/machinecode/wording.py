@@ -10,9 +10,11 @@ import re
 import cutblock
 from cutblock.base.tolerances import PLAN_MM
 from cutblock.machinecode.clamping import Clamping, cut_subject
+from cutblock.machinecode.placing import Place
 from cutblock.machinecode.rules import BELOW_MM, LONGEST_LINE, planned_mm_min
 from cutblock.records.block import Cut
 from cutblock.records.plan import Plan
+from cutblock.records.shop import Machine
 from cutblock.records.words import CutKind
 
 _UNSAFE = re.compile(r"[^A-Za-z0-9 _.-]")
@@ -31,7 +33,7 @@ def comment(text: str) -> str:
     return f"({_UNSAFE.sub('-', text)[: LONGEST_LINE - 2]})"
 
 
-def header_comments(plan: Plan, clamping: Clamping) -> tuple[str, ...]:
+def header_comments(plan: Plan, clamping: Clamping, place: Place) -> tuple[str, ...]:
     """Return the comment lines at the head of a program."""
     job, machine, block = plan.job, plan.machine, clamping.block
     part = clamping.part
@@ -45,17 +47,26 @@ def header_comments(plan: Plan, clamping: Clamping) -> tuple[str, ...]:
         f"Block {block.id} set-up {clamping.number} of {n_setups}",
         f"Part {part.length_mm:.1f} mm along travel {part.width_mm:.1f} mm along wire {part.height_mm:.1f} mm up",
         f"Part lies {lying if clamping.is_turned else 'as in the block. Block x along the travel'}",
-        f"Clamp the near face on the near edge of the table. Start at {machine.table_offset_mm:.1f} mm of travel",
+        f"Clamp the near face {_setback(place)} the near edge of the table. Start at {place.start_mm:.1f} mm of travel",
+        f"The part lies {_stand(place, machine)}sacrificial slats. The wire goes {BELOW_MM:.0f} mm below it",
         f"Foam {block.grade} {plan.conditions.density_kg_m3:.1f} kg per m3",
         f"Wire {plan.wire.name} diameter {plan.wire.diameter_mm:.2f} mm",
         f"Power {job.power_w_m:.1f} W per m of wire. {total_w:.1f} W between the towers",
         f"Planned speed {planned_mm_min(plan):.1f} mm per min at mid-wire",
-        f"The part lies on sacrificial slats. The wire goes {BELOW_MM:.0f} mm below it",
         "Before the start home the machine and park the wire at the zero of the towers clear of the part",
         "Look that the wire clears the table and the clamps over its whole way",
         *CAUTIONS,
     )
     return tuple(comment(text) for text in texts)
+
+
+def _setback(place: Place) -> str:
+    return f"{place.setback_mm:.1f} mm behind" if place.setback_mm else "on"
+
+
+def _stand(place: Place, machine: Machine) -> str:
+    stand_mm = place.bottom_mm - machine.table_height_mm
+    return f"on a stand of scrap foam {stand_mm:.1f} mm high on the " if stand_mm else "on "
 
 
 def cut_comment(clamping: Clamping, cut: Cut) -> str:

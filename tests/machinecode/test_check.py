@@ -10,6 +10,7 @@ from cutblock.machinecode import check, programs
 from cutblock.machinecode.check import check_program
 from cutblock.machinecode.clamping import clampings
 from cutblock.machinecode.expected import expected_steps
+from cutblock.machinecode.placing import plain_place
 from cutblock.machinecode.programs import write_programs
 from cutblock.machinecode.reader import read_program
 
@@ -191,7 +192,7 @@ def read_with_steps(plan):
     (program,) = write_programs(plan)
     (block,) = plan.blocks
     (clamping,) = clampings(block)
-    steps, boxes = expected_steps(plan, block, clamping)
+    steps, boxes = expected_steps(plan, block, clamping, plain_place(plan.machine))
     return list(read_program(program.text, program.name, plan.machine.axes)), list(steps), boxes
 
 

@@ -22,7 +22,7 @@ from kit.sample import sample_job, sample_plan, sample_sweep
 
 from cutblock.base.errors import GeometryError, InputError, NotCuttable
 from cutblock.base.progress import silent
-from cutblock.machinecode.programs import feed_word, find_uncuttable, write_programs
+from cutblock.machinecode.programs import feed_word, find_uncuttable, program_names, write_programs
 from cutblock.records.block import PlacedBillet
 from cutblock.records.words import CutKind
 
@@ -263,7 +263,6 @@ def test_a_controller_that_wants_percent_signs_gets_them_first_and_last():
         ({"span_mm": 2600.0}, "set-up 2: the part is 2470.0 mm along the wire"),
         ({"lift_mm": 1100.0}, "set-up 1: clear of the part the wire is at 1120.0 mm"),
         ({"travel_mm": 2700.0}, "SM-B01 cut 2: at ruling 1 the near horizontal axis X"),
-        ({"table_height_mm": 50.0}, "SM-S1-A01: at ruling 1 the far vertical axis V would be at -85.20 mm"),
         ({"longest_wire_mm": 3005.0}, "SM-S1-A01: at ruling 1 the wire between the towers would be 3023.0 mm"),
         ({"speed_mm_s": 2.6}, "SM-B01 cut 1: after ruling 1 the near vertical axis Y would run at 2.65 mm/s"),
     ],
@@ -281,8 +280,21 @@ def test_each_limit_of_the_machine_is_named_with_the_piece_the_ruling_and_the_ax
 def test_every_set_up_the_machine_cannot_cut_is_found_at_once():
     findings = find_uncuttable(sample_plan())
 
-    assert [finding.subject for finding in findings] == ["SM-B01 set-up 2", "SM-S1-A01", "SM-T-A01"]
+    assert [finding.subject for finding in findings] == ["SM-B01 set-up 2"]
     assert find_uncuttable(roomy_plan()) == ()
+    high = find_uncuttable(roomy_plan(machine=roomy_machine(longest_wire_mm=3005.0)))
+    assert [finding.subject for finding in high] == ["SM-S1-A01", "SM-T-A01"]
+
+
+def test_set_ups_the_machine_cannot_cut_can_be_left_out():
+    plan = sample_plan()
+    with pytest.raises(NotCuttable, match="set-up 2"):
+        write_programs(plan)
+
+    names = [program.name for program in write_programs(plan, leave_out=True)]
+
+    assert names == [f"SM-B01-S0{setup}.ngc" for setup in (1, 3, 4, 5, 6, 7)]
+    assert program_names(plan) == tuple(names)
 
 
 @pytest.mark.parametrize(
@@ -317,12 +329,51 @@ def test_a_sweep_that_begins_or_ends_in_foam_is_refused(ruling, x_mm, words):
     assert caught.value.subject == "SM-K-A01"
 
 
-def test_a_sweep_above_the_lift_of_a_tower_is_refused():
-    plan = billet_plan(sample_sweep("SM-K-A01"), machine=roomy_machine(lift_mm=800.0))
+def test_a_sweep_beyond_the_lift_wherever_it_is_clamped_is_refused_as_plainly_clamped():
+    machine = roomy_machine(table_height_mm=50.0, lift_mm=380.0)
+    plan = billet_plan(sample_sweep("SM-K-A01"), machine=machine)
 
-    # At the end of the run-out the faces have 88 and 212, so the far tower 400 + 212 + 1.8 x 124.
-    with pytest.raises(NotCuttable, match=r"ruling 63 the far vertical axis V would be at 835\.20 mm; it reaches"):
+    # At the end of the run-out the faces have 88 and 212, so the far tower 50 + 212 + 1.8 x 124.
+    with pytest.raises(
+        NotCuttable, match=r"ruling 63 the far vertical axis V would be at 485\.20 mm; it reaches 0 to 380"
+    ):
         write_programs(plan)
+
+
+def test_a_sweep_that_runs_out_below_the_towers_zero_is_laid_on_a_stand():
+    plan = billet_plan(sample_sweep("SM-K-A01"), machine=roomy_machine(table_height_mm=50.0))
+
+    (program,) = write_programs(plan)
+
+    # Plainly clamped its lowest end is at 50 + 88 - 1.8 x 124 = -85.2.
+    assert "on a stand of scrap foam 90.0 mm high on the sacrificial slats" in program.text
+    assert "near face on the near edge" in program.text
+    assert moves_of(program.text)[0][:, 1::2].min() == pytest.approx(4.8)
+
+
+def test_a_skew_sweep_is_clamped_further_along_the_travel():
+    sweep = skew_sweep()
+    askew = np.stack([sweep.far[:, 0] - 110.0 * np.linspace(1.0, 0.0, 12) ** 2, sweep.far[:, 1]], axis=1)
+    plan = billet_plan(replace(sweep, far=askew))
+
+    (program,) = write_programs(plan)
+
+    start_mm = float(re.search(r"Start at ([\d.]+) mm", program.text).group(1))
+    lowest = moves_of(program.text)[0][1:-1, ::2].min()
+    assert start_mm > 300.0
+    assert 0.0 <= lowest < 10.0
+
+
+def test_a_steep_sweep_is_set_back_midway_between_the_towers_where_no_stand_is_enough():
+    plan = billet_plan(sample_sweep("SM-K-A01"), machine=roomy_machine(table_height_mm=50.0, lift_mm=450.0))
+
+    (program,) = write_programs(plan)
+
+    assert "near face 800.0 mm behind the near edge" in program.text
+    assert "scrap foam" not in program.text
+    positions = cutting_moves(program.text, plan.sweeps[0])[0]
+    # A thousand mm to either tower: 50 + 212 + 124 and 50 + 88 - 124.
+    assert positions[-1].tolist() == [1520.0, 14.0, 1520.0, 386.0]
 
 
 def test_air_moves_keep_to_the_speed_of_the_axes():
