@@ -8,7 +8,7 @@ import numpy as np
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.base.errors import GeometryError
 from cutblock.geometry.deviation import deviation_measures, face_deviation
-from cutblock.geometry.fit_refine import N_CONTROLS, Fits, improve, polish, recentre, refine
+from cutblock.geometry.fit_refine import N_CONTROLS, N_ROUNDS, Fits, improve, polish, recentre, refine
 from cutblock.geometry.fit_start import Paths, best_paths
 from cutblock.geometry.fit_target import Patch, Target, make_target
 from cutblock.geometry.heights import HeightField, height_field
@@ -16,6 +16,7 @@ from cutblock.geometry.rails import SheetFit, polyline_rails
 
 BATCH = 16
 FINE_CONTROLS = 32
+FINE_ROUNDS = 5
 FINE_SAG_MM = 1e-4
 GRIDS = (65, 129, 257)
 SPLINE_ERROR_MM = 1e-5
@@ -167,17 +168,25 @@ def fit_patches(
 
 def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
     first, second, constant = best_paths(target)
-    give_up_mm = 2.0 * POLISH_REACH * tolerance_mm
-    best = refine(target, first, give_up_mm)
-    is_worth = (second.rms_mm <= 2.0 * first.rms_mm + 0.1 * tolerance_mm) & ~_alike(first, second)
-    best = _rival(target, best, second, is_worth, tolerance_mm)
-    is_worth = (constant.rms_mm <= 2.0 * first.rms_mm + 0.1 * tolerance_mm) & (best.max_mm > 0.1 * tolerance_mm)
-    is_worth &= ~_alike(first, constant)
-    best = _rival(target, best, constant, is_worth, tolerance_mm)
+    is_fine = n_controls != N_CONTROLS
+    give_up_mm = np.inf if is_fine else 2.0 * POLISH_REACH * tolerance_mm
+    n_rounds = FINE_ROUNDS if is_fine else N_ROUNDS
+
+    def rival(best: Fits, paths: Paths, is_worth: Bools) -> Fits:
+        index = np.flatnonzero(is_worth)
+        if not len(index):
+            return best
+        fits = refine(target.take(index), paths.take(index), give_up_mm, n_rounds)
+        return _better(best, index, fits, tolerance_mm)
+
+    best = refine(target, first, give_up_mm, n_rounds)
+    best = rival(best, second, _is_worth(first, second, tolerance_mm))
+    is_worth = (constant.rms_mm <= 2.0 * first.rms_mm) & (best.max_mm > 0.5 * tolerance_mm)
+    best = rival(best, constant, is_worth & ~_alike(first, constant))
     straight = Paths(first.stations, np.zeros_like(first.skews), first.rms_mm)
-    best = _rival(target, best, straight, best.max_mm > tolerance_mm, tolerance_mm)
-    if n_controls != N_CONTROLS:
-        best = improve(target, recentre(target, best, n_controls), n_steps=20, precision=1e-7)
+    best = rival(best, straight, best.max_mm > tolerance_mm)
+    if is_fine:
+        best = improve(target, recentre(target, best, n_controls), n_steps=20, precision=1e-7, floor_mm=1e-7)
     return best
 
 
@@ -189,6 +198,15 @@ def _polished(target: Target, fits: Fits, tolerance_mm: float) -> Fits:
     return fits.put(index, polish(target.take(index), fits.take(index), ENOUGH * tolerance_mm))
 
 
+def _is_worth(first: Paths, second: Paths, tolerance_mm: float) -> Bools:
+    """Return which second paths may win: as close as the first, or squarer and not much farther off."""
+    is_close = (second.rms_mm <= 1.5 * first.rms_mm) & (first.rms_mm > 0.05 * tolerance_mm)
+    is_squarer = np.abs(second.skews).max(axis=1) < np.abs(first.skews).max(axis=1)
+    is_squarer &= second.rms_mm <= 2.0 * first.rms_mm + 0.1 * tolerance_mm
+    is_worth: Bools = (is_close | is_squarer) & ~_alike(first, second)
+    return is_worth
+
+
 def _alike(paths: Paths, others: Paths) -> Bools:
     """Return which paths differ by less than a step of the skew table."""
     reach = np.abs(paths.stations[:, -1] - paths.stations[:, 0])
@@ -196,12 +214,8 @@ def _alike(paths: Paths, others: Paths) -> Bools:
     return result
 
 
-def _rival(target: Target, best: Fits, paths: Paths, is_worth: Bools, tolerance_mm: float) -> Fits:
-    """Return the better of the fits so far and those that start from other paths."""
-    index: Ints = np.flatnonzero(is_worth)
-    if not len(index):
-        return best
-    rivals = refine(target.take(index), paths.take(index), 2.0 * POLISH_REACH * tolerance_mm)
+def _better(best: Fits, index: Ints, rivals: Fits, tolerance_mm: float) -> Fits:
+    """Return the fits so far, those of the given indices replaced by rivals that are better."""
     old = best.take(index)
     gain = old.max_mm - rivals.max_mm
     less_skew = np.abs(rivals.controls[:, 0]).max(axis=1) < np.abs(old.controls[:, 0]).max(axis=1) - 1e-6

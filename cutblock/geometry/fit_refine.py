@@ -16,10 +16,10 @@ from cutblock.geometry.fit_target import NODE_WEIGHTS, Target
 
 N_CONTROLS = 16
 N_STATIONS = 57
-N_ROUNDS = 3
-N_STEPS = 8
-PRECISION = 1e-3
-FLOOR_MM = 1e-6  # no patch is improved below this root mean square
+N_ROUNDS = 2
+N_STEPS = 6
+PRECISION = 2e-3
+FLOOR_MM = 1e-4
 RECENTRE_MM = 1.0
 
 
@@ -97,7 +97,7 @@ class Fits:
         return Fits(*columns)
 
 
-def refine(target: Target, paths: Paths, give_up_mm: float = np.inf) -> Fits:
+def refine(target: Target, paths: Paths, give_up_mm: float = np.inf, n_rounds: int = N_ROUNDS) -> Fits:
     """Return least-squares fits that start from paths of skews; those still worse than `give_up_mm` are left rough."""
     basis = spline_stations(N_CONTROLS)
     start, end = _reach(target, paths.stations, paths.skews)
@@ -108,13 +108,13 @@ def refine(target: Target, paths: Paths, give_up_mm: float = np.inf) -> Fits:
     controls[:, 0] *= _room(controls[:, 0], end - start, basis)[:, None]
     no_fit = np.full(len(start), np.inf)
     fits = improve(target, _raised(target, Fits(controls, start, end, no_fit, no_fit)))
-    for _ in range(N_ROUNDS - 1):
+    for _ in range(n_rounds - 1):
         moved = recentre(target, fits, N_CONTROLS)
         shift = np.maximum(np.abs(moved.start - fits.start), np.abs(moved.end - fits.end))
         index = np.flatnonzero((shift > RECENTRE_MM) & (fits.max_mm < give_up_mm))
         if not len(index):
             break
-        fits = fits.put(index, improve(target.take(index), moved.take(index), n_steps=N_STEPS // 2))
+        fits = fits.put(index, improve(target.take(index), moved.take(index)))
     return fits
 
 
@@ -228,6 +228,7 @@ def improve(
     *,
     n_steps: int = N_STEPS,
     precision: float = PRECISION,
+    floor_mm: float = FLOOR_MM,
     emphasis: Floats | None = None,
     start_damping: float = 1e-4,
 ) -> Fits:
@@ -237,7 +238,8 @@ def improve(
         target: What is fitted.
         fits: Where to start.
         n_steps: Most steps.
-        precision: A patch is left alone once a step promises less than this share of its squared residual.
+        precision: A patch is left alone once a step promises less than this share of its squared residual,
+        floor_mm: or less than this root mean square.
         emphasis: Extra weights (p, s, q) of the nodes.
         start_damping: Relative to the diagonal of the normal equations.
     """
@@ -255,21 +257,16 @@ def improve(
         damping = np.where(is_better, np.maximum(damping / 20.0, 1e-12), damping * 10.0)
         fits = replace(fits, controls=np.where(is_better[:, None, None], trial.controls, fits.controls))
         state = _pick(is_better, trial_state, state)
-        is_open = (promise > precision * state.cost + FLOOR_MM**2 * N_STATIONS) & (damping < 1e4)
-        result = result.put(index, _measured(fits, state))
-        left = np.flatnonzero(is_open)
-        if not len(left):
+        is_open = (promise > precision * state.cost + floor_mm**2 * N_STATIONS) & (damping < 1e4)
+        if not is_open.any():
             break
-        if len(left) < len(index):
-            index, damping, fits, target, state = (
-                index[left],
-                damping[left],
-                fits.take(left),
-                target.take(left),
-                state.take(left),
-            )
+        if is_open.sum() <= 0.75 * len(index):
+            left, gone = np.flatnonzero(is_open), np.flatnonzero(~is_open)
+            result = result.put(index[gone], _measured(fits.take(gone), state.take(gone)))
+            index, damping, fits = index[left], damping[left], fits.take(left)
+            target, state = target.take(left), state.take(left)
             emphasis = None if emphasis is None else emphasis[left]
-    return result
+    return result.put(index, _measured(fits, state))
 
 
 def _step(target: Target, state: _State, basis: Basis, damping: Floats) -> tuple[Floats, Floats]:

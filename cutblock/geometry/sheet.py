@@ -19,9 +19,12 @@ def locate(near: Floats, far: Floats, width_mm: float, x: Floats, y: Floats) -> 
         The index of the ruling before each point, 0 to n - 2, and the fraction of the way to the next. The fraction
         is below 0 or above 1 where the point lies before the first or behind the last ruling.
     """
-    across = np.asarray(y) / width_mm
-    low = np.zeros(across.shape, dtype=np.int64)
-    high = np.full(across.shape, len(near) - 1, dtype=np.int64)
+    across = np.broadcast_arrays(np.asarray(y) / width_mm, x)[0]
+    # A ruling both of whose ends lie before x passes before the point, so the ends alone narrow the search.
+    passed_near = np.searchsorted(near[:, 0], x, side="right")
+    passed_far = np.searchsorted(far[:, 0], x, side="right")
+    low = np.clip(np.minimum(passed_near, passed_far) - 1, 0, len(near) - 1)
+    high = np.clip(np.maximum(passed_near, passed_far), 0, len(near) - 1)
     # Bisection on the ruling index: for a fixed y the crossings of the rulings rise with the index.
     while (high - low > 1).any():
         middle = (low + high) // 2

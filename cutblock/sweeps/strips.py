@@ -46,6 +46,13 @@ class _Search:
             return len(self.best.strips) <= self.n_failed + 1
         return self.n_failed >= self.limit
 
+    @property
+    def is_unbeatable(self) -> bool:
+        """Whether no other direction would be preferred: one square sweep whose fit leaves hardly anything."""
+        if self.best is None or len(self.best.strips) > 1 or self.best.skew_mm > SAME_SKEW_MM:
+            return False
+        return self.best.strips[0].fit_max_mm < 0.1 * self.aim.tolerance_mm
+
     def take(self, cut: CutPanel) -> None:
         n_strips = len(cut.strips)
         self.last = cut
@@ -91,16 +98,23 @@ def choose_cuts(lies: Sequence[tuple[Lie, Lie]], aim: Aim) -> list[Choice]:
     least skew, then the wire along y.
     """
     searches = [tuple(_Search(lie, aim) for lie in pair) for pair in lies]
+    _cut([along_y for along_y, _ in searches], aim)
     while True:
         open_searches = [search for pair in searches for search in pair if not _is_settled(search, pair)]
         if not open_searches:
             break
         for is_polished in (False, True):
-            group = [search for search in open_searches if search.is_polished is is_polished]
-            cuts = cut_panels([(search.lie, search.n_next) for search in group], aim, is_polished=is_polished)
-            for search, cut in zip(group, cuts, strict=True):
-                search.take(cut)
+            _cut([search for search in open_searches if search.is_polished is is_polished], aim)
     return [_chosen(pair, aim) for pair in searches]
+
+
+def _cut(searches: Sequence[_Search], aim: Aim) -> None:
+    """Make the next cut of searches that all are, or all are not, polishing."""
+    if searches:
+        wanted = [(search.lie, search.n_next) for search in searches]
+        cuts = cut_panels(wanted, aim, is_polished=searches[0].is_polished)
+        for search, cut in zip(searches, cuts, strict=True):
+            search.take(cut)
 
 
 def _is_settled(search: _Search, pair: tuple[_Search, ...]) -> bool:
@@ -108,6 +122,8 @@ def _is_settled(search: _Search, pair: tuple[_Search, ...]) -> bool:
     rivals = [len(other.best.strips) for other in pair if other is not search and other.best is not None]
     if search.is_done or not rivals:
         return search.is_done
+    if any(other is not search and other.is_unbeatable for other in pair):
+        return True
     return search.n_failed >= min(rivals) or (search.last is not None and min(rivals) == 1)
 
 
