@@ -2,7 +2,7 @@
 
 from PySide6.QtCore import Qt
 from PySide6.QtGui import QKeySequence, QShortcut
-from PySide6.QtWidgets import QLineEdit, QVBoxLayout, QWidget
+from PySide6.QtWidgets import QComboBox, QLineEdit, QVBoxLayout, QWidget
 
 from cutblock.window.labels import label
 from cutblock.window.tables import RowsModel
@@ -17,6 +17,12 @@ def titled(title: str, widget: QWidget) -> QWidget:
     layout.addWidget(label(title, "heading"))
     layout.addWidget(widget, 1)
     return box
+
+
+def name_choice(choice: QComboBox, name: str) -> None:
+    """Name a choice and the list it opens for screen readers."""
+    choice.setAccessibleName(name)
+    choice.view().setAccessibleName(name)
 
 
 def filter_field(name: str, rows: RowsModel, desk: QWidget) -> QLineEdit:

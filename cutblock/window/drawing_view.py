@@ -24,10 +24,10 @@ class DrawingView(QWidget):
             parent: Qt parent.
         """
         super().__init__(parent)
-        self._name = name
         self._empty_text = empty_text
         self._drawing: Drawing | None = None
         self.setAccessibleName(name)
+        self.setAccessibleDescription(empty_text)
         self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Expanding)
         self.setMinimumSize(160, 110)
 

@@ -110,7 +110,7 @@ class EstimatingDesk(QWidget):
         self._words.setText(
             f"Used {ledger.used_percent:.1f} %, wasted {ledger.waste_percent:.1f} % "
             f"of {litres(ledger.bought_mm3):.0f} l bought in {counted(ledger.n_blocks, 'block')} "
-            f"(the job needs at least {ledger.n_blocks_bound})"
+            f"(at least {ledger.n_blocks_bound})"
         )
 
     def _summary_area(self) -> QScrollArea:

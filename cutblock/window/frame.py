@@ -6,7 +6,7 @@ Nothing that needs numpy is imported before a plan is asked for, so that the win
 
 from collections.abc import Callable
 from pathlib import PurePath
-from typing import TYPE_CHECKING, ClassVar
+from typing import TYPE_CHECKING, ClassVar, TypeAlias
 
 from PySide6.QtCore import Slot
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence, QUndoCommand, QUndoStack
@@ -27,6 +27,7 @@ from cutblock.worker.events import Failure
 if TYPE_CHECKING:
     from cutblock.worker.requests import ShownPlan
 
+_Shown: TypeAlias = "tuple[ShownPlan | None, str | None]"  # with the path of its job file
 _MOST_UNDO = 10
 
 
@@ -41,7 +42,8 @@ class MainWindow(QMainWindow):
         self._settings = settings
         self._theme = theme
         self._shown: ShownPlan | None = None
-        self._job_path: str | None = None
+        self._job_path: str | None = None  # the one asked for last, planned or not
+        self._shown_path: str | None = None  # of the plan shown
         self._after: Callable[[object], None] = self._ignore
         self._stack = QUndoStack(self)
         self._stack.setUndoLimit(_MOST_UNDO)
@@ -51,6 +53,7 @@ class MainWindow(QMainWindow):
         self.redo_action.setShortcut(QKeySequence(QKeySequence.StandardKey.Redo))
         self.start_page = StartPage()
         self.desks = QTabWidget()
+        self.desks.setAccessibleName("Desks")
         self.desks.setDocumentMode(True)
         self.pages = QStackedWidget()
         self.pages.addWidget(self.start_page)
@@ -112,11 +115,12 @@ class MainWindow(QMainWindow):
 
     def show_plan(self, shown: "ShownPlan") -> None:
         """Show a plan; the one before it comes back with Undo."""
-        self._stack.push(_ShowCommand(self, self._shown, shown))
+        self._stack.push(_ShowCommand(self, (self._shown, self._shown_path), (shown, self._job_path)))
 
-    def put_plan(self, shown: "ShownPlan | None") -> None:
-        """Replace what the desks show; None shows the start page."""
+    def put_plan(self, shown: "ShownPlan | None", job_path: str | None) -> None:
+        """Replace what the desks show, and the job file it comes from; None shows the start page."""
         self._shown = shown
+        self._shown_path = self._job_path = job_path
         if shown is not None:
             self._make_desks()
             for desk in (self._detailing, self._workshop, self._estimating):
@@ -324,8 +328,9 @@ class MainWindow(QMainWindow):
 
     def _set_zoom(self, step: int) -> None:
         at = ZOOMS.index(self._settings.zoom) + step
-        self._settings.zoom = ZOOMS[min(max(at, 0), len(ZOOMS) - 1)]
-        self._apply_theme()
+        if 0 <= at < len(ZOOMS):
+            self._settings.zoom = ZOOMS[at]
+            self._apply_theme()
 
     @Slot()
     def _apply_theme(self) -> None:
@@ -353,12 +358,12 @@ class MainWindow(QMainWindow):
 class _ShowCommand(QUndoCommand):
     """Show another plan."""
 
-    def __init__(self, window: MainWindow, before: "ShownPlan | None", after: "ShownPlan") -> None:
-        super().__init__(f"plan of {after.plan.job.title}")
+    def __init__(self, window: MainWindow, before: "_Shown", after: "_Shown") -> None:
+        super().__init__("change of plan")
         self._window, self._before, self._after = window, before, after
 
     def redo(self) -> None:
-        self._window.put_plan(self._after)
+        self._window.put_plan(*self._after)
 
     def undo(self) -> None:
-        self._window.put_plan(self._before)
+        self._window.put_plan(*self._before)

@@ -3,21 +3,22 @@
 from typing import NamedTuple
 
 from cutblock.records.account import Ledger
-from cutblock.window.theme import BLUE, GREEN, GREY, ORANGE, PURPLE, SKY, VERMILLION, YELLOW
+from cutblock.window.theme import GREEN, ORANGE, PURPLE, SKY, VERMILLION, YELLOW
 
 USED, KEPT, WASTE = "used", "kept", "waste"
 
-# name, letter, field of the ledger, colour, hatch, what it counts as; in the order they are shown
+# name, letter, field of the ledger, colour, hatch, what it counts as; in the order they are shown;
+# the colours are those of the pictures of the blocks
 _PARTS = (
-    ("Moulds", "M", "mould_mm3", BLUE, "", USED),
-    ("Counter-moulds", "C", "counter_mould_mm3", SKY, "/", USED),
-    ("Cradles", "R", "cradle_mm3", GREEN, "", USED),
-    ("Fillers", "F", "filler_mm3", GREEN, "\\", USED),
-    ("Offcuts kept", "O", "offcut_mm3", YELLOW, "", KEPT),
-    ("Surplus halves", "H", "surplus_mm3", PURPLE, "/", WASTE),
-    ("Kerf melted", "K", "kerf_mm3", VERMILLION, "", WASTE),
-    ("Skin trimmed", "T", "trim_mm3", ORANGE, "\\", WASTE),
-    ("Scrap", "S", "scrap_mm3", GREY, "x", WASTE),
+    ("Moulds", "M", "mould_mm3", SKY, "", USED),
+    ("Counter-moulds", "C", "counter_mould_mm3", ORANGE, "/", USED),
+    ("Cradles", "R", "cradle_mm3", GREEN, "\\", USED),
+    ("Fillers", "F", "filler_mm3", PURPLE, "x", USED),
+    ("Offcuts kept", "O", "offcut_mm3", "#F4F4F4", "/", KEPT),
+    ("Surplus halves", "H", "surplus_mm3", YELLOW, ".", WASTE),
+    ("Skin trim", "T", "trim_mm3", "#BBBBBB", "", WASTE),
+    ("Kerf", "K", "kerf_mm3", VERMILLION, "", WASTE),
+    ("Scrap", "S", "scrap_mm3", "#303030", "", WASTE),
 )
 
 

@@ -1,6 +1,6 @@
 """The plan as rows of text, one function a table; every number carries its unit in the column's title."""
 
-from cutblock.base.units import MM3_PER_LITRE, hours, litres, mm_per_minute
+from cutblock.base.units import MM3_PER_LITRE, SECONDS_PER_MINUTE, hours, litres, mm_per_minute
 from cutblock.records.account import Ledger
 from cutblock.records.block import Block, Cut, Size
 from cutblock.records.panel import Panel
@@ -45,9 +45,9 @@ CUT_COLUMNS = (
     Column("Cut"),
     Column("At", tip="Where the wire's slab begins, in the frame of the raw block"),
     Column("Speed, mm/min", is_number=True),
-    Column("Time, min", is_number=True),
+    Column("Sweep, min", is_number=True, tip="Time of a sweep, run-in and run-out included"),
     Column("Part, mm", tip="Length × width × height of the part that is cut"),
-    Column("Part lies at, mm", tip="Its lower corner in the raw block: along, across, up"),
+    Column("Part at, mm", tip="Its lower corner in the raw block: along, across, up"),
 )
 BLOCK_COLUMNS = (
     Column("Block"),
@@ -114,10 +114,11 @@ def piece_rows(plan: Plan) -> list[Row]:
     ]
 
 
-def cut_rows(block: Block, timings: tuple[SweepTiming, ...]) -> list[Row]:
-    """Return a row for every pass of the wire through a block, in order."""
-    by_sweep = {timing.sweep: timing for timing in timings}
-    return [_cut_row(cut, by_sweep) for cut in block.cuts]
+def cut_rows(plan: Plan, block: Block) -> list[Row]:
+    """Return a row for every pass of the wire through a block, in order; flat cuts go at the job's planned speed."""
+    by_sweep = {timing.sweep: timing for timing in plan.timings}
+    flat_mm_s = plan.conditions.planned_mm_s
+    return [_cut_row(cut, by_sweep.get(cut.sweep or ""), flat_mm_s) for cut in block.cuts]
 
 
 def block_rows(plan: Plan) -> list[Row]:
@@ -136,7 +137,7 @@ def ledger_rows(parts: tuple[LedgerPart, ...], ledger: Ledger) -> list[Row]:
         Row(
             part.letter,
             (
-                Cell(f"{part.letter}  {part.name}", colour=part.colour),
+                Cell(f"{part.letter}  {part.name}", colour=part.colour, hatch=part.hatch),
                 _number(litres(part.volume_mm3), 1),
                 _number(part.percent, 2),
                 Cell(part.counts_as),
@@ -188,7 +189,9 @@ def _panel_row(
             _number(panel.length_mm, 1),
             _number(panel.width_mm, 1),
             _number(serving.max_mm, 2),
-            Cell(f"{step.letter}  {word}", colour=step.colour, tip=f"Tolerance {tolerance_mm:.2f} mm"),
+            Cell(
+                f"{step.letter}  {word}", colour=step.colour, hatch=step.hatch, tip=f"Tolerance {tolerance_mm:.2f} mm"
+            ),
             _number(sweep.fit_max_mm, 3),
             _number(sweep.fit_rms_mm, 3),
             Cell(sweep.wire_along),
@@ -209,7 +212,12 @@ def _uncut_row(panel: Panel) -> Row:
             _number(panel.length_mm, 1),
             _number(panel.width_mm, 1),
             none,
-            Cell(f"{NOT_CUT.letter}  not cut", colour=NOT_CUT.colour, tip="No sweep moulds it: see the findings"),
+            Cell(
+                f"{NOT_CUT.letter}  not cut",
+                colour=NOT_CUT.colour,
+                hatch=NOT_CUT.hatch,
+                tip="No sweep moulds it: see the findings",
+            ),
             *((none,) * 6),
         ),
     )
@@ -223,11 +231,10 @@ def _duty_cell(piece: Piece | None, panel: str) -> Cell:
     return Cell(piece.duty.value)
 
 
-def _cut_row(cut: Cut, timings: dict[str, SweepTiming]) -> Row:
-    timing = timings.get(cut.sweep or "")
+def _cut_row(cut: Cut, timing: SweepTiming | None, flat_mm_s: float) -> Row:
     place = f"{cut.axis} = {cut.at_mm:.1f} mm" if cut.axis else (cut.sweep or "")
-    speed = _number(mm_per_minute(timing.planned_mm_s), 0) if timing else Cell("as set", key=float("inf"))
-    time = _number(timing.seconds / 60.0, 1) if timing else Cell("", key=float("inf"))
+    speed_mm_s = timing.planned_mm_s if timing is not None else flat_mm_s
+    time = _number(timing.seconds / SECONDS_PER_MINUTE, 1) if timing is not None else Cell("", key=float("inf"))
     return Row(
         str(cut.order),
         (
@@ -236,7 +243,7 @@ def _cut_row(cut: Cut, timings: dict[str, SweepTiming]) -> Row:
             Cell("turned 90°" if cut.turn else "as laid"),
             Cell(cut.kind.value),
             Cell(place),
-            speed,
+            _number(mm_per_minute(speed_mm_s), 0),
             time,
             Cell(size_text(cut.part_size_mm)),
             Cell(size_text(cut.part_at_mm).replace(" × ", ", ")),

@@ -10,18 +10,23 @@ from PySide6.QtCore import (
     QItemSelection,
     QModelIndex,
     QPersistentModelIndex,
+    QRectF,
     Qt,
     Signal,
     Slot,
 )
-from PySide6.QtGui import QColor
+from PySide6.QtGui import QColor, QIcon, QPixmap
 from PySide6.QtWidgets import QAbstractItemView, QTableView, QWidget
+
+from cutblock.window.paint import hatch_brush, painting
+from cutblock.window.theme import text_on
 
 Index = QModelIndex | QPersistentModelIndex
 NOWHERE = QModelIndex()
 
 _ROWS_MEASURED = 50  # for the column widths; measuring thousands takes most of a second
 _WIDEST_PX = 420
+_SQUARE_PX = 14
 _RIGHT = Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter
 _LEFT = Qt.AlignmentFlag.AlignLeft | Qt.AlignmentFlag.AlignVCenter
 
@@ -39,7 +44,8 @@ class Cell(NamedTuple):
 
     text: str
     key: float | None = None
-    colour: str = ""  # of a square before the text
+    colour: str = ""  # of a square before the text, "#rrggbb"
+    hatch: str = ""  # on the square, a sign of a drawing's polygon
     tip: str = ""
 
 
@@ -59,6 +65,7 @@ class RowsModel(QAbstractTableModel):
         self._columns = tuple(columns)
         self._all: tuple[Row, ...] = ()
         self._rows: list[Row] = []
+        self._squares: dict[tuple[str, str], QIcon] = {}
         self._text = ""
         self._order: tuple[int, Qt.SortOrder] = (-1, Qt.SortOrder.AscendingOrder)
 
@@ -107,7 +114,7 @@ class RowsModel(QAbstractTableModel):
         if role == Qt.ItemDataRole.TextAlignmentRole:
             return _RIGHT if self._columns[index.column()].is_number else _LEFT
         if role == Qt.ItemDataRole.DecorationRole and cell.colour:
-            return QColor(cell.colour)
+            return self._square(cell.colour, cell.hatch)
         if role == Qt.ItemDataRole.ToolTipRole and cell.tip:
             return cell.tip
         return None
@@ -137,6 +144,22 @@ class RowsModel(QAbstractTableModel):
         after = [self.index(places[id(row)], index.column()) for row, index in zip(keys, before, strict=True)]
         self.changePersistentIndexList(before, after)
         self.layoutChanged.emit()
+
+    def _square(self, colour: str, hatch: str) -> QIcon:
+        """Return the square as an icon that keeps its colour in the picked row."""
+        icon = self._squares.get((colour, hatch))
+        if icon is None:
+            pixmap = QPixmap(2 * _SQUARE_PX, 2 * _SQUARE_PX)
+            pixmap.setDevicePixelRatio(2.0)
+            room = QRectF(0, 0, _SQUARE_PX, _SQUARE_PX)
+            with painting(pixmap) as painter:
+                painter.fillRect(room, QColor(colour))
+                painter.fillRect(room, hatch_brush(hatch, text_on(QColor(colour))))
+            icon = QIcon()
+            for mode in (QIcon.Mode.Normal, QIcon.Mode.Selected):
+                icon.addPixmap(pixmap, mode)
+            self._squares[colour, hatch] = icon
+        return icon
 
     def _arranged(self) -> list[Row]:
         words = self._text.casefold().split()

@@ -16,7 +16,7 @@ from PySide6.QtWidgets import (
 from cutblock.base.units import mm_per_minute
 from cutblock.records.plan import Plan
 from cutblock.window.cautions import CUTTING_CAUTIONS, DEFERENCE, UNCALIBRATED
-from cutblock.window.desk_parts import filter_field, titled
+from cutblock.window.desk_parts import filter_field, name_choice, titled
 from cutblock.window.drawing_view import DrawingView
 from cutblock.window.labels import counted, label
 from cutblock.window.rows import CUT_COLUMNS, PIECE_COLUMNS, cut_rows, piece_rows
@@ -41,6 +41,7 @@ class WorkshopDesk(QWidget):
         self.tags = TagsPage()
         self.speed = SpeedPage()
         self.pages = QTabWidget()
+        self.pages.setAccessibleName("Parts of the workshop's desk")
         self.pages.setDocumentMode(True)
         self.pages.addTab(self.cuts, "Cut &list")
         self.pages.addTab(self.tags, "Piece &tags")
@@ -56,7 +57,9 @@ class WorkshopDesk(QWidget):
             column = QVBoxLayout()
             column.setSpacing(2)
             column.addWidget(label(head, "heading"))
-            column.addWidget(label(text, wraps=True), 1)
+            words = label(text, wraps=True)
+            words.setAlignment(Qt.AlignmentFlag.AlignTop)
+            column.addWidget(words, 1)
             beside.addLayout(column, 1)
         inside.addLayout(beside)
         inside.addWidget(label(DEFERENCE, "note", wraps=True))
@@ -79,7 +82,7 @@ class CutListPage(QWidget):
         super().__init__(parent)
         self._shown: ShownPlan | None = None
         self.block = QComboBox()
-        self.block.setAccessibleName("Block")
+        name_choice(self.block, "Block")
         self.block.setMinimumWidth(180)
         self._count = label(kind="note")
         self.rows = RowsModel(CUT_COLUMNS)
@@ -98,7 +101,7 @@ class CutListPage(QWidget):
         split = QSplitter(Qt.Orientation.Horizontal)
         split.addWidget(left)
         split.addWidget(self.picture)
-        split.setSizes([900, 400])
+        split.setSizes([940, 360])
         split.setChildrenCollapsible(False)
         layout = QVBoxLayout(self)
         layout.addWidget(split)
@@ -122,7 +125,7 @@ class CutListPage(QWidget):
             return
         plan = self._shown.plan
         block = plan.blocks[number]
-        self.rows.show_rows(cut_rows(block, plan.timings))
+        self.rows.show_rows(cut_rows(plan, block))
         self.table.fit_columns()
         self.picture.show_drawing(self._shown.views.blocks[number])
         cuts, setups = counted(len(block.cuts), "cut"), counted(len({cut.setup for cut in block.cuts}), "set-up")
@@ -147,7 +150,7 @@ class TagsPage(QWidget):
         self.filter = filter_field("Find a piece, or scan its tag", self.rows, self)
         self.picture = DrawingView("Tag of the piece", "Pick a piece to see its tag.")
         self.sheet = QComboBox()
-        self.sheet.setAccessibleName("Label sheet")
+        name_choice(self.sheet, "Label sheet")
         self.start = QSpinBox()
         self.start.setAccessibleName("First free label of the sheet")
         self.start.setMinimum(1)
@@ -172,7 +175,7 @@ class TagsPage(QWidget):
         split = QSplitter(Qt.Orientation.Horizontal)
         split.addWidget(left)
         split.addWidget(right)
-        split.setSizes([900, 400])
+        split.setSizes([940, 360])
         split.setChildrenCollapsible(False)
         layout = QVBoxLayout(self)
         layout.addWidget(split)

@@ -3,6 +3,7 @@
 import contextlib
 import importlib
 import os
+import pickle
 import signal
 import time
 from collections.abc import Sequence
@@ -41,7 +42,7 @@ def serve(talk: Connection, orders: Connection, warm_up: Sequence[str]) -> None:
     """Answer requests until the other side hangs up.
 
     Args:
-        talk: Gives (ticket, request), takes events.
+        talk: Gives a ticket and then a pickled request, takes events.
         orders: Gives the ticket of the request to stop.
         warm_up: Modules to import first.
     """
@@ -52,11 +53,11 @@ def serve(talk: Connection, orders: Connection, warm_up: Sequence[str]) -> None:
         importlib.import_module(name)
     with contextlib.suppress(EOFError, OSError):
         while True:
-            ticket, request = talk.recv()
-            _send_last(talk, _answer(ticket, request, talk, orders))
+            ticket, pickled = talk.recv(), talk.recv_bytes()
+            _send_last(talk, _answer(ticket, pickled, talk, orders))
 
 
-def _answer(ticket: int, request: Request, talk: Connection, orders: Connection) -> Event:
+def _answer(ticket: int, pickled: bytes, talk: Connection, orders: Connection) -> Event:
     last_s = -LEAST_GAP_S
 
     def report(fraction: float, text: str) -> None:
@@ -69,6 +70,7 @@ def _answer(ticket: int, request: Request, talk: Connection, orders: Connection)
             talk.send(Progress(ticket=ticket, fraction=min(max(fraction, 0.0), 1.0), text=text))
 
     try:
+        request: Request = pickle.loads(pickled)
         return Result(ticket=ticket, value=request.run(report))
     except Stopped:
         return Cancelled(ticket=ticket)

@@ -7,6 +7,7 @@ unpickled in the caller's thread.
 
 import contextlib
 import multiprocessing
+import pickle
 import queue
 import threading
 import time
@@ -175,7 +176,10 @@ class _Child:
     def _converse(self) -> None:
         while (message := self.outbox.get()) is not None:
             try:
-                self._talk.send(message)
+                ticket, request = message
+                pickled = pickle.dumps(request)  # before anything is sent: it may fail
+                self._talk.send(ticket)
+                self._talk.send_bytes(pickled)
                 while isinstance(event := self._talk.recv(), Progress):
                     self.inbox.put(event)
                 self.inbox.put(event)

@@ -170,6 +170,19 @@ def test_a_request_that_cannot_be_pickled_is_told(worker):
     assert "pickle" in failure.message
 
 
+def test_a_request_that_the_process_cannot_read_is_told_with_its_traceback(worker, monkeypatch):
+    monkeypatch.setattr("kit.stub_requests.OnlyHere", only_here := type("OnlyHere", (), {}), raising=False)
+    only_here.__module__, only_here.__qualname__ = "kit.stub_requests", "OnlyHere"
+    pid = worker.pid
+    worker.submit(only_here())
+
+    (failure,) = drain(worker)
+
+    assert failure.is_bug
+    assert "OnlyHere" in failure.message
+    assert worker.pid == pid
+
+
 def test_a_result_that_cannot_be_pickled_is_told(worker):
     worker.submit(ReturnLock())
 

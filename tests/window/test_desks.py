@@ -1,0 +1,181 @@
+from dataclasses import replace
+
+import pytest
+from kit.sample import sample_plan
+from kit.shown import grid_plan, sample_shown, shown_of
+from PySide6.QtCore import Qt
+from PySide6.QtWidgets import QLabel
+
+from cutblock.records.plan import Finding
+from cutblock.records.words import Severity
+from cutblock.window.cautions import CUTTING_CAUTIONS, DEFERENCE
+from cutblock.window.detailing import DetailingDesk
+from cutblock.window.estimating import EstimatingDesk
+from cutblock.window.workshop import WorkshopDesk
+
+
+@pytest.fixture
+def detailing(qtbot):
+    desk = DetailingDesk()
+    qtbot.addWidget(desk)
+    desk.show_plan(shown_of(grid_plan(2, 3, {"S-A03": None})))
+    return desk
+
+
+@pytest.fixture
+def workshop(qtbot):
+    desk = WorkshopDesk()
+    qtbot.addWidget(desk)
+    desk.show_plan(sample_shown())
+    return desk
+
+
+@pytest.fixture
+def estimating(qtbot):
+    desk = EstimatingDesk()
+    qtbot.addWidget(desk)
+    desk.show_plan(sample_shown())
+    return desk
+
+
+def words(widget):
+    return " ".join(found.text() for found in widget.findChildren(QLabel))
+
+
+def test_a_panel_picked_in_the_plan_is_picked_in_the_table_and_its_sweep_shown(qtbot, detailing):
+    detailing.map.panel_picked.emit("S-B02")
+
+    assert detailing.table.picked_key == "S-B02 SM-S-B02"
+    assert detailing.section._sweep.id == "SM-S-B02"
+
+
+def test_a_panel_picked_in_the_table_is_marked_in_the_plan(detailing):
+    detailing.table.pick("S-B03 SM-S-B03")
+
+    assert detailing.map._picked == "S-B03"
+
+
+def test_a_panel_without_a_sweep_empties_the_section(detailing):
+    detailing.table.pick("S-A03 ")
+
+    assert detailing.section._sweep is None
+
+
+def test_picking_in_the_plan_drops_a_filter_that_hides_the_panel(detailing):
+    detailing.filter.setText("S-A01")
+    assert detailing.rows.rowCount() == 1
+
+    detailing.map.panel_picked.emit("S-B02")
+
+    assert detailing.filter.text() == ""
+    assert detailing.table.picked_key == "S-B02 SM-S-B02"
+
+
+def test_ctrl_f_goes_to_the_filter_of_the_desk_in_front(qtbot, window):
+    window.show_plan(sample_shown())
+    for number, desk in ((0, window._detailing), (1, window._workshop.tags)):
+        window.desks.setCurrentIndex(number)
+        window._workshop.pages.setCurrentIndex(1)
+        desk.table.setFocus()
+        qtbot.waitUntil(desk.table.hasFocus, timeout=2000)
+
+        qtbot.keyClick(desk.table, Qt.Key.Key_F, Qt.KeyboardModifier.ControlModifier)
+
+        qtbot.waitUntil(desk.filter.hasFocus, timeout=2000)
+
+
+def test_a_scanned_code_finds_its_piece_and_shows_its_tag(workshop):
+    workshop.tags.filter.setText("CB1:SM-T-A01-U:A:0000")
+
+    assert workshop.tags.rows.rowCount() == 1
+    workshop.tags.table.pick_first()
+    assert workshop.tags.picture._drawing.title == "Tag of SM-T-A01-U"
+
+
+def test_sorting_the_pieces_keeps_each_with_its_own_tag(workshop):
+    workshop.tags.table.sortByColumn(0, Qt.SortOrder.DescendingOrder)
+    workshop.tags.table.pick_first()
+
+    assert workshop.tags.picture._drawing.title == "Tag of SM-T-A01-U"
+
+
+def test_the_first_label_can_be_no_later_than_the_last_of_the_sheet(workshop):
+    workshop.tags.sheet.setCurrentIndex(0)
+    assert workshop.tags.start.maximum() == 8
+    workshop.tags.sheet.setCurrentIndex(1)
+    assert workshop.tags.start.maximum() == 24
+
+
+def test_the_cut_list_follows_the_block_chosen(qtbot):
+    plan = sample_plan()
+    second = replace(plan.blocks[0], id="SM-B02", cuts=plan.blocks[0].cuts[:3])
+    desk = WorkshopDesk()
+    qtbot.addWidget(desk)
+    desk.show_plan(shown_of(replace(plan, blocks=(*plan.blocks, second))))
+    assert desk.cuts.rows.rowCount() == 12
+
+    desk.cuts.block.setCurrentIndex(1)
+
+    assert desk.cuts.rows.rowCount() == 3
+    assert "2 of 2: 3 cuts in 1 set-up" in words(desk.cuts)
+    assert desk.cuts.picture._drawing.title == "Block SM-B02"
+
+
+def test_the_cautions_are_in_sight_whatever_part_of_the_workshop_is_shown(qtbot, workshop):
+    workshop.show()
+    for page in range(3):
+        workshop.pages.setCurrentIndex(page)
+        visible = " ".join(found.text() for found in workshop.findChildren(QLabel) if found.isVisible())
+        for head, text in CUTTING_CAUTIONS:
+            assert head in visible
+            assert text in visible
+        assert DEFERENCE in visible
+
+
+def test_speeds_are_given_in_both_units_and_called_uncalibrated(workshop):
+    found = words(workshop.speed)
+
+    assert "159 mm/min (2.65 mm/s)" in found
+    assert "Keep between 92 and 218 mm/min (1.53 and 3.64 mm/s)" in found
+    assert "Not calibrated" in found
+    assert "EPS 100, 20.0 kg/m³" in found
+
+
+def test_the_estimate_says_used_waste_blocks_and_the_least(estimating):
+    found = words(estimating)
+
+    assert "Used 32.8 %, wasted 19.8 % of 2188 l bought in 1 block (at least 1)" in found
+    assert "Machine time" in found
+    assert "1.30 h" in found
+
+
+def test_a_finding_picked_is_told_in_full(qtbot):
+    findings = (
+        Finding(severity=Severity.INFO, code="a", subject="S-A01", text="a note"),
+        Finding(severity=Severity.ERROR, code="b", subject="S-A02", text="over the tolerance by 1.3 mm"),
+    )
+    desk = EstimatingDesk()
+    qtbot.addWidget(desk)
+    desk.show_plan(sample_shown(findings=findings))
+
+    assert desk._finding_text.text() == "S-A02: over the tolerance by 1.3 mm"
+    assert "1 error, 0 warnings, 1 note" in words(desk)
+    desk.finding_table.pick("0")
+    assert desk._finding_text.text() == "S-A01: a note"
+
+
+def test_a_plan_without_blocks_ledger_or_findings_is_shown_all_the_same(qtbot):
+    shown = sample_shown(blocks=(), ledger=None, hours=None, cost=None, findings=(), pieces=(), sweeps=(), timings=())
+    for kind in (DetailingDesk, WorkshopDesk, EstimatingDesk):
+        desk = kind()
+        qtbot.addWidget(desk)
+        desk.show_plan(sample_shown())
+        desk.show_plan(shown)
+        desk.grab()
+
+
+def test_the_next_plan_replaces_every_row(estimating):
+    estimating.show_plan(sample_shown(findings=()))
+
+    assert estimating.findings.rowCount() == 0
+    assert estimating._finding_text.text() == "Nothing to look at."

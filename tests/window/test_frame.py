@@ -1,0 +1,311 @@
+import pytest
+from kit.shown import sample_shown
+from PySide6.QtCore import QMimeData, QPointF, Qt, QUrl
+from PySide6.QtGui import QAccessible, QAction, QDropEvent, QShortcut
+from PySide6.QtWidgets import QLabel, QWidget
+
+from cutblock.window import dialogs
+from cutblock.window.settings import WindowSettings
+from cutblock.worker.events import Cancelled, Failure, Progress, Result
+from cutblock.worker.requests import OpenRequest, PlanRequest, SaveRequest, TagsRequest
+
+
+def finish(qtbot, window, worker, value):
+    """Let the worker give its result and wait until the window has taken it."""
+    worker.events.append(Result(ticket=1, value=value))
+    qtbot.waitUntil(lambda: not worker.is_busy and not worker.events, timeout=2000)
+
+
+def plan_job(qtbot, window, worker, path="/jobs/wall/job.toml", shown=None):
+    window.open_job(path)
+    finish(qtbot, window, worker, shown if shown is not None else sample_shown())
+
+
+def test_an_empty_window_says_what_to_do_and_offers_no_saving(window):
+    assert window.pages.currentWidget() is window.start_page
+    assert window.start_page.open.isEnabled()
+    assert not window.menus.save.isEnabled()
+    assert not window.menus.tags.isEnabled()
+    assert not window.menus.again.isEnabled()
+
+
+def test_opening_a_job_plans_it_and_shows_all_three_desks(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+
+    assert worker.requests == [PlanRequest(job_path="/jobs/wall/job.toml")]
+    assert window.pages.currentWidget() is window.desks
+    assert [window.desks.tabText(i) for i in range(3)] == ["Detailing", "Workshop", "Estimating"]
+    assert "Sample wall" in window.windowTitle()
+    assert window.menus.save.isEnabled()
+
+
+def test_while_a_job_is_planned_progress_shows_and_nothing_else_can_begin(qtbot, window, worker):
+    window.open_job("/jobs/wall/job.toml")
+    worker.events.append(Progress(ticket=1, fraction=0.25, text="Fitting sweeps"))
+
+    qtbot.waitUntil(lambda: window.status.text.text() == "Fitting sweeps", timeout=2000)
+
+    assert window.status.bar.isVisible()
+    assert window.status.bar.value() == 250
+    assert not window.menus.open.isEnabled()
+    window.open_job("/jobs/other/job.toml")
+    assert len(worker.requests) == 1
+
+
+def test_escape_cancels_and_the_plan_before_stays(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+    before = window.shown
+    window.open_job("/jobs/other/job.toml")
+
+    qtbot.keyClick(window, Qt.Key.Key_Escape)
+    assert worker.n_cancels == 1
+    worker.events.append(Cancelled(ticket=2))
+    qtbot.waitUntil(lambda: not window.status.bar.isVisible(), timeout=2000)
+
+    assert window.shown is before
+    assert "nothing was changed" in window.status.text.text()
+
+
+def test_the_cancel_button_cancels(qtbot, window, worker):
+    window.open_job("/jobs/wall/job.toml")
+
+    qtbot.mouseClick(window.status.cancel, Qt.MouseButton.LeftButton)
+
+    assert worker.n_cancels == 1
+    assert not window.status.cancel.isEnabled()
+
+
+def test_a_failure_is_shown_with_subject_and_remedy(qtbot, window, worker):
+    window.open_job("/jobs/wall/job.toml")
+    failure = Failure(ticket=1, message="twist of 9°/m", subject="panel S-A03", remedy="Divide more finely.")
+    worker.events.append(failure)
+    qtbot.waitUntil(window.failure_dialog.isVisible, timeout=2000)
+
+    assert "twist of 9°/m" in window.failure_dialog.text()
+    assert "panel S-A03" in window.failure_dialog.text()
+    assert window.failure_dialog.informativeText() == "Divide more finely."
+    assert window.failure_dialog.detailedText() == ""
+    window.failure_dialog.close()
+
+
+def test_undo_brings_back_the_plan_before_and_redo_the_later_one(qtbot, window, worker):
+    first, second = sample_shown(), sample_shown()
+    plan_job(qtbot, window, worker, shown=first)
+    plan_job(qtbot, window, worker, shown=second)
+
+    window.undo_action.trigger()
+    assert window.shown is first
+    window.undo_action.trigger()
+    assert window.shown is None
+    assert window.pages.currentWidget() is window.start_page
+    window.redo_action.trigger()
+    window.redo_action.trigger()
+    assert window.shown is second
+
+
+def test_planning_again_after_undo_reads_the_job_of_the_plan_shown(qtbot, window, worker):
+    plan_job(qtbot, window, worker, "/jobs/a/job.toml")
+    plan_job(qtbot, window, worker, "/jobs/b/job.toml")
+    window.undo_action.trigger()
+
+    window.menus.again.trigger()
+
+    assert worker.requests[-1] == PlanRequest(job_path="/jobs/a/job.toml")
+
+
+def test_a_job_that_failed_can_be_planned_again_once_it_is_mended(qtbot, window, worker):
+    window.open_job("/jobs/a/job.toml")
+    worker.events.append(Failure(ticket=1, message="unknown key"))
+    qtbot.waitUntil(window.failure_dialog.isVisible, timeout=2000)
+    window.failure_dialog.close()
+
+    window.menus.again.trigger()
+
+    assert len(worker.requests) == 2
+
+
+def test_planning_again_reads_the_same_job(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+
+    window.menus.again.trigger()
+
+    assert worker.requests[1] == worker.requests[0]
+
+
+def test_saving_asks_for_a_folder_and_writes_the_plan_shown(qtbot, window, worker, monkeypatch):
+    plan_job(qtbot, window, worker)
+    suggested = []
+    monkeypatch.setattr(dialogs, "ask_new_folder", lambda parent, path: (suggested.append(path), "/out/SM-plan")[1])
+
+    window.menus.save.trigger()
+    finish(qtbot, window, worker, "/out/SM-plan")
+
+    request = worker.requests[-1]
+    assert isinstance(request, SaveRequest)
+    assert (request.plan, request.folder) == (window.shown.plan, "/out/SM-plan")
+    assert suggested == ["/jobs/wall/SM-plan"]
+    assert not window.isWindowModified()
+    assert "/out/SM-plan" in window.status.text.text()
+
+
+def test_backing_out_of_a_dialog_does_nothing(qtbot, window, worker, monkeypatch):
+    plan_job(qtbot, window, worker)
+    for name in ("ask_job", "ask_plan_folder", "ask_new_folder", "ask_pdf"):
+        monkeypatch.setattr(dialogs, name, lambda parent, path: None)
+
+    for action in (window.menus.open, window.menus.open_folder, window.menus.save, window.menus.tags):
+        action.trigger()
+
+    assert len(worker.requests) == 1
+
+
+def test_tags_are_exported_on_the_sheet_and_from_the_label_chosen(qtbot, window, worker, monkeypatch):
+    plan_job(qtbot, window, worker)
+    monkeypatch.setattr(dialogs, "ask_pdf", lambda parent, path: "/out/tags.pdf")
+    tags = window._workshop.tags
+    tags.sheet.setCurrentIndex(1)
+    tags.start.setValue(5)
+
+    tags.export.click()
+
+    request = worker.requests[-1]
+    assert isinstance(request, TagsRequest)
+    assert (request.sheet, request.start, request.path) == ("a4-3x8", 5, "/out/tags.pdf")
+
+
+def test_a_plan_folder_is_opened(qtbot, window, worker, monkeypatch):
+    monkeypatch.setattr(dialogs, "ask_plan_folder", lambda parent, path: "/out/SM-plan")
+
+    window.menus.open_folder.trigger()
+    finish(qtbot, window, worker, sample_shown())
+
+    assert worker.requests == [OpenRequest(folder="/out/SM-plan")]
+    assert window.shown is not None
+    assert not window.menus.again.isEnabled()
+
+
+def drop(window, *paths):
+    data = QMimeData()
+    data.setUrls([QUrl.fromLocalFile(path) for path in paths])
+    left = Qt.MouseButton.LeftButton
+    event = QDropEvent(QPointF(50, 50), Qt.DropAction.CopyAction, data, left, Qt.KeyboardModifier.NoModifier)
+    window.dropEvent(event)
+
+
+def test_a_dropped_job_file_is_planned(window, worker):
+    drop(window, "/jobs/wall/job.toml")
+
+    assert worker.requests == [PlanRequest(job_path="/jobs/wall/job.toml")]
+
+
+@pytest.mark.parametrize("paths", [("/a/picture.png",), ("/a/job.toml", "/b/job.toml")])
+def test_anything_else_dropped_is_left_alone(window, worker, paths):
+    drop(window, *paths)
+
+    assert worker.requests == []
+
+
+def test_recent_jobs_are_kept_and_open_again(qtbot, window, worker, settings_path):
+    plan_job(qtbot, window, worker, "/jobs/a/job.toml")
+    plan_job(qtbot, window, worker, "/jobs/b/job.toml")
+    plan_job(qtbot, window, worker, "/jobs/a/job.toml")
+
+    assert WindowSettings(settings_path).recent == ["/jobs/a/job.toml", "/jobs/b/job.toml"]
+    window.menus.recent.actions()[1].trigger()
+    assert worker.requests[-1] == PlanRequest(job_path="/jobs/b/job.toml")
+
+
+def test_a_job_that_could_not_be_planned_does_not_become_recent(qtbot, window, worker, settings_path):
+    window.open_job("/jobs/bad/job.toml")
+    worker.events.append(Failure(ticket=1, message="no such file"))
+    qtbot.waitUntil(window.failure_dialog.isVisible, timeout=2000)
+
+    assert WindowSettings(settings_path).recent == []
+    window.failure_dialog.close()
+
+
+def test_the_theme_changes_at_once_and_is_remembered(window, settings_path):
+    window.menus.themes["dark"].trigger()
+    assert window.palette().window().color().lightness() < 80
+    assert WindowSettings(settings_path).theme == "dark"
+
+    window.menus.themes["light"].trigger()
+    assert window.palette().window().color().lightness() > 200
+
+
+def test_text_grows_shrinks_and_returns_to_its_size(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+    size = window.font().pointSizeF()
+    height = window._detailing.table.verticalHeader().defaultSectionSize()
+
+    for _ in range(2):
+        window.menus.larger.trigger()
+    assert window.font().pointSizeF() > 1.2 * size
+    assert window._detailing.table.verticalHeader().defaultSectionSize() > height
+    for _ in range(8):
+        window.menus.smaller.trigger()
+    assert window.font().pointSizeF() < size
+    window.menus.usual.trigger()
+    assert window.font().pointSizeF() == size
+
+
+def test_desks_are_reached_by_their_shortcuts(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+
+    for number, key in enumerate((Qt.Key.Key_1, Qt.Key.Key_2, Qt.Key.Key_3)):
+        qtbot.keyClick(window, key, Qt.KeyboardModifier.ControlModifier)
+        assert window.desks.currentIndex() == number
+
+
+def test_no_two_actions_share_a_shortcut(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+    keys = [key.toString() for action in window.findChildren(QAction) for key in action.shortcuts()]
+
+    assert len(keys) == len(set(keys))
+    assert len(keys) > 15
+    assert not set(keys) & {shortcut.key().toString() for shortcut in window.findChildren(QShortcut)}
+
+
+def test_everything_that_takes_the_focus_has_a_name_for_screen_readers(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+    nameless = []
+    for widget in window.findChildren(QWidget):
+        takes_focus = widget.focusPolicy() & Qt.FocusPolicy.TabFocus and widget.isEnabled()
+        if takes_focus and not widget.objectName().startswith("qt_"):
+            interface = QAccessible.queryAccessibleInterface(widget)
+            if not interface.text(QAccessible.Text.Name):
+                nameless.append(f"{type(widget).__name__} in {type(widget.parent()).__name__}")
+
+    assert nameless == []
+
+
+def test_no_label_takes_text_for_markup(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+    own = [found for found in window.findChildren(QLabel) if not found.objectName().startswith("qt_")]
+
+    assert len(own) > 20
+    assert all(found.textFormat() == Qt.TextFormat.PlainText for found in own)
+
+
+def test_closing_while_a_job_is_planned_asks_nothing_and_ends_the_worker(window, worker):
+    window.open_job("/jobs/wall/job.toml")
+
+    window.close()
+
+    assert worker.is_closed
+    assert not window.isVisible()
+
+
+def test_place_and_size_are_remembered(window, settings_path):
+    window.resize(1100, 760)
+    window.close()
+
+    assert not WindowSettings(settings_path).geometry.isEmpty()
+
+
+def test_help_shows_the_cautions_and_what_the_program_is(qtbot, window):
+    for box, words in ((dialogs.cautions_box(window), "Fumes"), (dialogs.about_box(window), "cutblock")):
+        qtbot.addWidget(box)
+        assert words in box.text()
+        assert box.textFormat() == Qt.TextFormat.PlainText
+    assert "Local rules" in dialogs.cautions_box(window).informativeText()
