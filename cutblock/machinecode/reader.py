@@ -17,7 +17,7 @@ _ACTIVE = ("MSG", "DEBUG", "LOG", "PRINT", "PROBE")  # comments some controllers
 _LONGEST_LINE = 255
 _REMEDY = "Do not run this file; write the programs anew."
 
-# Modal groups (NISTIR 6556, table 4, and the path-control group); one word of each a line.
+# Modal groups (NISTIR 6556, from memory); one word of each a line.
 _GROUPS = {
     **dict.fromkeys(("0", "1"), "motion"),
     **dict.fromkeys(("17", "18", "19"), "plane"),

@@ -34,7 +34,8 @@ class Machine(Record):
     """A four-axis machine: two towers carry the wire's ends, near in (x, y), far in (u, v); all in mm and s.
 
     The near tower's plane lies `near_gap_mm` before the table's near edge, the far tower's `span_mm` behind it. A part
-    is clamped with its near face on the table's near edge and its start `table_offset_mm` along the travel.
+    is clamped with its near face on the table's near edge and its start `table_offset_mm` along the travel, unless the
+    head of its program says otherwise.
     """
 
     name: str

@@ -12,7 +12,7 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from kit.machining import billet_plan, cut, cuts_plan, roomy_plan, skew_sweep, timing_of
+from kit.machining import billet_plan, cut, cuts_plan, roomy_machine, roomy_plan, skew_sweep, timing_of
 from kit.sample import sample_sweep
 
 from cutblock.machinecode.programs import write_programs
@@ -79,6 +79,7 @@ def plans():
         "askew": billet_plan(skew_sweep(n_rulings=150)),
         "turned": billet_plan(skew_sweep(n_rulings=40), turned=True),
         "across": cuts_plan(steep),
+        "set back": billet_plan(sample_sweep("SM-K-A01"), machine=roomy_machine(table_height_mm=50.0, lift_mm=450.0)),
     }
 
 
