@@ -7,7 +7,6 @@ theirs and a comma (RS274/NGC as controllers extend it).
 
 import re
 
-import cutblock
 from cutblock.base.tolerances import PLAN_MM
 from cutblock.machinecode.clamping import Clamping, cut_subject
 from cutblock.machinecode.placing import Place
@@ -41,7 +40,7 @@ def header_comments(plan: Plan, clamping: Clamping, place: Place) -> tuple[str, 
     n_setups = len({cut.setup for cut in block.cuts})
     lying = "turned a quarter. Block y along the travel. Block x against the wire from near to far"
     texts = (
-        f"Program cutblock {cutblock.__version__} for machine {machine.name}",
+        f"Program of cutblock for machine {machine.name}",
         f"Job {job.id} {job.title}",
         f"Revision {job.revision}",
         f"Block {block.id} set-up {clamping.number} of {n_setups}",
