@@ -93,11 +93,3 @@ def is_inside(rings: Rings, points: Floats, reach_mm: float = 0.0) -> Bools:
     inside: Bools = shapely.intersects_xy(area, points[:, 0], points[:, 1])
     return inside
 
-
-def narrowest_mm(area: Area) -> float:
-    """Return roughly how wide an area is at its widest place: twice the radius of the largest circle inside it."""
-    import shapely
-
-    if area.is_empty:
-        return 0.0
-    return 2.0 * float(shapely.maximum_inscribed_circle(area, tolerance=1.0).length)

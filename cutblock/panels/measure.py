@@ -82,7 +82,7 @@ def measured_panel(panel_id: str, face: Face, cell: Cell, layup: Layup, units: s
     )
     plan = (edge_points - origin) @ axes[:2].T
     low = np.round(plan.min(axis=0), 9)
-    origin = origin + low @ axes[:2]
+    origin = np.round(origin + low @ axes[:2], 9) + 0.0
     length, width = (round(float(size), 6) for size in (plan - low).max(axis=0))
     outline = _outline(panel_id, rings_uv, plan - low, length, width, origin, axes, units)
     rectangle = np.array([[0.0, 0.0], [length, 0.0], [length, width], [0.0, width]])
