@@ -111,6 +111,16 @@ def test_a_rail_too_rough_for_easing_is_slowed_as_a_whole():
     assert (np.abs(np.diff(speeds, axis=0)).max(axis=1) / gaps).max() <= 0.01 * (1.0 + 1e-6)
 
 
+def test_a_kink_is_eased_where_it_is_and_the_rest_keeps_its_speed():
+    x = np.linspace(-20.0, 1220.0, 63)
+    roof = np.stack([x, 150.0 - 0.1 * np.abs(x - 600.0)], axis=1)
+    machine = sample_machine(acceleration_mm_s2=0.05)
+    _, (timing,), _ = time_sweeps([sample_sweep(near=roof, far=roof)], CONDITIONS, machine)
+    usual = 20.0 * np.hypot(1.0, 0.1) / 2.6458
+    np.testing.assert_allclose(timing.step_seconds[[5, 20, 40, 55]], usual, rtol=1e-9)
+    assert timing.step_seconds.max() > 1.05 * usual
+
+
 def test_tower_planes_lie_beyond_the_billet():
     steps = sweep_steps([fan_sweep()], MACHINE)
     slope = (1240.0 - 400.0) / 1000.0
