@@ -1,9 +1,9 @@
-"""Shows one drawing, fitted to the room there is, on a sheet of paper."""
+"""Shows one drawing on a sheet of paper, fitted to the room there is; a double click shows it in a larger window."""
 # ruff: noqa: N802 - Qt names the methods that are overridden
 
 from PySide6.QtCore import QEvent, QMarginsF, QPointF, QRectF, QSize, Qt
-from PySide6.QtGui import QHelpEvent, QPainter, QPaintEvent, QPen
-from PySide6.QtWidgets import QSizePolicy, QToolTip, QWidget
+from PySide6.QtGui import QHelpEvent, QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen
+from PySide6.QtWidgets import QDialog, QSizePolicy, QToolTip, QVBoxLayout, QWidget
 
 from cutblock.records.drawing import Drawing, Polygon
 from cutblock.window.paint import fitted, paint_drawing, painting, polygon_of
@@ -13,7 +13,10 @@ _MARGIN_PX = 8.0
 
 
 class DrawingView(QWidget):
-    """A picture of a drawing; `show_drawing` replaces it. What a polygon is shows as a tool-tip."""
+    """A picture of a drawing; `show_drawing` replaces it. What a polygon is shows as a tool-tip.
+
+    A double click or the Return key opens the picture in a larger window.
+    """
 
     def __init__(self, name: str, empty_text: str, parent: QWidget | None = None) -> None:
         """Make it empty.
@@ -30,6 +33,7 @@ class DrawingView(QWidget):
         self.setAccessibleDescription(empty_text)
         self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Expanding)
         self.setMinimumSize(160, 110)
+        self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
 
     def show_drawing(self, drawing: Drawing | None) -> None:
         """Replace the picture; None empties it."""
@@ -55,8 +59,35 @@ class DrawingView(QWidget):
             painter.setRenderHint(QPainter.RenderHint.Antialiasing)
             painter.fillRect(sheet, paper_colour(self.palette()))
             paint_drawing(painter, self._drawing, sheet)
-            painter.setPen(QPen(ink.faint, 1.0))
+            is_here = self.hasFocus()
+            painter.setPen(QPen(ink.accent if is_here else ink.faint, 2.0 if is_here else 1.0))
             painter.drawRect(sheet)
+
+    def mouseDoubleClickEvent(self, event: QMouseEvent) -> None:
+        """Open the larger picture."""
+        self.open_larger()
+
+    def keyPressEvent(self, event: QKeyEvent) -> None:
+        """Open the larger picture with Return."""
+        if event.key() in (Qt.Key.Key_Return, Qt.Key.Key_Enter) and self._drawing is not None:
+            self.open_larger()
+        else:
+            super().keyPressEvent(event)
+
+    def open_larger(self) -> None:
+        """Show the drawing in a window of its own, which stays while other drawings are looked at."""
+        if self._drawing is None:
+            return
+        dialog = QDialog(self.window())
+        dialog.setAttribute(Qt.WidgetAttribute.WA_DeleteOnClose)
+        dialog.setWindowTitle(self._drawing.title or self.accessibleName())
+        view = DrawingView(self.accessibleName(), self._empty_text)
+        view.show_drawing(self._drawing)
+        layout = QVBoxLayout(dialog)
+        layout.setContentsMargins(0, 0, 0, 0)
+        layout.addWidget(view)
+        dialog.resize(1100, 780)
+        dialog.show()
 
     def event(self, event: QEvent) -> bool:
         """Show the title of the polygon under the mouse as a tool-tip."""

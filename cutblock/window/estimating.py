@@ -41,7 +41,7 @@ class EstimatingDesk(QWidget):
         left.addWidget(titled("Summary", self._summary_area()))
         left.addWidget(titled("Blocks", self.block_table))
         left.addWidget(self.picture)
-        left.setSizes([200, 170, 340])
+        left.setSizes([230, 160, 340])
         right = QSplitter(Qt.Orientation.Vertical)
         right.addWidget(titled("Foam account", self._account()))
         right.addWidget(titled("Findings", self._finding_area()))
@@ -71,9 +71,12 @@ class EstimatingDesk(QWidget):
         self.finding_table.fit_columns()
         self.finding_table.pick_first()
         self._show_finding(self.finding_table.picked_key)
-        words = ((Severity.ERROR, "error"), (Severity.WARNING, "warning"), (Severity.INFO, "note"))
-        counts = [(sum(finding.severity is severity for finding in findings), word) for severity, word in words]
-        self._finding_words.setText(", ".join(counted(number, word) for number, word in counts))
+        n_errors, n_warnings, n_infos = (
+            sum(finding.severity is severity for finding in findings)
+            for severity in (Severity.ERROR, Severity.WARNING, Severity.INFO)
+        )
+        counts = f"{counted(n_errors, 'error')}, {counted(n_warnings, 'warning')}, {n_infos} info"
+        self._finding_words.setText(counts)
 
     @Slot(str)
     def _show_block(self, block_id: str) -> None:
@@ -97,7 +100,7 @@ class EstimatingDesk(QWidget):
         for what, how_much in lines:
             value = label(how_much, wraps=True)
             value.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
-            self._lines.addRow(label(what, "note"), value)
+            self._lines.addRow(label(what[:1].upper() + what[1:], "note"), value)
 
     def _show_account(self, ledger: Ledger | None) -> None:
         parts = ledger_parts(ledger) if ledger is not None else ()

@@ -1,8 +1,10 @@
 """The plan as rows of text, one function a table; every number carries its unit in the column's title."""
 
+from collections.abc import Iterable
+
 from cutblock.base.units import MM3_PER_LITRE, SECONDS_PER_MINUTE, hours, litres, mm_per_minute
 from cutblock.records.account import Ledger
-from cutblock.records.block import Block, Cut, Size
+from cutblock.records.block import Block, Cut
 from cutblock.records.panel import Panel
 from cutblock.records.piece import Piece
 from cutblock.records.plan import Finding, Plan
@@ -16,8 +18,7 @@ from cutblock.window.theme import SKY, VERMILLION, YELLOW
 PANEL_COLUMNS = (
     Column("Panel"),
     Column("Face"),
-    Column("Length, mm", is_number=True),
-    Column("Width, mm", is_number=True),
+    Column("Size, mm", tip="Length × width"),
     Column("Finished, max mm", is_number=True, tip="Largest distance of the finished mould face from the form"),
     Column("Tolerance", tip="A to D: within, in quarters of the tolerance; E: over"),
     Column("Fit, max mm", is_number=True, tip="What the straight wire leaves, kerf and coat set aside"),
@@ -69,7 +70,7 @@ FINDING_COLUMNS = (Column("Severity"), Column("Where"), Column("Code"), Column("
 _SEVERITIES = {
     Severity.ERROR: ("Error", VERMILLION, 0),
     Severity.WARNING: ("Warning", YELLOW, 1),
-    Severity.INFO: ("Note", SKY, 2),
+    Severity.INFO: ("Info", SKY, 2),
 }
 
 
@@ -93,7 +94,7 @@ def panel_key(panel: str, sweep: str) -> str:
     return f"{panel} {sweep}"
 
 
-def piece_rows(plan: Plan) -> list[Row]:
+def piece_rows(pieces: Iterable[Piece]) -> list[Row]:
     """Return a row for every piece; a scanned code finds it."""
     return [
         Row(
@@ -110,7 +111,7 @@ def piece_rows(plan: Plan) -> list[Row]:
                 Cell(piece.code),
             ),
         )
-        for piece in plan.pieces
+        for piece in pieces
     ]
 
 
@@ -169,8 +170,8 @@ def finding_rows(findings: tuple[Finding, ...]) -> list[Row]:
     return rows
 
 
-def size_text(size_mm: Size) -> str:
-    """Return a size as length × width × height."""
+def size_text(size_mm: Iterable[float]) -> str:
+    """Return a size as length × width × height, mm."""
     return " × ".join(f"{side:.1f}".removesuffix(".0") for side in size_mm)
 
 
@@ -186,8 +187,7 @@ def _panel_row(
         (
             Cell(name),
             Cell(panel.face),
-            _number(panel.length_mm, 1),
-            _number(panel.width_mm, 1),
+            _size_cell(panel),
             _number(serving.max_mm, 2),
             Cell(
                 f"{step.letter}  {word}", colour=step.colour, hatch=step.hatch, tip=f"Tolerance {tolerance_mm:.2f} mm"
@@ -209,8 +209,7 @@ def _uncut_row(panel: Panel) -> Row:
         (
             Cell(panel.id),
             Cell(panel.face),
-            _number(panel.length_mm, 1),
-            _number(panel.width_mm, 1),
+            _size_cell(panel),
             none,
             Cell(
                 f"{NOT_CUT.letter}  not cut",
@@ -221,6 +220,10 @@ def _uncut_row(panel: Panel) -> Row:
             *((none,) * 6),
         ),
     )
+
+
+def _size_cell(panel: Panel) -> Cell:
+    return Cell(size_text((panel.length_mm, panel.width_mm)), key=panel.length_mm * panel.width_mm)
 
 
 def _duty_cell(piece: Piece | None, panel: str) -> Cell:

@@ -121,7 +121,7 @@ class _Section:
             painter.drawLine(place, place + QPointF(0.0, 4.0))
             text = f"{mark:.0f}"
             painter.drawText(QPointF(place.x() - metrics.horizontalAdvance(text) / 2, base), text)
-        n_high = max(1, int(sweep.height_mm * self._per_mm * self.stretch / (2.2 * metrics.height())))
+        n_high = max(1, int(sweep.height_mm * self._per_mm * self.stretch / (1.5 * metrics.height())))
         for mark in round_marks(0.0, sweep.height_mm, n_high):
             place = self._at(0.0, mark)
             painter.drawLine(place, place - QPointF(4.0, 0.0))

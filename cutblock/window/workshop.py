@@ -14,6 +14,7 @@ from PySide6.QtWidgets import (
 )
 
 from cutblock.base.units import mm_per_minute
+from cutblock.records.drawing import Drawing
 from cutblock.records.plan import Plan
 from cutblock.window.cautions import CUTTING_CAUTIONS, DEFERENCE, UNCALIBRATED
 from cutblock.window.desk_parts import filter_field, name_choice, titled
@@ -144,7 +145,7 @@ class TagsPage(QWidget):
     def __init__(self, parent: QWidget | None = None) -> None:
         super().__init__(parent)
         self._shown: ShownPlan | None = None
-        self._numbers: dict[str, int] = {}
+        self._tags: dict[str, Drawing] = {}
         self.rows = RowsModel(PIECE_COLUMNS)
         self.table = RowsView(self.rows, "Pieces")
         self.filter = filter_field("Find a piece, or scan its tag", self.rows, self)
@@ -186,14 +187,16 @@ class TagsPage(QWidget):
     def show_plan(self, shown: ShownPlan) -> None:
         """Replace the pieces and show the first tag."""
         self._shown = shown
-        self._numbers = {piece.id: number for number, piece in enumerate(shown.plan.pieces)}
+        by_code = {tag.title: tag for tag in shown.views.tags}
+        self._tags = {piece.id: by_code[piece.code] for piece in shown.plan.pieces if piece.code in by_code}
         chosen = self.sheet.currentData()
         self.sheet.clear()
         for sheet in shown.views.sheets:
-            size = f"{sheet.label_width_mm:g} × {sheet.label_height_mm:g} mm"
-            self.sheet.addItem(f"{sheet.title} ({size}, {sheet.columns * sheet.rows} a sheet)", sheet.name)
+            self.sheet.addItem(sheet.title, sheet.name)
         self.sheet.setCurrentIndex(max(self.sheet.findData(chosen), 0))
-        self.rows.show_rows(piece_rows(shown.plan))
+        order = {tag.title: number for number, tag in enumerate(shown.views.tags)}
+        pieces = sorted(shown.plan.pieces, key=lambda piece: order.get(piece.code, len(order)))
+        self.rows.show_rows(piece_rows(pieces))
         self.table.fit_columns()
         self.table.pick_first()
         self._show_tag(self.table.picked_key)
@@ -205,11 +208,7 @@ class TagsPage(QWidget):
 
     @Slot(str)
     def _show_tag(self, piece: str) -> None:
-        number = self._numbers.get(piece)
-        if self._shown is None or number is None:
-            self.picture.show_drawing(None)
-        else:
-            self.picture.show_drawing(self._shown.views.tags[number])
+        self.picture.show_drawing(self._tags.get(piece))
 
     @Slot(int)
     def _set_most_labels(self, number: int) -> None:

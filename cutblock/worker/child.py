@@ -44,12 +44,14 @@ def serve(talk: Connection, orders: Connection, warm_up: Sequence[str]) -> None:
     Args:
         talk: Gives a ticket and then a pickled request, takes events.
         orders: Gives the ticket of the request to stop.
-        warm_up: Modules to import first.
+        warm_up: Modules to import before the first request comes.
     """
     signal.signal(signal.SIGINT, signal.SIG_IGN)  # Ctrl+C in a terminal reaches us too; the window decides
     if hasattr(os, "nice"):
         os.nice(NICENESS)
     for name in warm_up:
+        if talk.poll():
+            break  # somebody waits already: the request imports what it needs
         importlib.import_module(name)
     with contextlib.suppress(EOFError, OSError):
         while True:

@@ -15,7 +15,7 @@ from cutblock.records.shop import LabelSheet
 class Views(Record):
     """What the window shows of a plan beside the plan itself."""
 
-    tags: tuple[Drawing, ...]  # one a piece, in the order of the plan's pieces
+    tags: tuple[Drawing, ...]  # one a piece, in the order they are cut, titled with its code
     blocks: tuple[Drawing, ...]  # one a block, in the order of the plan's blocks
     summary: tuple[tuple[str, str], ...]  # (what, how much with its unit)
     chart: SpeedChart

@@ -33,7 +33,7 @@ def grid_plan(n_rows, n_columns, worst_mm):
 
 def shown_of(plan):
     views = Views(
-        tags=tuple(_tag(piece.id) for piece in plan.pieces),
+        tags=tuple(_tag(piece) for piece in reversed(plan.pieces)),
         blocks=tuple(_block(block) for block in plan.blocks),
         summary=(("Blocks", "1 (at least 1)"), ("Machine time", "1.30 h")),
         chart=sample_chart(),
@@ -72,14 +72,14 @@ def sample_sheet(name, columns, rows):
     )
 
 
-def _tag(piece_id):
+def _tag(piece):
     return Drawing(
         width_mm=80.0,
         height_mm=50.0,
-        title=f"Tag of {piece_id}",
+        title=piece.code,
         marks=(
             Modules(x_mm=4.0, y_mm=4.0, side_mm=20.0, rows=("101", "010", "101")),
-            Text(x_mm=30.0, y_mm=14.0, text=piece_id, size_mm=5.0, room_mm=46.0, is_bold=True),
+            Text(x_mm=30.0, y_mm=14.0, text=piece.id, size_mm=5.0, room_mm=46.0, is_bold=True),
         ),
     )
 

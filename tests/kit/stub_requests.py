@@ -1,6 +1,7 @@
 """Requests for the worker that need no flow; the worker process imports them by this module's name."""
 
 import os
+import sys
 import threading
 import time
 from dataclasses import dataclass
@@ -31,6 +32,16 @@ class Give:
 
     def run(self, progress):
         return self.value
+
+
+@dataclass(frozen=True)
+class Loaded:
+    """Return which of these modules are imported."""
+
+    names: tuple
+
+    def run(self, progress):
+        return [name for name in self.names if name in sys.modules]
 
 
 @dataclass(frozen=True)

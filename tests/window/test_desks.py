@@ -89,14 +89,21 @@ def test_a_scanned_code_finds_its_piece_and_shows_its_tag(workshop):
 
     assert workshop.tags.rows.rowCount() == 1
     workshop.tags.table.pick_first()
-    assert workshop.tags.picture._drawing.title == "Tag of SM-T-A01-U"
+    assert workshop.tags.picture._drawing.title == "CB1:SM-T-A01-U:A:0000"
 
 
 def test_sorting_the_pieces_keeps_each_with_its_own_tag(workshop):
     workshop.tags.table.sortByColumn(0, Qt.SortOrder.DescendingOrder)
     workshop.tags.table.pick_first()
 
-    assert workshop.tags.picture._drawing.title == "Tag of SM-T-A01-U"
+    assert workshop.tags.table.picked_key == "SM-T-A01-U"
+    assert workshop.tags.picture._drawing.title == "CB1:SM-T-A01-U:A:0000"
+
+
+def test_pieces_are_listed_in_the_order_their_tags_are_printed(workshop):
+    keys = [workshop.tags.rows.key_at(row) for row in range(workshop.tags.rows.rowCount())]
+
+    assert keys == ["SM-T-A01-U", "SM-T-A01-L", "SM-S1-A01-U", "SM-S1-A01-L"]
 
 
 def test_the_first_label_can_be_no_later_than_the_last_of_the_sheet(workshop):
@@ -159,7 +166,7 @@ def test_a_finding_picked_is_told_in_full(qtbot):
     desk.show_plan(sample_shown(findings=findings))
 
     assert desk._finding_text.text() == "S-A02: over the tolerance by 1.3 mm"
-    assert "1 error, 0 warnings, 1 note" in words(desk)
+    assert "1 error, 0 warnings, 1 info" in words(desk)
     desk.finding_table.pick("0")
     assert desk._finding_text.text() == "S-A01: a note"
 

@@ -25,7 +25,7 @@ def test_every_table_has_a_cell_for_every_column():
     plan = grid_plan(2, 2, {"S-A02": None})
     tables = (
         (rows.PANEL_COLUMNS, rows.panel_rows(plan)),
-        (rows.PIECE_COLUMNS, rows.piece_rows(plan)),
+        (rows.PIECE_COLUMNS, rows.piece_rows(plan.pieces)),
         (rows.CUT_COLUMNS, rows.cut_rows(plan, plan.blocks[0])),
         (rows.BLOCK_COLUMNS, rows.block_rows(plan)),
         (rows.LEDGER_COLUMNS, rows.ledger_rows(ledger_parts(plan.ledger), plan.ledger)),
@@ -102,7 +102,7 @@ def test_findings_come_gravest_first_and_keep_their_number():
 
     found = rows.finding_rows(findings)
 
-    assert [texts(row)[0] for row in found] == ["Error", "Warning", "Note"]
+    assert [texts(row)[0] for row in found] == ["Error", "Warning", "Info"]
     assert [row.key for row in found] == ["1", "2", "0"]
 
 

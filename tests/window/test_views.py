@@ -6,6 +6,7 @@ from kit.sample import sample_plan, sample_sweep
 from kit.shown import grid_plan, sample_chart, sample_shown
 from PySide6.QtCore import QPoint, QPointF, Qt
 from PySide6.QtGui import QColor
+from PySide6.QtWidgets import QDialog
 
 from cutblock.window.axes import round_marks
 from cutblock.window.deviation import NOT_CUT, STEPS
@@ -167,6 +168,22 @@ def test_a_drawing_lies_on_paper_and_names_its_parts(qtbot):
     assert view.title_at(QPointF(250, 150)) == "SM-B01"
     assert view.title_at(QPointF(250, 3)) == ""
     assert view.accessibleDescription() == "Block SM-B01"
+
+
+def test_return_or_a_double_click_shows_the_drawing_in_a_larger_window(qtbot):
+    view = DrawingView("Picture of the block", "No block.")
+    qtbot.addWidget(view)
+    view.open_larger()
+    assert view.findChildren(QDialog) == []
+    view.show_drawing(sample_shown().views.blocks[0])
+
+    qtbot.keyClick(view, Qt.Key.Key_Return)
+    qtbot.mouseDClick(view, Qt.MouseButton.LeftButton)
+
+    dialogs = view.findChildren(QDialog)
+    assert [dialog.windowTitle() for dialog in dialogs] == ["Block SM-B01", "Block SM-B01"]
+    view.show_drawing(None)
+    assert all(dialog.findChild(DrawingView)._drawing is not None for dialog in dialogs)
 
 
 @pytest.mark.parametrize(

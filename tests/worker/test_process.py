@@ -2,7 +2,7 @@ import threading
 import time
 
 import pytest
-from kit.stub_requests import Break, Churn, Count, Deaf, Die, Give, Missing, Refuse, ReturnLock
+from kit.stub_requests import Break, Churn, Count, Deaf, Die, Give, Loaded, Missing, Refuse, ReturnLock
 
 from cutblock.worker.events import Cancelled, Failure, Progress, Result
 from cutblock.worker.process import Worker
@@ -215,11 +215,23 @@ def test_polling_an_idle_or_unstarted_worker_gives_nothing():
     worker.close()
 
 
-def test_a_missing_warm_up_module_is_told_as_a_failure():
+def test_a_process_that_cannot_even_warm_up_is_told_and_replaced_at_the_next_request():
     worker = Worker(warm_up=("no_such_module_at_all",))
+    worker.start()
+    worker._child._process.join(10.0)
+    assert not worker._child.is_alive
+
     worker.submit(Give(1))
 
-    (failure,) = drain(worker)
+    assert drain(worker)[-1].value == 1
+    worker.close()
 
-    assert failure.is_bug
+
+def test_the_process_warms_up_by_itself_until_a_request_comes():
+    worker = Worker(warm_up=("fractions", "kit.stub_requests"))
+    worker.start()
+    time.sleep(1.0)
+    worker.submit(Loaded(("fractions", "kit.stub_requests", "ftplib")))
+
+    assert drain(worker)[-1].value == ["fractions", "kit.stub_requests"]
     worker.close()
