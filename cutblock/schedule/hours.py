@@ -1,7 +1,8 @@
 """Machine hours of a job: cutting, moves in air, clampings and turns."""
 
-from collections.abc import Sequence
-from itertools import pairwise
+from collections.abc import Mapping, Sequence
+from itertools import groupby, pairwise
+from typing import NamedTuple
 
 from cutblock.records.account import Hours
 from cutblock.records.block import Block, Cut
@@ -19,8 +20,10 @@ def count_hours(
 ) -> Hours:
     """Count the machine time of a job.
 
-    A sweep takes what its timing says, a trim or through cut its way at the planned speed. Before a cut the wire goes
-    over the part and down to where the cut starts, after it up again, at the machine's speed in air.
+    A sweep takes what its timing says, a trim or through cut its way at the planned speed. In every clamping the wire
+    starts at the towers' zero, goes over the part and down to where each cut starts, after the cut up again, and back
+    to zero at the end, at the machine's speed in air. Where a sweep enters and leaves is taken at half its billet's
+    height.
 
     Args:
         blocks: Every block with its cuts.
@@ -36,34 +39,58 @@ def count_hours(
     by_block = []
     for block in blocks:
         cuts = sorted(block.cuts, key=lambda cut: cut.order)
-        cutting = sum(_cut_seconds(cut, seconds, machine, conditions) for cut in cuts)
-        setup = _setup_seconds(cuts, machine)
+        clampings = [tuple(group) for _, group in groupby(cuts, key=lambda cut: cut.setup)]
+        cutting = sum(_clamping_seconds(block, clamping, seconds, machine, conditions) for clamping in clampings)
+        setup = _setup_seconds([clamping[0] for clamping in clampings], machine)
         cutting_s += cutting
         setup_s += setup
         by_block.append((block.id, cutting + setup))
     return Hours(cutting_s=cutting_s, setup_s=setup_s, by_block_s=tuple(by_block))
 
 
-def _cut_seconds(cut: Cut, sweep_seconds: dict[str, float], machine: Machine, conditions: Conditions) -> float:
-    """Return the time of one cut with the moves in air that belong to it."""
-    length, width, height = cut.part_size_mm
-    travel = width if cut.turn else length
-    lifted = height + CLEARANCE_MM
-    if cut.kind is CutKind.SWEEP and cut.sweep is not None:
-        cutting, over, vertical = sweep_seconds[cut.sweep], travel + 2.0 * CLEARANCE_MM, lifted
-    elif cut.axis == "z":
-        way = travel + 2.0 * CLEARANCE_MM
-        cutting, over, vertical = way / conditions.planned_mm_s, way, lifted
-    else:
-        # Down a vertical plane: over to it from the start of the part, down through it, and up through the slot.
-        way = height + CLEARANCE_MM + BELOW_MM
-        cutting, over, vertical = way / conditions.planned_mm_s, 0.5 * travel, way
-    return cutting + (over + vertical) / min(machine.air_speed_mm_s, machine.speed_mm_s)
+class _Way(NamedTuple):
+    """The way of one cut along the travel and up, from the start and the bottom of the clamped part, mm."""
+
+    start: float
+    start_up: float
+    end: float
+    end_up: float
 
 
-def _setup_seconds(cuts: Sequence[Cut], machine: Machine) -> float:
+def _cut_way(block: Block, cut: Cut, part: Cut) -> _Way:
+    travel = 1 if cut.turn else 0
+    start = cut.part_at_mm[travel] - part.part_at_mm[travel]
+    end, up = start + cut.part_size_mm[travel], cut.part_at_mm[2] - part.part_at_mm[2]
+    if cut.kind is not CutKind.SWEEP and cut.axis != "z":
+        plane = cut.at_mm + 0.5 * block.kerf_mm - part.part_at_mm[travel]
+        # Through to below the part where it lies on the table, else into the slot of the cut below it.
+        bottom = -BELOW_MM if up == 0.0 else up - 0.5 * block.kerf_mm
+        return _Way(plane, up + cut.part_size_mm[2] + CLEARANCE_MM, plane, bottom)
+    level = up + 0.5 * cut.part_size_mm[2]
+    if cut.kind is not CutKind.SWEEP:
+        level = cut.at_mm + 0.5 * block.kerf_mm - part.part_at_mm[2]
+    return _Way(start - CLEARANCE_MM, level, end + CLEARANCE_MM, level)
+
+
+def _clamping_seconds(
+    block: Block, cuts: Sequence[Cut], sweep_seconds: Mapping[str, float], machine: Machine, conditions: Conditions
+) -> float:
+    """Return the time of the cuts of one clamping and of the moves in air between them."""
+    zero, clear = -machine.table_offset_mm, cuts[0].part_size_mm[2] + CLEARANCE_MM
+    position, cutting, air = zero, 0.0, 0.0
+    for cut in cuts:
+        way = _cut_way(block, cut, cuts[0])
+        if cut.sweep is not None:
+            cutting += sweep_seconds[cut.sweep]
+        else:
+            cutting += (abs(way.end - way.start) + abs(way.end_up - way.start_up)) / conditions.planned_mm_s
+        air += abs(way.start - position) + abs(clear - way.start_up) + abs(clear - way.end_up)
+        position = way.end
+    return cutting + (air + abs(position - zero)) / min(machine.air_speed_mm_s, machine.speed_mm_s)
+
+
+def _setup_seconds(first_cuts: Sequence[Cut], machine: Machine) -> float:
     """Return the time of clampings and of turning parts between them; a block comes to the machine unturned."""
-    first_of_setup = {cut.setup: cut for cut in reversed(cuts)}
-    turned = [False, *(first_of_setup[setup].turn for setup in sorted(first_of_setup))]
+    turned = [False, *(cut.turn for cut in first_cuts)]
     n_turns = sum(before != after for before, after in pairwise(turned))
-    return len(first_of_setup) * machine.setup_s + n_turns * machine.turn_s
+    return len(first_cuts) * machine.setup_s + n_turns * machine.turn_s

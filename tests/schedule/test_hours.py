@@ -15,7 +15,7 @@ def block_of(*cuts, block_id="SM-B01"):
     return replace(sample_block(), id=block_id, cuts=cuts)
 
 
-def cut(order=1, kind=CutKind.THROUGH, setup=1, axis="z", turn=False, sweep=None):
+def cut(order=1, kind=CutKind.THROUGH, setup=1, axis="z", at_mm=0.0, turn=False, sweep=None):
     return Cut(
         order=order,
         kind=kind,
@@ -23,6 +23,7 @@ def cut(order=1, kind=CutKind.THROUGH, setup=1, axis="z", turn=False, sweep=None
         part_at_mm=(0.0, 0.0, 0.0),
         part_size_mm=(1200.0, 1000.0, 300.0),
         axis=axis,
+        at_mm=at_mm,
         turn=turn,
         sweep=sweep,
     )
@@ -33,22 +34,33 @@ def hours_of(*cuts, **machine):
 
 
 def test_a_level_cut_takes_its_way_at_the_planned_speed_and_its_air_moves():
-    hours = hours_of(cut())
-    assert hours.cutting_s == pytest.approx(1240.0 / 2.6458 + (1240.0 + 320.0) / 40.0)
+    hours = hours_of(cut(at_mm=100.0))
+    # From zero 300 mm before the part to 20 mm before it and down, behind it up and back to zero.
+    air = 280.0 + 2 * (320.0 - 100.6) + 1520.0
+    assert hours.cutting_s == pytest.approx(1240.0 / 2.6458 + air / 40.0)
     assert hours.setup_s == 240.0
 
 
 def test_a_turned_part_is_cut_along_its_width():
-    assert hours_of(cut(turn=True)).cutting_s == pytest.approx(1040.0 / 2.6458 + (1040.0 + 320.0) / 40.0)
+    air = 280.0 + 2 * (320.0 - 100.6) + 1320.0
+    assert hours_of(cut(at_mm=100.0, turn=True)).cutting_s == pytest.approx(1040.0 / 2.6458 + air / 40.0)
 
 
-def test_a_vertical_cut_takes_the_height():
-    assert hours_of(cut(axis="x")).cutting_s == pytest.approx(325.0 / 2.6458 + (600.0 + 325.0) / 40.0)
+def test_a_vertical_cut_goes_from_above_the_part_to_below_it():
+    air = 2 * (300.0 + 500.6) + 325.0
+    assert hours_of(cut(axis="x", at_mm=500.0)).cutting_s == pytest.approx(325.0 / 2.6458 + air / 40.0)
+
+
+def test_a_vertical_cut_over_another_part_ends_in_the_slot_between():
+    lower = cut(1, at_mm=150.0)
+    upper = replace(cut(2, axis="x", at_mm=500.0), part_at_mm=(0.0, 0.0, 151.2), part_size_mm=(1200.0, 1000.0, 148.8))
+    air = 280.0 + 2 * (320.0 - 150.6) + (1220.0 - 500.6) + (320.0 - 150.6) + 800.6
+    assert hours_of(lower, upper).cutting_s == pytest.approx((1240.0 + 169.4) / 2.6458 + air / 40.0)
 
 
 def test_a_sweep_takes_what_its_timing_says():
     hours = hours_of(cut(kind=CutKind.SWEEP, axis="", sweep="SM-T-A01"))
-    assert hours.cutting_s == pytest.approx(468.7 + (1240.0 + 320.0) / 40.0)
+    assert hours.cutting_s == pytest.approx(468.7 + (280.0 + 2 * 170.0 + 1520.0) / 40.0)
 
 
 def test_clampings_and_turns_are_counted_once_each():
