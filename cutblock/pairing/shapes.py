@@ -127,7 +127,7 @@ def _domain(panel: Panel, ring: Floats, sweep: Sweep) -> int:
 def group_alike(shapes: Shapes) -> list[list[int]]:
     """Return the sweeps in groups of one shape each, in order of their first members, members in order.
 
-    Each member lies within 0.02 mm of its group's first in descriptor distance.
+    Each member lies within 0.02 mm of its group's first in descriptor distance, and so does its outline.
     """
     from scipy.spatial import cKDTree
 
@@ -141,9 +141,10 @@ def group_alike(shapes: Shapes) -> list[list[int]]:
     for index in range(len(vectors)):  # one query for each new shape
         if group_of[index] < 0:
             near = np.sort(np.asarray(tree.query_ball_point(vectors[index], _SAME_MM), dtype=np.int64))
-            members = near[group_of[near] < 0]
+            ring = shapes.corners[index]
+            members = [k for k in near[group_of[near] < 0].tolist() if _agree(ring, shapes.corners[k], _SAME_MM)]
             group_of[members] = len(groups)
-            groups.append(members.tolist())
+            groups.append(members)
     return groups
 
 
@@ -186,7 +187,7 @@ def find_candidates(shapes: Shapes, tolerance_mm: float, n_nearest: int = _N_NEA
         found += [
             Candidate(int(lower[k]), int(upper[k]), turn, float(misfits[k]))
             for k in np.flatnonzero(fits)
-            if _outlines_agree(shapes.corners[lower[k]] @ matrix[:2, :2], shapes.corners[upper[k]])
+            if _agree(shapes.corners[lower[k]] @ matrix[:2, :2], shapes.corners[upper[k]], OUTLINE_MM)
         ]
     return sorted(found)
 
@@ -213,10 +214,15 @@ def _supports(shapes: Shapes, turn: Floats | None = None) -> Floats:
     return reaches
 
 
-def _outlines_agree(first: Floats, second: Floats) -> bool:
-    """Return whether two rings lie within the outline tolerance of each other."""
-    if first.shape == second.shape == (4, 2) and np.array_equal(np.sort(first, axis=0), np.sort(second, axis=0)):
-        return True
+def _agree(first: Floats, second: Floats, within_mm: float) -> bool:
+    """Return whether two rings lie within a distance of each other."""
+    if first.shape == second.shape == (4, 2) and np.array_equal(_rows_sorted(first), _rows_sorted(second)):
+        return True  # as rectangles do, without the dear way
     import shapely
 
-    return bool(shapely.hausdorff_distance(shapely.LinearRing(first), shapely.LinearRing(second)) <= OUTLINE_MM)
+    return bool(shapely.hausdorff_distance(shapely.LinearRing(first), shapely.LinearRing(second)) <= within_mm)
+
+
+def _rows_sorted(ring: Floats) -> Floats:
+    rows: Floats = ring[np.lexsort(ring.T)]
+    return rows

@@ -95,7 +95,8 @@ def test_a_mirror_image_is_never_taken_for_a_complement():
 def test_the_upper_half_turned_by_its_serving_lies_on_the_partner_panel():
     a, b = conoid("A", 40.0), conoid("B", 40.0, is_turned=True, shift_mm=77.0)
 
-    (sweep,), _, _ = pair([a, b])
+    higher = replace(b[1], length_mm=LENGTH + 0.4, height_mm=310.0)
+    (sweep,), _, _ = pair([a, (b[0], higher)])
 
     upper = sweep.serving[1]
     assert upper.half is Half.UPPER
@@ -103,8 +104,9 @@ def test_the_upper_half_turned_by_its_serving_lies_on_the_partner_panel():
     in_billet = (b[0].samples_mm - upper.shift_mm) @ upper.rotation
     off = face_deviation(sweep.near, sweep.far, WIDTH, in_billet, -b[0].normals @ upper.rotation)
     assert np.abs(off).max() == pytest.approx(upper.max_mm, abs=1e-9)
-    assert in_billet[:, :2].min() == pytest.approx(0.0, abs=1e-9)
-    assert in_billet[:, :2].max(axis=0) == pytest.approx([LENGTH, WIDTH], abs=1e-9)
+    # Billets meet middle to middle.
+    assert in_billet[:, :2].min(axis=0) == pytest.approx([-0.2, 0.0], abs=1e-9)
+    assert in_billet[:, :2].max(axis=0) == pytest.approx([LENGTH - 0.2, WIDTH], abs=1e-9)
 
 
 @given(n=st.integers(1, 7))
@@ -209,6 +211,23 @@ def test_outlines_pair_only_with_their_mirrored_like():
     assert couples(pair([hypar("A", trapezoid), hypar("B", trapezoid)])[0]) == [("A",), ("B",)]
     whole = (sample_panel("B"), sample_sweep("SM-B", ("B",)))
     assert couples(pair([hypar("A", trapezoid), whole])[0]) == [("A",), ("B",)]
+
+
+def test_hollows_in_the_outline_must_agree_too():
+    hollow = np.array([[0.0, 0.0], [LENGTH, 0.0], [LENGTH, WIDTH], [700.0, 800.0], [0.0, WIDTH]])
+    about_x = np.array([[0.0, 0.0], [700.0, 200.0], [LENGTH, 0.0], [LENGTH, WIDTH], [0.0, WIDTH]])
+
+    def hypar(name, ring):
+        return sample_panel(name, outline=(ring,), is_rectangle=False), sample_sweep(f"SM-{name}", (name,))
+
+    assert couples(pair([hypar("A", hollow), hypar("B", about_x)])[0]) == [("A", "B")]
+    assert couples(pair([hypar("A", hollow), hypar("B", hollow)])[0]) == [("A",), ("B",)]
+
+
+def test_the_sweep_that_comes_first_is_the_one_that_is_cut():
+    made = [conoid(name, 40.0, is_turned=name.startswith("T")) for name in ("A1", "T1", "T2", "A2")]
+
+    assert couples(pair(made)[0]) == [("A1", "T1"), ("T2", "A2")]
 
 
 def test_triangles_in_a_corner_pair_too():
