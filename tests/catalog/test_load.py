@@ -27,6 +27,29 @@ WIRE = textwrap.dedent("""
 """)
 
 
+MACHINE = """
+title = "Ours"
+travel_mm = 5600.0
+lift_mm = 1300.0
+span_mm = 2600.0
+near_gap_mm = 200.0
+table_offset_mm = 300.0
+table_height_mm = 50.0
+speed_mm_s = 60.0
+acceleration_mm_s2 = 200.0
+air_speed_mm_s = 40.0
+longest_wire_mm = 2900.0
+setup_s = 150.0
+turn_s = 180.0
+axes = ["X", "Y", "U", "V"]
+decimals = 3
+header = ["G21", "G90", "G61"]
+footer = ["M2"]
+heater_on = "M3 S{power}"
+heater_off = "M5"
+"""
+
+
 def test_every_shipped_entry_is_found_by_its_name():
     for listed, found in (
         (load.grades(), load.grade),
@@ -81,16 +104,16 @@ def test_the_users_own_entry_adds_or_replaces_by_name(own_folder):
 
 
 def test_a_machine_file_of_the_users_own_replaces_the_shipped_one(own_folder):
-    shipped = (load.assets_folder() / "machines" / "four-axis-1300.toml").read_text()
+    assert load.machine("four-axis-1300").title != "Ours"
     (own_folder / "machines").mkdir()
-    (own_folder / "machines" / "four-axis-1300.toml").write_text(shipped.replace("setup_s = 150.0", "setup_s = 151.0"))
-    assert load.machine("four-axis-1300").setup_s == 151.0
+    (own_folder / "machines" / "four-axis-1300.toml").write_text(MACHINE)
+    assert load.machine("four-axis-1300").title == "Ours"
+    assert [machine.name for machine in load.machines()].count("four-axis-1300") == 1
 
 
 def test_a_machine_is_read_from_a_path_and_named_after_the_file(tmp_path):
-    shipped = (load.assets_folder() / "machines" / "four-axis-2600.toml").read_text()
     path = tmp_path / "ours.toml"
-    path.write_text(shipped)
+    path.write_text(MACHINE)
     machine = load.machine(str(path))
     assert machine.name == "ours"
     assert machine.span_mm == 2600.0
@@ -119,10 +142,9 @@ def test_a_machine_is_read_from_a_path_and_named_after_the_file(tmp_path):
     ],
 )
 def test_a_wrong_machine_file_is_refused_naming_file_key_and_line(tmp_path, old, new, what):
-    shipped = (load.assets_folder() / "machines" / "four-axis-2600.toml").read_text()
-    assert old in shipped
+    assert old in MACHINE
     path = tmp_path / "ours.toml"
-    path.write_text(shipped.replace(old, new))
+    path.write_text(MACHINE.replace(old, new))
     with pytest.raises(InputError) as caught:
         load.machine(str(path))
     assert what in caught.value.message
