@@ -2,11 +2,9 @@
 
 from pathlib import Path
 
-import cutblock
-
 
 def assets_folder() -> Path:
     """Return the folder of shipped TOML files, inside the package (a wheel) or beside it (an editable install)."""
-    package = Path(cutblock.__file__).parent
+    package = Path(__file__).parents[1]
     inside = package / "assets"
     return inside if inside.is_dir() else package.parent / "assets"

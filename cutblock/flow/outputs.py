@@ -3,6 +3,7 @@
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.catalog import load as catalog
 from cutblock.flow.plan_json import plan_text
+from cutblock.flow.plan_read import read_plan_text
 from cutblock.ledger.account import account_block
 from cutblock.machinecode.programs import write_programs
 from cutblock.records.account import Ledger
@@ -21,14 +22,18 @@ CUTS_FOLDER = "cuts"
 def plan_outputs(plan: Plan, progress: Progress = silent) -> dict[str, bytes]:
     """Return the content of every file of the plan folder by its name in the folder.
 
+    A set-up that the machine cannot cut has no program; the plan's findings name it.
+
     Raises:
-        CutblockError: The plan is not complete, or the machine cannot make a cut (the piece and limit are named).
+        CutblockError: The plan is not complete, or the machine's own words allow no safe program.
         CheckFailed: Our own re-reading of an output disagrees with the plan.
     """
+    # Everything is made from what plan.json says, to its last digit, so that it can be proved from plan.json alone.
+    plan = read_plan_text(plan_text(plan).encode("utf-8"), "plan.json")
     outputs = table_outputs(plan, progress)
     outputs["tags.pdf"] = tag_sheets(plan, LABEL_SHEET, 1)
     progress(0.4, "Writing machine code")
-    for program in write_programs(plan, part_of(progress, 0.4, 1.0)):
+    for program in write_programs(plan, part_of(progress, 0.4, 1.0), leave_out=True):
         outputs[f"{CUTS_FOLDER}/{program.name}"] = program.text.encode("ascii")
     progress(1.0, "Plan written")
     return outputs

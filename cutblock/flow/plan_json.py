@@ -12,7 +12,7 @@ import cutblock
 from cutblock.base.errors import CutblockError
 from cutblock.base.units import MM3_PER_LITRE, hours
 from cutblock.flow import plan_schema as schema
-from cutblock.records.account import Ledger
+from cutblock.records.account import Hours, Ledger
 from cutblock.records.block import Block
 from cutblock.records.panel import Panel
 from cutblock.records.plan import Plan
@@ -62,12 +62,7 @@ def plan_file(plan: Plan) -> schema.PlanFile:
         blocks=[_block(block) for block in plan.blocks],
         ledger=_ledger(plan.ledger),
         bound_proof=plan.bound_proof,
-        time=schema.TimeEntry(
-            cutting_h=_digits(hours(plan.hours.cutting_s)),
-            setup_h=_digits(hours(plan.hours.setup_s)),
-            total_h=_digits(hours(plan.hours.total_s)),
-            blocks_h={block: _digits(hours(seconds)) for block, seconds in plan.hours.by_block_s},
-        ),
+        time=_time(plan.hours),
         cost=schema.CostEntry(
             currency=plan.cost.currency,
             foam=plan.cost.foam,
@@ -275,6 +270,16 @@ def _block(block: Block) -> schema.BlockEntry:
         offcuts=[
             schema.OffcutEntry(size_mm=_vector(offcut.size_mm), at_mm=_vector(offcut.at_mm)) for offcut in block.offcuts
         ],
+    )
+
+
+def _time(spent: Hours) -> schema.TimeEntry:
+    cutting_h, setup_h = _digits(hours(spent.cutting_s)), _digits(hours(spent.setup_s))
+    return schema.TimeEntry(
+        cutting_h=cutting_h,
+        setup_h=setup_h,
+        total_h=_digits(cutting_h + setup_h),  # of the digits written, so that the three add up
+        blocks_h={block: _digits(hours(seconds)) for block, seconds in spent.by_block_s},
     )
 
 

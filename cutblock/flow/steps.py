@@ -79,6 +79,14 @@ def pack(plan: Plan, progress: Progress) -> Plan:
     )
 
 
+def try_machine(plan: Plan, progress: Progress) -> Plan:
+    """Find every set-up that the job's machine cannot cut."""
+    from cutblock.machinecode.programs import find_uncuttable
+
+    progress(0.0, "Trying every set-up on the machine")
+    return _with(plan, find_uncuttable(plan))
+
+
 def account(plan: Plan, progress: Progress) -> Plan:
     """Count hours, litres and money."""
     from cutblock.ledger.account import account_job

@@ -7,6 +7,9 @@ from cutblock.records.plan import Plan
 from cutblock.records.words import Duty, Severity
 
 
+_DIGITS = 6
+
+
 def summary_lines(plan: Plan) -> tuple[tuple[str, str], ...]:
     """Return (label, value) pairs: blocks, foam, pieces, hours, fit, cost, findings."""
     return (
@@ -24,7 +27,7 @@ def summary_lines(plan: Plan) -> tuple[tuple[str, str], ...]:
 
 def worst_serving(plan: Plan) -> tuple[float, str]:
     """Return the largest deviation of a finished mould face, mm, and its panel; (0, "") without sweeps."""
-    servings = [(serving.max_mm, serving.panel) for sweep in plan.sweeps for serving in sweep.serving]
+    servings = [(round(serving.max_mm, _DIGITS), serving.panel) for sweep in plan.sweeps for serving in sweep.serving]
     return max(servings, key=lambda entry: entry[0], default=(0.0, ""))
 
 

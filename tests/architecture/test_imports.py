@@ -2,6 +2,7 @@
 
 import subprocess
 import sys
+from pathlib import Path
 
 import pytest
 
@@ -46,6 +47,6 @@ def test_the_work_rooms_run_without_qt():
 
 
 def test_layers_hold():
-    done = subprocess.run(["lint-imports"], capture_output=True, text=True, check=False)
+    done = subprocess.run([Path(sys.executable).with_name("lint-imports")], capture_output=True, text=True, check=False)
 
     assert done.returncode == 0, done.stdout
