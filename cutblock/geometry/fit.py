@@ -180,7 +180,7 @@ def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
         return _better(best, index, fits, tolerance_mm)
 
     best = refine(target, first, give_up_mm, n_rounds)
-    best = rival(best, second, _is_worth(first, second, tolerance_mm))
+    best = rival(best, second, _is_worth(first, second, tolerance_mm) & ~_alike(first, second))
     is_worth = (constant.rms_mm <= 2.0 * first.rms_mm) & (best.max_mm > 0.5 * tolerance_mm)
     best = rival(best, constant, is_worth & ~_alike(first, constant))
     straight = Paths(first.stations, np.zeros_like(first.skews), first.rms_mm)
@@ -203,7 +203,7 @@ def _is_worth(first: Paths, second: Paths, tolerance_mm: float) -> Bools:
     is_close = (second.rms_mm <= 1.5 * first.rms_mm) & (first.rms_mm > 0.05 * tolerance_mm)
     is_squarer = np.abs(second.skews).max(axis=1) < np.abs(first.skews).max(axis=1)
     is_squarer &= second.rms_mm <= 2.0 * first.rms_mm + 0.1 * tolerance_mm
-    is_worth: Bools = (is_close | is_squarer) & ~_alike(first, second)
+    is_worth: Bools = is_close | is_squarer
     return is_worth
 
 
@@ -218,7 +218,7 @@ def _better(best: Fits, index: Ints, rivals: Fits, tolerance_mm: float) -> Fits:
     """Return the fits so far, those of the given indices replaced by rivals that are better."""
     old = best.take(index)
     gain = old.max_mm - rivals.max_mm
-    less_skew = np.abs(rivals.controls[:, 0]).max(axis=1) < np.abs(old.controls[:, 0]).max(axis=1) - 1e-6
+    less_skew = rivals.skew_mm < old.skew_mm - 1e-6
     is_better = np.where(np.abs(gain) < 0.1 * tolerance_mm, less_skew, gain > 0.0)
     return best.put(index[is_better], rivals.take(np.flatnonzero(is_better)))
 

@@ -85,6 +85,12 @@ class Fits:
     max_mm: Floats  # (p,) on the nodes that count
     rms_mm: Floats  # (p,)
 
+    @property
+    def skew_mm(self) -> Floats:
+        """Largest size of each fit's skew, (p,)."""
+        skews: Floats = np.abs(self.controls[:, 0]).max(axis=1)
+        return skews
+
     def take(self, index: Ints) -> "Fits":
         """Return the fits of the given indices."""
         return Fits(*(getattr(self, name)[index] for name in self.__slots__))
@@ -251,6 +257,7 @@ def improve(
     for _ in range(n_steps):
         change, promise = _step(target, state, basis, damping)
         trial = replace(fits, controls=fits.controls + change)
+        np.clip(trial.controls[:, 0], -target.limit[:, 0], target.limit[:, 0], out=trial.controls[:, 0])
         trial_state = _evaluate(target, trial, basis, emphasis)
         has_room = _room(trial.controls[:, 0], fits.end - fits.start, basis) >= 1.0
         is_better = (trial_state.cost < state.cost) & has_room

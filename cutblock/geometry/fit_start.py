@@ -44,7 +44,7 @@ def best_paths(target: Target) -> tuple[Paths, Paths, Paths]:
     steps = _step_cost(spacing, gap, residuals)
     first, cost = _search(residuals, steps)
     # The second path must stay at least a third of the width away from the first.
-    clear = int(np.ceil(N_SKEWS / (2.0 * SKEW_CAP) / 3.0))
+    clear = np.maximum(target.width[:, 0, 0] / 3.0 / gap, 1.0)[:, None, None]
     near_first = np.abs(np.arange(N_SKEWS) - first[:, :, None]) < clear
     walled = residuals + near_first * (10.0 * residuals.max(axis=(1, 2), keepdims=True) + 1.0)
     second, cost_second = _search(walled, steps)
@@ -61,7 +61,7 @@ def best_paths(target: Target) -> tuple[Paths, Paths, Paths]:
 def _table(target: Target) -> tuple[Floats, Floats, Floats, Floats]:
     """Return stations (p, s), skews (p, k), squared residuals (p, s, k) and the whole weight (p,)."""
     low, high, width = target.low[:, 0, 0], target.high[:, 0, 0], target.width[:, 0, 0]
-    cap = SKEW_CAP * width
+    cap = np.minimum(SKEW_CAP * width, target.limit[:, 0, 0])
     fractions = np.linspace(0.0, 1.0, N_STATIONS)
     stations = (low - cap / 2)[:, None] + (high - low + cap)[:, None] * fractions
     skews = cap[:, None] * np.linspace(-1.0, 1.0, N_SKEWS)

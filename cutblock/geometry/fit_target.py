@@ -48,6 +48,7 @@ class Patch:
     strip_low_y_mm: float
     strip_high_y_mm: float
     weights: Floats | None = None
+    skew_limit_mm: float = np.inf  # no ruling may be more askew in plan
 
     @property
     def node_y_mm(self) -> Floats:
@@ -67,6 +68,7 @@ class Target:
     width: Floats  # (p, 1, 1)
     places: Floats  # (p, 1, q) node y as a fraction of the width
     weights: Floats  # (p, q, m) over equal steps from low to high
+    limit: Floats  # (p, 1, 1) largest size of the skew
 
     @property
     def n_x(self) -> int:
@@ -134,6 +136,7 @@ def make_target(patches: list[Patch]) -> Target:
         high=column([patch.high_x_mm for patch in patches]),
         width=column([patch.width_mm for patch in patches]),
         places=np.stack([patch.node_y_mm / patch.width_mm for patch in patches])[:, None, :],
+        limit=column([patch.skew_limit_mm for patch in patches]),
         weights=np.stack([np.ones((N_NODES, 1)) if p.weights is None else p.weights.T for p in patches]),
     )
 

@@ -64,6 +64,12 @@ class Aim:
     kerf_mm: float
     face_offset_mm: float  # of the lower half's finished face above the centreline
     kerf_error_mm: float  # what kerf and coat alone leave between finished face and form
+    stretch: float  # longest wire between the machine's towers by their distance
+
+    @property
+    def lean_deg(self) -> float:
+        """How far from square the machine's wire may lean."""
+        return float(np.degrees(np.arccos(min(1.0, 1.0 / self.stretch))))
 
     @property
     def room_mm(self) -> float:
@@ -80,7 +86,7 @@ def cut_panels(lies: Sequence[tuple[Lie, int]], aim: Aim, *, is_polished: bool) 
         is_polished: Whether sheets that just miss are fitted for the least largest deviation, which takes longer.
     """
     strips = [Strip(lie, number, count) for lie, count in lies for number in range(1, count + 1)]
-    fits = fit_patches([strip.patch() for strip in strips], aim.room_mm, is_polished=is_polished)
+    fits = fit_patches([strip.patch(aim.stretch) for strip in strips], aim.room_mm, is_polished=is_polished)
     cuts = []
     for strip, fit in zip(strips, fits, strict=True):
         away = CLEAR_MM + aim.kerf_mm

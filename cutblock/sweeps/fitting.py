@@ -6,6 +6,7 @@ import numpy as np
 
 from cutblock.base.errors import NotCuttable
 from cutblock.base.progress import Progress, silent
+from cutblock.catalog.load import machine
 from cutblock.geometry.heights import is_domed, offset_heights
 from cutblock.geometry.outline import is_inside
 from cutblock.records.job import Job
@@ -70,11 +71,13 @@ def fit_panels(
 
 def _aim(job: Job, conditions: Conditions) -> Aim:
     kerf = conditions.kerf_mm
+    tool = machine(job.machine)
     aim = Aim(
         tolerance_mm=job.tolerance_mm,
         kerf_mm=kerf,
         face_offset_mm=face_offset_mm(kerf, job.coat_mm),
         kerf_error_mm=kerf_error_mm(job.favour, kerf, job.coat_mm),
+        stretch=tool.longest_wire_mm / tool.span_mm,
     )
     if aim.room_mm <= 0.0:
         raise NotCuttable(
@@ -115,8 +118,8 @@ def _not_cuttable(panel: Panel, choice: Choice, aim: Aim) -> Finding:
         subject=panel.id,
         text=f"Panel {panel.id} cannot be cut within the tolerance of {aim.tolerance_mm:.2f} mm: in {n_tried} "
         f"strip{'s' if n_tried > 1 else ''} (at most {MOST_STRIPS}, none under {NARROWEST_MM:g} mm wide) "
-        f"it still strays {choice.panel.max_mm:.2f} mm; about {choice.n_needed} strips would be needed. "
-        "Make its cells smaller or the tolerance wider.",
+        f"it still strays {choice.panel.max_mm:.2f} mm; about {choice.n_needed} strips would be needed. The machine's "
+        f"wire may lean up to {aim.lean_deg:.0f} degrees. Make the cells smaller or the tolerance wider.",
     )
 
 

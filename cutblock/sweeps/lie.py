@@ -12,6 +12,8 @@ from cutblock.records.panel import Panel
 # A quarter turn about z: the billet's x lies along the panel's +y, its y along the panel's -x.
 QUARTER = np.array([[0.0, -1.0, 0.0], [1.0, 0.0, 0.0], [0.0, 0.0, 1.0]])
 N_MASK = 65
+SPARE = 0.98  # share of the wire's stretch that is used
+LEAST_LEAN = 0.05  # skew by width that is tried whatever the machine
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -106,8 +108,12 @@ class Strip:
         low, high = self.billet_span_mm
         return high - low
 
-    def patch(self) -> Patch:
-        """Return what its sheet is fitted to, in the frame of its billet."""
+    def patch(self, stretch: float) -> Patch:
+        """Return what its sheet is fitted to, in the frame of its billet.
+
+        Args:
+            stretch: Longest wire between the machine's towers by their distance; rulings keep within it.
+        """
         lie, start = self.lie, self.billet_span_mm[0]
         low, high = self.panel_span_mm
         patch = Patch(
@@ -119,9 +125,17 @@ class Strip:
             width_mm=self.width_mm,
             strip_low_y_mm=low - start,
             strip_high_y_mm=high - start,
-            weights=None,
+            skew_limit_mm=self._skew_limit_mm(stretch),
         )
         return patch if lie.outline is None else _masked(patch, lie.outline, start)
+
+    def _skew_limit_mm(self, stretch: float) -> float:
+        """Return how far askew a ruling may lie before the springs run out, given how far its ends differ in height."""
+        n_y = self.lie.heights_mm.shape[1]
+        first, last = (self.number - 1) * (n_y - 1) // self.n_strips, -(-self.number * (n_y - 1) // self.n_strips)
+        fall = float(np.abs(self.lie.heights_mm[:, last] - self.lie.heights_mm[:, first]).max())
+        rise = fall / (self.lie.extent_mm[1] * (last - first) / (n_y - 1))
+        return SPARE * self.width_mm * float(np.sqrt(max(stretch**2 - 1.0 - rise**2, LEAST_LEAN**2)))
 
     def samples(self) -> tuple[Floats, Floats, Floats]:
         """Return the panel's samples, normals and areas within it, in the frame of its billet."""

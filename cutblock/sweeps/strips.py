@@ -136,7 +136,13 @@ def _chosen(pair: tuple[_Search, ...], aim: Aim) -> Choice:
     fewest = min(len(cut.strips) for cut in within)
     best, *rest = [cut for cut in within if len(cut.strips) == fewest]
     for other in rest:
-        gain = best.max_mm - other.max_mm
-        is_squarer = other.skew_mm < best.skew_mm - SAME_SKEW_MM
-        best = other if (gain > 0.0 if abs(gain) >= 0.1 * aim.tolerance_mm else is_squarer) else best
+        best = other if _is_preferred(other, best, aim) else best
     return Choice(best, is_within=True, n_needed=fewest)
+
+
+def _is_preferred(other: CutPanel, best: CutPanel, aim: Aim) -> bool:
+    """Tell whether another way to cut a panel in equally many strips is better than the best so far."""
+    gain = best.max_mm - other.max_mm
+    if abs(gain) >= 0.1 * aim.tolerance_mm:
+        return gain > 0.0
+    return other.skew_mm < best.skew_mm - SAME_SKEW_MM
