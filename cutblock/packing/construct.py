@@ -8,12 +8,17 @@ import numpy as np
 from cutblock.base.arrays import Ints
 from cutblock.base.progress import Progress
 from cutblock.packing.compiled import Inner
-from cutblock.packing.kernels import N_MODES, N_RULES
 from cutblock.packing.lattice import Task
 from cutblock.packing.sequences import cells_of, kinds_of, new_desk, new_layout
 
 _PLACINGS = 12_000  # billets placed by all rules together; about half a second without a compiler
 _LEAST_RULES = 3
+# Rule, mode and sort key. Of all 72, these twelve are enough to reach the best of them on 54 tasks of the box classes
+# of Martello, Pisinger and Vigo, 60 made-up jobs and 100 rectangle tasks of Berkey and Wang.
+_RECIPES = (
+    (0, 1, 0), (0, 2, 2), (0, 0, 5), (0, 2, 4), (1, 1, 0), (2, 0, 1),
+    (2, 2, 5), (0, 0, 0), (3, 0, 4), (3, 2, 2), (2, 1, 0), (0, 0, 1),
+)  # fmt: skip
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -119,14 +124,6 @@ def preferences(task: Task) -> list[Ints]:
 def _recipes(task: Task) -> Iterator[tuple[Ints, Ints, int, int]]:
     """Yield sequences, preferred kinds, rules and modes; what is best most often comes first."""
     sequences, prefers = sort_keys(task), preferences(task)
-    for rule, mode, key in sorted(
-        ((rule, mode, key) for rule in range(N_RULES) for mode in range(N_MODES) for key in range(len(sequences))),
-        key=_rank,
-    ):
+    for rule, mode, key in _RECIPES:
         for prefer in prefers:
             yield sequences[key], prefer, rule, mode
-
-
-def _rank(recipe: tuple[int, int, int]) -> tuple[int, int]:
-    rule, mode, key = recipe
-    return (2 - rule) % N_RULES + mode + key, key

@@ -252,7 +252,7 @@ def take_out(most_missing: int, base: Integers, state: State, trial: Trial, dice
 def disturb(n_taken: int, state: State, trial: Trial, dice: Reals) -> None:
     """Move some billets of the sequence back by a few places, and force some orders of cuts."""
     sequence, forced = trial.sequence, trial.forced
-    share = 0.5 * draw(state, dice)
+    share = 0.2 * draw(state, dice)
     reach = 1 + int(draw(state, dice) * n_taken)
     for i in range(n_taken):
         chance = draw(state, dice)

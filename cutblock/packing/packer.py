@@ -1,7 +1,7 @@
 """Packs boxes into stock blocks by through cuts, with what no packing could undercut."""
 
 from collections.abc import Iterable
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import NamedTuple
 
 import numpy as np
@@ -10,12 +10,17 @@ from numpy.typing import ArrayLike
 from cutblock.base.errors import InputError, StockError
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.packing.bound import Bound, lower_bound
-from cutblock.packing.compiled import plain
+from cutblock.packing.compiled import Inner, compiled, plain
 from cutblock.packing.construct import Solution, construct
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task
+from cutblock.packing.search import Effort, improve
 from cutblock.packing.tree import Part, all_parts, block_trees
 
 _AXIS_NAMES = "xyz"
+_USUAL_MOVES = 2000
+_USUAL_PLACINGS = 25_000
+_LONG_PLACINGS = 2_000_000  # half a minute as it stands; compiling takes ten seconds once
+_LONG_SECONDS = 20.0
 
 
 class Placement(NamedTuple):
@@ -140,19 +145,52 @@ def _solve(
     task: Task, bound: Bound, seed: int, moves: int | None, seconds: float | None, progress: Progress
 ) -> tuple[Solution, int]:
     target = (float(bound.blocks) if bound.cost is None else bound.cost, bound.blocks)
-    solution = construct(task, plain(), target, progress)
+    start = construct(task, plain(), target, part_of(progress, 0.0, 0.4))
     if moves is None and seconds is None:
-        moves = 2000
-    import os
-    from cutblock.packing.compiled import compiled
-    from cutblock.packing.search import improve, Effort
-
-    solution, n_moves = improve(
-        task, compiled() if os.environ.get("JIT") else plain(), solution, target, seed, Effort(moves, seconds), progress
-    )
+        moves = usual_moves(start)
+    effort = Effort(moves, seconds)
+    solution, n_moves = improve(task, _inner(start, effort), start, target, seed, effort, part_of(progress, 0.4, 1.0))
     if solution.n_missing:
-        raise StockError("the blocks do not suffice", "stock")
+        raise shortage(task)
     return solution, n_moves
+
+
+def usual_moves(start: Solution) -> int:
+    """Return the moves made where none are asked for: about half a second without a compiler."""
+    billets_a_move = 3 * start.layout.shape[1] // max(1, len(start.kinds)) + 1
+    return min(_USUAL_MOVES, _USUAL_PLACINGS // int(billets_a_move))
+
+
+def _inner(start: Solution, effort: Effort) -> Inner:
+    """Return the compiled loops where they are there and the search is long enough to pay for their start."""
+    billets_a_move = 3 * start.layout.shape[1] // max(1, len(start.kinds)) + 1
+    is_long = (effort.moves or 0) * billets_a_move > _LONG_PLACINGS or (effort.seconds or 0.0) >= _LONG_SECONDS
+    return (compiled() if is_long else None) or plain()
+
+
+def shortage(task: Task) -> StockError:
+    """Return the error that says how many more blocks of which kind would do."""
+    more = []
+    for row in np.flatnonzero(task.is_finite & task.fits.all(axis=0)).tolist():
+        counts = task.counts.copy()
+        counts[row] = len(task.cells)
+        # Only the blocks of this row cost anything, so that those there are of the others are used first.
+        prices = np.zeros(len(counts))
+        prices[row] = 1.0
+        plan = construct(replace(task, counts=counts, prices=prices), plain(), (0.0, 0), silent)
+        if not plan.n_missing:
+            more.append((int((plan.kinds == row).sum() - task.counts[row]), row))
+    if not more:
+        short = ", ".join(name for name, count in zip(task.stock_names, task.is_finite, strict=True) if count)
+        return StockError(
+            f"the billets do not fit into the blocks there are of {short}", "stock", "Raise the counts of the blocks."
+        )
+    number, row = min(more)
+    return StockError(
+        f"the blocks do not suffice for {len(task.cells)} billets",
+        task.stock_names[row],
+        f"Give {number} more of {task.size_text(task.raw[row])}, {task.counts[row] + number} in all.",
+    )
 
 
 def _check_effort(moves: int | None, seconds: float | None) -> None:

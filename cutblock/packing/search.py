@@ -16,9 +16,9 @@ from cutblock.base.progress import Progress
 from cutblock.packing.compiled import Inner
 from cutblock.packing.construct import Solution, evaluate, sort_keys
 from cutblock.packing.lattice import Task
-from cutblock.packing.sequences import Goods, State, Trial, cells_of, kinds_of, new_desk, new_layout
+from cutblock.packing.sequences import Goods, State, cells_of, kinds_of, new_layout, new_trial
 
-_MOVES_A_TURN = 1000
+_MOVES_A_TURN = 2000
 _LATE_FILL = 50
 _LATE_EMPTYING = 100
 _DICE = 1 << 16
@@ -51,8 +51,7 @@ class _Search:
         self.goods = Goods(
             cells_of(task, inner), kinds_of(task, inner), reals(volumes), reals(kind_volumes), reals(task.weights)
         )
-        zeros = [integers(np.zeros(size)) for size in (n, n, n_kinds, n_kinds, 8, n + 8)]
-        self.trial = Trial(new_layout(n, inner), new_desk(n, inner), *zeros, reals(np.zeros(n + 8)))
+        self.trial = new_trial(n, n_kinds, inner)
         self.bases = integers(np.concatenate(sort_keys(task)))
         self.change = reals(np.zeros(5))
         self.target = reals([target[0], float(target[1])])

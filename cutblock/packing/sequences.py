@@ -132,3 +132,12 @@ def new_desk(n_cells: int, make: Make) -> Desk:
     x, y, z, block, slot = (make.integers(np.zeros(3 * n_cells + 4)) for _ in range(5))
     kind, n_placed = (make.integers(np.zeros(n_cells + 1)) for _ in range(2))
     return Desk(x, y, z, block, slot, kind, n_placed, make.integers(np.zeros(9)), make.integers(np.zeros(3)))
+
+
+def new_trial(n_cells: int, n_kinds: int, make: Make) -> Trial:
+    """Return room to work in for the moves of a search."""
+    sequence, forced = (make.integers(np.zeros(n_cells)) for _ in range(2))
+    prefer, remaining = (make.integers(np.zeros(n_kinds)) for _ in range(2))
+    chosen, is_chosen = make.integers(np.zeros(8)), make.integers(np.zeros(n_cells + 8))
+    layout, desk, filled = new_layout(n_cells, make), new_desk(n_cells, make), make.reals(np.zeros(n_cells + 8))
+    return Trial(layout, desk, sequence, forced, prefer, remaining, chosen, is_chosen, filled)
