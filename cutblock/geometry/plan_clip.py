@@ -48,11 +48,11 @@ def clip(vertices: Floats, triangles: Ints, normal: Floats, distance_mm: float) 
         ]
     )
     # A triangle that only touches the plane, or has an edge in it, leaves pieces without area.
-    has_area = (pieces != np.roll(pieces, 1, axis=1)).all(axis=1) & (heights_of(pieces, heights) > 0.0)
+    has_area = (pieces != np.roll(pieces, 1, axis=1)).all(axis=1) & (_highest(pieces, heights) > 0.0)
     return vertices, pieces[has_area]
 
 
-def heights_of(triangles: Ints, heights: Floats) -> Floats:
+def _highest(triangles: Ints, heights: Floats) -> Floats:
     """Return for each triangle the largest of `heights` over its corners; new vertices lie on the plane, at 0."""
     padded = np.zeros(max(len(heights), int(triangles.max(initial=0)) + 1))
     padded[: len(heights)] = heights
