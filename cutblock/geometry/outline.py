@@ -92,4 +92,3 @@ def is_inside(rings: Rings, points: Floats, reach_mm: float = 0.0) -> Bools:
     shapely.prepare(area)
     inside: Bools = shapely.intersects_xy(area, points[:, 0], points[:, 1])
     return inside
-

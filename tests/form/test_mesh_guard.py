@@ -55,8 +55,8 @@ def model_xml(mesh=FLAT, unit='unit="millimeter"', build='<item objectid="1"/>',
     triangles = "".join(f'<triangle v1="{a}" v2="{b}" v3="{c}"/>' for a, b, c in mesh[1].tolist())
     return (
         f'<?xml version="1.0"?>{head}<model {unit} xmlns="http://schemas.microsoft.com/3dmanufacturing/core/2015/02">'
-        f'<resources><object id="1" type="model"><mesh><vertices>{vertices}</vertices><triangles>{triangles}</triangles>'
-        f"</mesh></object>{more}</resources><build>{build}</build></model>"
+        f'<resources><object id="1" type="model"><mesh><vertices>{vertices}</vertices>'
+        f"<triangles>{triangles}</triangles></mesh></object>{more}</resources><build>{build}</build></model>"
     )
 
 
@@ -288,16 +288,21 @@ def test_an_unknown_unit_of_a_3mf_is_refused(tmp_path):
 
 
 def test_parts_of_a_3mf_are_placed_by_their_transforms(tmp_path):
-    more = '<object id="2"><components><component objectid="1" transform="1 0 0 0 1 0 0 0 1 0 5000 7"/></components></object>'
+    placed = '<component objectid="1" transform="1 0 0 0 1 0 0 0 1 0 5000 7"/>'
+    more = f'<object id="2"><components>{placed}</components></object>'
     build = '<item objectid="2" transform="0 1 0 -1 0 0 0 0 1 0 0 0"/>'
     face, _ = one_face(put(tmp_path, threemf(model_xml(more=more, build=build))))
     assert (face.length_mm, face.width_mm) == (1000.0, 1200.0)
     np.testing.assert_allclose(face.patch.coefficients[..., 2], 7.0, atol=1e-6)
 
 
-CIRCLE = '<object id="2"><components><component objectid="3"/></components></object><object id="3"><components><component objectid="2"/></components></object>'
+CIRCLE = "".join(
+    f'<object id="{outer}"><components><component objectid="{inner}"/></components></object>'
+    for outer, inner in ((2, 3), (3, 2))
+)
 TREE = "".join(
-    f'<object id="{i}"><components>{f"<component objectid={chr(34)}{i - 1}{chr(34)}/>" * 10}</components></object>' for i in range(2, 9)
+    f'<object id="{i}"><components>{f"<component objectid={chr(34)}{i - 1}{chr(34)}/>" * 10}</components></object>'
+    for i in range(2, 9)
 )
 
 

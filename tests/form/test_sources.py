@@ -67,8 +67,12 @@ def rings(step_deg, half_height=2000.0, radius=5000.0, waist=9000.0):
     angles = np.radians(np.arange(0.0, 360.0 + step_deg / 2.0, step_deg))
     lean = half_height / waist
     near = np.stack(
-        [radius * (np.cos(angles) + lean * np.sin(angles)), radius * (np.sin(angles) - lean * np.cos(angles)),
-         np.full_like(angles, -half_height)], axis=1,
+        [
+            radius * (np.cos(angles) + lean * np.sin(angles)),
+            radius * (np.sin(angles) - lean * np.cos(angles)),
+            np.full_like(angles, -half_height),
+        ],
+        axis=1,
     )
     far = near * [1, 1, -1]
     far[:, 0], far[:, 1] = (
@@ -129,21 +133,21 @@ def test_two_straight_rails_of_two_rows_are_the_hypar_through_their_ends(tmp_pat
 
 def test_rails_of_different_counts_are_refused_with_both_files(tmp_path):
     near, far = rings(5.0)
-    with pytest.raises(InputError, match="73 rows and far.csv has 72"):
+    with pytest.raises(InputError, match=r"73 rows and far.csv has 72"):
         read_faces(rails_job(tmp_path, near, far[:-1]))
 
 
 def test_a_repeated_row_is_refused_with_its_line(tmp_path):
     near, far = rings(5.0)
     near, far = (np.insert(rail, 10, rail[10], axis=0) for rail in (near, far))
-    with pytest.raises(GeometryError, match="near.csv:13: repeats the row before it, and so does far.csv:12"):
+    with pytest.raises(GeometryError, match=r"near.csv:13: repeats the row before it, and so does far.csv:12"):
         read_faces(rails_job(tmp_path, near, far))
 
 
 def test_rails_that_meet_are_refused_with_the_row(tmp_path):
     near, far = rings(5.0)
     far[3] = near[3]
-    with pytest.raises(GeometryError, match="near.csv:5: meets the other rail"):
+    with pytest.raises(GeometryError, match=r"near.csv:5: meets the other rail"):
         read_faces(rails_job(tmp_path, near, far))
 
 
@@ -181,7 +185,7 @@ def test_semicolons_allow_a_decimal_comma(tmp_path):
 
 def test_bytes_that_are_no_text_are_refused(tmp_path):
     (tmp_path / "h.csv").write_bytes(b"0,0,\xff\xfe1\n")
-    with pytest.raises(InputError, match="h.csv: is not plain text"):
+    with pytest.raises(InputError, match=r"h.csv: is not plain text"):
         read_faces(job_of(HeightsSource(path=str(tmp_path / "h.csv"))))
 
 
@@ -218,20 +222,22 @@ def test_heights_converge_at_order_four(tmp_path):
 
 def test_an_incomplete_grid_is_refused_with_the_missing_point(tmp_path):
     rows = np.delete(grid_rows(), 40, axis=0)
-    with pytest.raises(InputError, match=r"h.csv:\d+: is not a complete grid: 116 rows for 13 x 9 .*x 900 mm, y 200 mm"):
+    with pytest.raises(
+        InputError, match=r"h.csv:\d+: is not a complete grid: 116 rows for 13 x 9 .*x 900 mm, y 200 mm"
+    ):
         read_faces(job_of(HeightsSource(path=write_rows(tmp_path / "h.csv", rows))))
 
 
 def test_a_point_twice_is_refused_with_both_lines(tmp_path):
     rows = np.insert(grid_rows(), 40, grid_rows()[7], axis=0)
-    with pytest.raises(InputError, match="h.csv:41: .* twice, first in line 8"):
+    with pytest.raises(InputError, match=r"h.csv:41: .* twice, first in line 8"):
         read_faces(job_of(HeightsSource(path=write_rows(tmp_path / "h.csv", rows))))
 
 
 def test_a_point_off_the_grid_lines_is_refused_with_its_line(tmp_path):
     rows = grid_rows()
     rows[50, 0] += 30.0
-    with pytest.raises(InputError, match="h.csv:51: is no regular grid: x 1030 mm"):
+    with pytest.raises(InputError, match=r"h.csv:51: is no regular grid: x 1030 mm"):
         read_faces(job_of(HeightsSource(path=write_rows(tmp_path / "h.csv", rows))))
 
 

@@ -17,7 +17,9 @@ from cutblock.geometry.patch import (
 
 def bumpy(u, v):
     x, y = np.meshgrid(u, v, indexing="ij")
-    return np.stack([x + 3.0 * np.sin(y / 300.0), y + 2.0 * np.cos(x / 200.0), 80.0 * np.sin(x / 350.0 + y / 500.0)], -1)
+    return np.stack(
+        [x + 3.0 * np.sin(y / 300.0), y + 2.0 * np.cos(x / 200.0), 80.0 * np.sin(x / 350.0 + y / 500.0)], -1
+    )
 
 
 def bumpy_surface(n=25):
@@ -85,7 +87,9 @@ def test_a_bilinear_patch_is_exact_and_goes_on_beyond_its_edges():
 
 
 def test_normals_are_unit_and_the_stretch_is_the_area():
-    normals, stretch = unit_normals(np.array([[2.0, 0.0, 0.0], [1.0, 1.0, 0.0]]), np.array([[0.0, 3.0, 0.0], [2, 2, 0]]))
+    normals, stretch = unit_normals(
+        np.array([[2.0, 0.0, 0.0], [1.0, 1.0, 0.0]]), np.array([[0.0, 3.0, 0.0], [2, 2, 0]])
+    )
     np.testing.assert_allclose(normals, [[0, 0, 1], [0, 0, 0]])
     np.testing.assert_allclose(stretch, [6.0, 0.0])
 
@@ -105,7 +109,7 @@ def test_newton_finds_the_parameters_points_came_from(seed):
 def test_a_point_the_surface_does_not_pass_over_is_not_found():
     angles = np.linspace(-np.pi / 2, np.pi / 2, 41)
     arch = np.stack([300.0 * np.sin(angles), 0.0 * angles, 300.0 * np.cos(angles)], axis=1)
-    points = np.stack([arch, arch + [0.0, 500.0, 0.0]], axis=1)
+    points = np.stack([arch, arch + np.array([0.0, 500.0, 0.0])], axis=1)
     surface = interpolated_surface(300.0 * (angles + np.pi / 2), np.array([0.0, 500.0]), points)
     targets = np.array([[0.0, 250.0], [5000.0, 250.0]])
     found = find_parameters(surface, np.zeros(3), np.eye(3), targets, (np.full(2, 470.0), np.full(2, 250.0)), 100.0)
