@@ -29,7 +29,7 @@ class DetailingDesk(QWidget):
         bar.addWidget(label("Panels", "heading"))
         bar.addWidget(self._count)
         bar.addStretch(1)
-        bar.addWidget(label("&Find", buddy=self.filter))
+        bar.addWidget(label("Fi&nd", buddy=self.filter))
         bar.addWidget(self.filter)
         below = QWidget()
         column = QVBoxLayout(below)

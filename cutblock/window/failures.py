@@ -18,7 +18,8 @@ class FailureDialog(QMessageBox):
     def show_failure(self, failure: Failure) -> None:
         """Show the failure, in place of one still shown."""
         self.setIcon(QMessageBox.Icon.Critical if failure.is_bug else QMessageBox.Icon.Warning)
-        head = f"{failure.subject}\n\n" if failure.subject else ""
+        subject = "A fault of the program" if failure.is_bug and not failure.subject else failure.subject
+        head = f"{subject}\n\n" if subject else ""
         self.setText(f"{head}{failure.message}")
         self.setInformativeText(failure.remedy)
         self.setDetailedText(failure.traceback)

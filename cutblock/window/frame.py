@@ -38,6 +38,8 @@ class MainWindow(QMainWindow):
 
     def __init__(self, runner: Runner, settings: WindowSettings, theme: Theme) -> None:
         super().__init__()
+        # Before any other widget is made: those made earlier would keep the size of text from before.
+        theme.apply(settings.theme, settings.zoom)
         self._runner = runner
         self._settings = settings
         self._theme = theme
@@ -69,7 +71,7 @@ class MainWindow(QMainWindow):
         self.resize(1360, 880)
         self.restoreGeometry(settings.geometry)
         self._connect()
-        self._apply_theme()
+        self.menus.themes[settings.theme].setChecked(True)
         self._show_recent()
         self._show_state()
 
@@ -135,6 +137,7 @@ class MainWindow(QMainWindow):
     @Slot(object)
     def show_failure(self, failure: Failure) -> None:
         """Show what went wrong."""
+        self.start_page.show_state("")
         self.status.rest("Not done")
         self.failure_dialog.show_failure(failure)
 
@@ -332,10 +335,8 @@ class MainWindow(QMainWindow):
             self._settings.zoom = ZOOMS[at]
             self._apply_theme()
 
-    @Slot()
     def _apply_theme(self) -> None:
         self._theme.apply(self._settings.theme, self._settings.zoom)
-        self.menus.themes[self._settings.theme].setChecked(True)
 
     def _show_recent(self) -> None:
         self.menus.show_recent(self._settings.recent)

@@ -60,6 +60,7 @@ class LedgerBar(QWidget):
                         break
             bar = self._bar()
             painter.setPen(ink.faint)
+            painter.drawRect(bar)
             for percent in (0, 25, 50, 75, 100):
                 x = bar.left() + bar.width() * percent / 100
                 painter.drawLine(QPointF(x, bar.bottom()), QPointF(x, bar.bottom() + 4))

@@ -9,7 +9,7 @@ from cutblock.records.panel import Panel
 from cutblock.records.words import Layup
 
 _GAP = 0.05  # between groups and between unrolled cells, of the larger side
-_TITLE_ROOM = 0.06  # above each group
+_TITLE_ROOM = 0.05  # above each group, of the height of the whole picture
 
 
 class PlacedPanel(NamedTuple):
@@ -20,11 +20,20 @@ class PlacedPanel(NamedTuple):
     rings_mm: tuple[Floats, ...]  # (n, 2), y up
 
 
+class GroupTitle(NamedTuple):
+    """What a group of panels is called; x and y are the left end of the text's baseline."""
+
+    x_mm: float
+    y_mm: float
+    room_mm: float
+    text: str
+
+
 class Layout(NamedTuple):
     """Every panel on one picture; y up."""
 
     panels: tuple[PlacedPanel, ...]
-    titles: tuple[tuple[float, float, str], ...]  # left end of the text's baseline
+    titles: tuple[GroupTitle, ...]
     size_mm: tuple[float, float]
 
 
@@ -35,25 +44,26 @@ def lay_out(panels: tuple[Panel, ...], layup: Layup) -> Layout:
     """
     groups = _groups(panels, layup)
     placed: list[PlacedPanel] = []
-    titles: list[tuple[float, float, str]] = []
+    titles: list[GroupTitle] = []
     boxes = [_box([ring for one in members for ring in one.rings_mm]) for _, members in groups]
     sizes = [high - low for low, high in boxes]
     gap = _GAP * max((float(max(size)) for size in sizes), default=1.0)
-    title_room = _TITLE_ROOM * max((float(max(size)) for size in sizes), default=1.0)
     columns = _columns(sizes)
+    n_rows = -(-len(sizes) // columns)
+    title_room = _TITLE_ROOM * max(n_rows, 1) * max((float(size[1]) for size in sizes), default=1.0)
     x = y = row_height = width = 0.0
     for number, ((title, members), (low, _), size) in enumerate(zip(groups, boxes, sizes, strict=True)):
         if number and number % columns == 0:
             x, y, row_height = 0.0, y - row_height - title_room - gap, 0.0
         move = np.array([x, y - size[1]]) - low
         placed += [one._replace(rings_mm=tuple(ring + move for ring in one.rings_mm)) for one in members]
-        titles.append((x, y + 0.3 * title_room, title))
+        titles.append(GroupTitle(x, y + 0.3 * title_room, float(size[0]), title))
         x += float(size[0]) + gap
         width, row_height = max(width, x - gap), max(row_height, float(size[1]))
     height = row_height - y + title_room
     lift = np.array([0.0, row_height - y])
     placed = [one._replace(rings_mm=tuple(ring + lift for ring in one.rings_mm)) for one in placed]
-    raised = tuple((left, baseline + float(lift[1]), title) for left, baseline, title in titles)
+    raised = tuple(title._replace(y_mm=title.y_mm + float(lift[1])) for title in titles)
     return Layout(tuple(placed), raised, (max(width, 1.0), max(height, 1.0)))
 
 
@@ -71,7 +81,7 @@ def _groups(panels: tuple[Panel, ...], layup: Layup) -> list[tuple[str, list[Pla
 
 
 def _title(copy: int, face: str, has_copies: bool) -> str:
-    return f"Face {face}, copy {copy}" if has_copies else f"Face {face}"
+    return f"{face}, copy {copy}" if has_copies else f"Face {face}"
 
 
 def _in_form(panel: Panel) -> PlacedPanel:

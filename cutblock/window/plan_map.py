@@ -92,8 +92,12 @@ class PlanMap(QWidget):
                 painter.setPen(QPen(ink.text, 3.0))
                 painter.drawPath(picked)
             painter.setPen(ink.text)
-            for x, y, title in self._layout.titles:
-                painter.drawText(self._place(x, y), title)
+            scale, _ = self._scale()
+            for title in self._layout.titles:
+                shown = self.fontMetrics().elidedText(
+                    title.text, Qt.TextElideMode.ElideRight, int(title.room_mm * scale)
+                )
+                painter.drawText(self._place(title.x_mm, title.y_mm), shown)
             self._paint_legend(painter)
 
     def mousePressEvent(self, event: QMouseEvent) -> None:
@@ -180,7 +184,7 @@ class PlanMap(QWidget):
             x += width
 
     def _legend_title(self) -> str:
-        return f"Finished mould face from the form, at most (tolerance {self._tolerance_mm:.2f} mm)"
+        return f"Farthest from the form (tolerance {self._tolerance_mm:.2f} mm)"
 
     def _legend_entries(self) -> list[tuple[Step, str]]:
         entries = [(step, legend_text(step, self._tolerance_mm)) for step in STEPS]

@@ -52,7 +52,7 @@ class StatusLine(QWidget):
     @Slot(float, str)
     def show_progress(self, fraction: float, text: str) -> None:
         """Move the bar."""
-        self.text.setText(text)
+        self.text.setText(text[:1].upper() + text[1:])
         self.bar.setValue(round(1000 * fraction))
 
     def show_stopping(self) -> None:

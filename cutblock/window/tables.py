@@ -12,6 +12,7 @@ from PySide6.QtCore import (
     QPersistentModelIndex,
     QRectF,
     Qt,
+    QTimer,
     Signal,
     Slot,
 )
@@ -27,6 +28,7 @@ NOWHERE = QModelIndex()
 _ROWS_MEASURED = 50  # for the column widths; measuring thousands takes most of a second
 _WIDEST_PX = 420
 _SQUARE_PX = 14
+_SQUARE_EDGE = "#808080"  # seen on a dark and on a light ground
 _RIGHT = Qt.AlignmentFlag.AlignRight | Qt.AlignmentFlag.AlignVCenter
 _LEFT = Qt.AlignmentFlag.AlignLeft | Qt.AlignmentFlag.AlignVCenter
 
@@ -155,6 +157,8 @@ class RowsModel(QAbstractTableModel):
             with painting(pixmap) as painter:
                 painter.fillRect(room, QColor(colour))
                 painter.fillRect(room, hatch_brush(hatch, text_on(QColor(colour))))
+                painter.setPen(QColor(_SQUARE_EDGE))
+                painter.drawRect(room.adjusted(0.5, 0.5, -0.5, -0.5))
             icon = QIcon()
             for mode in (QIcon.Mode.Normal, QIcon.Mode.Selected):
                 icon.addPixmap(pixmap, mode)
@@ -204,6 +208,7 @@ class RowsView(QTableView):
         self._set_row_height()
         model.modelReset.connect(self._tell_picked)
 
+    @Slot()
     def fit_columns(self) -> None:
         """Make every column as wide as its text, within reason."""
         self.resizeColumnsToContents()
@@ -237,7 +242,7 @@ class RowsView(QTableView):
         super().changeEvent(event)
         if event.type() == QEvent.Type.FontChange:
             self._set_row_height()
-            self.fit_columns()
+            QTimer.singleShot(0, self, self.fit_columns)  # once the header has the new size too
 
     @Slot()
     def _tell_picked(self) -> None:

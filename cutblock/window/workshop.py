@@ -165,7 +165,7 @@ class TagsPage(QWidget):
         beside = QVBoxLayout(right)
         beside.setContentsMargins(0, 0, 0, 0)
         beside.addWidget(titled("Tag", self.picture), 1)
-        beside.addWidget(label("Label s&heet", buddy=self.sheet))
+        beside.addWidget(label("L&abel sheet", buddy=self.sheet))
         beside.addWidget(self.sheet)
         line = QHBoxLayout()
         line.addWidget(label("Start at label n&umber", buddy=self.start))

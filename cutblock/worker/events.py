@@ -65,7 +65,7 @@ def failure_of(error: BaseException, ticket: int) -> Failure:
     return Failure(
         ticket=ticket,
         message=f"{type(error).__name__}: {error}",
-        remedy="This is a fault of the program. Nothing you saved is lost; please report the text below.",
+        remedy="Nothing you saved is lost. Please report it with the details.",
         is_bug=True,
         traceback="".join(traceback.format_exception(error)),
     )

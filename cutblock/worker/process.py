@@ -108,7 +108,7 @@ class Worker:
             return Cancelled(ticket=ticket)
         return Failure(
             ticket=ticket,
-            message="The background process of the program stopped before it was done.",
+            message="The background process stopped before it was done.",
             remedy="A new one was started: try again. If it happens again, close other programs to free memory.",
             is_bug=True,
             traceback=f"exit code {code}",

@@ -1,10 +1,14 @@
+import re
+
 import pytest
 from kit.shown import sample_shown
 from PySide6.QtCore import QMimeData, QPointF, Qt, QUrl
 from PySide6.QtGui import QAccessible, QAction, QDropEvent, QShortcut
-from PySide6.QtWidgets import QLabel, QWidget
+from PySide6.QtWidgets import QApplication, QLabel, QPushButton, QTabWidget, QWidget
 
 from cutblock.window import dialogs
+from cutblock.window.frame import MainWindow
+from cutblock.window.runner import Runner
 from cutblock.window.settings import WindowSettings
 from cutblock.worker.events import Cancelled, Failure, Progress, Result
 from cutblock.worker.requests import OpenRequest, PlanRequest, SaveRequest, TagsRequest
@@ -237,6 +241,7 @@ def test_text_grows_shrinks_and_returns_to_its_size(qtbot, window, worker):
     plan_job(qtbot, window, worker)
     size = window.font().pointSizeF()
     height = window._detailing.table.verticalHeader().defaultSectionSize()
+    width = window._detailing.table.columnWidth(3)
 
     for _ in range(2):
         window.menus.larger.trigger()
@@ -247,6 +252,22 @@ def test_text_grows_shrinks_and_returns_to_its_size(qtbot, window, worker):
     assert window.font().pointSizeF() < size
     window.menus.usual.trigger()
     assert window.font().pointSizeF() == size
+    qtbot.waitUntil(lambda: window._detailing.table.columnWidth(3) == width, timeout=2000)
+
+
+def test_a_window_opened_with_larger_text_has_it_everywhere(qtbot, worker, settings_path, theme):
+    settings = WindowSettings(settings_path)
+    settings.zoom = 1.5
+    made = MainWindow(Runner(worker), settings, theme)
+    qtbot.addWidget(made)
+    made.show()
+    qtbot.waitExposed(made)
+
+    size = QApplication.font().pointSizeF()
+    plain = [made.menuBar(), made.status.text, made.start_page.open]
+    assert [found.font().pointSizeF() for found in plain] == pytest.approx([size] * 3)
+    made.close()
+    theme.apply("light", 1.0)
 
 
 def test_desks_are_reached_by_their_shortcuts(qtbot, window, worker):
@@ -264,6 +285,17 @@ def test_no_two_actions_share_a_shortcut(qtbot, window, worker):
     assert len(keys) == len(set(keys))
     assert len(keys) > 15
     assert not set(keys) & {shortcut.key().toString() for shortcut in window.findChildren(QShortcut)}
+
+
+def test_no_access_key_of_a_desk_hides_a_menu(qtbot, window, worker):
+    plan_job(qtbot, window, worker)
+    menus = [re.search("&(.)", action.text())[1].lower() for action in window.menuBar().actions()]
+    for desk in (window._detailing, window._workshop, window._estimating):
+        texts = [found.text() for found in desk.findChildren(QLabel) if found.buddy() is not None]
+        texts += [found.text() for found in desk.findChildren(QPushButton)]
+        texts += [tabs.tabText(i) for tabs in desk.findChildren(QTabWidget) for i in range(tabs.count())]
+        keys = menus + [found[1].lower() for text in texts if (found := re.search("&(.)", text))]
+        assert len(keys) == len(set(keys)), sorted(keys)
 
 
 def test_everything_that_takes_the_focus_has_a_name_for_screen_readers(qtbot, window, worker):

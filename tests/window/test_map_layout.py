@@ -37,7 +37,7 @@ def test_copies_and_faces_in_the_same_place_stand_side_by_side():
     layout = lay_out(panels, Layup.BED)
 
     assert overlaps(layout) == []
-    assert [title for _, _, title in layout.titles] == ["Face S, copy 1", "Face S, copy 2", "Face T, copy 1"]
+    assert [title.text for title in layout.titles] == ["S, copy 1", "S, copy 2", "T, copy 1"]
 
 
 def test_faces_of_one_bed_that_lie_beside_each_other_stay_together():
@@ -49,7 +49,7 @@ def test_faces_of_one_bed_that_lie_beside_each_other_stay_together():
     layout = lay_out(panels, Layup.BED)
 
     found = boxes(layout)
-    assert [title for _, _, title in layout.titles] == ["Form plan"]
+    assert [title.text for title in layout.titles] == ["Form plan"]
     np.testing.assert_allclose(found["T-A01"][0] - found["S-A01"][0], [1200.0, 0.0])
 
 
