@@ -10,6 +10,7 @@ from cutblock.base.progress import Progress
 from cutblock.packing.compiled import Inner
 from cutblock.packing.lattice import Task
 from cutblock.packing.sequences import cells_of, kinds_of, new_desk, new_layout
+from cutblock.packing.tree import Part
 
 _PLACINGS = 12_000  # billets placed by all rules together; about half a second without a compiler
 _LEAST_RULES = 3
@@ -30,11 +31,13 @@ class Solution:
         kinds: (b,) stock row of each block.
         value: What it costs: money or blocks, blocks, then minus the sum of the squared fill, so that of plans of one
             price the one with the emptiest last block is better.
+        trees: Trees of blocks laid out otherwise; their billets have slot -1 and the tree's number as rank.
     """
 
     layout: Ints
     kinds: Ints
     value: tuple[float, int, float]
+    trees: tuple[Part, ...] = ()
 
     @property
     def n_missing(self) -> int:
@@ -42,7 +45,7 @@ class Solution:
         return int((self.layout[0] < 0).sum())
 
 
-def evaluate(task: Task, layout: Ints, kinds: Ints) -> Solution:
+def evaluate(task: Task, layout: Ints, kinds: Ints, trees: tuple[Part, ...] = ()) -> Solution:
     """Return a layout with its value; billets without a place outweigh everything."""
     volumes = task.cells.astype(np.float64).prod(axis=1)
     is_placed = layout[0] >= 0
@@ -50,7 +53,8 @@ def evaluate(task: Task, layout: Ints, kinds: Ints) -> Solution:
     fill = filled / task.kinds[kinds].astype(np.float64).prod(axis=1)
     money = float(task.weights[kinds].sum())
     missing = float(volumes[~is_placed].sum())
-    return Solution(layout, kinds, (money if missing == 0.0 else np.inf, len(kinds), missing - float((fill**2).sum())))
+    value = (money if missing == 0.0 else np.inf, len(kinds), missing - float((fill**2).sum()))
+    return Solution(layout, kinds, value, trees)
 
 
 def construct(task: Task, inner: Inner, target: tuple[float, int], progress: Progress) -> Solution:

@@ -10,11 +10,13 @@ from numpy.typing import ArrayLike
 from cutblock.base.errors import InputError, StockError
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.packing.bound import Bound, lower_bound
+from cutblock.packing.columns import stack_columns
 from cutblock.packing.compiled import Inner, compiled, plain
 from cutblock.packing.construct import Solution, construct
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task
+from cutblock.packing.replay import block_trees
 from cutblock.packing.search import Effort, improve
-from cutblock.packing.tree import Part, all_parts, block_trees
+from cutblock.packing.tree import Part, all_parts
 
 _AXIS_NAMES = "xyz"
 _USUAL_MOVES = 2000
@@ -146,6 +148,10 @@ def _solve(
 ) -> tuple[Solution, int]:
     target = (float(bound.blocks) if bound.cost is None else bound.cost, bound.blocks)
     start = construct(task, plain(), target, part_of(progress, 0.0, 0.4))
+    for kind in range(len(task.kinds)):
+        stacked = None if start.value[:2] <= target else stack_columns(task, plain(), kind)
+        if stacked is not None and stacked.value < start.value:
+            start = stacked
     if moves is None and seconds is None:
         moves = usual_moves(start)
     effort = Effort(moves, seconds)

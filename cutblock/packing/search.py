@@ -17,6 +17,7 @@ from cutblock.packing.compiled import Inner
 from cutblock.packing.construct import Solution, evaluate, sort_keys
 from cutblock.packing.lattice import Task
 from cutblock.packing.sequences import Goods, State, cells_of, kinds_of, new_layout, new_trial
+from cutblock.packing.tree import Part
 
 _MOVES_A_TURN = 2000
 _LATE_FILL = 50
@@ -41,9 +42,12 @@ class Effort:
 class _Search:
     """The sequences of one search and the moves made so far."""
 
-    def __init__(self, task: Task, inner: Inner, seed: int, effort: Effort, target: tuple[float, int]) -> None:
+    def __init__(
+        self, task: Task, inner: Inner, seed: int, effort: Effort, target: tuple[float, int], trees: tuple[Part, ...]
+    ) -> None:
         n, n_kinds = len(task.cells), len(task.kinds)
         self.task, self.inner, self.effort = task, inner, effort
+        self.trees = trees
         self.generator = np.random.Generator(np.random.PCG64(seed))
         volumes = task.cells.astype(np.float64).prod(axis=1)
         kind_volumes = task.kinds.astype(np.float64).prod(axis=1)
@@ -98,7 +102,7 @@ class _Search:
         number = np.full(len(state.kind), -1, dtype=np.int64)
         number[used] = np.arange(len(used))
         layout[0] = np.where(layout[0] >= 0, number[layout[0]], -1)
-        return evaluate(self.task, layout, np.asarray(state.kind, dtype=np.int64)[used])
+        return evaluate(self.task, layout, np.asarray(state.kind, dtype=np.int64)[used], self.trees)
 
     def run(self, state: State, is_emptying: bool, n_moves: int, progress: Progress) -> None:
         """Make up to so many moves; ends early when the goal is reached or the effort is spent."""
@@ -173,7 +177,7 @@ def improve(
     Returns:
         The best plan found, never worse than `start`, and the number of moves made.
     """
-    hunt = _Search(task, inner, seed, effort, target)
+    hunt = _Search(task, inner, seed, effort, target, start.trees)
     best = start
     while not hunt.is_spent() and not _is_at(best, target):
         if best.n_missing:
@@ -214,4 +218,4 @@ def _emptied(task: Task, plan: Solution, generator: np.random.Generator) -> Solu
     else:
         layout[0][layout[0] > gone] -= 1
         kinds = np.delete(kinds, gone)
-    return evaluate(task, layout, kinds)
+    return evaluate(task, layout, kinds, plan.trees)

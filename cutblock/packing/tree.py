@@ -2,12 +2,6 @@
 
 from dataclasses import dataclass
 
-import numpy as np
-
-from cutblock.packing.construct import Solution
-from cutblock.packing.kernels import ORDERS
-from cutblock.packing.lattice import Task
-
 Steps3 = tuple[int, int, int]
 
 
@@ -41,34 +35,7 @@ class Part:
         return [part for part in (self.low, self.high) if part is not None]
 
 
-def block_trees(task: Task, solution: Solution) -> list[Part]:
-    """Return the tree of cuts of every block, from its usable box down."""
-    block, _, slot, turned, order = solution.layout.tolist()
-    sequences: list[list[int]] = [[] for _ in solution.kinds]
-    for cell in np.argsort(solution.layout[1], kind="stable").tolist():
-        sequences[block[cell]].append(cell)
-    cells = (task.cells - task.kerf).tolist()
-    roots = []
-    for kind, members in zip(solution.kinds.tolist(), sequences, strict=True):
-        skin = int(task.skins[kind])
-        x, y, z = (task.kinds[kind] - task.kerf).tolist()
-        root = Part((skin, skin, skin), (x, y, z))
-        slots = {0: root}
-        for place, cell in enumerate(members):
-            x, y, z = cells[cell]
-            size = (y, x, z) if turned[cell] else (x, y, z)
-            rests = _cut_out(slots.pop(slot[cell]), size, ORDERS[order[cell]], task.kerf)
-            slots.update({3 * place + 1 + i: rest for i, rest in enumerate(rests[:3]) if rest is not None})
-            billet = rests[3]
-            if billet is None:
-                raise AssertionError("a billet is never cut away")
-            billet.billet = cell
-            billet.is_turned = bool(turned[cell]) != bool(task.is_swapped[cell])
-        roots.append(root)
-    return roots
-
-
-def _cut_out(part: Part, size: Steps3, order: Steps3, kerf: int) -> list[Part | None]:
+def cut_out(part: Part, size: Steps3, order: Steps3, kerf: int) -> list[Part | None]:
     """Cut a box out of the lower corner of a part; return the three rests in order, then the box."""
     rests: list[Part | None] = []
     for axis in order:
@@ -76,15 +43,20 @@ def _cut_out(part: Part, size: Steps3, order: Steps3, kerf: int) -> list[Part | 
         if gap == 0:
             rests.append(None)
             continue
-        part.axis, part.cut_at = axis, part.at[axis] + size[axis]
-        part.low = Part(part.at, _with(part.size, axis, size[axis]))
-        if gap > kerf:
-            at = _with(part.at, axis, part.cut_at + kerf)
-            part.high = Part(at, _with(part.size, axis, gap - kerf))
-        rests.append(part.high)
-        part = part.low
+        rests.append(cut_off(part, axis, size[axis], kerf))
+        part = part.children[0]
     rests.append(part)
     return rests
+
+
+def cut_off(part: Part, axis: int, size: int, kerf: int) -> Part | None:
+    """Cut a part at `size` along an axis; return what is left above the kerf."""
+    gap = part.size[axis] - size
+    part.axis, part.cut_at = axis, part.at[axis] + size
+    part.low = Part(part.at, _with(part.size, axis, size))
+    if gap > kerf:
+        part.high = Part(_with(part.at, axis, part.cut_at + kerf), _with(part.size, axis, gap - kerf))
+    return part.high
 
 
 def _with(values: Steps3, axis: int, value: int) -> Steps3:

@@ -238,3 +238,31 @@ def test_progress_can_stop_it():
 
     with pytest.raises(KeyboardInterrupt):
         pack([(100, 100, 100)], [BLOCK], 1.0, progress=stop)
+
+
+def test_equal_billets_that_interlock_fill_every_block():
+    # Laid all one way a 4000 x 1250 floor holds fewer of these than the mixed floor does.
+    packing = pack([(624, 899, 411)] * 64, [(4000, 1250, 1000, None, None)], 2.0)
+
+    assert packing.n_blocks == 4
+
+
+@given(
+    heights=st.lists(st.integers(100, 400), min_size=6, max_size=40),
+    sides=st.tuples(st.integers(250, 700), st.integers(250, 700)),
+    moves=st.sampled_from([0, 60]),
+)
+def test_one_footprint_in_many_heights_keeps_every_law(heights, sides, moves):
+    task = {"sizes_mm": [(*sides, height) for height in heights], "stock": [BLOCK], "kerf_mm": 1.2, "skin_mm": 15.0}
+
+    packing = pack(**task, moves=moves)
+
+    corners, blocks = boxes_of(packing, task["sizes_mm"])
+    same = blocks[:, None] == blocks[None, :]
+    gaps = np.maximum(corners[:, None, :3] - corners[None, :, 3:], corners[None, :, :3] - corners[:, None, 3:]).max(
+        axis=2
+    )
+    np.fill_diagonal(same, val=False)
+    assert (gaps[same] >= 1.2 - 1e-9).all()
+    assert (corners[:, :3] >= 15.0 - 1e-9).all()
+    assert packing.lower_bound <= packing.n_blocks

@@ -1,0 +1,25 @@
+import numpy as np
+import pytest
+
+from cutblock.packing.compiled import compiled, plain
+from cutblock.packing.construct import construct
+from cutblock.packing.lattice import make_task
+from cutblock.packing.search import Effort, improve
+
+
+@pytest.mark.slow
+def test_compiled_loops_give_the_same_plan():
+    pytest.importorskip("numba")
+    sizes = np.random.default_rng(5).integers(80, 500, (40, 3))
+    stock = [(1000.0, 800.0, 600.0, None, 70.0), (900.0, 500.0, 600.0, 3, 30.0)]
+    task = make_task(sizes, stock, 2.0, 10.0, True)
+
+    plans = []
+    for inner in (plain(), compiled()):
+        start = construct(task, inner, (0.0, 0), lambda fraction, text: None)
+        plans.append(improve(task, inner, start, (0.0, 0), 1, Effort(600, None), lambda fraction, text: None))
+
+    (one, n_one), (other, n_other) = plans
+    assert n_one == n_other == 600
+    assert one.value == other.value
+    np.testing.assert_array_equal(one.layout, other.layout)
