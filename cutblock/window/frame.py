@@ -6,13 +6,14 @@ Nothing that needs numpy is imported before a plan is asked for, so that the win
 
 from collections.abc import Callable
 from pathlib import PurePath
-from typing import TYPE_CHECKING, ClassVar, TypeAlias
+from typing import TYPE_CHECKING, TypeAlias
 
 from PySide6.QtCore import Slot
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence, QUndoCommand, QUndoStack
-from PySide6.QtWidgets import QMainWindow, QStackedWidget, QTabWidget
+from PySide6.QtWidgets import QMainWindow, QStackedWidget
 
 from cutblock.window import dialogs
+from cutblock.window.desks import Desks
 from cutblock.window.failures import FailureDialog
 from cutblock.window.labels import counted
 from cutblock.window.menus import Menus
@@ -34,8 +35,6 @@ _MOST_UNDO = 10
 class MainWindow(QMainWindow):
     """The window over one plan."""
 
-    DESK_TITLES: ClassVar = ("Detailing", "Workshop", "Estimating")
-
     def __init__(self, runner: Runner, settings: WindowSettings, theme: Theme) -> None:
         super().__init__()
         # Before any other widget is made: those made earlier would keep the size of text from before.
@@ -54,9 +53,7 @@ class MainWindow(QMainWindow):
         self.redo_action = self._stack.createRedoAction(self, "Redo")
         self.redo_action.setShortcut(QKeySequence(QKeySequence.StandardKey.Redo))
         self.start_page = StartPage()
-        self.desks = QTabWidget()
-        self.desks.setAccessibleName("Desks")
-        self.desks.setDocumentMode(True)
+        self.desks = Desks()
         self.pages = QStackedWidget()
         self.pages.addWidget(self.start_page)
         self.pages.addWidget(self.desks)
@@ -111,7 +108,8 @@ class MainWindow(QMainWindow):
 
         if self._shown is None or self._runner.is_busy:
             return
-        tags = self._workshop.tags
+        self.desks.finish()
+        tags = self.desks.workshop.tags
         request = TagsRequest(plan=self._shown.plan, sheet=tags.sheet_name, start=tags.start.value(), path=path)
         self._run(request, "Drawing the tags", self._take_tags)
 
@@ -124,9 +122,7 @@ class MainWindow(QMainWindow):
         self._shown = shown
         self._shown_path = self._job_path = job_path
         if shown is not None:
-            self._make_desks()
-            for desk in (self._detailing, self._workshop, self._estimating):
-                desk.show_plan(shown)
+            self.desks.show_plan(shown)
             job = shown.plan.job
             self.setWindowTitle(f"{job.title} ({job.id}), revision {job.revision}[*] – cutblock")
         else:
@@ -171,6 +167,7 @@ class MainWindow(QMainWindow):
         self.status.cancel_asked.connect(self._cancel)
         self.start_page.open_asked.connect(self._ask_job)
         self.start_page.job_picked.connect(self.open_job)
+        self.desks.export_asked.connect(self._ask_tags)
         menus.recent.triggered.connect(self._open_recent)
         pairs = (
             (menus.open, self._ask_job),
@@ -196,20 +193,6 @@ class MainWindow(QMainWindow):
     def _run(self, request: Request, text: str, after: Callable[[object], None]) -> None:
         self._after = after
         self._runner.run(request, text)
-
-    def _make_desks(self) -> None:
-        if self.desks.count():
-            return
-        from cutblock.window.detailing import DetailingDesk
-        from cutblock.window.estimating import EstimatingDesk
-        from cutblock.window.workshop import WorkshopDesk
-
-        self._detailing: DetailingDesk = DetailingDesk()
-        self._workshop: WorkshopDesk = WorkshopDesk()
-        self._estimating: EstimatingDesk = EstimatingDesk()
-        for desk, title in zip((self._detailing, self._workshop, self._estimating), self.DESK_TITLES, strict=True):
-            self.desks.addTab(desk, title)
-        self._workshop.export_asked.connect(self._ask_tags)
 
     def _take_plan(self, value: object) -> None:
         from cutblock.worker.requests import ShownPlan

@@ -1,5 +1,6 @@
 """Opens the window."""
 
+import contextlib
 import faulthandler
 import importlib
 import logging
@@ -28,7 +29,6 @@ from cutblock.window.settings import WindowSettings
 from cutblock.window.theme import Theme
 from cutblock.worker.events import Failure, failure_of
 
-WARM_UP_MS = 200  # after the first paint
 # What the first plan needs in this process, imported in a thread once the window is there.
 _LATER = ("cutblock.window.detailing", "cutblock.window.workshop", "cutblock.window.estimating")
 _QT_LEVELS = {
@@ -39,6 +39,41 @@ _QT_LEVELS = {
     QtMsgType.QtFatalMsg: logging.CRITICAL,
 }
 _log = logging.getLogger("cutblock.window")
+
+
+class LaterParts(QObject):
+    """Imports in a thread what a plan needs, then makes the desks and opens the first job.
+
+    Imported in the window's own thread, numpy and its company would stop the window for most of a second.
+
+    Signals:
+        imported(): Sent from the thread.
+    """
+
+    imported = Signal()
+
+    def __init__(self, window: MainWindow, job_path: str | None) -> None:
+        super().__init__(window)
+        self._window = window
+        self._job_path = job_path
+        self.imported.connect(self._go_on)
+
+    @Slot()
+    def start(self) -> None:
+        """Begin to import."""
+        threading.Thread(target=self._import, name="cutblock imports", daemon=True).start()
+
+    def _import(self) -> None:
+        for name in _LATER:
+            importlib.import_module(name)
+        with contextlib.suppress(RuntimeError):  # the window is closed already
+            self.imported.emit()
+
+    @Slot()
+    def _go_on(self) -> None:
+        self._window.desks.prepare()
+        if self._job_path is not None:
+            self._window.open_job(self._job_path)
 
 
 class FaultCatcher(QObject):
@@ -100,22 +135,10 @@ def open_window(job_path: str | None, settings_path: str | None = None) -> int:
     window = MainWindow(runner, WindowSettings(settings_path or _settings_path()), Theme(application))
     FaultCatcher(window).install()
     window.show()
-    QTimer.singleShot(WARM_UP_MS, runner.warm_up)
-    QTimer.singleShot(WARM_UP_MS, import_later_parts)
-    if job_path is not None:
-        path = str(Path(job_path).absolute())
-        QTimer.singleShot(0, window, lambda: window.open_job(path))
+    later = LaterParts(window, str(Path(job_path).absolute()) if job_path is not None else None)
+    QTimer.singleShot(0, runner.warm_up)
+    QTimer.singleShot(0, later.start)
     return application.exec()
-
-
-def import_later_parts() -> None:
-    """Import in a thread what the first plan needs, so that showing it does not stop the window."""
-    threading.Thread(target=_import_all, name="cutblock imports", daemon=True).start()
-
-
-def _import_all() -> None:
-    for name in _LATER:
-        importlib.import_module(name)
 
 
 def _settings_path() -> str:

@@ -5,6 +5,7 @@ from typing import TYPE_CHECKING
 from PySide6.QtGui import QAction, QActionGroup, QKeySequence
 from PySide6.QtWidgets import QMenu
 
+from cutblock.window.desks import Desks
 from cutblock.window.theme import DARK, LIGHT, SYSTEM
 
 if TYPE_CHECKING:
@@ -32,7 +33,7 @@ class Menus:
         self.usual = self._action("&Usual text size", "Ctrl+0")
         self.cautions = self._action("&Cautions", "F1")
         self.about = self._action("&About cutblock", "Shift+F1")
-        self.desks = [self._action(f"&{n} {title}", f"Ctrl+{n}") for n, title in enumerate(window.DESK_TITLES, start=1)]
+        self.desks = [self._action(f"&{n} {title}", f"Ctrl+{n}") for n, title in enumerate(Desks.TITLES, start=1)]
         self.themes = self._theme_actions()
         self.recent = QMenu("Open &recent", window)
         self._lay_out()

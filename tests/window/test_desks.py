@@ -73,9 +73,9 @@ def test_picking_in_the_plan_drops_a_filter_that_hides_the_panel(detailing):
 
 def test_ctrl_f_goes_to_the_filter_of_the_desk_in_front(qtbot, window):
     window.show_plan(sample_shown())
-    for number, desk in ((0, window._detailing), (1, window._workshop.tags)):
+    for number, desk in ((0, window.desks.detailing), (1, window.desks.workshop.tags)):
         window.desks.setCurrentIndex(number)
-        window._workshop.pages.setCurrentIndex(1)
+        window.desks.workshop.pages.setCurrentIndex(1)
         desk.table.setFocus()
         qtbot.waitUntil(desk.table.hasFocus, timeout=2000)
 

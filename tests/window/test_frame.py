@@ -1,8 +1,10 @@
+import gc
 import re
+import threading
 
 import pytest
 from kit.shown import sample_shown
-from PySide6.QtCore import QMimeData, QPointF, Qt, QUrl
+from PySide6.QtCore import QCoreApplication, QEvent, QMimeData, QPointF, Qt, QUrl
 from PySide6.QtGui import QAccessible, QAction, QDropEvent, QShortcut
 from PySide6.QtWidgets import QApplication, QLabel, QPushButton, QTabWidget, QWidget
 
@@ -11,6 +13,7 @@ from cutblock.window.frame import MainWindow
 from cutblock.window.runner import Runner
 from cutblock.window.settings import WindowSettings
 from cutblock.worker.events import Cancelled, Failure, Progress, Result
+from cutblock.worker.process import Worker
 from cutblock.worker.requests import OpenRequest, PlanRequest, SaveRequest, TagsRequest
 
 
@@ -18,6 +21,7 @@ def finish(qtbot, window, worker, value):
     """Let the worker give its result and wait until the window has taken it."""
     worker.events.append(Result(ticket=1, value=value))
     qtbot.waitUntil(lambda: not worker.is_busy and not worker.events, timeout=2000)
+    window.desks.finish()
 
 
 def plan_job(qtbot, window, worker, path="/jobs/wall/job.toml", shown=None):
@@ -41,6 +45,26 @@ def test_opening_a_job_plans_it_and_shows_all_three_desks(qtbot, window, worker)
     assert [window.desks.tabText(i) for i in range(3)] == ["Detailing", "Workshop", "Estimating"]
     assert "Sample wall" in window.windowTitle()
     assert window.menus.save.isEnabled()
+
+
+def test_the_desk_in_front_is_filled_first_and_the_others_right_after(qtbot, window):
+    window.desks.prepare()
+    qtbot.waitUntil(lambda: window.desks.count() == 3, timeout=2000)
+    window.desks.setCurrentIndex(2)
+    window.show_plan(sample_shown())
+    assert window.desks.estimating.blocks.rowCount() == 1
+    assert window.desks.detailing.rows.rowCount() == 0
+
+    qtbot.waitUntil(lambda: window.desks.detailing.rows.rowCount() == 3, timeout=2000)
+    qtbot.waitUntil(lambda: window.desks.workshop.tags.rows.rowCount() == 4, timeout=2000)
+
+
+def test_a_desk_turned_to_before_its_turn_is_filled_at_once(window):
+    window.show_plan(sample_shown())
+
+    window.desks.setCurrentIndex(1)
+
+    assert window.desks.workshop.tags.rows.rowCount() == 4
 
 
 def test_while_a_job_is_planned_progress_shows_and_nothing_else_can_begin(qtbot, window, worker):
@@ -166,7 +190,7 @@ def test_backing_out_of_a_dialog_does_nothing(qtbot, window, worker, monkeypatch
 def test_tags_are_exported_on_the_sheet_and_from_the_label_chosen(qtbot, window, worker, monkeypatch):
     plan_job(qtbot, window, worker)
     monkeypatch.setattr(dialogs, "ask_pdf", lambda parent, path: "/out/tags.pdf")
-    tags = window._workshop.tags
+    tags = window.desks.workshop.tags
     tags.sheet.setCurrentIndex(1)
     tags.start.setValue(5)
 
@@ -240,19 +264,19 @@ def test_the_theme_changes_at_once_and_is_remembered(window, settings_path):
 def test_text_grows_shrinks_and_returns_to_its_size(qtbot, window, worker):
     plan_job(qtbot, window, worker)
     size = window.font().pointSizeF()
-    height = window._detailing.table.verticalHeader().defaultSectionSize()
-    width = window._detailing.table.columnWidth(3)
+    height = window.desks.detailing.table.verticalHeader().defaultSectionSize()
+    width = window.desks.detailing.table.columnWidth(3)
 
     for _ in range(2):
         window.menus.larger.trigger()
     assert window.font().pointSizeF() > 1.2 * size
-    assert window._detailing.table.verticalHeader().defaultSectionSize() > height
+    assert window.desks.detailing.table.verticalHeader().defaultSectionSize() > height
     for _ in range(8):
         window.menus.smaller.trigger()
     assert window.font().pointSizeF() < size
     window.menus.usual.trigger()
     assert window.font().pointSizeF() == size
-    qtbot.waitUntil(lambda: window._detailing.table.columnWidth(3) == width, timeout=2000)
+    qtbot.waitUntil(lambda: window.desks.detailing.table.columnWidth(3) == width, timeout=2000)
 
 
 def test_a_window_opened_with_larger_text_has_it_everywhere(qtbot, worker, settings_path, theme):
@@ -290,7 +314,7 @@ def test_no_two_actions_share_a_shortcut(qtbot, window, worker):
 def test_no_access_key_of_a_desk_hides_a_menu(qtbot, window, worker):
     plan_job(qtbot, window, worker)
     menus = [re.search("&(.)", action.text())[1].lower() for action in window.menuBar().actions()]
-    for desk in (window._detailing, window._workshop, window._estimating):
+    for desk in (window.desks.detailing, window.desks.workshop, window.desks.estimating):
         texts = [found.text() for found in desk.findChildren(QLabel) if found.buddy() is not None]
         texts += [found.text() for found in desk.findChildren(QPushButton)]
         texts += [tabs.tabText(i) for tabs in desk.findChildren(QTabWidget) for i in range(tabs.count())]
@@ -341,3 +365,22 @@ def test_help_shows_the_cautions_and_what_the_program_is(qtbot, window):
         assert words in box.text()
         assert box.textFormat() == Qt.TextFormat.PlainText
     assert "Local rules" in dialogs.cautions_box(window).informativeText()
+
+
+def test_windows_opened_and_closed_leave_nothing_behind(qtbot, settings_path, theme, qapp):
+    def n_alive():
+        QCoreApplication.sendPostedEvents(None, QEvent.Type.DeferredDelete)
+        gc.collect()
+        return len(qapp.allWidgets())
+
+    before, threads = n_alive(), set(threading.enumerate())
+    for _ in range(8):
+        made = MainWindow(Runner(Worker(warm_up=())), WindowSettings(settings_path), theme)
+        made.show_plan(sample_shown())
+        made.show()
+        made.close()
+        made.deleteLater()
+        del made
+
+    assert n_alive() <= before
+    assert set(threading.enumerate()) <= threads
