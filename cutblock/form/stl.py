@@ -26,7 +26,9 @@ def read_stl(raw: bytes, name: str) -> Soup:
         if len(raw) == _HEADER_BYTES + _TRIANGLE_BYTES * n:
             check_count(n, name)
             records = np.frombuffer(raw, dtype=_TRIANGLE, count=n, offset=_HEADER_BYTES)
-            return _soup(records["vertices"].astype(np.float64).reshape(-1, 3), is_single=True)
+            with np.errstate(invalid="ignore"):  # a signalling NaN; refused with the other NaNs later
+                vertices = records["vertices"].astype(np.float64).reshape(-1, 3)
+            return _soup(vertices, is_single=True)
     text = _decoded(raw)
     if text is not None:
         return _read_text(text, name)

@@ -30,11 +30,12 @@ from cutblock.records.panel import Panel
 from cutblock.records.words import Layup
 
 STEEPEST_RAD = math.radians(75.0)
-_LARGEST_EXTENSION_RAD = math.radians(80.0)
+_EXTRA_SLOPE_RAD = math.radians(5.0)  # by which a continuation may be steeper than the panel
 _NODE_SPACING_MM = 30.0
 _FEWEST_NODES, _MOST_NODES = 17, 81
 _N_SAMPLES_U, _N_SAMPLES_V = 24, 20
 _N_EDGE_STEPS = 64
+_STRAIGHT_REACH = 0.25
 _CLEARLY_SMALLER = 0.98  # area of the turned rectangle against that of the one along the cell's edges
 
 
@@ -250,7 +251,8 @@ def _heights(
     if len(beyond):
         _, along_u, along_v = surface_tangents(face.patch, found.u[beyond], found.v[beyond])
         upwards = unit_normals(along_u, along_v)[0] @ axes[2] * side
-        is_known[beyond[upwards < math.cos(_LARGEST_EXTENSION_RAD)]] = False
+        steepest = math.acos(min(1.0, float((samples.normals @ axes[2] * side).min())))
+        is_known[beyond[upwards < math.cos(steepest + _EXTRA_SLOPE_RAD)]] = False
     lost = np.flatnonzero(inside & ~is_known)
     if len(lost):
         x, y = targets[lost[0]]
@@ -271,16 +273,19 @@ def _affine_guess(samples: _Samples, origin: Floats, axes: Floats, targets: Floa
 
 
 def _is_near_domain(face: Face, u: Floats, v: Floats) -> Bools:
-    """Tell which parameters lie within one knot span of the patch; the end polynomials are not trusted farther out.
+    """Tell which parameters lie near enough to the patch for its end polynomials to be trusted.
 
-    A straight line may be continued as far as one likes.
+    That is one knot span, and a quarter of the face where it is straight along that parameter.
     """
     near = np.ones(len(u), dtype=np.bool_)
     for t, knots, degree in (
         (u, face.patch.knots_u, face.patch.degree_u),
         (v, face.patch.knots_v, face.patch.degree_v),
     ):
+        low, high = knots[degree], knots[-degree - 1]
         if degree > 1:
-            low, high = knots[degree], knots[-degree - 1]
-            near &= (t >= low - (knots[degree + 1] - low)) & (t <= high + (high - knots[-degree - 2]))
+            before, behind = knots[degree + 1] - low, high - knots[-degree - 2]
+        else:
+            before = behind = _STRAIGHT_REACH * (high - low)
+        near &= (t >= low - before) & (t <= high + behind)
     return near

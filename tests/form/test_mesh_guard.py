@@ -6,9 +6,10 @@ import zipfile
 
 import numpy as np
 import pytest
+import trimesh
 from kit.surfaces import grid_mesh, joined, mesh_job, write_obj, write_stl
 
-from cutblock.base.errors import InputError
+from cutblock.base.errors import CutblockError, InputError
 from cutblock.form.read import read_faces
 
 
@@ -347,6 +348,34 @@ def test_an_encrypted_part_is_refused(tmp_path):
     central = content.rindex(b"PK\1\2")
     content[central + 8] |= 1
     refused(put(tmp_path, bytes(content)), "is encrypted")
+
+
+@pytest.mark.parametrize("kind", ["stl", "stl_ascii", "obj", "ply", "3mf"])
+def test_whatever_is_done_to_a_file_it_is_read_or_refused_with_a_reason(tmp_path, kind):
+    mesh = trimesh.Trimesh(*grid_mesh(wavy, np.linspace(0, 1200, 7), np.linspace(0, 1000, 5)), process=False)
+    content = mesh.export(file_type=kind)
+    sound = content.encode() if isinstance(content, str) else content
+    path = tmp_path / ("a." + kind.removesuffix("_ascii"))
+    rng = np.random.default_rng(20)
+    n_refused = 0
+    for number in range(120):
+        raw = bytearray(sound)
+        at, other = rng.integers(len(raw), size=2).tolist()
+        if number % 4 == 0:
+            raw = raw[:at]
+        elif number % 4 == 1:
+            raw[at] ^= 1 << int(rng.integers(8))
+        elif number % 4 == 2:
+            raw[at : at + 30] = rng.bytes(int(rng.integers(40)))
+        else:
+            raw[at : at + 20] = raw[other : other + 20]
+        path.write_bytes(bytes(raw))
+        try:
+            read_faces(mesh_job(path))
+        except CutblockError as error:
+            assert error.message  # noqa: PT017 - either outcome is right, but a refusal must have its reason
+            n_refused += 1
+    assert n_refused >= 30  # of 30 files cut short at the least
 
 
 def test_too_many_triangles_are_refused_before_any_work(tmp_path, monkeypatch):
