@@ -8,7 +8,7 @@ import numpy as np
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.base.errors import GeometryError
 from cutblock.geometry.deviation import deviation_measures, face_deviation
-from cutblock.geometry.fit_refine import N_CONTROLS, N_ROUNDS, Fits, improve, polish, recentre, refine
+from cutblock.geometry.fit_refine import N_CONTROLS, N_ROUNDS, Fits, improve, knots_of, polish, recentre, refine
 from cutblock.geometry.fit_start import Paths, best_paths
 from cutblock.geometry.fit_target import Patch, Target, make_target
 from cutblock.geometry.heights import HeightField, height_field
@@ -82,11 +82,22 @@ def fit_ruled(
         strip_low_y_mm=0.0,
         strip_high_y_mm=width_mm,
     )
-    curves = fit_patches([patch], tolerance_mm, n_controls=FINE_CONTROLS)[0]
-    near, far = polyline_rails(curves, 0.0, length_mm, FINE_SAG_MM, most_rulings=2001)
     x, y = np.meshgrid(np.linspace(0.0, length_mm, 97), np.linspace(0.0, width_mm, 81), indexing="ij")
-    normals = field.normals(x.ravel(), y.ravel())[1]
     samples = np.stack([x.ravel(), y.ravel(), _called(height, x, y).ravel()], axis=1)
+    normals = field.normals(samples[:, 0], samples[:, 1])[1]
+    curves = fit_patches([patch], tolerance_mm, is_polished=False, n_controls=FINE_CONTROLS)[0]
+    fit = _measured(curves, length_mm, width_mm, samples, normals)
+    if NEARLY * tolerance_mm < fit.max_mm < POLISH_REACH * tolerance_mm:
+        # Few control values: many would chase the nodes and stray between them.
+        curves = fit_patches([patch], tolerance_mm, polish_until=0.0)[0]
+        polished = _measured(curves, length_mm, width_mm, samples, normals)
+        fit = polished if polished.max_mm < fit.max_mm else fit
+    return fit
+
+
+def _measured(curves: SheetFit, length_mm: float, width_mm: float, samples: Floats, normals: Floats) -> RuledFit:
+    """Return curves with their polyline rails and the deviations of the sheet between those."""
+    near, far = polyline_rails(curves, 0.0, length_mm, FINE_SAG_MM, most_rulings=2001, decimals=None)
     deviations = face_deviation(near, far, width_mm, samples, normals)
     largest, rms, p95 = deviation_measures(deviations, np.ones(len(samples)))
     skew = float(np.abs(far[:, 0] - near[:, 0]).max())
@@ -137,7 +148,12 @@ def _grid(
 
 
 def fit_patches(
-    patches: Sequence[Patch], tolerance_mm: float, *, is_polished: bool = True, n_controls: int = N_CONTROLS
+    patches: Sequence[Patch],
+    tolerance_mm: float,
+    *,
+    is_polished: bool = True,
+    polish_until: float = ENOUGH,
+    n_controls: int = N_CONTROLS,
 ) -> tuple[SheetFit, ...]:
     """Return for each patch the ruled sheet closest to it.
 
@@ -148,6 +164,7 @@ def fit_patches(
         patches: Any number, of any sizes; those with equally many grid values are fitted together.
         tolerance_mm: Wanted largest normal deviation.
         is_polished: Whether sheets that just miss the tolerance are brought closer to the least largest deviation.
+        polish_until: Share of the tolerance at which a sheet is close enough.
         n_controls: Control values of each rail.
     """
     results: list[SheetFit | None] = [None] * len(patches)
@@ -160,7 +177,7 @@ def fit_patches(
             batch = numbers[first : first + BATCH]
             target = make_target([patches[number] for number in batch])
             fits = _fit_batch(target, tolerance_mm, n_controls)
-            fits = _polished(target, fits, tolerance_mm) if is_polished else fits
+            fits = _polished(target, fits, tolerance_mm, polish_until) if is_polished else fits
             for place, number in enumerate(batch):
                 results[number] = _with_plane(target, fits, place)
     return tuple(fit for fit in results if fit is not None)
@@ -190,12 +207,20 @@ def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
     return best
 
 
-def _polished(target: Target, fits: Fits, tolerance_mm: float) -> Fits:
+def _polished(target: Target, fits: Fits, tolerance_mm: float, until: float) -> Fits:
     """Return the fits with those that miss the tolerance by little brought closer to the least largest deviation."""
     index = np.flatnonzero((fits.max_mm > NEARLY * tolerance_mm) & (fits.max_mm < POLISH_REACH * tolerance_mm))
     if not len(index):
         return fits
-    return fits.put(index, polish(target.take(index), fits.take(index), ENOUGH * tolerance_mm))
+    rough, part = fits.take(index), target.take(index)
+    polished = polish(part, rough, until * tolerance_mm)
+    # With the skews held the problem is linear and Lawson's weights must converge, where free skews may get stuck.
+    left = np.flatnonzero(polished.max_mm > until * tolerance_mm)
+    if len(left):
+        held = polish(part.take(left), rough.take(left), until * tolerance_mm, is_held=True)
+        better = np.flatnonzero(held.max_mm < polished.max_mm[left])
+        polished = polished.put(left[better], held.take(better))
+    return fits.put(index, polished)
 
 
 def _is_worth(first: Paths, second: Paths, tolerance_mm: float) -> Bools:
@@ -230,7 +255,7 @@ def _with_plane(target: Target, fits: Fits, place: int) -> SheetFit:
     start, end = float(fits.start[place]), float(fits.end[place])
     n_controls = controls.shape[1]
     # A B-spline with the Greville abscissae as control values is the station itself.
-    knots = np.concatenate([np.zeros(3), np.linspace(0.0, 1.0, n_controls - 2), np.ones(3)])
+    knots = knots_of(n_controls)
     greville = (knots[1:-3] + knots[2:-2] + knots[3:-1]) / 3.0
     stations = start + (end - start) * greville
     controls[1] += level + slope_x * (stations - controls[0] / 2.0)

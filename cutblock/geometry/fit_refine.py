@@ -39,6 +39,7 @@ class Basis:
 
     values: Floats  # (s, c)
     rates: Floats  # (s, c) first derivatives by u
+    hull: Floats  # (c - 1, c) control values of the first derivative: no rate is larger than the largest of them
     products: Floats  # (s, c * c)
     inverse: Floats  # (c, s) least squares
     smooth_inverse: Floats  # (c, s) least squares with a penalty on third differences (Eilers and Marx 1996)
@@ -53,24 +54,29 @@ class Basis:
 def spline_stations(n_controls: int) -> Basis:
     """Return the basis of n control values at the stations every fit uses."""
     values = basis_at(STATIONS, n_controls)
+    knots = knots_of(n_controls)
     differences = np.diff(np.eye(n_controls), n=3, axis=0)
     normal = values.T @ values
     return Basis(
         values=values,
         rates=basis_at(STATIONS, n_controls, 1),
+        hull=np.diff(np.eye(n_controls), axis=0) * (3.0 / (knots[4:-1] - knots[1:-4]))[:, None],
         products=(values[:, :, None] * values[:, None, :]).reshape(N_STATIONS, -1),
         inverse=np.linalg.pinv(values),
         smooth_inverse=np.linalg.solve(normal + 3.0 * differences.T @ differences, values.T),
     )
 
 
+def knots_of(n_controls: int) -> Floats:
+    """Return the knots of cubic B-splines on equal spans over [0, 1]."""
+    return np.concatenate([np.zeros(3), np.linspace(0.0, 1.0, n_controls - 2), np.ones(3)])
+
+
 def basis_at(places: Floats, n_controls: int, derivative: int = 0) -> Floats:
     """Return the B-splines, or their derivatives by u, at places of [0, 1]; (m, n_controls)."""
     from scipy.interpolate import BSpline
 
-    inner = np.linspace(0.0, 1.0, n_controls - 2)
-    knots = np.concatenate([np.zeros(3), inner, np.ones(3)])
-    splines = BSpline(knots, np.eye(n_controls), 3)
+    splines = BSpline(knots_of(n_controls), np.eye(n_controls), 3)
     result: Floats = splines(places, nu=derivative)
     return result
 
@@ -169,7 +175,7 @@ def sheet_at(fits: Fits, stations: Floats) -> tuple[Floats, Floats]:
 
 def _room(skew_controls: Floats, length: Floats, basis: Basis) -> Floats:
     """Return the factor up to 1 by which skews must shrink so that neither rail turns back."""
-    steepest = np.abs(skew_controls @ basis.rates.T).max(axis=1) / length
+    steepest = np.abs(skew_controls @ basis.hull.T).max(axis=1) / length
     return np.minimum(1.0, 2.0 * (1.0 - LEAST_ADVANCE) / np.maximum(steepest, 1e-30))
 
 
@@ -288,10 +294,10 @@ def _step(target: Target, state: _State, basis: Basis, damping: Floats) -> tuple
     return change.reshape(len(change), 3, -1), promise
 
 
-def _raised(target: Target, fits: Fits) -> Fits:
+def _raised(target: Target, fits: Fits, emphasis: Floats | None = None) -> Fits:
     """Return the fits with the elevations that are best for their skews, a linear problem."""
     basis = spline_stations(fits.controls.shape[2])
-    matrix, gradient = _normal_equations(target, _evaluate(target, fits, basis, None), basis)
+    matrix, gradient = _normal_equations(target, _evaluate(target, fits, basis, emphasis), basis)
     n_c = basis.n_controls
     matrix, gradient = matrix[:, n_c:, n_c:], gradient[:, n_c:]
     diagonal = np.einsum("pii->pi", matrix).copy()
@@ -299,10 +305,11 @@ def _raised(target: Target, fits: Fits) -> Fits:
     change = np.linalg.solve(matrix, -gradient[:, :, None])[:, :, 0].reshape(-1, 2, n_c)
     controls = fits.controls.copy()
     controls[:, 1:] += change
-    return replace(fits, controls=controls)
+    raised = replace(fits, controls=controls)
+    return _measured(raised, _evaluate(target, raised, basis, emphasis))
 
 
-def polish(target: Target, fits: Fits, enough_mm: float, n_turns: int = 16) -> Fits:
+def polish(target: Target, fits: Fits, enough_mm: float, n_turns: int = 16, *, is_held: bool = False) -> Fits:
     """Return the fits brought closer to the least largest deviation, each the best met on the way.
 
     Lawson's weights: points far off count for more from turn to turn, in proportion to how far off they are (Lawson
@@ -314,19 +321,24 @@ def polish(target: Target, fits: Fits, enough_mm: float, n_turns: int = 16) -> F
         fits: Where to start.
         enough_mm: A patch is left alone once its largest deviation is below this.
         n_turns: Most changes of the weights.
+        is_held: Keep the skews as they are.
     """
     basis = spline_stations(fits.controls.shape[2])
     best = current = fits
     index: Ints = np.arange(len(fits.start))
     emphasis = np.ones((len(index), N_STATIONS, target.places.shape[2]))
-    for _ in range(n_turns):
+    for turn in range(n_turns):
         left = np.flatnonzero(best.max_mm[index] > enough_mm)
         if not len(left):
             break
         index, emphasis, current = index[left], emphasis[left], current.take(left)
         part = target.take(index)
         emphasis = _shifted(emphasis, _evaluate(part, current, basis, None))
-        current = improve(part, current, n_steps=3, emphasis=emphasis, start_damping=1e-2)
+        if is_held:
+            current = _raised(part, current, emphasis)
+        else:
+            current = recentre(part, current, basis.n_controls) if turn % 4 == 3 else current
+            current = improve(part, current, n_steps=3, precision=1e-6, emphasis=emphasis, start_damping=1e-2)
         better = np.flatnonzero(current.max_mm < best.max_mm[index])
         best = best.put(index[better], current.take(better))
     return best

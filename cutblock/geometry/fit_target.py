@@ -16,6 +16,7 @@ N_NODES = 9
 OVERRUN_WEIGHT = 0.001
 OVERRUN_REACH = 0.03  # of the width
 BEYOND_WEIGHT = 1e-7
+MASKED_WEIGHT = 1e-6  # of points inside the rectangle that were masked out
 
 
 def _lobatto(n: int) -> tuple[Floats, Floats]:
@@ -108,6 +109,7 @@ class Target:
             before = flat[base]
             inside = inside * (before + (along - cells) * (flat[base + 1] - before))
         fading = OVERRUN_WEIGHT * np.exp(-beyond / (OVERRUN_REACH * self.width))
+        fading = np.where(beyond > 0.0, fading, MASKED_WEIGHT)
         weight: Floats = np.maximum(inside, np.maximum(fading, BEYOND_WEIGHT)) * NODE_WEIGHTS
         return weight
 

@@ -10,6 +10,7 @@ from cutblock.geometry.sheet import sheet_heights
 
 FEWEST_RULINGS = 33
 MOST_RULINGS = 1001
+LEAST_STEP_MM = 0.01
 TANGENT_SHARE = 0.3  # how much of a stray along a rail shows across it, at slopes of the trade
 
 
@@ -18,7 +19,7 @@ class SheetFit:
     """A ruled sheet in the frame of its billet: cubic B-splines on equal knots over stations from start to end.
 
     Row 0 of `controls` is the skew x far - x near, rows 1 and 2 the elevations of the near and the far rail; station s
-    is the x at mid-wire. Beyond the ends the skew stays and the elevations go on with constant slope.
+    is the x at mid-wire. Beyond the ends the skew stays and both rails go on straight.
     """
 
     controls: Floats  # (3, c)
@@ -39,19 +40,28 @@ class SheetFit:
         inside = np.clip(u, 0.0, 1.0)
         n_controls = self.controls.shape[1]
         skew, near_z, far_z = self.controls @ basis_at(inside, n_controls).T
-        _, near_slope, far_slope = self.controls @ basis_at(inside, n_controls, 1).T
-        beyond = u - inside
-        near = np.stack([stations - skew / 2.0, near_z + near_slope * beyond], axis=1)
-        far = np.stack([stations + skew / 2.0, far_z + far_slope * beyond], axis=1)
+        turn, near_rate, far_rate = self.controls @ basis_at(inside, n_controls, 1).T
+        # Rates are by u; a rail's own slope dz/dx takes in how fast its end advances.
+        beyond = stations - self.start_mm - length * inside
+        near_z = near_z + beyond * near_rate / (length - turn / 2.0)
+        far_z = far_z + beyond * far_rate / (length + turn / 2.0)
+        near = np.stack([stations - skew / 2.0, near_z], axis=1)
+        far = np.stack([stations + skew / 2.0, far_z], axis=1)
         return near, far
 
 
 def polyline_rails(
-    fit: SheetFit, low_x_mm: float, high_x_mm: float, sag_mm: float, most_rulings: int = MOST_RULINGS
+    fit: SheetFit,
+    low_x_mm: float,
+    high_x_mm: float,
+    sag_mm: float,
+    *,
+    most_rulings: int = MOST_RULINGS,
+    decimals: int | None = 6,
 ) -> tuple[Floats, Floats]:
     """Return rails (n, 2) whose chords stay within `sag_mm` of the curves.
 
-    Both rails start at or before `low_x_mm` and end at or behind `high_x_mm`; coordinates are rounded to 1e-6 mm.
+    Both rails start at or before `low_x_mm` and end at or behind `high_x_mm`.
 
     Args:
         fit: The curves.
@@ -59,15 +69,24 @@ def polyline_rails(
         high_x_mm: No wire end ends before this.
         sag_mm: Largest distance of a chord from its curve.
         most_rulings: Between the fit's ends, whatever the sag.
+        decimals: What coordinates are rounded to, so that the last bits of a computation do not show; None: not at all.
     """
     stations = fit.start_mm + (fit.end_mm - fit.start_mm) * _places(fit, sag_mm, most_rulings)
-    first = low_x_mm - abs(float(fit.controls[0, 0])) / 2.0
-    last = high_x_mm + abs(float(fit.controls[0, -1])) / 2.0
-    before = [first] if first < fit.start_mm - 1e-3 else []
-    behind = [last] if last > fit.end_mm + 1e-3 else []
+    spare = 0.0 if decimals is None else 10.0**-decimals
+    first = low_x_mm - abs(float(fit.controls[0, 0])) / 2.0 - spare
+    last = high_x_mm + abs(float(fit.controls[0, -1])) / 2.0 + spare
+    # An end so close to a station that no ruling fits between takes its place.
+    if abs(first - stations[0]) < LEAST_STEP_MM:
+        stations[0] = min(first, stations[0])
+    if abs(last - stations[-1]) < LEAST_STEP_MM:
+        stations[-1] = max(last, stations[-1])
+    before = [first] if first < stations[0] else []
+    behind = [last] if last > stations[-1] else []
     near, far = fit.rails_at(np.concatenate([before, stations, behind]))
+    if decimals is None:
+        return near, far
     # Adding zero turns minus zero into zero, so that equal rails print alike.
-    return np.round(near, 6) + 0.0, np.round(far, 6) + 0.0
+    return np.round(near, decimals) + 0.0, np.round(far, decimals) + 0.0
 
 
 def _places(fit: SheetFit, sag_mm: float, most_rulings: int) -> Floats:
