@@ -15,7 +15,8 @@ from cutblock.packing.lattice import Task
 
 _ROUNDING = 1e-7  # of a block: sums of floats this little above a whole number count as it
 _NUMBERS_AT_ONCE = 2_000_000
-_MOST_THRESHOLDS = 40
+_MOST_THRESHOLDS, _LEAST_THRESHOLDS = 80, 16
+_THRESHOLD_WORK = 12_000  # thresholds of an axis x distinct billets; keeps 1,000 distinct billets under half a second
 
 
 @dataclass(frozen=True, slots=True)
@@ -117,6 +118,7 @@ def fitting(cells: Ints, kind: Ints) -> tuple[Bools, Bools]:
 def axis_functions(cells: Ints, kind: Ints) -> tuple[AxisFunctions, AxisFunctions, AxisFunctions]:
     """Return the functions of the three axes for a kind of block."""
     turns = cells[:, 3] > 0
+    most = min(_MOST_THRESHOLDS, max(_LEAST_THRESHOLDS, _THRESHOLD_WORK // len(cells)))
     found = []
     for axis in range(3):
         other = (1, 0, 2)[axis]
@@ -125,17 +127,17 @@ def axis_functions(cells: Ints, kind: Ints) -> tuple[AxisFunctions, AxisFunction
         levels, place = np.unique(
             np.minimum(np.concatenate([cells[:, axis], cells[:, other]]), room), return_inverse=True
         )
-        table = _functions(levels, room, _thresholds(sizes[sizes <= room], room))
+        table = _functions(levels, room, _thresholds(sizes[sizes <= room], room, most))
         found.append(AxisFunctions(table[:, place[: len(cells)]], table[:, place[len(cells) :]]))
     return found[0], found[1], found[2]
 
 
-def _thresholds(sizes: Ints, room: int) -> Ints:
+def _thresholds(sizes: Ints, room: int, most: int) -> Ints:
     """Return the sizes at which the functions may jump: those of the billets and of the gaps beside them, thinned."""
     both = np.unique(np.concatenate([sizes, room - sizes, sizes + 1]))
     both = both[(both > 0) & (2 * both <= room)]
-    if len(both) > _MOST_THRESHOLDS:
-        both = both[np.unique(np.linspace(0, len(both) - 1, _MOST_THRESHOLDS).astype(np.int64))]
+    if len(both) > most:
+        both = both[np.unique(np.linspace(0, len(both) - 1, most).astype(np.int64))]
     return both
 
 
@@ -143,8 +145,8 @@ def _functions(sizes: Ints, room: int, thresholds: Ints) -> Floats:
     """Return distinct dual feasible functions at sizes 1 to `room` (as 0 to 1), (f, number of sizes)."""
     share = sizes / room
     is_big = 2 * sizes > room
-    rows = [share, is_big.astype(np.float64)]
-    for parts in range(2, 11):
+    rows = [share]
+    for parts in range(1, 21):
         # u^(k) of Fekete and Schepers: sizes that are k-ths of k + 1 parts stay, others are rounded down to k-ths.
         is_exact = sizes * (parts + 1) % room == 0
         rows.append(np.where(is_exact, share, sizes * (parts + 1) // room / parts))
