@@ -17,6 +17,11 @@ def pytest_collection_modifyitems(items):
             item.add_marker(pytest.mark.qt_log_ignore("does not support propagateSizeHints"))
 
 
+@pytest.fixture(autouse=True)
+def _application(qapp):
+    """Fonts and pixmaps need the application, whichever test runs first."""
+
+
 class ToldWorker:
     """Takes requests, gives the events put into `events`."""
 

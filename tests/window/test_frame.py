@@ -271,7 +271,7 @@ def test_text_grows_shrinks_and_returns_to_its_size(qtbot, window, worker):
         window.menus.larger.trigger()
     assert window.font().pointSizeF() > 1.2 * size
     assert window.desks.detailing.table.verticalHeader().defaultSectionSize() > height
-    for _ in range(8):
+    for _ in range(5):
         window.menus.smaller.trigger()
     assert window.font().pointSizeF() < size
     window.menus.usual.trigger()
@@ -374,7 +374,7 @@ def test_windows_opened_and_closed_leave_nothing_behind(qtbot, settings_path, th
         return len(qapp.allWidgets())
 
     before, threads = n_alive(), set(threading.enumerate())
-    for _ in range(8):
+    for _ in range(5):
         made = MainWindow(Runner(Worker(warm_up=())), WindowSettings(settings_path), theme)
         made.show_plan(sample_shown())
         made.show()

@@ -1,7 +1,7 @@
 from dataclasses import replace
 
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 from kit.sample import sample_panel, sample_plan, sample_sweep
 from kit.shown import grid_plan
@@ -106,6 +106,7 @@ def test_findings_come_gravest_first_and_keep_their_number():
     assert [row.key for row in found] == ["1", "2", "0"]
 
 
+@example(tolerance=2.0, share=1.0)
 @given(tolerance=st.floats(0.05, 20.0), share=st.floats(0.0, 3.0))
 def test_a_deviation_is_called_within_exactly_when_it_is_not_over_the_tolerance(tolerance, share):
     deviation = share * tolerance
