@@ -64,7 +64,8 @@ def _triangles(lines: list[Line], n_before: Ints, n_vertices: int, name: str) ->
     parts, orders = [], []
     for count, (rows, indices) in groups.items():
         absolute = np.where(indices < 0, indices + n_before[rows, None], indices - 1)
-        wrong = ((indices == 0) | (absolute < 0) | (absolute >= n_vertices)).any(axis=1)
+        # An index of 0 has become -1 here.
+        wrong = ((absolute < 0) | (absolute >= n_vertices)).any(axis=1)
         if wrong.any():
             number, text = lines[int(rows[int(np.argmax(wrong))])]
             raise InputError(

@@ -48,13 +48,11 @@ def read_threemf(raw: bytes, name: str) -> Soup:
     parts_t: list[Ints] = []
     n_instances = n_vertices = n_triangles = 0
     # Walk the components with a stack, so that neither a cycle nor a deep tree can hurt.
-    stack: list[tuple[str, Transform, tuple[str, ...]]] = [
-        (key, transform, (key,)) for key, transform in reversed(reading.items)
-    ]
+    stack: list[tuple[str, Transform, int]] = [(key, transform, 1) for key, transform in reversed(reading.items)]
     while stack:
-        key, (matrix, shift), path = stack.pop()
+        key, (matrix, shift), depth = stack.pop()
         n_instances += 1
-        if n_instances > _MOST_INSTANCES or len(path) > _DEEPEST or path.count(key) > 1:
+        if n_instances > _MOST_INSTANCES or depth > _DEEPEST:  # a circle is endlessly deep
             raise InputError(
                 "places parts inside one another in a circle, too deep, or too many times", name, _EXPORT_AGAIN
             )
@@ -70,7 +68,7 @@ def read_threemf(raw: bytes, name: str) -> Soup:
             parts_t.append(item.triangles + n_vertices)
             n_vertices += len(item.vertices)
         for child, (inner, offset) in reversed(item.components):
-            stack.append((child, (inner @ matrix, offset @ matrix + shift), (*path, child)))
+            stack.append((child, (inner @ matrix, offset @ matrix + shift), depth + 1))
     check_count(n_triangles, name)
     return Soup(np.concatenate(parts_v), np.concatenate(parts_t), _UNITS_MM[unit])
 

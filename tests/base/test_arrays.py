@@ -31,3 +31,21 @@ def test_another_shape_is_refused_with_what_was_wanted(shape):
         floats(np.zeros(shape), (None, 3), "points")
     with pytest.raises(GeometryError, match="n x 3"):
         frozen_integers(np.zeros(shape, dtype=int), (None, 3), "triangles")
+
+
+def test_a_frozen_array_is_shared_and_not_copied_again():
+    frozen = frozen_floats(np.zeros((2, 3)), (None, 3), "points")
+
+    assert frozen_floats(frozen, (None, 3), "points") is frozen
+    assert frozen_floats(frozen[:1], (None, 3), "points") is not frozen[:1]
+
+
+def test_a_read_only_view_of_a_writable_array_is_copied():
+    given = np.zeros(3)
+    view = given[:]
+    view.flags.writeable = False
+
+    frozen = frozen_floats(view, (None,), "points")
+    given[0] = 5.0
+
+    assert frozen[0] == 0.0

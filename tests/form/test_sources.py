@@ -48,6 +48,7 @@ def test_corners_on_the_bench_give_u_and_v_along_the_mean_edges():
     [
         ([[0, 0, 0], [0, 0, 0], [1000, 1000, 0], [0, 1000, 0]], "corners 1 and 2 are the same"),
         ([[0, 0, 0], [1000, 0, 0], [0, 0, 0], [0, 1000, 0]], "corners 1 and 3 are the same"),
+        ([[0, 0, 0], [1000, 0, 0], [1000, 1000, 0], [1000, 0, 0]], "corners 2 and 4 are the same"),
         ([[0, 0, 0], [500, 0, 0], [1000, 0, 0], [0, 1000, 0]], "corner 2 .* in line"),
         ([[0, 0, 0], [1000, 1000, 0], [1000, 0, 0], [0, 1000, 0]], "do not go round"),
         ([[0, 0, 0], [1000, 0, 0], [200, 200, 0], [0, 1000, 0]], "do not go round"),

@@ -1,7 +1,7 @@
 import numpy as np
 import pytest
 
-from cutblock.panels.continuation import continued_heights
+from cutblock.panels.continuation import _plane, continued_heights
 
 X, Y = np.meshgrid(np.linspace(0, 1200, 41), np.linspace(0, 1000, 35), indexing="ij")
 
@@ -24,6 +24,12 @@ def test_a_curved_sheet_goes_on_curved():
     is_known = X + Y < 1900.0
     error = np.abs(continued_heights(np.where(is_known, heights, 0.0), is_known) - heights)
     assert error[X + Y < 2000.0].max() < 1.0
+
+
+def test_a_continuation_never_runs_away():
+    heights = (X - 300.0) ** 2 / 1000.0
+    filled = continued_heights(np.where(X <= 300.0, heights, 0.0), X <= 300.0)
+    assert np.ptp(filled - _plane(heights, X <= 300.0)) < 200.0
 
 
 def test_nothing_unknown_changes_nothing():
