@@ -47,7 +47,7 @@ def account_block(block: Block, volumes: Iterable[SweepVolumes], pieces: Iterabl
     _check_complete(block, melted, halves)
     bought = block.volume_mm3
     usable = math.prod(side - 2.0 * block.skin_mm for side in (block.length_mm, block.width_mm, block.height_mm))
-    through = [slab_mm3(cut, block.kerf_mm) for cut in block.cuts if cut.kind is CutKind.THROUGH]
+    through = [slab_mm3(cut, block) for cut in block.cuts if cut.kind is CutKind.THROUGH]
     by_duty = {duty: math.fsum(piece.volume_mm3 for piece in halves if piece.duty is duty) for duty in Duty}
     parts = {
         "trim_mm3": bought - usable,
@@ -73,13 +73,19 @@ def account_block(block: Block, volumes: Iterable[SweepVolumes], pieces: Iterabl
     return Ledger(bought_mm3=bought, scrap_mm3=scrap, n_blocks=1, n_blocks_bound=1, **parts)
 
 
-def slab_mm3(cut: Cut, kerf_mm: float) -> float:
-    """Return what a through cut melts: its slab within the part; a sliver thinner than the kerf goes whole."""
+def slab_mm3(cut: Cut, block: Block) -> float:
+    """Return what a through cut melts of the usable block: its slab within the part, without the skin still on it.
+
+    A sliver thinner than the kerf goes whole.
+    """
+    start, end = list(cut.part_at_mm), [at + size for at, size in zip(cut.part_at_mm, cut.part_size_mm, strict=True)]
     axis = _AXES.index(cut.axis)
-    start, side = cut.part_at_mm[axis], cut.part_size_mm[axis]
-    thickness = min(cut.at_mm + kerf_mm, start + side) - max(cut.at_mm, start)
-    cross_section = math.prod(size for index, size in enumerate(cut.part_size_mm) if index != axis)
-    return max(thickness, 0.0) * cross_section
+    start[axis], end[axis] = max(start[axis], cut.at_mm), min(end[axis], cut.at_mm + block.kerf_mm)
+    sides = [
+        max(0.0, min(high, whole - block.skin_mm) - max(low, block.skin_mm))
+        for low, high, whole in zip(start, end, (block.length_mm, block.width_mm, block.height_mm), strict=True)
+    ]
+    return math.prod(sides)
 
 
 def account_job(

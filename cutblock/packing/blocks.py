@@ -6,10 +6,12 @@ from dataclasses import dataclass, replace
 from cutblock.base.errors import StockError
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.base.units import mm_per
+from cutblock.catalog import load as catalog
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task, steps_up
 from cutblock.packing.packer import Packing, pack_task
-from cutblock.packing.setups import LENGTHWISE, TURNED, Pass, clampings, order_passes
+from cutblock.packing.setups import Pass, order_passes
 from cutblock.packing.tree import Part, all_parts
+from cutblock.packing.trims import with_trims
 from cutblock.packing.verify import verify_block
 from cutblock.records.block import Block, Cut, Offcut, PlacedBillet, Size
 from cutblock.records.job import Job, StockSpec
@@ -82,6 +84,7 @@ def pack_sweeps(
 
 
 def _task(job: Job, stock: tuple[StockSpec, ...], sweeps: tuple[Sweep, ...], conditions: Conditions) -> Task:
+    machine = catalog.machine(job.machine)
     names = tuple(f"panel {' and '.join(sweep.serves)}, sweep {sweep.id}" for sweep in sweeps)
     return make_task(
         [(sweep.length_mm, sweep.width_mm, sweep.height_mm) for sweep in sweeps],
@@ -93,20 +96,33 @@ def _task(job: Job, stock: tuple[StockSpec, ...], sweeps: tuple[Sweep, ...], con
         tuple(f"the block of {spec.place}" for spec in stock),
         job.units,
         mm_per(job.units),
+        machine.span_mm - machine.near_gap_mm,
     )
 
 
 def _block(job: Job, spec: StockSpec, task: Task, packing: Packing, number: int, sweeps: tuple[Sweep, ...]) -> Block:
-    row, root = packing.stock_rows[number], packing.trees[number]
-    raw = _triple(task.raw[row].tolist())
-    skin = int(task.skins[row])
-    parts = all_parts(root)
-    billets = [part for part in parts if part.billet >= 0]
+    row = packing.stock_rows[number]
+    raw, skin = _triple3(task.raw[row].tolist()), int(task.skins[row])
+    least = sorted(steps_up(job.least_offcut_mm).tolist())
+
+    def is_offcut(part: Part) -> bool:
+        is_bare = all(at >= skin for at in part.at)
+        return is_bare and all(have >= want for have, want in zip(sorted(part.size), least, strict=True))
+
+    reach = task.reach - task.kerf
+    root = with_trims(packing.trees[number], raw, skin, task.kerf, reach, is_offcut)
+    passes = order_passes(root)
+    if skin > 0 and raw[0] <= reach:
+        other = with_trims(packing.trees[number], raw, skin, task.kerf, reach, is_offcut, is_side_first=True)
+        others = order_passes(other)
+        if others[-1].setup < passes[-1].setup:
+            root, passes = other, others
+    leaves = [part for part in all_parts(root) if part.axis < 0]
     return Block(
         id=f"{job.id}-B{number + 1:02d}",
-        length_mm=raw[0],
-        width_mm=raw[1],
-        height_mm=raw[2],
+        length_mm=raw[0] / STEPS_PER_MM,
+        width_mm=raw[1] / STEPS_PER_MM,
+        height_mm=raw[2] / STEPS_PER_MM,
         grade=spec.grade,
         skin_mm=skin / STEPS_PER_MM,
         kerf_mm=task.kerf / STEPS_PER_MM,
@@ -114,45 +130,24 @@ def _block(job: Job, spec: StockSpec, task: Task, packing: Packing, number: int,
             PlacedBillet(
                 sweep=sweeps[part.billet].id, at_mm=_triple(part.at), size_mm=_triple(part.size), turned=part.is_turned
             )
-            for part in billets
+            for part in leaves
+            if part.billet >= 0
         ),
-        cuts=_cuts(root, _triple3(task.raw[row].tolist()), skin, task.kerf, sweeps),
-        offcuts=_offcuts(parts, job.least_offcut_mm),
+        cuts=_numbered(passes, sweeps),
+        offcuts=tuple(
+            Offcut(size_mm=_triple(part.size), at_mm=_triple(part.at))
+            for part in leaves
+            if part.billet < 0 and is_offcut(part)
+        ),
         price=spec.price,
     )
 
 
-def _cuts(root: Part, raw: tuple[int, int, int], skin: int, kerf: int, sweeps: tuple[Sweep, ...]) -> tuple[Cut, ...]:
-    """Return all passes of a block in order: skin trims, through cuts and sweeps."""
-    _, (lengthwise, turned) = clampings(root)
-    if skin == 0:
-        return _numbered(order_passes(root, None, 1), sweeps)
-    last = LENGTHWISE if lengthwise < turned else TURNED
-    trims = _trims(raw, skin, kerf, first=TURNED if last == LENGTHWISE else LENGTHWISE)
-    passes = order_passes(root, last, 3)
-    return _numbered(trims + passes, sweeps)
-
-
-def _trims(raw: tuple[int, int, int], skin: int, kerf: int, first: int) -> list[Pass]:
-    """Return the six skin trims: both ends, bottom and top in one clamping, both sides in another."""
-    at, size = [0, 0, 0], list(raw)
-    passes = []
-    for setup, held in enumerate((first, 1 - first), start=1):
-        for axis in (1,) if held == TURNED else (0, 2):
-            part = Part((at[0], at[1], at[2]), (size[0], size[1], size[2]), axis, skin - kerf)
-            at[axis], size[axis] = skin, size[axis] - skin
-            rest = Part((at[0], at[1], at[2]), (size[0], size[1], size[2]), axis, raw[axis] - skin)
-            size[axis] -= skin
-            passes += [Pass(part, setup, held == TURNED), Pass(rest, setup, held == TURNED)]
-    return passes
-
-
 def _numbered(passes: list[Pass], sweeps: tuple[Sweep, ...]) -> tuple[Cut, ...]:
     cuts = []
-    n_trims = sum(1 for step in passes if step.part.axis >= 0 and step.part.low is None)
     for order, step in enumerate(passes, start=1):
         part = step.part
-        kind = CutKind.SWEEP if part.axis < 0 else CutKind.TRIM if order <= n_trims else CutKind.THROUGH
+        kind = CutKind.SWEEP if part.axis < 0 else CutKind.TRIM if part.is_trim else CutKind.THROUGH
         cuts.append(
             Cut(
                 order=order,
@@ -167,17 +162,6 @@ def _numbered(passes: list[Pass], sweeps: tuple[Sweep, ...]) -> tuple[Cut, ...]:
             )
         )
     return tuple(cuts)
-
-
-def _offcuts(parts: list[Part], least_mm: Size) -> tuple[Offcut, ...]:
-    """Return the leftover boxes whose sorted sizes reach the least ones."""
-    least = sorted(steps_up(least_mm).tolist())
-    return tuple(
-        Offcut(size_mm=_triple(part.size), at_mm=_triple(part.at))
-        for part in parts
-        if part.axis < 0 and part.billet < 0
-        if all(have >= want for have, want in zip(sorted(part.size), least, strict=True))
-    )
 
 
 def _with_blocks(pieces: tuple[Piece, ...], blocks: list[Block]) -> tuple[Piece, ...]:

@@ -40,7 +40,7 @@ def stack_columns(task: Task, inner: Inner, kind: int) -> Solution | None:
     footprints, group = np.unique(rows, axis=0, return_inverse=True)
     if len(footprints) > _MOST_FOOTPRINTS or len(group) < _LEAST_REPEATS * len(footprints):
         return None
-    floor = _Floor(footprints, task.kinds[kind])
+    floor = _Floor(footprints, task.kinds[kind], task.reach)
     if not floor.is_small:
         return None
     fits = task.fits[:, kind]
@@ -76,7 +76,8 @@ def _columns(heights: Ints, members: Ints, room: int) -> Columns:
 class _Floor:
     """The best guillotine layout of footprints on rectangles; each rectangle is worked out once."""
 
-    def __init__(self, footprints: Ints, kind: Ints) -> None:
+    def __init__(self, footprints: Ints, kind: Ints, reach: int) -> None:
+        self.reach = reach
         self.footprints = [(int(x), int(y), bool(turn)) for x, y, turn in footprints.tolist()]
         self.size = (int(kind[0]), int(kind[1]))
         sides = sorted({side for x, y, turn in self.footprints for side in ((x, y) if turn else (x,))})
@@ -104,7 +105,7 @@ class _Floor:
                 best = _Choice(length * width, g, is_turned=True)
         if best.area == 0:
             return best
-        for axis, size in ((0, x), (1, y)):
+        for axis, size in ((0, x), (1, y)) if x <= self.reach else ((0, x),):
             for at in self.levels[axis]:
                 if 0 < at <= size // 2:
                     parts = ((at, y), (size - at, y)) if axis == 0 else ((x, at), (x, size - at))

@@ -49,10 +49,10 @@ def find_place(size_x: int, size_y: int, size_z: int, may_turn: int, rule: int, 
     return best
 
 
-def choose_order(allowed: int, x: int, y: int, z: int, size_x: int, size_y: int, size_z: int) -> int:
+def choose_order(allowed: int, is_long: bool, x: int, y: int, z: int, size_x: int, size_y: int, size_z: int) -> int:
     """Return the order of cuts that keeps the biggest rests whole: the greatest sum of their squared volumes.
 
-    `allowed` is 0 for any order, 1 for z first, 2 for z last.
+    `allowed` is 0 for any order, 1 for z first, 2 for z last; a box that is too long is cut across x before y.
     """
     a, b, c = float(size_x), float(size_y), float(size_z)
     gap_x, gap_y, gap_z = float(x) - a, float(y) - b, float(z) - c
@@ -66,8 +66,8 @@ def choose_order(allowed: int, x: int, y: int, z: int, size_x: int, size_y: int,
     zxy = first_z * first_z + xz * xz + last_y * last_y
     zyx = first_z * first_z + yz * yz + last_x * last_x
     if allowed == 2:
-        return 0 if xyz >= yxz else 2
-    best, most = (4, zxy) if zxy >= zyx else (5, zyx)
+        return 0 if is_long or xyz >= yxz else 2
+    best, most = (4, zxy) if is_long or zxy >= zyx else (5, zyx)
     if allowed == 1:
         return best
     xzy = first_x * first_x + zx * zx + last_y * last_y
@@ -76,6 +76,8 @@ def choose_order(allowed: int, x: int, y: int, z: int, size_x: int, size_y: int,
         best, most = 0, xyz
     if xzy > most:
         best, most = 1, xzy
+    if is_long:
+        return best
     if yxz > most:
         best, most = 2, yxz
     if yzx > most:
@@ -134,13 +136,14 @@ def put(
     x, y, z, block = desk.x[j], desk.y[j], desk.z[j], desk.block[j]
     kind = desk.kind[block]
     order = forced
-    if order < 0:
+    is_long = x > kinds.reach[kind]
+    if order < 0 or (is_long and order in (2, 3, 5)):
         allowed = 0
         if mode == 1 and x == kinds.x[kind] and y == kinds.y[kind]:
             allowed = 1
         elif mode == 2 and z == kinds.z[kind]:
             allowed = 2
-        order = choose_order(allowed, x, y, z, size_x, size_y, size_z)
+        order = choose_order(allowed, is_long, x, y, z, size_x, size_y, size_z)
     layout.block[cell], layout.slot[cell], layout.turned[cell], layout.order[cell] = block, desk.slot[j], turned, order
     first_slot = 3 * desk.n_placed[block] + 1
     desk.n_placed[block] += 1

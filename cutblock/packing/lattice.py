@@ -15,6 +15,7 @@ from cutblock.base.errors import InputError, StockError
 
 STEPS_PER_MM = 100
 _SLACK = 1e-4  # of a step: a size this little above a lattice value counts as that value
+ANY_REACH = 1 << 40  # longer than any block
 _AXES = ("length", "width", "height")
 
 
@@ -33,6 +34,8 @@ class Task:
         is_finite: (m,) whether the count was given.
         prices: (m,) money per block, or None where a price is not known.
         kerf: One kerf.
+        reach: The longest inflated part that goes between the machine's towers turned a quarter; a longer one must be
+            cut across before it can be cut along.
         billet_names: What messages call each billet.
         stock_names: What messages call each stock row.
         unit: Unit of lengths in messages.
@@ -53,6 +56,7 @@ class Task:
     stock_names: tuple[str, ...]
     unit: str = "mm"
     unit_mm: float = 1.0
+    reach: int = ANY_REACH
 
     @property
     def weights(self) -> Floats:
@@ -99,6 +103,7 @@ def make_task(
     stock_names: tuple[str, ...] = (),
     unit: str = "mm",
     unit_mm: float = 1.0,
+    reach_mm: float | None = None,
 ) -> Task:
     """Check what is to be packed and put it on the lattice.
 
@@ -112,6 +117,7 @@ def make_task(
         stock_names: What messages call each stock row; by default its number from 0.
         unit: Unit of lengths in messages.
         unit_mm: One of it in mm.
+        reach_mm: Longest part that can be cut along, see `Task.reach`; None: any.
 
     Raises:
         InputError: A size, count, price, kerf or skin is not a number in range.
@@ -127,8 +133,9 @@ def make_task(
     is_swapped = turns & (cells[:, 1] > cells[:, 0])
     cells[is_swapped] = cells[is_swapped][:, [1, 0, 2]]
     kinds = raw - 2 * skins[:, None] + kerf
+    reach = ANY_REACH if reach_mm is None else int(steps_down(reach_mm)) + kerf
     task = Task(
-        cells, is_swapped, turns, kinds, raw, skins, counts, is_finite, prices, kerf, names, rows, unit, unit_mm
+        cells, is_swapped, turns, kinds, raw, skins, counts, is_finite, prices, kerf, names, rows, unit, unit_mm, reach
     )
     _check_fit(task)
     return task

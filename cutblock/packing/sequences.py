@@ -42,11 +42,12 @@ class Cells(NamedTuple):
 
 
 class Kinds(NamedTuple):
-    """The kinds of block: usable sizes with one kerf added."""
+    """The kinds of block: usable sizes with one kerf added, and the longest part that can be cut along (see `Task`)."""
 
     x: Integers
     y: Integers
     z: Integers
+    reach: Integers
 
 
 class Layout(NamedTuple):
@@ -118,7 +119,7 @@ def cells_of(task: Task, make: Make) -> Cells:
 def kinds_of(task: Task, make: Make) -> Kinds:
     """Return the kinds of block of a task."""
     x, y, z = (make.integers(task.kinds[:, axis]) for axis in range(3))
-    return Kinds(x, y, z)
+    return Kinds(x, y, z, make.integers(np.full(len(task.kinds), task.reach)))
 
 
 def new_layout(n_cells: int, make: Make) -> Layout:

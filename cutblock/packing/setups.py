@@ -31,18 +31,13 @@ class _Best(NamedTuple):
     stays: tuple[int, int]  # which child (0 low, 1 high, -1 none) then stays in the clamp
 
 
-def order_passes(root: Part, held: int | None, first_setup: int) -> list[Pass]:
-    """Return the passes that cut a block into billets and sweep them.
-
-    Args:
-        root: The tree of the block's cuts.
-        held: How the usable block is already clamped, or None when it must be clamped anew.
-        first_setup: Number of the next new clamping; where the block is held the clamping before it goes on.
-    """
+def order_passes(root: Part) -> list[Pass]:
+    """Return the passes that cut a block, given as the tree of its cuts, into billets and sweep them."""
     best = _fewest(root)
     passes: list[Pass] = []
     waiting = [root]
-    setup = first_setup - 1
+    setup = 0
+    held: int | None = None
     while waiting:
         part: Part | None = waiting.pop()
         if part is None or (part.axis < 0 and part.billet < 0):
@@ -60,12 +55,6 @@ def order_passes(root: Part, held: int | None, first_setup: int) -> list[Pass]:
         waiting.extend(reversed(aside))
         held = None
     return passes
-
-
-def clampings(root: Part) -> tuple[int, tuple[int, int]]:
-    """Return the fewest clampings of a tree: clamped anew, and further ones when it is held lengthwise or turned."""
-    best = _fewest(root)[id(root)]
-    return best.anew, (min(best.held[0], best.anew), min(best.held[1], best.anew))
 
 
 def _fewest(root: Part) -> dict[int, _Best]:

@@ -14,10 +14,11 @@ class Part:
         size: Sizes, without kerf.
         axis: Axis it is cut across, or -1 where it is not cut any more.
         cut_at: Where the kerf's slab begins on that axis.
-        low: What lies below the cut; always there when it is cut.
+        low: What lies below the cut; always there when it is cut through.
         high: What lies above; None where the kerf leaves nothing of it.
         billet: The billet it is, or -1.
         is_turned: Whether the billet's length lies along the block's width.
+        is_trim: Whether its cut takes the skin off; what is cut off is then no part any more.
     """
 
     at: Steps3
@@ -28,6 +29,7 @@ class Part:
     high: "Part | None" = None
     billet: int = -1
     is_turned: bool = False
+    is_trim: bool = False
 
     @property
     def children(self) -> list["Part"]:

@@ -133,9 +133,10 @@ class _Replay:
         left = {box for box in (low, high) if box is not None}
         self.in_clamp = left
         if cut.kind is CutKind.THROUGH:
-            if not _holds(self.usable, part):
-                raise CheckFailed(f"cut {cut.order} is made before the skin is off", self.block.id)
-            self.melted += slab.volume
+            # The sides' skin may still be on; what is melted of it counts as skin.
+            melted = _common_volume(slab, self.usable)
+            self.melted += melted
+            self.trim += slab.volume - melted
             self.parts |= left
             return
         kept = {box for box in left if _overlap(box, self.usable)}
@@ -156,11 +157,14 @@ class _Replay:
         offcuts = 0
         for offcut in self.block.offcuts:
             box = self.box(offcut.at_mm, offcut.size_mm)
+            if not _holds(self.usable, box):
+                raise CheckFailed(f"the offcut at {offcut.at_mm} still has skin", self.block.id)
             if box not in self.parts:
                 raise CheckFailed(f"the offcut at {offcut.at_mm} is not left by the cuts", self.block.id)
             self.parts.remove(box)
             offcuts += box.volume
-        scrap = sum(box.volume for box in self.parts)
+        scrap = sum(_common_volume(box, self.usable) for box in self.parts)
+        self.trim += sum(box.volume for box in self.parts) - scrap
         volumes = BlockVolumes(self.trim, self.melted, offcuts, scrap, self.swept)
         if sum(volumes) != self.raw.volume:
             raise CheckFailed("the volumes do not sum to the block", self.block.id)
@@ -201,6 +205,11 @@ def _gaps(corners: Ints) -> Ints:
 
 def _holds(outer: Box, inner: Box) -> bool:
     return all(outer.at[axis] <= inner.at[axis] and inner.end[axis] <= outer.end[axis] for axis in range(3))
+
+
+def _common_volume(a: Box, b: Box) -> int:
+    sides = [max(0, min(a.end[axis], b.end[axis]) - max(a.at[axis], b.at[axis])) for axis in range(3)]
+    return sides[0] * sides[1] * sides[2]
 
 
 def _overlap(a: Box, b: Box) -> bool:

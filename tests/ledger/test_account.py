@@ -116,9 +116,25 @@ def test_a_sliver_thinner_than_the_kerf_is_melted_whole():
         at_mm=219.0,
     )
 
-    assert slab_mm3(cut, 1.2) == pytest.approx(1.0 * 100.0 * 300.0)
-    assert slab_mm3(cut, 0.5) == pytest.approx(0.5 * 100.0 * 300.0)
-    assert slab_mm3(replace(cut, at_mm=220.5), 1.2) == 0.0
+    block = replace(sample_block(), skin_mm=10.0)
+    assert slab_mm3(cut, block) == pytest.approx(1.0 * 100.0 * 300.0)
+    assert slab_mm3(cut, replace(block, kerf_mm=0.5)) == pytest.approx(0.5 * 100.0 * 300.0)
+    assert slab_mm3(replace(cut, at_mm=220.5), block) == 0.0
+
+
+def test_what_a_cut_melts_of_the_skin_is_skin():
+    block = replace(sample_block(), skin_mm=25.0)
+    cut = Cut(
+        order=1,
+        kind=CutKind.THROUGH,
+        setup=1,
+        part_at_mm=(25.0, 0.0, 25.0),
+        part_size_mm=(1000.0, block.width_mm, 500.0),
+        axis="x",
+        at_mm=500.0,
+    )
+
+    assert slab_mm3(cut, block) == pytest.approx(1.2 * (block.width_mm - 50.0) * 500.0)
 
 
 def test_a_job_is_the_sum_of_its_blocks():
