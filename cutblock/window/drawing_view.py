@@ -1,5 +1,4 @@
 """Shows one drawing on a sheet of paper, fitted to the room there is; a double click shows it in a larger window."""
-# ruff: noqa: N802 - Qt names the methods that are overridden
 
 from PySide6.QtCore import QEvent, QMarginsF, QPointF, QRectF, QSize, Qt
 from PySide6.QtGui import QHelpEvent, QKeyEvent, QMouseEvent, QPainter, QPaintEvent, QPen

@@ -2,7 +2,6 @@
 
 Nothing that needs numpy is imported before a plan is asked for, so that the window is there at once.
 """
-# ruff: noqa: N802 - Qt names the methods that are overridden
 
 from collections.abc import Callable
 from pathlib import PurePath

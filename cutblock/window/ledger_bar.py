@@ -1,5 +1,4 @@
 """The ledger as one bar that adds up to the foam bought."""
-# ruff: noqa: N802 - Qt names the methods that are overridden
 
 from PySide6.QtCore import QEvent, QPointF, QRectF, QSize, Qt
 from PySide6.QtGui import QColor, QHelpEvent, QPaintEvent, QPen

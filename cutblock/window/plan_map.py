@@ -1,5 +1,4 @@
 """The panels in plan, coloured by how far their finished mould faces lie from the form."""
-# ruff: noqa: N802 - Qt names the methods that are overridden
 
 from PySide6.QtCore import QEvent, QPointF, QRectF, QSize, Qt, Signal
 from PySide6.QtGui import (

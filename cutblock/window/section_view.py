@@ -1,5 +1,4 @@
 """One sweep in its billet, seen along the wire: both rails, the wire between them, and the walls that must stay."""
-# ruff: noqa: N802 - Qt names the methods that are overridden
 
 from PySide6.QtCore import QPointF, QRectF, QSize, Qt
 from PySide6.QtGui import QColor, QFontMetricsF, QPainter, QPaintEvent, QPen, QPolygonF

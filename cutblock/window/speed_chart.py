@@ -1,5 +1,4 @@
 """How fast the wire may go in foam of each density, with this job's foam marked."""
-# ruff: noqa: N802 - Qt names the methods that are overridden
 
 from PySide6.QtCore import QEvent, QPointF, QRectF, QSize, Qt
 from PySide6.QtGui import QColor, QFontMetricsF, QMouseEvent, QPainter, QPaintEvent, QPen, QPolygonF

@@ -1,5 +1,4 @@
 """Read-only tables: one model for all of them, and the view that shows it."""
-# ruff: noqa: N802 - Qt names the methods that are overridden
 
 from collections.abc import Sequence
 from typing import Any, NamedTuple

@@ -6,8 +6,8 @@ from cutblock.base.units import hours, litres, mass_kg, mm_per, mm_per_minute
 
 def test_an_inch_is_25_4_mm_and_a_foot_twelve_inches():
     """International yard and pound agreement of 1 July 1959: 1 yd = 0.9144 m exactly."""
-    assert mm_per("in") == 914.4 / 36
-    assert mm_per("ft") == 12 * mm_per("in")
+    assert mm_per("in") == pytest.approx(914.4 / 36, rel=1e-15)
+    assert mm_per("ft") == pytest.approx(914.4 / 3, rel=1e-15)
 
 
 @pytest.mark.parametrize("unit", ["", "MM", "furlong", "metre"])

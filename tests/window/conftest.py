@@ -10,13 +10,6 @@ from cutblock.window.theme import Theme
 from cutblock.worker.events import Progress
 
 
-def pytest_collection_modifyitems(items):
-    """Let the screenless platform say that it passes no size hints on: it has no window manager to take them."""
-    for item in items:
-        if item.path.parent.name == "window":
-            item.add_marker(pytest.mark.qt_log_ignore("does not support propagateSizeHints"))
-
-
 @pytest.fixture(autouse=True)
 def _application(qapp):
     """Fonts and pixmaps need the application, whichever test runs first."""
