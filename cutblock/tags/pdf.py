@@ -8,12 +8,13 @@ from io import BytesIO
 from typing import Any
 
 from cutblock.base.errors import InputError
-from cutblock.records.drawing import Drawing
+from cutblock.records.drawing import Drawing, Text
 from cutblock.records.shop import LabelSheet
-from cutblock.tags.pdf_paint import paint
+from cutblock.tags.pdf_paint import paint, printable
 
 _POINTS_PER_MM = 72.0 / 25.4
 _CHECK_LINE_MM = 100.0
+_LEAST_MARGIN_MM = 8.0  # printers leave about 4 mm at the edge of a page blank
 _STREAM = re.compile(rb"stream\r?\n(.*?)endstream", re.DOTALL)
 _CODE = re.compile(rb"\((CB1:[^)]*)\) Tj")
 
@@ -27,7 +28,7 @@ def tags_pdf(drawings: Sequence[Drawing], sheet: LabelSheet, start: int = 1) -> 
         start: The first free label of the first sheet, from 1, row by row.
 
     Returns:
-        A PDF; the same tags give the same bytes.
+        A PDF; the same tags give the same bytes. A letter its font lacks is printed as "?"; see `lost_letters`.
 
     Raises:
         InputError: The sheet has no label of that number.
@@ -42,16 +43,25 @@ def tags_pdf(drawings: Sequence[Drawing], sheet: LabelSheet, start: int = 1) -> 
     canvas = Canvas(stream, pagesize=size, invariant=1, pageCompression=1)
     canvas.setTitle("Piece tags")
     canvas.setCreator("cutblock")
+    note = "A ? on a tag stands for a letter that cannot be printed." if lost_letters(drawings) else ""
     for index, drawing in enumerate(drawings):
         place = start - 1 + index
         if index and place % per_page == 0:
-            _check_line(canvas, sheet)
+            _check_line(canvas, sheet, note)
             canvas.showPage()
         _paint_label(canvas, drawing, sheet, place % per_page)
-    _check_line(canvas, sheet)
+    _check_line(canvas, sheet, note)
     canvas.showPage()
     canvas.save()
     return stream.getvalue()
+
+
+def lost_letters(drawings: Sequence[Drawing]) -> str:
+    """Return every letter of the tags, once each, that a PDF shows as "?"."""
+    letters = {
+        letter for drawing in drawings for mark in drawing.marks if isinstance(mark, Text) for letter in mark.text
+    }
+    return "".join(sorted(letter for letter in letters if letter != "?" and "?" in printable(letter)))
 
 
 def codes_of_pdf(raw: bytes) -> tuple[str, ...]:
@@ -80,11 +90,11 @@ def _paint_label(canvas: Any, drawing: Drawing, sheet: LabelSheet, place: int) -
     paint(canvas, drawing, left, top, scale, sheet.page_height_mm)
 
 
-def _check_line(canvas: Any, sheet: LabelSheet) -> None:  # noqa: ANN401
+def _check_line(canvas: Any, sheet: LabelSheet, note: str) -> None:  # noqa: ANN401
     """Print a line of 100 mm in the bottom margin where it has room: whoever prints can measure the scale."""
     used = sheet.top_mm + (sheet.rows - 1) * sheet.pitch_y_mm + sheet.label_height_mm
     margin = sheet.page_height_mm - used
-    if margin < 8.0:
+    if margin < _LEAST_MARGIN_MM or sheet.page_width_mm < _CHECK_LINE_MM + 10.0:
         return
     left, y = (sheet.page_width_mm - _CHECK_LINE_MM) / 2.0 * _POINTS_PER_MM, margin / 2.0 * _POINTS_PER_MM
     right = left + _CHECK_LINE_MM * _POINTS_PER_MM
@@ -95,4 +105,5 @@ def _check_line(canvas: Any, sheet: LabelSheet) -> None:  # noqa: ANN401
     for x in (left, right):
         canvas.line(x, y - 3, x, y + 3)
     canvas.setFont("Helvetica", 6)
-    canvas.drawCentredString((left + right) / 2.0, y + 2.5, "100 mm: print at full size (100 %)")
+    words = "This line is 100 mm long when the sheet is printed at full size (100 %)."
+    canvas.drawCentredString((left + right) / 2.0, y + 2.5, f"{words} {note}".rstrip())

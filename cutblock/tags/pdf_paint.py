@@ -10,18 +10,37 @@ from cutblock.records.drawing import Drawing, Line, Mark, Modules, Polygon, Text
 _POINTS_PER_MM = 72.0 / 25.4
 _CAP_HEIGHT = 0.718  # of Helvetica, in parts of the font size (Adobe font metrics)
 _HATCH_STEP_MM = 1.2
+_STAND_INS = {"Ł": "L", "ł": "l", "Đ": "D", "đ": "d", "ı": "i", "Ħ": "H", "ħ": "h", "−": "-", "‐": "-", "‑": "-"}
 
 
 def printable(text: str) -> str:
-    """Return text in the letters Helvetica has (Latin-1): accents it lacks are dropped, other letters become "?"."""
-    plain = []
-    for letter in text:
-        if ord(letter) < 256:
-            plain.append(letter if letter.isprintable() else " ")
-            continue
-        base = "".join(part for part in unicodedata.normalize("NFKD", letter) if not unicodedata.combining(part))
-        plain.append(base if base and all(ord(part) < 256 for part in base) else "?")
-    return "".join(plain)
+    """Return text in the letters the PDF's own Helvetica has (code page 1252).
+
+    Accents the font lacks are dropped and a few letters are written with their usual stand-in; every other letter
+    becomes "?", so that nothing vanishes unseen.
+    """
+    return "".join(_letter(letter) for letter in unicodedata.normalize("NFC", text))
+
+
+def _letter(letter: str) -> str:
+    if not letter.isprintable():
+        return " "
+    for candidate in (letter, _STAND_INS.get(letter, ""), _without_accents(letter)):
+        if candidate and _is_in_font(candidate):
+            return candidate
+    return "?"
+
+
+def _without_accents(letter: str) -> str:
+    return "".join(part for part in unicodedata.normalize("NFKD", letter) if not unicodedata.combining(part))
+
+
+def _is_in_font(text: str) -> bool:
+    try:
+        text.encode("cp1252")
+    except UnicodeEncodeError:
+        return False
+    return True
 
 
 def paint(canvas: Any, drawing: Drawing, left_mm: float, top_mm: float, scale: float, page_height_mm: float) -> None:  # noqa: ANN401 - reportlab has no types
@@ -117,17 +136,14 @@ def _paint_text(canvas: Any, mark: Text) -> None:  # noqa: ANN401
 
 
 def _paint_modules(canvas: Any, mark: Modules) -> None:  # noqa: ANN401
+    """Fill all dark modules as one path, so that no light seam shows between them when a viewer smooths edges."""
     module = mark.side_mm / len(mark.rows)
-    canvas.setFillColor("#000000")
+    path = canvas.beginPath()
     for row, modules in enumerate(mark.rows):
         column = 0
-        for run in _runs(modules):
-            if modules[column] == "1":
-                canvas.rect(
-                    mark.x_mm + column * module, mark.y_mm + row * module, run * module, module, stroke=0, fill=1
-                )
+        for is_dark, run in ((key == "1", len(list(group))) for key, group in groupby(modules)):
+            if is_dark:
+                path.rect(mark.x_mm + column * module, mark.y_mm + row * module, run * module, module)
             column += run
-
-
-def _runs(modules: str) -> list[int]:
-    return [len(list(group)) for _, group in groupby(modules)]
+    canvas.setFillColor("#000000")
+    canvas.drawPath(path, stroke=0, fill=1, fillMode=1)

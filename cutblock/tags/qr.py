@@ -1,6 +1,6 @@
 """QR symbols (ISO/IEC 18004) as rows of modules."""
 
-LEVELS = ("Q", "M", "L")
+LEVELS = ("Q", "M")  # a quarter, then a seventh of the symbol may be lost
 QUIET_MODULES = 4  # ISO/IEC 18004: four light modules on every side
 
 
@@ -9,8 +9,8 @@ def qr_rows(code: str, most_modules: int) -> tuple[str, ...]:
 
     Args:
         code: Letters, digits and $%*+-./: only, so that the symbol stays small.
-        most_modules: The strongest error correction (Q, M, L) is taken whose symbol is no wider than this; where none
-            is, the weakest.
+        most_modules: The stronger error correction (Q, then M) is taken whose symbol is no wider than this; where
+            neither is, M.
 
     Returns:
         One text a row, "1" dark and "0" light.

@@ -1,0 +1,135 @@
+"""What a tag says, gathered for one piece before anything is placed."""
+
+from collections.abc import Mapping, Sequence
+from typing import NamedTuple
+
+import numpy as np
+
+from cutblock.base.arrays import Floats
+from cutblock.records.block import Block
+from cutblock.records.panel import Panel
+from cutblock.records.piece import Piece
+from cutblock.records.sweep import Serving, Sweep
+from cutblock.records.words import Duty, Half
+
+_ONE_PERSON_KG = 20.0  # common practice, no source; local rules on lifting come first
+_ONE_PERSON_MM = 1500.0  # longer pieces block the view and catch the wind; common practice, no source
+_LONGEST_TITLE = 64  # letters; a longer one would print too small to read
+
+BILLET_EDGES = {"start": (-1.0, 0.0, 0.0), "end": (1.0, 0.0, 0.0), "near": (0.0, -1.0, 0.0), "far": (0.0, 1.0, 0.0)}
+_PANEL_SIDES = (("west", 0, -1.0), ("east", 0, 1.0), ("south", 1, -1.0), ("north", 1, 1.0))
+
+
+class EdgeFact(NamedTuple):
+    """One upright face of the billet: the side of the panel it lies on, and the panels that meet it there."""
+
+    side: str  # "N", "E", "S" or "W" of the panel in plan; empty where the half serves no panel
+    neighbours: tuple[str, ...]
+
+
+class TagFacts(NamedTuple):
+    """Everything one tag says."""
+
+    piece: Piece
+    sweep: Sweep
+    title: str
+    revision: str
+    grade: str
+    cut_order: int | None  # of the piece's sweep in its block
+    edges: Mapping[str, EdgeFact]  # by the names of BILLET_EDGES
+    outline: tuple[Floats, ...]  # rings (n, 2) of the panel in the billet's plan; empty where unknown
+
+    @property
+    def n_persons(self) -> int:
+        """How many people lift it."""
+        is_long = max(self.sweep.length_mm, self.sweep.width_mm) > _ONE_PERSON_MM
+        return 2 if is_long or self.piece.mass_kg > _ONE_PERSON_KG else 1
+
+    @property
+    def use(self) -> str:
+        """What the piece is for."""
+        words = self.piece.duty.value.upper()
+        if self.piece.duty is Duty.SURPLUS:
+            return f"{words}, no use yet"
+        return f"{words} for panel {self.piece.panel}" if self.piece.panel is not None else words
+
+    @property
+    def manner(self) -> str:
+        """Which half it is and how it lies in use."""
+        if self.piece.half is Half.LOWER:
+            return "LOWER half (L), face up as cut"
+        if self.piece.duty in {Duty.MOULD, Duty.CRADLE}:
+            return "UPPER half (U), turn over: face up"
+        return "UPPER half (U), face down as cut" if self.piece.duty is Duty.COUNTER_MOULD else "UPPER half (U)"
+
+    @property
+    def block(self) -> str:
+        """Where the piece comes from."""
+        if self.piece.block is None:
+            return "none"
+        return self.piece.block if self.cut_order is None else f"{self.piece.block}, cut {self.cut_order}"
+
+    @property
+    def mass(self) -> str:
+        """The mass as people read it."""
+        return f"{self.piece.mass_kg:.1f} kg"
+
+    @property
+    def billet(self) -> str:
+        """The size of the billet as people read it."""
+        sweep = self.sweep
+        return f"{sweep.length_mm:.0f} × {sweep.width_mm:.0f} × {sweep.height_mm:.0f} mm"
+
+
+def gather_facts(
+    title: str, revision: str, piece: Piece, sweep: Sweep, block: Block | None, panels: Mapping[str, Panel]
+) -> TagFacts:
+    """Return what the tag of a piece says.
+
+    Args:
+        title: Of the job; shortened where it is very long.
+        revision: Of the job.
+        piece: The piece.
+        sweep: The piece's sweep.
+        block: The block the sweep's billet comes from, if it has one.
+        panels: Panels by id; those not there have no neighbours and no outline on the tag.
+    """
+    serving = _serving_of(piece, sweep)
+    orders = [] if block is None else [cut.order for cut in block.cuts if cut.sweep == sweep.id]
+    panel = panels.get(serving.panel) if serving is not None else None
+    return TagFacts(
+        piece=piece,
+        sweep=sweep,
+        title=title if len(title) <= _LONGEST_TITLE else f"{title[: _LONGEST_TITLE - 3].rstrip()}...",
+        revision=revision,
+        grade=block.grade if block is not None and block.grade else "as ordered",
+        cut_order=orders[0] if orders else None,
+        edges={name: _edge(outward, serving, panel) for name, outward in BILLET_EDGES.items()},
+        outline=_outline(serving, panel),
+    )
+
+
+def _serving_of(piece: Piece, sweep: Sweep) -> Serving | None:
+    """Return the serving whose panel the piece belongs to: its own, or for a supporting half its partner's."""
+    if piece.panel is None:
+        return None
+    own = [serving for serving in sweep.serving if serving.panel == piece.panel]
+    same_half = [serving for serving in own if serving.half is piece.half]
+    return next(iter(same_half or own), None)
+
+
+def _edge(outward: Sequence[float], serving: Serving | None, panel: Panel | None) -> EdgeFact:
+    if serving is None:
+        return EdgeFact("", ())
+    direction = serving.rotation @ np.asarray(outward)
+    side = max(_PANEL_SIDES, key=lambda known: direction[known[1]] * known[2])[0]
+    neighbours = () if panel is None else tuple(other for edge, other in panel.neighbours if edge == side)
+    return EdgeFact(side[0].upper(), neighbours)
+
+
+def _outline(serving: Serving | None, panel: Panel | None) -> tuple[Floats, ...]:
+    if serving is None or panel is None:
+        return ()
+    # p_panel = p_billet @ R.T + shift, and R turns the plan in itself (a half turn keeps it a plan).
+    turn, shift = serving.rotation[:2, :2], serving.shift_mm[:2]
+    return tuple((ring - shift) @ turn for ring in panel.outline)
