@@ -47,7 +47,7 @@ class Basis:
     @property
     def n_controls(self) -> int:
         """Number of B-splines."""
-        return self.values.shape[1]
+        return int(self.values.shape[1])
 
 
 @lru_cache(maxsize=8)
@@ -62,8 +62,8 @@ def spline_stations(n_controls: int) -> Basis:
         rates=basis_at(STATIONS, n_controls, 1),
         hull=np.diff(np.eye(n_controls), axis=0) * (3.0 / (knots[4:-1] - knots[1:-4]))[:, None],
         products=(values[:, :, None] * values[:, None, :]).reshape(N_STATIONS, -1),
-        inverse=np.linalg.pinv(values),
-        smooth_inverse=np.linalg.solve(normal + 3.0 * differences.T @ differences, values.T),
+        inverse=np.linalg.pinv(values).astype(np.float64),
+        smooth_inverse=np.linalg.solve(normal + 3.0 * differences.T @ differences, values.T).astype(np.float64),
     )
 
 
@@ -176,7 +176,8 @@ def sheet_at(fits: Fits, stations: Floats) -> tuple[Floats, Floats]:
 def _room(skew_controls: Floats, length: Floats, basis: Basis) -> Floats:
     """Return the factor up to 1 by which skews must shrink so that neither rail turns back."""
     steepest = np.abs(skew_controls @ basis.hull.T).max(axis=1) / length
-    return np.minimum(1.0, 2.0 * (1.0 - LEAST_ADVANCE) / np.maximum(steepest, 1e-30))
+    room: Floats = np.minimum(1.0, 2.0 * (1.0 - LEAST_ADVANCE) / np.maximum(steepest, 1e-30))
+    return room
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -289,8 +290,8 @@ def _step(target: Target, state: _State, basis: Basis, damping: Floats) -> tuple
     diagonal = np.einsum("pii->pi", matrix).copy()
     extra = damping[:, None] * diagonal + 1e-13 * diagonal.max(axis=1, keepdims=True)
     matrix[:, np.arange(n_unknowns), np.arange(n_unknowns)] += extra
-    change = np.linalg.solve(matrix, -gradient[:, :, None])[:, :, 0]
-    promise = -np.einsum("pi,pi->p", change, gradient)
+    change: Floats = np.linalg.solve(matrix, -gradient[:, :, None])[:, :, 0].astype(np.float64)
+    promise: Floats = -np.einsum("pi,pi->p", change, gradient)
     return change.reshape(len(change), 3, -1), promise
 
 
@@ -350,7 +351,8 @@ def _shifted(emphasis: Floats, state: _State) -> Floats:
     largest = np.maximum(sizes.max(axis=(1, 2), keepdims=True), 1e-12)
     emphasis = emphasis * np.where(state.counts, sizes / largest, 1.0)
     mean = np.where(state.counts, emphasis, 0.0).sum(axis=(1, 2)) / np.maximum(state.counts.sum(axis=(1, 2)), 1)
-    return np.maximum(emphasis / np.maximum(mean, 1e-12)[:, None, None], 1e-3)
+    shifted: Floats = np.maximum(emphasis / np.maximum(mean, 1e-12)[:, None, None], 1e-3)
+    return shifted
 
 
 def _pick(is_new: Bools, new: _State, old: _State) -> _State:

@@ -74,7 +74,7 @@ class Target:
     @property
     def n_x(self) -> int:
         """Number of grid values along x."""
-        return self.rows.shape[2] - 2
+        return int(self.rows.shape[2]) - 2
 
     def take(self, index: Ints) -> "Target":
         """Return the patches of the given indices."""

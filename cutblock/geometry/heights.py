@@ -32,7 +32,7 @@ def spline_matrix(n: int) -> Floats:
         rows[n, :4] = rows[n + 1, -4:] = (-1.0, 3.0, -3.0, 1.0)
     else:
         rows[n, :5] = rows[n + 1, -5:] = (1.0, -4.0, 6.0, -4.0, 1.0)
-    matrix: Floats = np.linalg.inv(rows)[:, :n]
+    matrix: Floats = np.linalg.inv(rows)[:, :n].astype(np.float64)
     matrix.flags.writeable = False
     return matrix
 

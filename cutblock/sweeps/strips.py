@@ -87,7 +87,7 @@ class _Search:
         """Return the strips it would take, from the second-order law where the limit was met."""
         if self.best is not None or self.last is None:
             return len(self.best.strips) if self.best is not None else 1
-        excess = max(self.last.max_mm - abs(self.aim.kerf_error_mm), 0.0) / self.aim.room_mm
+        excess = max(strip.fit_max_mm for strip in self.last.strips) / self.aim.room_mm
         return max(self.limit + 1, int(np.ceil(len(self.last.strips) * np.sqrt(excess))))
 
 

@@ -197,3 +197,10 @@ def test_unusable_arguments_are_refused_in_plain_words(arguments, words):
 
 def test_a_constant_height_is_taken():
     assert fit_ruled(lambda x, y: 120.0, L, W, 2.0).max_mm < 1e-9
+
+
+def test_a_fan_of_rulings_comes_back():
+    # Rulings through a vertical axis 700 mm beside the panel: in plan the far end runs two and a half times as fast.
+    fit = fit_ruled(lambda x, y: 300.0 * np.arctan2(x - 600.0, y + 700.0), L, W, 2.0)
+    assert fit.max_mm < 0.02
+    assert np.diff(fit.far[:, 0]).sum() > 2.0 * np.diff(fit.near[:, 0]).sum()
