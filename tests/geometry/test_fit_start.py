@@ -2,32 +2,33 @@ import numpy as np
 import pytest
 from kit.shapes import hypar, over, turned
 
-from cutblock.geometry.fit_start import LEAST_ADVANCE, best_paths
-from cutblock.geometry.fit_target import Patch, make_target
+from cutblock.geometry.fit_start import best_paths
+from cutblock.geometry.fit_target import LEAST_ADVANCE, Patch, make_target
 
 L, W = 1200.0, 1000.0
 
 
-def target_of(height, **changes):
-    x, y = np.linspace(0.0, L, 61), np.linspace(0.0, W, 51)
+def target_of(height, width=W, **changes):
+    x, y = np.linspace(0.0, L, 61), np.linspace(0.0, width, 51)
     values = {
         "heights_mm": height(x[:, None], y),
         "low_x_mm": 0.0,
         "high_x_mm": L,
         "low_y_mm": 0.0,
-        "high_y_mm": W,
-        "width_mm": W,
+        "high_y_mm": width,
+        "width_mm": width,
         "strip_low_y_mm": 0.0,
-        "strip_high_y_mm": W,
+        "strip_high_y_mm": width,
     }
     return make_target([Patch(**(values | changes))])
 
 
-def test_the_path_follows_a_fan_of_rulings():
-    # In plan the rulings run through (600, -700): at mid-wire, 1200 mm away, the skew is 1000/1200 of the distance.
-    path = best_paths(target_of(lambda x, y: 300.0 * np.arctan2(x - 600.0, y + 700.0)))[0]
-    is_over = (path.stations > 150.0) & (path.stations < 1050.0)
-    np.testing.assert_allclose(path.skews[is_over], (path.stations[is_over] - 600.0) / 1.2, atol=60.0)
+@pytest.mark.parametrize("width", [200.0, 1000.0])
+def test_the_path_follows_a_fan_of_rulings(width):
+    # In plan the rulings run through one point 0.7 widths before the near face: skew = distance / 1.2.
+    path = best_paths(target_of(lambda x, y: 300.0 * np.arctan2(x - 600.0, y + 0.7 * width), width))[0]
+    is_over = np.abs(path.stations - 600.0) < 0.9 * width / 2.0
+    np.testing.assert_allclose(path.skews[is_over], (path.stations[is_over] - 600.0) / 1.2, atol=0.06 * width)
 
 
 @pytest.mark.parametrize("seed", range(4))
