@@ -5,7 +5,8 @@ from typing import NamedTuple
 
 import numpy as np
 
-from cutblock.base.arrays import Floats
+from cutblock.geometry.outline import Rings, area_of_rings, parts_of, rings_of
+from cutblock.geometry.outline import box as plan_box
 from cutblock.records.block import Block
 from cutblock.records.panel import Panel
 from cutblock.records.piece import Piece
@@ -14,6 +15,7 @@ from cutblock.records.words import Duty, Half
 
 _ONE_PERSON_KG = 20.0  # common practice, no source; local rules on lifting come first
 _ONE_PERSON_MM = 1500.0  # longer pieces block the view and catch the wind; common practice, no source
+_SAME_EDGE_MM = 1.0  # an outline that passes the billet's edge by less ends there
 _LONGEST_TITLE = 64  # letters; a longer one would print too small to read
 
 BILLET_EDGES = {"start": (-1.0, 0.0, 0.0), "end": (1.0, 0.0, 0.0), "near": (0.0, -1.0, 0.0), "far": (0.0, 1.0, 0.0)}
@@ -25,6 +27,12 @@ class EdgeFact(NamedTuple):
 
     side: str  # "N", "E", "S" or "W" of the panel in plan; empty where the half serves no panel
     neighbours: tuple[str, ...]
+    goes_on: bool = False  # the panel reaches beyond the billet here, into the next strip
+
+    @property
+    def words(self) -> str:
+        """What the workshop reads at the edge."""
+        return "next strip" if self.goes_on else " ".join([self.side, *self.neighbours]).strip()
 
 
 class TagFacts(NamedTuple):
@@ -37,7 +45,8 @@ class TagFacts(NamedTuple):
     grade: str
     cut_order: int | None  # of the piece's sweep in its block
     edges: Mapping[str, EdgeFact]  # by the names of BILLET_EDGES
-    outline: tuple[Floats, ...]  # rings (n, 2) of the panel in the billet's plan; empty where unknown
+    outline: Rings  # rings (n, 2) of the panel in the billet's plan; empty where unknown
+    strip: str  # "strip 1 of 2" of a panel cut in strips, else empty
 
     @property
     def n_persons(self) -> int:
@@ -51,7 +60,9 @@ class TagFacts(NamedTuple):
         words = self.piece.duty.value.upper()
         if self.piece.duty is Duty.SURPLUS:
             return f"{words}, no use yet"
-        return f"{words} for panel {self.piece.panel}" if self.piece.panel is not None else words
+        if self.piece.panel is None:
+            return words
+        return f"{words} for panel {self.piece.panel}{f', {self.strip}' if self.strip else ''}"
 
     @property
     def manner(self) -> str:
@@ -97,6 +108,9 @@ def gather_facts(
     serving = _serving_of(piece, sweep)
     orders = [] if block is None else [cut.order for cut in block.cuts if cut.sweep == sweep.id]
     panel = panels.get(serving.panel) if serving is not None else None
+    outline = _outline(serving, panel)
+    beyond = _edges_beyond(outline, sweep)
+    is_strip = serving is not None and serving.n_strips > 1
     return TagFacts(
         piece=piece,
         sweep=sweep,
@@ -104,8 +118,9 @@ def gather_facts(
         revision=revision,
         grade=block.grade if block is not None and block.grade else "as ordered",
         cut_order=orders[0] if orders else None,
-        edges={name: _edge(outward, serving, panel) for name, outward in BILLET_EDGES.items()},
-        outline=_outline(serving, panel),
+        edges={name: _edge(outward, serving, panel, name in beyond) for name, outward in BILLET_EDGES.items()},
+        outline=_inside(outline, sweep) if beyond else outline,
+        strip=f"strip {serving.strip} of {serving.n_strips}" if serving is not None and is_strip else "",
     )
 
 
@@ -118,18 +133,38 @@ def _serving_of(piece: Piece, sweep: Sweep) -> Serving | None:
     return next(iter(same_half or own), None)
 
 
-def _edge(outward: Sequence[float], serving: Serving | None, panel: Panel | None) -> EdgeFact:
+def _edge(outward: Sequence[float], serving: Serving | None, panel: Panel | None, goes_on: bool) -> EdgeFact:
     if serving is None:
         return EdgeFact("", ())
     direction = serving.rotation @ np.asarray(outward)
     side = max(_PANEL_SIDES, key=lambda known: direction[known[1]] * known[2])[0]
     neighbours = () if panel is None else tuple(other for edge, other in panel.neighbours if edge == side)
-    return EdgeFact(side[0].upper(), neighbours)
+    return EdgeFact(side[0].upper(), neighbours, goes_on)
 
 
-def _outline(serving: Serving | None, panel: Panel | None) -> tuple[Floats, ...]:
+def _outline(serving: Serving | None, panel: Panel | None) -> Rings:
     if serving is None or panel is None:
         return ()
     # p_panel = p_billet @ R.T + shift, and R turns the plan in itself (a half turn keeps it a plan).
     turn, shift = serving.rotation[:2, :2], serving.shift_mm[:2]
     return tuple((ring - shift) @ turn for ring in panel.outline)
+
+
+def _edges_beyond(outline: Rings, sweep: Sweep) -> frozenset[str]:
+    """Return the edges of the billet over which the outline reaches: there the panel goes on in another strip."""
+    if not outline:
+        return frozenset()
+    least, most = outline[0].min(axis=0), outline[0].max(axis=0)
+    reach = {
+        "start": -least[0],
+        "end": most[0] - sweep.length_mm,
+        "near": -least[1],
+        "far": most[1] - sweep.width_mm,
+    }
+    return frozenset(edge for edge, beyond_mm in reach.items() if beyond_mm > _SAME_EDGE_MM)
+
+
+def _inside(outline: Rings, sweep: Sweep) -> Rings:
+    """Return the part of the outline that lies in the billet's plan."""
+    part = area_of_rings(outline).intersection(plan_box(0.0, 0.0, sweep.length_mm, sweep.width_mm))
+    return tuple(ring for piece in parts_of(part) for ring in rings_of(piece))

@@ -118,13 +118,26 @@ def billet_plan(facts: TagFacts, left: float, top: float, width: float, height: 
         *arrow(x + 0.25 * length, middle_y, x + 0.75 * length, middle_y),
         _caption("From above", middle_x, y - 0.9),
     ]
+    west, south, east, north = (scale * gap for gap in _gaps(facts))
     if depth > 7.5:
-        marks += _side_name(facts, "far", middle_x, y + 0.7 + _SMALL_MM, 0.8 * length, 0.0)
-        marks += _side_name(facts, "near", middle_x, y + depth - 1.2, 0.8 * length, 0.0)
+        marks += _side_name(facts, "far", middle_x, y + north + 0.7 + _SMALL_MM, 0.8 * length, 0.0)
+        marks += _side_name(facts, "near", middle_x, y + depth - max(south, 0.5) - 0.7, 0.8 * length, 0.0)
     if length > 12.0:
-        marks += _side_name(facts, "start", x + 0.7 + _SMALL_MM, middle_y, 0.5 * depth, -90.0)
-        marks += _side_name(facts, "end", x + length - 0.7 - _SMALL_MM, middle_y, 0.5 * depth, 90.0)
+        marks += _side_name(facts, "start", x + west + 0.7 + _SMALL_MM, middle_y, 0.5 * depth, -90.0)
+        marks += _side_name(facts, "end", x + length - east - 0.7 - _SMALL_MM, middle_y, 0.5 * depth, 90.0)
     return marks
+
+
+def _gaps(facts: TagFacts) -> tuple[float, float, float, float]:
+    """Return the narrow margins the panel's outline leaves in the billet at start, near, end and far, mm."""
+    if not facts.outline:
+        return (0.0, 0.0, 0.0, 0.0)
+    sweep, points = facts.sweep, np.concatenate(facts.outline)
+    (x1, y1), (x2, y2) = points.min(axis=0), points.max(axis=0)
+    gaps = (x1, y1, sweep.length_mm - x2, sweep.width_mm - y2)
+    most = 0.15 * min(sweep.length_mm, sweep.width_mm)
+    start, near, end, far = (float(gap) if 0.0 < gap < most else 0.0 for gap in gaps)
+    return start, near, end, far
 
 
 def _edge_name(text: str, x: float, y: float, room: float, turn: float = 0.0) -> Text:
@@ -138,8 +151,7 @@ def _caption(text: str, x: float, y: float) -> Text:
 
 
 def _side_name(facts: TagFacts, edge: str, x: float, y: float, room: float, turn: float) -> list[Mark]:
-    fact = facts.edges[edge]
-    text = " ".join([fact.side, *fact.neighbours]).strip()
+    text = facts.edges[edge].words
     if not text:
         return []
     return [

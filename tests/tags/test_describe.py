@@ -182,3 +182,21 @@ def test_a_piece_without_a_block_comes_last_and_says_so():
     assert "none" in words(drawings[0])
     assert len(drawings) == len(plan.pieces)
     assert {piece.half for piece in plan.pieces} == set(Half)
+
+
+def test_a_strip_says_which_it_is_and_where_the_panel_goes_on():
+    """The panel is twice as wide as the billet of its first strip."""
+    plan = sample_plan()
+    sweep = plan.sweeps[1]
+    serving = replace(sweep.serving[0], strip=1, n_strips=2)
+    sweep = replace(sweep, width_mm=500.0, serving=(serving,))
+    panels = {panel.id: replace(panel, neighbours=(("north", "T-B01"),)) for panel in plan.panels}
+
+    facts = gather_facts("", "A", plan.pieces[2], sweep, None, panels)
+
+    assert facts.use == "MOULD for panel T-A01, strip 1 of 2"
+    assert facts.edges["far"].words == "next strip"
+    assert facts.edges["near"].words == "S"
+    (ring,) = facts.outline
+    assert ring.min(axis=0).tolist() == [0.0, 0.0]
+    assert ring.max(axis=0).tolist() == [1200.0, 500.0]
