@@ -11,7 +11,7 @@ from functools import lru_cache
 import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
-from cutblock.geometry.fit_start import LEAST_ADVANCE, Paths
+from cutblock.geometry.fit_start import Paths
 from cutblock.geometry.fit_target import NODE_WEIGHTS, Target
 
 N_CONTROLS = 16
@@ -117,7 +117,7 @@ def refine(target: Target, paths: Paths, give_up_mm: float = np.inf, n_rounds: i
     skews = np.stack([np.interp(s, a, k) for s, a, k in zip(stations, paths.stations, paths.skews, strict=True)])
     controls = np.zeros((len(skews), 3, N_CONTROLS))
     controls[:, 0] = skews @ basis.smooth_inverse.T
-    controls[:, 0] *= _room(controls[:, 0], end - start, basis)[:, None]
+    controls[:, 0] = _held(controls[:, 0], end - start, target, basis)
     no_fit = np.full(len(start), np.inf)
     fits = improve(target, _raised(target, Fits(controls, start, end, no_fit, no_fit)))
     for _ in range(n_rounds - 1):
@@ -173,11 +173,14 @@ def sheet_at(fits: Fits, stations: Floats) -> tuple[Floats, Floats]:
     return values, rates / length[:, None, None]
 
 
-def _room(skew_controls: Floats, length: Floats, basis: Basis) -> Floats:
-    """Return the factor up to 1 by which skews must shrink so that neither rail turns back."""
+def _held(skew_controls: Floats, length: Floats, target: Target, basis: Basis) -> Floats:
+    """Return skews within their limit, drawn towards their mean until both rails advance as much as they must."""
     steepest = np.abs(skew_controls @ basis.hull.T).max(axis=1) / length
-    room: Floats = np.minimum(1.0, 2.0 * (1.0 - LEAST_ADVANCE) / np.maximum(steepest, 1e-30))
-    return room
+    factor = np.minimum(1.0, 2.0 * (1.0 - target.advance[:, 0, 0]) / np.maximum(steepest, 1e-30))
+    middle = skew_controls.mean(axis=1, keepdims=True)
+    drawn = middle + factor[:, None] * (skew_controls - middle)
+    held: Floats = np.clip(drawn, -target.limit[:, 0], target.limit[:, 0])
+    return held
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -264,10 +267,9 @@ def improve(
     for _ in range(n_steps):
         change, promise = _step(target, state, basis, damping)
         trial = replace(fits, controls=fits.controls + change)
-        np.clip(trial.controls[:, 0], -target.limit[:, 0], target.limit[:, 0], out=trial.controls[:, 0])
+        trial.controls[:, 0] = _held(trial.controls[:, 0], fits.end - fits.start, target, basis)
         trial_state = _evaluate(target, trial, basis, emphasis)
-        has_room = _room(trial.controls[:, 0], fits.end - fits.start, basis) >= 1.0
-        is_better = (trial_state.cost < state.cost) & has_room
+        is_better = trial_state.cost < state.cost
         damping = np.where(is_better, np.maximum(damping / 20.0, 1e-12), damping * 10.0)
         fits = replace(fits, controls=np.where(is_better[:, None, None], trial.controls, fits.controls))
         state = _pick(is_better, trial_state, state)

@@ -16,7 +16,6 @@ from cutblock.geometry.fit_target import NODE_WEIGHTS, Target
 N_STATIONS = 49
 N_SKEWS = 49
 SKEW_CAP = 1.2  # largest |skew| / width: a strip of an isotropic saddle turned half a right angle needs 1.0
-LEAST_ADVANCE = 0.1  # least advance of a rail for each unit of station
 N_FINE = 257
 
 
@@ -41,7 +40,7 @@ def best_paths(target: Target) -> tuple[Paths, Paths, Paths]:
     """
     stations, skews, residuals, total = _table(target)
     spacing, gap = stations[:, 1] - stations[:, 0], skews[:, 1] - skews[:, 0]
-    steps = _step_cost(spacing, gap, residuals)
+    steps = _step_cost(spacing, gap, residuals, target.advance[:, 0, 0])
     first, cost = _search(residuals, steps)
     # The second path must stay at least a third of the width away from the first.
     clear = np.maximum(target.width[:, 0, 0] / 3.0 / gap, 1.0)[:, None, None]
@@ -106,11 +105,11 @@ def _line_residuals(f: Floats, w: Floats, places: Floats) -> tuple[Floats, Float
     return residuals, m0[:, :, n_k // 2].sum(axis=1)
 
 
-def _step_cost(spacing: Floats, gap: Floats, residuals: Floats) -> Floats:
+def _step_cost(spacing: Floats, gap: Floats, residuals: Floats, advance: Floats) -> Floats:
     """Return the cost (p, k, k) of going from one skew to the next: out of reach, or a trace of smoothness."""
     index = np.arange(N_SKEWS)
     change = np.abs(index[:, None] - index) * gap[:, None, None]
-    reach = 2.0 * spacing * (1.0 - LEAST_ADVANCE)
+    reach = 2.0 * spacing * (1.0 - advance)
     trace = 1e-6 * residuals.mean(axis=(1, 2)) + 1e-15
     smooth = trace[:, None, None] * (change / gap[:, None, None]) ** 2
     # One step is always open, so that a coarse table of skews cannot freeze the path.

@@ -16,6 +16,7 @@ N_NODES = 9
 OVERRUN_WEIGHT = 0.001
 OVERRUN_REACH = 0.03  # of the width
 BEYOND_WEIGHT = 1e-7
+LEAST_ADVANCE = 0.1
 MASKED_WEIGHT = 1e-6  # of points inside the rectangle that were masked out
 
 
@@ -50,6 +51,9 @@ class Patch:
     strip_high_y_mm: float
     weights: Floats | None = None
     skew_limit_mm: float = np.inf  # no ruling may be more askew in plan
+    least_advance: float = (
+        LEAST_ADVANCE  # of either rail for each unit of station; 2 / (1 + r) keeps end speeds within r
+    )
 
     @property
     def node_y_mm(self) -> Floats:
@@ -70,6 +74,7 @@ class Target:
     places: Floats  # (p, 1, q) node y as a fraction of the width
     weights: Floats  # (p, q, m) over equal steps from low to high
     limit: Floats  # (p, 1, 1) largest size of the skew
+    advance: Floats  # (p, 1, 1) least advance of either rail for each unit of station
 
     @property
     def n_x(self) -> int:
@@ -139,6 +144,7 @@ def make_target(patches: list[Patch]) -> Target:
         width=column([patch.width_mm for patch in patches]),
         places=np.stack([patch.node_y_mm / patch.width_mm for patch in patches])[:, None, :],
         limit=column([patch.skew_limit_mm for patch in patches]),
+        advance=column([patch.least_advance for patch in patches]),
         weights=np.stack([np.ones((N_NODES, 1)) if p.weights is None else p.weights.T for p in patches]),
     )
 

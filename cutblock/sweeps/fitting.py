@@ -1,6 +1,8 @@
 """Every panel of a job fitted with the sweeps that cut it."""
 
+import math
 from collections.abc import Sequence
+from functools import partial
 
 import numpy as np
 
@@ -16,13 +18,13 @@ from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Sweep
 from cutblock.records.words import Severity
 from cutblock.sweeps.build import sweeps_of
-from cutblock.sweeps.checks import check_sweep
+from cutblock.sweeps.checks import STEEPEST_WIRE_DEG, check_sweep
 from cutblock.sweeps.cutting import Aim
 from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm
 from cutblock.sweeps.lie import Lie, lie_of
 from cutblock.sweeps.strips import MOST_STRIPS, NARROWEST_MM, Choice, choose_cuts
 
-BATCH = 16
+BATCH = 8
 
 
 def fit_panels(
@@ -47,10 +49,11 @@ def fit_panels(
     firsts = list(dict.fromkeys(alike))
     choices: dict[int, Choice] = {}
     for start in range(0, len(firsts), BATCH):
-        progress(start / len(firsts), f"fitting panel {panels[firsts[start]].id}")
         batch = firsts[start : start + BATCH]
+        report = partial(progress, start / len(firsts), f"Fitting panel {panels[batch[0]].id}")
+        report()
         lies = [_lies(job, panels[number], conditions) for number in batch]
-        choices.update(zip(batch, choose_cuts(lies, aim), strict=True))
+        choices.update(zip(batch, choose_cuts(lies, aim, report), strict=True))
     sweeps: list[Sweep] = []
     findings: list[Finding] = []
     for panel, first in zip(panels, alike, strict=True):
@@ -65,7 +68,7 @@ def fit_panels(
         worst = findings[0]
         raise NotCuttable(f"no panel can be cut; the first: {worst.text}", worst.subject)
     findings += _domed_faces(panels, alike, choices)
-    progress(1.0, "panels fitted")
+    progress(1.0, "Panels fitted")
     return tuple(sweeps), tuple(findings)
 
 
@@ -77,7 +80,7 @@ def _aim(job: Job, conditions: Conditions) -> Aim:
         kerf_mm=kerf,
         face_offset_mm=face_offset_mm(kerf, job.coat_mm),
         kerf_error_mm=kerf_error_mm(job.favour, kerf, job.coat_mm),
-        stretch=tool.longest_wire_mm / tool.span_mm,
+        stretch=min(tool.longest_wire_mm / tool.span_mm, 1.0 / math.cos(math.radians(STEEPEST_WIRE_DEG))),
     )
     if aim.room_mm <= 0.0:
         raise NotCuttable(

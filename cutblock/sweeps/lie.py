@@ -12,7 +12,8 @@ from cutblock.records.panel import Panel
 # A quarter turn about z: the billet's x lies along the panel's +y, its y along the panel's -x.
 QUARTER = np.array([[0.0, -1.0, 0.0], [1.0, 0.0, 0.0], [0.0, 0.0, 1.0]])
 N_MASK = 65
-SPARE = 0.98  # share of the wire's stretch that is used
+SPARE = 0.96  # share of the wire's stretch that is used
+END_SPEED_RATIO = 1.9  # in plan, of one end of the wire to the other; over 2 along the sheet the kerf differs visibly
 LEAST_LEAN = 0.05  # skew by width that is tried whatever the machine
 
 
@@ -126,6 +127,7 @@ class Strip:
             strip_low_y_mm=low - start,
             strip_high_y_mm=high - start,
             skew_limit_mm=self._skew_limit_mm(stretch),
+            least_advance=2.0 / (1.0 + END_SPEED_RATIO),
         )
         return patch if lie.outline is None else _masked(patch, lie.outline, start)
 

@@ -1,6 +1,6 @@
 """How few strips, in which wire direction, cut a panel within the tolerance."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -91,7 +91,7 @@ class _Search:
         return max(self.limit + 1, int(np.ceil(len(self.last.strips) * np.sqrt(excess))))
 
 
-def choose_cuts(lies: Sequence[tuple[Lie, Lie]], aim: Aim) -> list[Choice]:
+def choose_cuts(lies: Sequence[tuple[Lie, Lie]], aim: Aim, report: Callable[[], None] = lambda: None) -> list[Choice]:
     """Return for each panel, given with the wire along its y and along its x, the best way to cut it.
 
     Fewest strips first, then the least deviation, then, where two differ by less than a tenth of the tolerance, the
@@ -100,6 +100,7 @@ def choose_cuts(lies: Sequence[tuple[Lie, Lie]], aim: Aim) -> list[Choice]:
     searches = [tuple(_Search(lie, aim) for lie in pair) for pair in lies]
     _cut([along_y for along_y, _ in searches], aim)
     while True:
+        report()
         open_searches = [search for pair in searches for search in pair if not _is_settled(search, pair)]
         if not open_searches:
             break
