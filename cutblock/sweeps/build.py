@@ -36,6 +36,8 @@ def _sweep(job_id: str, panel_id: str, cut: CutStrip, kerf_mm: float, wall_mm: f
         max_mm=cut.max_mm,
         rms_mm=cut.rms_mm,
         p95_mm=cut.p95_mm,
+        fit_max_mm=cut.fit_max_mm,
+        fit_rms_mm=cut.fit_rms_mm,
         strip=strip.number,
         n_strips=strip.n_strips,
     )

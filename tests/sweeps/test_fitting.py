@@ -222,7 +222,7 @@ def test_progress_is_told_and_can_cancel():
         told.append((fraction, text))
 
     fit_panels(sample_job(), [panel_of(hypar)], sample_conditions(), progress)
-    assert told[0] == (0.0, "fitting panel S-A01")
+    assert told[0] == (0.0, "Fitting panel S-A01")
     assert told[-1][0] == 1.0
 
     def cancel(fraction, text):
