@@ -6,7 +6,7 @@ from pathlib import Path
 
 from cutblock.base.progress import part_of
 from cutblock.cli.progress import terminal_progress
-from cutblock.records.plan import Plan, Settings
+from cutblock.records.plan import Finding, Plan, Settings
 from cutblock.records.words import Severity
 
 
@@ -49,7 +49,13 @@ def _print_summary(plan: Plan, out: str | None) -> None:
     for label, value in lines:
         print(f"  {label:<{width}}  {value}")
     for severity in (Severity.ERROR, Severity.WARNING, Severity.INFO):
-        for finding in plan.findings:
-            if finding.severity is severity:
-                print(f"  {severity}: {finding.subject}: {finding.text}")
+        _print_findings([finding for finding in plan.findings if finding.severity is severity])
     print("  Nothing written; add --out DIR for the plan folder." if out is None else f"  Plan folder: {out}")
+
+
+def _print_findings(findings: list[Finding]) -> None:
+    """Print the first finding of each kind and how many more there are; the report lists them all."""
+    for code in dict.fromkeys(finding.code for finding in findings):
+        first, *more = [finding for finding in findings if finding.code == code]
+        count = f" (and {len(more)} more like this)" if more else ""
+        print(f"  {first.severity}: {first.subject}: {first.text}{count}")

@@ -2,6 +2,8 @@
 
 import argparse
 import ctypes
+import os
+import sys
 
 from cutblock.base.errors import InputError
 from cutblock.cli.plan import job_path
@@ -24,9 +26,10 @@ def run_window(chosen: argparse.Namespace) -> int:
         The exit code of the application.
 
     Raises:
-        InputError: A system library that the window needs is missing; names its Debian package.
+        InputError: There is no display, or a system library is missing; names its Debian package.
     """
     _refuse_missing_libraries()
+    _refuse_missing_display()
     from cutblock.window.main import open_window
 
     job = getattr(chosen, "job", None)
@@ -38,6 +41,14 @@ def _refuse_missing_libraries() -> None:
     if missing:
         remedy = f"Install with: sudo apt-get install -y --no-install-recommends {' '.join(missing)}"
         raise InputError("the window needs system libraries that are missing.", remedy=remedy)
+
+
+def _refuse_missing_display() -> None:
+    """Qt ends the process when it finds no display; say it in words first."""
+    has_display = any(os.environ.get(name) for name in ("DISPLAY", "WAYLAND_DISPLAY", "QT_QPA_PLATFORM"))
+    if sys.platform.startswith("linux") and not has_display:
+        remedy = "Start it from a desktop session, or use `cutblock plan JOB --out DIR`, which needs none."
+        raise InputError("the window needs a display, and there is none.", remedy=remedy)
 
 
 def _loads(library: str) -> bool:

@@ -15,6 +15,8 @@ from cutblock.records.words import Severity
 
 NARROWEST_MM = 20.0  # a narrower strip of foam is no mould
 SMALLEST_SHARE = 0.01  # of a cell; less is merged with a neighbour
+# A cell may be this part of the wanted one larger: float32 meshes and rounded CSV rows are that far off their sizes.
+_OVER = 1e-4
 _MOST_CELLS = 20_000
 
 
@@ -88,7 +90,7 @@ def _lines(
 ) -> list[float]:
     if wanted is not None:
         # The slack keeps a length that is a multiple of the cell but for rounding from getting one cell more.
-        n = max(1, math.ceil(length / wanted * (1.0 - 1e-9)))
+        n = max(1, math.ceil(length / wanted - _OVER))
         lines = [length * i / n for i in range(n)] + [length]
     else:
         lines = [0.0, *cuts, length]

@@ -85,7 +85,7 @@ def _billet_extent(extent_mm: float, margin_mm: float) -> float:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Strip:
-    """One of n equal strips of a panel across the wire; on the bench the outermost ones carry the margin."""
+    """One of n about equal strips of a panel across the wire; on the bench the outermost ones carry the margin."""
 
     lie: Lie
     number: int  # from 1
@@ -94,8 +94,15 @@ class Strip:
     @property
     def panel_span_mm(self) -> tuple[float, float]:
         """From where to where in y of the lie the strip's part of the panel runs."""
+        return self._joint_mm(self.number - 1), self._joint_mm(self.number)
+
+    def _joint_mm(self, number: int) -> float:
+        """Return where joint `number` lies, 0 and the number of strips being the panel's edges."""
         low, extent = self.lie.corner_mm[1], self.lie.extent_mm[1]
-        return low + extent * (self.number - 1) / self.n_strips, low + extent * self.number / self.n_strips
+        if number in (0, self.n_strips):
+            return low if number == 0 else low + extent
+        # Joints lie on tenths of a mm, which a workshop can measure and files hold exactly.
+        return round(low + extent * number / self.n_strips, 1)
 
     @property
     def billet_span_mm(self) -> tuple[float, float]:

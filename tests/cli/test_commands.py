@@ -230,3 +230,28 @@ def test_the_same_job_gives_the_same_bytes_whatever_the_hash_seed_and_the_thread
         written.append({str(p.relative_to(out)): p.read_bytes() for p in sorted(out.rglob("*")) if p.is_file()})
 
     assert written[0] == written[1]
+
+
+def test_without_a_display_the_window_is_refused_in_words(monkeypatch, capsys):
+    for name in ("DISPLAY", "WAYLAND_DISPLAY", "QT_QPA_PLATFORM"):
+        monkeypatch.delenv(name, raising=False)
+
+    assert main(["window"]) == 2
+    assert main([]) == 2
+
+    assert "display" in capsys.readouterr().err
+
+
+def test_findings_alike_are_told_once_with_their_number(capsys):
+    from cutblock.cli.plan import _print_findings
+    from cutblock.records.plan import Finding
+    from cutblock.records.words import Severity
+
+    findings = [Finding(severity=Severity.WARNING, code=c, subject=f"S-{n}", text="Look.") for n, c in enumerate("aba")]
+
+    _print_findings(findings)
+
+    assert capsys.readouterr().out.splitlines() == [
+        "  warning: S-0: Look. (and 1 more like this)",
+        "  warning: S-1: Look.",
+    ]
