@@ -11,7 +11,7 @@ SKY, ORANGE, GREEN, YELLOW, BLUE, VERMILION, PINK = (
     "#D55E00",
     "#CC79A7",
 )
-PALE, GREY, DARK = "#F4F4F4", "#BBBBBB", "#303030"
+PALE, GREY, WHITE = "#F4F4F4", "#BBBBBB", "#FFFFFF"
 
 # What the upper half is for tells the billets of a block apart: the lower half is a mould.
 DUTY_LOOK: dict[Duty, tuple[str, str]] = {
@@ -19,7 +19,7 @@ DUTY_LOOK: dict[Duty, tuple[str, str]] = {
     Duty.COUNTER_MOULD: (ORANGE, "/"),
     Duty.CRADLE: (GREEN, "\\"),
     Duty.FILLER: (PINK, "x"),
-    Duty.SURPLUS: (YELLOW, "."),
+    Duty.SURPLUS: (YELLOW, "x"),  # a job has fillers or surplus halves, never both; dots are scrap
 }
 
 # (name of the ledger's part, label, colour, hatch) in the order of the bar: used first, then kept, then wasted.
@@ -29,8 +29,8 @@ LEDGER_LOOK = (
     ("cradle", "Cradles", GREEN, "\\"),
     ("filler", "Fillers", PINK, "x"),
     ("offcut", "Offcuts kept", PALE, "/"),
-    ("surplus", "Surplus halves", YELLOW, "."),
+    ("surplus", "Surplus halves", YELLOW, "x"),
     ("trim", "Skin trim", GREY, ""),
     ("kerf", "Kerf", VERMILION, ""),
-    ("scrap", "Scrap", DARK, ""),
+    ("scrap", "Scrap", WHITE, "."),
 )

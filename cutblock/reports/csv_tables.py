@@ -1,6 +1,7 @@
 """pieces.csv and blocks.csv (RFC 4180), the unit in every heading.
 
-A cell that a spreadsheet would take for a formula (first sign = + - @, tab or return) gets an apostrophe in front.
+Numbers have a point and a fixed number of decimals, whatever the machine's language. A text that a spreadsheet would
+take for a formula (first sign = + - @, tab or return) gets an apostrophe in front; ids never begin so.
 """
 
 import csv
@@ -9,42 +10,44 @@ from io import StringIO
 
 from cutblock.base.units import hours, litres, mm_per_minute
 from cutblock.records.account import Ledger
+from cutblock.records.block import Block
+from cutblock.records.piece import Piece
 from cutblock.records.plan import Plan
+from cutblock.records.sweep import Sweep, SweepTiming
 
 _FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
 LEDGER_PARTS = ("mould", "counter_mould", "cradle", "filler", "surplus", "offcut", "trim", "kerf", "scrap")
+_PIECE_HEADING = (
+    "piece", "partner", "sweep", "half", "duty", "panel", "block", "litres", "mass kg", "billet length mm",
+    "billet width mm", "billet height mm", "speed mm/min", "code",
+)  # fmt: skip
 
 
 def pieces_csv(plan: Plan) -> str:
     """Return one row a piece, in the order of the plan."""
     sweeps = {sweep.id: sweep for sweep in plan.sweeps}
     timings = {timing.sweep: timing for timing in plan.timings}
-    heading = (
-        "piece", "partner", "sweep", "half", "duty", "panel", "block", "litres", "mass kg", "billet length mm",
-        "billet width mm", "billet height mm", "speed mm/min", "code",
-    )  # fmt: skip
-    rows = []
-    for piece in plan.pieces:
-        sweep, timing = sweeps[piece.sweep], timings[piece.sweep]
-        rows.append(
-            (
-                piece.id,
-                piece.partner,
-                piece.sweep,
-                piece.half.value,
-                piece.duty.value,
-                piece.panel or "",
-                piece.block or "",
-                f"{litres(piece.volume_mm3):.3f}",
-                f"{piece.mass_kg:.3f}",
-                f"{sweep.length_mm:.1f}",
-                f"{sweep.width_mm:.1f}",
-                f"{sweep.height_mm:.1f}",
-                f"{mm_per_minute(timing.planned_mm_s):.1f}",
-                piece.code,
-            )
-        )
-    return _table(heading, rows)
+    rows = (_piece_row(piece, sweeps[piece.sweep], timings[piece.sweep]) for piece in plan.pieces)
+    return _table(_PIECE_HEADING, rows)
+
+
+def _piece_row(piece: Piece, sweep: Sweep, timing: SweepTiming) -> tuple[str, ...]:
+    return (
+        _text(piece.id),
+        _text(piece.partner),
+        _text(piece.sweep),
+        piece.half.value,
+        piece.duty.value,
+        _text(piece.panel or ""),
+        _text(piece.block or ""),
+        f"{litres(piece.volume_mm3):.3f}",
+        f"{piece.mass_kg:.3f}",
+        f"{sweep.length_mm:.1f}",
+        f"{sweep.width_mm:.1f}",
+        f"{sweep.height_mm:.1f}",
+        f"{mm_per_minute(timing.planned_mm_s):.1f}",
+        _text(piece.code),
+    )
 
 
 def blocks_csv(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
@@ -56,39 +59,40 @@ def blocks_csv(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
     """
     block_hours = dict(plan.hours.by_block_s) if plan.hours is not None else {}
     heading = (
-        "block", "grade", "length mm", "width mm", "height mm", "billets", "used %", "waste %", "bought litres",
-        *(f"{part.replace('_', '-')} litres" for part in LEDGER_PARTS), "hours", "price",
+        "block", "grade", "length mm", "width mm", "height mm", "from offcut", "billets", "used %", "waste %",
+        "bought litres", *(f"{part.replace('_', '-')} litres" for part in LEDGER_PARTS), "hours",
+        _text(f"price {plan.job.currency}".rstrip()),
     )  # fmt: skip
-    rows = []
-    for block in plan.blocks:
-        ledger = block_ledgers[block.id]
-        rows.append(
-            (
-                block.id,
-                block.grade,
-                f"{block.length_mm:.1f}",
-                f"{block.width_mm:.1f}",
-                f"{block.height_mm:.1f}",
-                str(len(block.billets)),
-                f"{ledger.used_percent:.2f}",
-                f"{ledger.waste_percent:.2f}",
-                f"{litres(ledger.bought_mm3):.3f}",
-                *(f"{litres(getattr(ledger, f'{part}_mm3')):.3f}" for part in LEDGER_PARTS),
-                f"{hours(block_hours.get(block.id, 0.0)):.3f}",
-                "" if block.price is None else f"{block.price:.2f}",
-            )
-        )
+    rows = (_block_row(block, block_ledgers[block.id], block_hours.get(block.id, 0.0)) for block in plan.blocks)
     return _table(heading, rows)
+
+
+def _block_row(block: Block, ledger: Ledger, seconds: float) -> tuple[str, ...]:
+    return (
+        _text(block.id),
+        _text(block.grade),
+        f"{block.length_mm:.1f}",
+        f"{block.width_mm:.1f}",
+        f"{block.height_mm:.1f}",
+        "yes" if block.from_offcut else "no",
+        str(len(block.billets)),
+        f"{ledger.used_percent:.2f}",
+        f"{ledger.waste_percent:.2f}",
+        f"{litres(ledger.bought_mm3):.3f}",
+        *(f"{litres(getattr(ledger, f'{part}_mm3')):.3f}" for part in LEDGER_PARTS),
+        f"{hours(seconds):.3f}",
+        "" if block.price is None else f"{block.price:.2f}",
+    )
 
 
 def _table(heading: Sequence[str], rows: Iterable[Sequence[str]]) -> str:
     text = StringIO()
     writer = csv.writer(text, lineterminator="\r\n")
     writer.writerow(heading)
-    writer.writerows([_guarded(cell) for cell in row] for row in rows)
+    writer.writerows(rows)
     return text.getvalue()
 
 
-def _guarded(cell: str) -> str:
-    is_number = cell.lstrip("-").replace(".", "", 1).isdigit()
-    return f"'{cell}" if cell.startswith(_FORMULA_STARTS) and not is_number else cell
+def _text(cell: str) -> str:
+    """Return a text cell that no spreadsheet runs as a formula (CWE-1236)."""
+    return f"'{cell}" if cell.startswith(_FORMULA_STARTS) else cell

@@ -2,12 +2,12 @@
 
 from collections import Counter
 
-from cutblock.base.units import hours
+from cutblock.base.units import LengthUnit, hours, length_text
 from cutblock.records.plan import Plan
 from cutblock.records.words import Duty, Severity
+from cutblock.reports.figures import count_text
 
-
-_DIGITS = 6
+_DIGITS = 6  # of mm; deviations that differ by less are equal, whatever the order they were summed in
 
 
 def summary_lines(plan: Plan) -> tuple[tuple[str, str], ...]:
@@ -15,13 +15,13 @@ def summary_lines(plan: Plan) -> tuple[tuple[str, str], ...]:
     return (
         ("panels", _panels(plan)),
         ("sweeps", str(len(plan.sweeps))),
-        ("pieces", _pieces(plan)),
-        ("blocks", _blocks(plan)),
+        ("pieces", f"{len(plan.pieces)}: {duty_counts(plan)}"),
+        ("blocks", f"{len(plan.blocks)} ({bound_words(plan)})"),
         ("foam", _foam(plan)),
         ("hours", _hours(plan)),
         ("worst fit", _worst_fit(plan)),
         ("cost", _cost(plan)),
-        ("findings", _findings(plan)),
+        ("findings", finding_counts(plan)),
     )
 
 
@@ -31,24 +31,48 @@ def worst_serving(plan: Plan) -> tuple[float, str]:
     return max(servings, key=lambda entry: entry[0], default=(0.0, ""))
 
 
+def fine_text(length_mm: float, unit: str) -> str:
+    """Return a small length such as a deviation in the unit people read, to about a thousandth of a mm."""
+    if LengthUnit(unit) is LengthUnit.MM:
+        return f"{length_mm:.3f} mm"
+    return length_text(length_mm, unit, extra_decimals=2)
+
+
+def duty_counts(plan: Plan) -> str:
+    """Return how many pieces there are of each duty, such as "3 moulds, 1 counter-mould"."""
+    counts = Counter(piece.duty for piece in plan.pieces)
+    names = {duty: duty.value if duty is Duty.SURPLUS else "" for duty in Duty}
+    return ", ".join(count_text(counts[duty], duty.value, names[duty]) for duty in Duty if counts[duty])
+
+
+def bound_words(plan: Plan) -> str:
+    """Return how far the number of blocks is from the fewest possible, and what proves it."""
+    proof = f", proved by {plan.bound_proof}" if plan.bound_proof else ""
+    return f"no packing needs fewer than {plan.n_blocks_bound}{proof}"
+
+
+def finding_counts(plan: Plan) -> str:
+    """Return how many findings there are of each severity, the worst first."""
+    counts = Counter(finding.severity for finding in plan.findings)
+    parts = [
+        count_text(counts[severity], severity.value, "info" if severity is Severity.INFO else "")
+        for severity in (Severity.ERROR, Severity.WARNING, Severity.INFO)
+        if counts[severity]
+    ]
+    return ", ".join(parts) if parts else "none"
+
+
+def cost_parts(plan: Plan) -> str:
+    """Return what the cost is made of, such as "foam 150.00, machine 40.00"; empty where nothing is priced."""
+    if plan.cost is None:
+        return ""
+    known = (("foam", plan.cost.foam), ("machine", plan.cost.machine))
+    return ", ".join(f"{label} {value:.2f}" for label, value in known if value is not None)
+
+
 def _panels(plan: Plan) -> str:
     paired = {panel for sweep in plan.sweeps if len(set(sweep.serves)) > 1 for panel in sweep.serves}
     return f"{len(plan.panels)}, {len(paired)} of them share their cut"
-
-
-def _pieces(plan: Plan) -> str:
-    counts = Counter(piece.duty for piece in plan.pieces)
-    parts = [
-        f"{counts[duty]} {duty.value}{'s' if counts[duty] != 1 and duty is not Duty.SURPLUS else ''}"
-        for duty in Duty
-        if counts[duty]
-    ]
-    return f"{len(plan.pieces)}: {', '.join(parts)}"
-
-
-def _blocks(plan: Plan) -> str:
-    proof = f", proved by {plan.bound_proof}" if plan.bound_proof else ""
-    return f"{len(plan.blocks)} (no packing needs fewer than {plan.n_blocks_bound}{proof})"
 
 
 def _foam(plan: Plan) -> str:
@@ -68,25 +92,12 @@ def _hours(plan: Plan) -> str:
 
 def _worst_fit(plan: Plan) -> str:
     worst, panel = worst_serving(plan)
-    return f"{worst:.3f} mm at panel {panel} (tolerance {plan.job.tolerance_mm:g} mm)" if panel else "no sweep"
+    unit = plan.job.units
+    tolerance = length_text(plan.job.tolerance_mm, unit, extra_decimals=2)
+    return f"{fine_text(worst, unit)} at panel {panel} (tolerance {tolerance})" if panel else "no sweep"
 
 
 def _cost(plan: Plan) -> str:
     if plan.cost is None or plan.cost.total is None:
         return "no prices given"
-    parts = [
-        f"{label} {value:.2f}"
-        for label, value in (("foam", plan.cost.foam), ("machine", plan.cost.machine))
-        if value is not None
-    ]
-    return f"{plan.cost.total:.2f} {plan.cost.currency}".rstrip() + f" ({', '.join(parts)})"
-
-
-def _findings(plan: Plan) -> str:
-    counts = Counter(finding.severity for finding in plan.findings)
-    parts = [
-        f"{counts[severity]} {severity.value}{'s' if counts[severity] != 1 else ''}"
-        for severity in reversed(Severity)
-        if counts[severity]
-    ]
-    return ", ".join(parts) if parts else "none"
+    return f"{plan.cost.total:.2f} {plan.cost.currency}".rstrip() + f" ({cost_parts(plan)})"

@@ -1,4 +1,5 @@
 import csv
+import locale
 from dataclasses import replace
 from io import StringIO
 
@@ -33,21 +34,73 @@ def test_the_litres_of_a_block_sum_to_what_was_bought():
     assert sum(litres.values()) == pytest.approx(bought, abs=0.01)
 
 
-@pytest.mark.parametrize("name", ["=1+1", "+SUM(A1)", "-2+3", "@cmd", "\tx", "\r=1"])
+@pytest.mark.parametrize("name", ["=1+1", "+SUM(A1)", "-2+3", "-2", "@cmd", "\tx", "\r=1"])
 def test_a_name_cannot_become_a_formula(name):
     """CWE-1236: spreadsheets run cells that start with = + - @ tab or return."""
     plan = sample_plan()
-    pieces = (replace(plan.pieces[0], panel=name),)
+    pieces = (replace(plan.pieces[0], panel=name, block=name),)
+    job = replace(plan.job, currency=name)
+    block = replace(plan.blocks[0], grade=name)
+    plan = replace(plan, pieces=pieces)
 
-    cell = rows(pieces_csv(replace(plan, pieces=pieces)))[1][5]
+    cells = rows(pieces_csv(plan))[1]
+    heading, cell = rows(blocks_csv(replace(plan, job=job, blocks=(block,)), block_ledgers(sample_plan())))
 
-    assert cell == f"'{name}"
+    assert cells[5] == cells[6] == cell[1] == f"'{name}"
+    assert heading[-1] == f"price {name}".rstrip()
 
 
-def test_commas_and_quotes_come_back_whole():
+def test_numbers_stay_numbers():
     plan = sample_plan()
-    odd = 'north, "wet" side'
+    pieces = (replace(plan.pieces[0], mass_kg=-0.25),)
 
-    cell = rows(pieces_csv(replace(plan, pieces=(replace(plan.pieces[0], panel=odd),))))[1][5]
+    assert rows(pieces_csv(replace(plan, pieces=pieces)))[1][8] == "-0.250"
 
-    assert cell == odd
+
+@pytest.mark.parametrize("name", ['north, "wet" side', "two\nlines", "two\r\nlines", "Größe", "'quoted'"])
+def test_texts_come_back_whole(name):
+    plan = sample_plan()
+
+    cell = rows(pieces_csv(replace(plan, pieces=(replace(plan.pieces[0], panel=name),))))[1][5]
+
+    assert cell == name
+
+
+def test_every_row_ends_as_the_standard_says_and_has_a_cell_for_each_heading():
+    """RFC 4180: CRLF after every row, the same number of fields in each."""
+    plan = sample_plan()
+    for text in (pieces_csv(plan), blocks_csv(plan, block_ledgers(plan))):
+        assert text.endswith("\r\n")
+        assert text.count("\n") == text.count("\r\n")
+        assert len({len(row) for row in rows(text)}) == 1
+
+
+def test_a_block_has_its_sizes_hours_and_price_in_named_units():
+    plan = sample_plan()
+
+    heading, row = rows(blocks_csv(plan, block_ledgers(plan)))
+    cells = dict(zip(heading, row, strict=True))
+
+    assert (cells["length mm"], cells["width mm"], cells["height mm"]) == ("2500.0", "1250.0", "700.0")
+    assert (cells["billets"], cells["hours"], cells["price EUR"], cells["from offcut"]) == (
+        "2",
+        "1.300",
+        "150.00",
+        "no",
+    )
+
+
+def test_numbers_have_a_point_whatever_the_language_of_the_machine():
+    known = locale.setlocale(locale.LC_ALL)
+    plan = sample_plan()
+    wanted = pieces_csv(plan)
+    for name in ("de_DE.UTF-8", "fr_FR.UTF-8"):
+        try:
+            locale.setlocale(locale.LC_ALL, name)
+        except locale.Error:
+            continue
+        try:
+            assert pieces_csv(plan) == wanted
+        finally:
+            locale.setlocale(locale.LC_ALL, known)
+    assert ",179.278," in wanted

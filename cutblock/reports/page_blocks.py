@@ -1,0 +1,95 @@
+"""The blocks of a plan on the page: a picture of each and its cuts in order."""
+
+from collections.abc import Mapping
+
+from cutblock.base.units import hours, length_text
+from cutblock.records.account import Ledger
+from cutblock.records.block import Block, Cut
+from cutblock.records.plan import Plan
+from cutblock.records.words import CutKind
+from cutblock.reports.blocks import block_drawing
+from cutblock.reports.figures import count_text, size_text
+from cutblock.reports.markup import paragraph, safe, table
+from cutblock.reports.svg import svg_text
+
+_KIND_WORDS = {CutKind.TRIM: "trim", CutKind.THROUGH: "through cut", CutKind.SWEEP: "form sweep"}
+_DONE = "☐"  # to tick on paper
+
+
+def blocks_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
+    """Return every block with its picture and cut list, in the order they are cut."""
+    block_hours = dict(plan.hours.by_block_s) if plan.hours is not None else {}
+    return "".join(
+        _block(block, plan, block_ledgers[block.id], hours(block_hours.get(block.id, 0.0))) for block in plan.blocks
+    )
+
+
+def _block(block: Block, plan: Plan, ledger: Ledger, time_h: float) -> str:
+    n_setups = max((cut.setup for cut in block.cuts), default=0)
+    facts = [
+        count_text(len(block.billets), "billet"),
+        f"used {ledger.used_percent:.1f} %",
+        f"waste {ledger.waste_percent:.1f} %",
+        f"{time_h:.1f} h",
+        count_text(n_setups, "set-up"),
+    ]
+    if block.from_offcut:
+        facts.insert(0, "from an offcut kept earlier")
+    picture = svg_text(block_drawing(block, plan.pieces, plan.job.units))
+    return (
+        f'<article class="block">\n<h3>{safe(block.id)}</h3>\n{paragraph(", ".join(facts))}{picture}\n'
+        f"{_cuts(block, plan)}</article>\n"
+    )
+
+
+def _cuts(block: Block, plan: Plan) -> str:
+    pieces: dict[str, list[str]] = {}
+    for piece in plan.pieces:
+        pieces.setdefault(piece.sweep, []).append(piece.id)
+    rows: list[tuple[str, ...]] = []
+    setup = 0
+    for cut in block.cuts:
+        if cut.setup != setup:
+            setup = cut.setup
+            lies = "turned a quarter, its y along the travel" if cut.turn else "along the block, its x along the travel"
+            rows.append((f"Set-up {setup}: part clamped {lies}",))
+        rows.append(_cut_row(cut, pieces))
+    heading = ("cut", "kind", "at, mm", "part before the cut, mm", "sweep", "pieces to tag", "done")
+    note = (
+        "Planes are measured in the whole block, from the corner where the arrows of the picture begin. The wire takes"
+        f" the {length_text(block.kerf_mm, 'mm', extra_decimals=2)} that follow the plane, away from that corner."
+    )
+    return f"{table(heading, rows, numbers=(0,))}{paragraph(note, 'note')}"
+
+
+def _cut_row(cut: Cut, pieces: Mapping[str, list[str]]) -> tuple[str, ...]:
+    at = "" if cut.kind is CutKind.SWEEP else f"{cut.axis} = {cut.at_mm:.1f}"
+    part = " × ".join(f"{size:.1f}" for size in cut.part_size_mm)
+    tags = " and ".join(pieces.get(cut.sweep, [])) if cut.sweep is not None else ""
+    return str(cut.order), _KIND_WORDS[cut.kind], at, part, cut.sweep or "", tags, _DONE
+
+
+def stock_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
+    """Return one line for each block: what to buy and what becomes of it."""
+    rows = []
+    for block in plan.blocks:
+        ledger = block_ledgers[block.id]
+        rows.append(
+            (
+                block.id,
+                size_text((block.length_mm, block.width_mm, block.height_mm), plan.job.units),
+                block.grade,
+                str(len(block.billets)),
+                f"{ledger.used_percent:.1f}",
+                f"{ledger.waste_percent:.1f}",
+                _price(block, plan.job.currency),
+            )
+        )
+    heading = ("block", "size", "grade", "billets", "used %", "waste %", "price")
+    return table(heading, rows, numbers=(3, 4, 5, 6))
+
+
+def _price(block: Block, currency: str) -> str:
+    if block.from_offcut:
+        return "own offcut"
+    return "" if block.price is None else f"{block.price:.2f} {currency}".rstrip()
