@@ -57,7 +57,7 @@ def _cuts(block: Block, plan: Plan) -> str:
     heading = ("cut", "kind", "at, mm", "part before the cut, mm", "sweep", "pieces to tag", "done")
     note = (
         "Planes are measured in the whole block, from the corner where the arrows of the picture begin. The wire takes"
-        f" the {length_text(block.kerf_mm, 'mm', extra_decimals=2)} that follow the plane, away from that corner."
+        f" the {length_text(block.kerf_mm, 'mm', extra_decimals=2)} beyond the plane, away from that corner."
     )
     return f"{table(heading, rows, numbers=(0,))}{paragraph(note, 'note')}"
 
@@ -77,7 +77,7 @@ def stock_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
         rows.append(
             (
                 block.id,
-                size_text((block.length_mm, block.width_mm, block.height_mm), plan.job.units),
+                size_text((block.length_mm, block.width_mm, block.height_mm), plan.job.units, has_unit=False),
                 block.grade,
                 str(len(block.billets)),
                 f"{ledger.used_percent:.1f}",
@@ -85,7 +85,7 @@ def stock_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
                 _price(block, plan.job.currency),
             )
         )
-    heading = ("block", "size", "grade", "billets", "used %", "waste %", "price")
+    heading = ("block", f"size {plan.job.units}", "grade", "billets", "used %", "waste %", "price")
     return table(heading, rows, numbers=(3, 4, 5, 6))
 
 

@@ -20,8 +20,8 @@ def panels_body(plan: Plan) -> str:
             partners |= {others[0]: others[1], others[1]: others[0]}
     rows = [_panel_row(panel, servings.get(panel.id, []), partners.get(panel.id, ""), plan) for panel in plan.panels]
     heading = (
-        "panel", "size", "strips", "ruled fit max mm", "ruled fit rms mm", "finished max mm", "finished rms mm",
-        "in tolerance", "shares its cut with",
+        "panel", f"size {plan.job.units}", "strips", "ruled fit max mm", "ruled fit rms mm", "finished max mm",
+        "finished rms mm", "in tolerance", "shares its cut with",
     )  # fmt: skip
     kinds = ["error" if row[7] == "NO" else "" for row in rows]
     note = (
@@ -32,7 +32,7 @@ def panels_body(plan: Plan) -> str:
 
 
 def _panel_row(panel: Panel, servings: list[Serving], partner: str, plan: Plan) -> tuple[str, ...]:
-    size = size_text((panel.length_mm, panel.width_mm), plan.job.units)
+    size = size_text((panel.length_mm, panel.width_mm), plan.job.units, has_unit=False)
     if not servings:
         return panel.id, size, "", "not cuttable", "", "", "", "NO", ""
     finished = max(serving.max_mm for serving in servings)
@@ -62,7 +62,7 @@ def sweeps_body(plan: Plan) -> str:
         rows.append(
             (
                 sweep.id,
-                size_text((sweep.length_mm, sweep.width_mm, sweep.height_mm), plan.job.units),
+                size_text((sweep.length_mm, sweep.width_mm, sweep.height_mm), plan.job.units, has_unit=False),
                 f"{litres(volume.lower_mm3):.2f}",
                 f"{litres(volume.upper_mm3):.2f}",
                 f"{litres(volume.kerf_mm3):.2f}",
@@ -74,7 +74,7 @@ def sweeps_body(plan: Plan) -> str:
             )
         )
     heading = (
-        "sweep", "billet", "lower litres", "upper litres", "kerf litres", "kerf near / far mm",
+        "sweep", f"billet {plan.job.units}", "lower litres", "upper litres", "kerf litres", "kerf near / far mm",
         "slowest / planned / fastest mm/min", "minutes", "faster end / slower end", "twist °/m",
     )  # fmt: skip
     return table(heading, rows, numbers=tuple(range(2, 10)))

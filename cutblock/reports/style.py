@@ -31,6 +31,8 @@ th, td { text-align: left; padding: 4px 14px 4px 0; border-bottom: 1px solid #dd
 thead th { border-bottom: 2px solid #888888; font-size: 13px; vertical-align: bottom; }
 table.pairs th { font-weight: normal; color: #505050; padding-right: 28px; }
 td.number, th.number { text-align: right; font-variant-numeric: tabular-nums; padding-left: 8px; }
+tbody td { white-space: nowrap; }
+table.pairs td, tr.finding td { white-space: normal; }
 tr.over th { background: #eef2f5; font-size: 13px; padding: 5px 8px; }
 tr.sum td { font-weight: bold; border-top: 2px solid #888888; }
 tr.finding td:first-child { padding-left: 8px; border-left: 7px solid #56B4E9; }
@@ -47,8 +49,11 @@ svg { width: 100%; height: auto; display: block; margin: 10px 0; }
 @media print {
   body { padding: 0; font-size: 11px; max-width: none; -webkit-print-color-adjust: exact; print-color-adjust: exact; }
   h1 { font-size: 22px; } h2 { font-size: 15px; margin-top: 20px; } h3 { font-size: 13px; }
-  .card b { font-size: 18px; } .card span, .card small, thead th, p.note, tr.over th { font-size: 10px; }
+  .card b { font-size: 18px; } .card span, .card small, thead th, p.note, tbody td { white-space: nowrap; }
+table.pairs td, tr.finding td { white-space: normal; }
+tr.over th { font-size: 10px; }
   th, td { padding: 2px 9px 2px 0; }
+  table { font-size: 10px; }
   thead { display: table-header-group; }
   h2, h3, tr.over { break-after: avoid; }
   article.block { break-before: page; }

@@ -214,8 +214,9 @@ def test_lengths_stand_in_the_unit_of_the_job():
     text = " ".join(reader.text)
 
     assert "0.1 in (2.54 mm)" in text
-    assert reader.table("block")[1][1] == "98.43 × 49.21 × 27.56 in"
-    assert reader.table("sweep")[1][1] == "47.24 × 39.37 × 11.81 in"
+    assert reader.table("block")[0][1] == "size in"
+    assert reader.table("block")[1][1] == "98.43 × 49.21 × 27.56"
+    assert reader.table("sweep")[1][1] == "47.24 × 39.37 × 11.81"
 
 
 def test_the_speed_bar_puts_the_planned_speed_between_its_limits():
