@@ -58,9 +58,16 @@ def block_ledgers(plan: Plan) -> dict[str, Ledger]:
     return {block.id: account_block(block, plan.volumes, plan.pieces) for block in plan.blocks}
 
 
-def tag_drawings(plan: Plan) -> tuple[Drawing, ...]:
-    """Return one drawing for each piece, in the order the pieces are cut."""
-    return describe_tags(plan.job.title, plan.job.revision, plan.pieces, plan.sweeps, plan.blocks)
+def tag_drawings(plan: Plan, sheet_name: str = LABEL_SHEET) -> tuple[Drawing, ...]:
+    """Return one drawing for each piece in the order the pieces are cut, laid out for the labels of a sheet.
+
+    Raises:
+        InputError: No such sheet.
+    """
+    sheet = catalog.label_sheet(sheet_name)
+    label_mm = (sheet.label_width_mm, sheet.label_height_mm)
+    job = plan.job
+    return describe_tags(job.title, job.revision, plan.pieces, plan.sweeps, plan.blocks, label_mm, plan.panels)
 
 
 def tag_sheets(plan: Plan, sheet_name: str, start: int) -> bytes:
@@ -69,7 +76,7 @@ def tag_sheets(plan: Plan, sheet_name: str, start: int) -> bytes:
     Raises:
         InputError: No such sheet, or it has no such label.
     """
-    return tags_pdf(tag_drawings(plan), catalog.label_sheet(sheet_name), start)
+    return tags_pdf(tag_drawings(plan, sheet_name), catalog.label_sheet(sheet_name), start)
 
 
 def block_drawings(plan: Plan) -> tuple[Drawing, ...]:
