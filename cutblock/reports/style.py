@@ -49,13 +49,11 @@ svg { width: 100%; height: auto; display: block; margin: 10px 0; }
 @media print {
   body { padding: 0; font-size: 11px; max-width: none; -webkit-print-color-adjust: exact; print-color-adjust: exact; }
   h1 { font-size: 22px; } h2 { font-size: 15px; margin-top: 20px; } h3 { font-size: 13px; }
-  .card b { font-size: 18px; } .card span, .card small, thead th, p.note, tbody td { white-space: nowrap; }
-table.pairs td, tr.finding td { white-space: normal; }
-tr.over th { font-size: 10px; }
+  .card b { font-size: 18px; } .card span, .card small, thead th, p.note, tr.over th { font-size: 10px; }
   th, td { padding: 2px 9px 2px 0; }
   table { font-size: 10px; }
   thead { display: table-header-group; }
-  h2, h3, tr.over { break-after: avoid; }
+  h2, h3, p, tr.over { break-after: avoid; }
   article.block { break-before: page; }
   article.block:first-of-type { break-before: auto; }
   tr, svg, .card, .keep, header { break-inside: avoid; }
