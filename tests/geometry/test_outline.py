@@ -38,7 +38,7 @@ def test_points_on_straight_edges_are_dropped_again():
 
 
 def test_a_rectangle_with_a_hole_or_a_moved_corner_is_no_plain_rectangle():
-    moved = SQUARE + [[0, 0], [0, 0], [1e-3, 0], [0, 0]]
+    moved = SQUARE + np.array([[0, 0], [0, 0], [1e-3, 0], [0, 0]])
     assert not is_plain_rectangle((SQUARE, HOLE), 100.0, 60.0, 1e-6)
     assert not is_plain_rectangle((moved,), 100.0, 60.0, 1e-6)
     assert not is_plain_rectangle((SQUARE[:3],), 100.0, 60.0, 1e-6)
