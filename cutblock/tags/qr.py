@@ -1,9 +1,12 @@
 """QR symbols (ISO/IEC 18004) as rows of modules."""
 
+from functools import lru_cache
+
 LEVELS = ("Q", "M")  # a quarter, then a seventh of the symbol may be lost
 QUIET_MODULES = 4  # ISO/IEC 18004: four light modules on every side
 
 
+@lru_cache(maxsize=4096)  # the window asks again for the tags of every plan it shows
 def qr_rows(code: str, most_modules: int) -> tuple[str, ...]:
     """Return the modules of a QR symbol, without the quiet zone.
 

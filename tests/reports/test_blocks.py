@@ -167,3 +167,14 @@ def test_a_block_without_billets_has_a_picture_too():
     drawing = block_drawing(replace(sample_block(), billets=(), cuts=()), ())
 
     assert drawing.height_mm > 0.0
+
+
+def test_a_name_that_could_not_be_read_is_left_to_the_tool_tip():
+    block, pieces = stacked_block(60, 1, 10)
+
+    drawing = block_drawing(block, pieces)
+
+    sizes = [mark.size_mm for mark in drawing.marks if isinstance(mark, Text) and mark.text.startswith("SM-T-")]
+    assert min(sizes, default=1.0) >= 1.0
+    titles = {mark.title.split(",")[0] for mark in drawing.marks if isinstance(mark, Polygon)}
+    assert {billet.sweep for billet in block.billets} <= titles

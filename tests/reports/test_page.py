@@ -227,6 +227,7 @@ def test_the_speed_bar_puts_the_planned_speed_between_its_limits():
     planned = next(m.x1_mm for m in drawing.marks if not isinstance(m, Polygon | Text))
     assert slow[:, 0].max() == pytest.approx(good[:, 0].min())
     assert good[:, 0].min() < planned < good[:, 0].max() == pytest.approx(fast[:, 0].min())
+    assert drawing.width_mm - fast[:, 0].min() > 20.0
     assert planned / good[:, 0].max() == pytest.approx(conditions.planned_mm_s / conditions.high_mm_s)
 
 

@@ -134,3 +134,15 @@ def test_a_module_of_the_symbol_is_wide_enough_for_a_dusty_shop(name):
     for tag in drawings((sheet.label_width_mm, sheet.label_height_mm)):
         symbol = next(mark for mark in tag.marks if isinstance(mark, Modules))
         assert symbol.side_mm / len(symbol.rows) >= 0.6
+
+
+def test_a_long_code_takes_less_error_correction_rather_than_finer_modules():
+    """55 characters: version 4 at level Q, version 3 at level M (ISO/IEC 18004, table 7)."""
+    plan, sheet = sample_plan(), label_sheet("a4-3x7")
+    piece = replace(plan.pieces[0], code=f"CB1:{'A' * 43}:B2:0000")
+
+    (tag,) = describe_tags("", "B2", (piece,), plan.sweeps, plan.blocks, (sheet.label_width_mm, sheet.label_height_mm))
+
+    symbol = next(mark for mark in tag.marks if isinstance(mark, Modules))
+    assert len(symbol.rows) == 29
+    assert symbol.side_mm / 29 >= 0.6
