@@ -81,4 +81,4 @@ def tag_sheets(plan: Plan, sheet_name: str, start: int) -> bytes:
 
 def block_drawings(plan: Plan) -> tuple[Drawing, ...]:
     """Return a picture of each block."""
-    return tuple(block_drawing(block, plan.pieces) for block in plan.blocks)
+    return tuple(block_drawing(block, plan.pieces, plan.job.units) for block in plan.blocks)
