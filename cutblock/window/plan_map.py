@@ -19,7 +19,7 @@ from cutblock.records.plan import Plan
 from cutblock.window.deviation import NOT_CUT, STEPS, Step, legend_text, step_of, worst_by_panel
 from cutblock.window.map_layout import Layout, PlacedPanel, lay_out
 from cutblock.window.paint import hatch_brush, painting
-from cutblock.window.theme import ink_of, text_on
+from cutblock.window.theme import Ink, ink_of, text_on
 
 _EMPTY = Layout((), (), (1.0, 1.0))
 _MARGIN_PX = 10.0
@@ -41,6 +41,7 @@ class PlanMap(QWidget):
         self._worst: dict[str, float | None] = {}
         self._tolerance_mm = 1.0
         self._picked = ""
+        self._paths: tuple[object, list[QPainterPath]] = (None, [])  # of all panels, with what they depend on
         self.setAccessibleName("Panels in plan, coloured by deviation")
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
         self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Expanding)
@@ -49,6 +50,7 @@ class PlanMap(QWidget):
     def show_plan(self, plan: Plan) -> None:
         """Replace the picture."""
         self._layout = lay_out(plan.panels, plan.job.layup)
+        self._paths = (None, [])
         self._worst = worst_by_panel(plan.panels, plan.sweeps)
         self._tolerance_mm = plan.job.tolerance_mm
         self._picked = ""
@@ -67,8 +69,8 @@ class PlanMap(QWidget):
 
     def panel_at(self, place: QPointF) -> str:
         """Return the panel at a place of the widget, empty where there is none."""
-        for panel in self._layout.panels:
-            if self._path(panel).contains(place):
+        for panel, path in zip(self._layout.panels, self._panel_paths(), strict=True):
+            if path.contains(place):
                 return panel.panel
         return ""
 
@@ -79,9 +81,8 @@ class PlanMap(QWidget):
             painter.fillRect(self.rect(), ink.ground)
             painter.setRenderHint(QPainter.RenderHint.Antialiasing)
             picked = None
-            for panel in self._layout.panels:
-                path = self._path(panel)
-                self._paint_panel(painter, panel, path)
+            for panel, path in zip(self._layout.panels, self._panel_paths(), strict=True):
+                self._paint_panel(painter, panel, path, ink)
                 if panel.panel == self._picked:
                     picked = path
             if picked is not None:
@@ -138,11 +139,11 @@ class PlanMap(QWidget):
         worst = self._worst.get(panel)
         return NOT_CUT if worst is None else step_of(worst, self._tolerance_mm)
 
-    def _paint_panel(self, painter: QPainter, panel: PlacedPanel, path: QPainterPath) -> None:
+    def _paint_panel(self, painter: QPainter, panel: PlacedPanel, path: QPainterPath, ink: Ink) -> None:
         step = self._step(panel.panel)
         fill = QColor(step.colour)
         on_it = text_on(fill)
-        painter.setPen(QPen(ink_of(self.palette()).ground, 1.5))
+        painter.setPen(QPen(ink.ground, 1.5))
         painter.setBrush(fill)
         painter.drawPath(path)
         if step.hatch:
@@ -214,8 +215,15 @@ class PlanMap(QWidget):
         scale, corner = self._scale()
         return QPointF(corner.x() + x_mm * scale, corner.y() + (self._layout.size_mm[1] - y_mm) * scale)
 
-    def _path(self, panel: PlacedPanel) -> QPainterPath:
+    def _panel_paths(self) -> list[QPainterPath]:
+        """Return the path of every panel, kept until the room or the plan changes."""
         scale, corner = self._scale()
+        key = (scale, corner.x(), corner.y())
+        if self._paths[0] != key:
+            self._paths = (key, [self._path(panel, scale, corner) for panel in self._layout.panels])
+        return self._paths[1]
+
+    def _path(self, panel: PlacedPanel, scale: float, corner: QPointF) -> QPainterPath:
         path = QPainterPath()
         for ring in panel.rings_mm:
             points = [

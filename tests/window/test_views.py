@@ -37,9 +37,13 @@ def plan_map(qtbot):
     return made
 
 
+def box_of(plan_map, panel):
+    number = [one.panel for one in plan_map._layout.panels].index(panel)
+    return plan_map._panel_paths()[number].boundingRect()
+
+
 def middle_of(plan_map, panel):
-    placed = next(one for one in plan_map._layout.panels if one.panel == panel)
-    return plan_map._path(placed).boundingRect().center()
+    return box_of(plan_map, panel).center()
 
 
 def test_a_click_picks_the_panel_under_the_mouse(qtbot, plan_map):
@@ -71,7 +75,7 @@ def test_the_map_has_the_second_row_above_the_first(plan_map):
 def test_each_panel_has_the_colour_of_its_step(plan_map):
     image = plan_map.grab().toImage()
     for panel, step in (("S-A01", STEPS[0]), ("S-A02", STEPS[4]), ("S-A03", NOT_CUT), ("S-B01", STEPS[2])):
-        box = plan_map._path(next(one for one in plan_map._layout.panels if one.panel == panel)).boundingRect()
+        box = box_of(plan_map, panel)
         inside = {
             image.pixelColor(x, y).name()
             for x in range(int(box.left()) + 4, int(box.right()) - 4)
