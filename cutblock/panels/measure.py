@@ -34,7 +34,7 @@ _EXTRA_SLOPE_RAD = math.radians(5.0)  # by which a continuation may be steeper t
 _NODE_SPACING_MM = 30.0
 _FEWEST_NODES, _MOST_NODES = 17, 81
 _N_SAMPLES_U, _N_SAMPLES_V = 24, 20
-_N_EDGE_STEPS = 64
+_N_EDGE_STEPS = 48
 _STRAIGHT_REACH = 0.25
 _CLEARLY_SMALLER = 0.98  # area of the turned rectangle against that of the one along the cell's edges
 
@@ -104,9 +104,10 @@ def measured_panel(panel_id: str, face: Face, cell: Cell, layup: Layup, units: s
         outline=outline,
         is_rectangle=is_rectangle,
         heights_mm=heights,
-        samples_mm=(samples.points - origin) @ axes.T,
-        normals=side * (samples.normals @ axes.T),
-        areas_mm2=samples.areas_mm2,
+        # The largest deviation often lies at a corner: the edges count for it, though they have no area.
+        samples_mm=(np.concatenate([samples.points, edge_points]) - origin) @ axes.T,
+        normals=side * (np.concatenate([samples.normals, edge_normals]) @ axes.T),
+        areas_mm2=np.concatenate([samples.areas_mm2, np.zeros(len(edge_points))]),
     )
 
 

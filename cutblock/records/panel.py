@@ -15,7 +15,8 @@ class Panel(Record):
     `origin_mm + p @ axes` in the form; the rows of `axes` are the unit x, y, z of the panel frame in form coordinates.
     `heights_mm` is the wanted surface as a height field on a uniform grid over [0, length] x [0, width], smoothly
     continued where the rectangle reaches beyond the outline; `samples_mm` and `normals` are points and unit upward
-    normals of the wanted surface inside the outline, each standing for `areas_mm2` of it.
+    normals of the wanted surface inside the outline, each standing for `areas_mm2` of it, and on its edges, where they
+    stand for none.
     """
 
     id: str

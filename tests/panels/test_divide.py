@@ -350,3 +350,15 @@ def test_the_same_job_gives_the_same_panels_to_the_last_bit():
     for one, two in zip(first, second, strict=True):
         assert one.heights_mm.tobytes() == two.heights_mm.tobytes()
         assert one.samples_mm.tobytes() == two.samples_mm.tobytes()
+
+
+def test_the_corners_and_edges_of_a_panel_are_samples_without_area():
+    corners = np.array([[0.0, 0, 0], [900, 0, 60], [900, 700, 0], [0, 700, 60]])
+    (panel,) = panels_of(CornersSource(corners_mm=corners), cell_mm=(900.0, 700.0))
+
+    on_edge = panel.areas_mm2 == 0.0
+    edge = panel.samples_mm[on_edge, :2]
+    for corner in ([0, 0], [900, 0], [900, 700], [0, 700]):
+        assert np.abs(edge - corner).sum(axis=1).min() < 1e-6
+    assert (np.minimum(edge, [900, 700] - edge).min(axis=1) < 1e-6).all()
+    assert not on_edge.all()
