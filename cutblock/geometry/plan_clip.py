@@ -22,6 +22,8 @@ def clip(vertices: Floats, triangles: Ints, normal: Floats, distance_mm: float) 
         triangles; vertices no triangle uses are left in.
     """
     heights = vertices[:, :2] @ normal - distance_mm
+    if heights.min(initial=np.inf) >= PLAN_MM:
+        return vertices, triangles
     is_on = np.abs(heights) < PLAN_MM
     vertices = vertices.copy()
     vertices[is_on, :2] -= np.outer(heights[is_on], normal)
@@ -81,38 +83,46 @@ def _cross(vertices: Floats, heights: Floats, inner: Ints, outer: Ints) -> tuple
 
 def drop_unused(vertices: Floats, triangles: Ints) -> tuple[Floats, Ints]:
     """Return the mesh without the vertices no triangle uses."""
-    used, places = np.unique(triangles, return_inverse=True)
-    return vertices[used], places.reshape(-1, 3).astype(np.int64)
+    is_used = np.zeros(len(vertices), dtype=np.bool_)
+    is_used[triangles] = True
+    places = np.cumsum(is_used) - 1
+    return vertices[is_used], places[triangles]
 
 
 def boundary_edges(triangles: Ints) -> Ints:
     """Return the directed edges (k, 2) that belong to one triangle only."""
     edges = np.concatenate([triangles[:, [0, 1]], triangles[:, [1, 2]], triangles[:, [2, 0]]])
+    # Sorting all edges is slow. Round a vertex inside the mesh the edges come from the vertices they go to, so sums
+    # over the two are equal; round a boundary vertex they are not (two sums tell up to two loops meeting in it apart).
     n = int(edges.max(initial=0)) + 1
-    keys = edges[:, 0] * n + edges[:, 1]
-    is_alone = ~np.isin(keys, edges[:, 1] * n + edges[:, 0])
-    return edges[is_alone]
+    start, end = edges.T.astype(np.float64)
+    is_edge = np.zeros(n, dtype=np.bool_)
+    for power in (1, 2):
+        came = np.bincount(edges[:, 1], start**power, n)
+        is_edge |= np.bincount(edges[:, 0], end**power, n) != came
+    edges = edges[is_edge[edges].all(axis=1)]
+    is_alone = ~np.isin(edges[:, 0] * n + edges[:, 1], edges[:, 1] * n + edges[:, 0])
+    alone: Ints = edges[is_alone]
+    return alone
 
 
-def solid_between(upper: Floats, lower: Floats, triangles: Ints) -> tuple[Floats, Ints]:
-    """Return a closed solid between two height fields over the same plan.
+def closed_triangles(triangles: Ints, n_vertices: int, edges: Ints) -> Ints:
+    """Return the triangles of the closed solid between two height fields over the same plan.
 
     Args:
-        upper: (n, 3) vertices of the upper face.
-        lower: (n, 3) of the lower one, x and y as in `upper`.
-        triangles: (m, 3) of both, counter-clockwise seen from above.
+        triangles: (m, 3) of both faces, counter-clockwise seen from above.
+        n_vertices: Vertices of a face; those of the lower one follow those of the upper one.
+        edges: (k, 2) the boundary edges of `triangles`, on which the side walls stand.
 
     Returns:
-        (2 n, 3) vertices and the triangles, wound outwards; the side walls stand on the boundary edges.
+        (2 m + 2 k, 3), wound outwards.
     """
-    n = len(upper)
-    edges = boundary_edges(triangles)
     start, end = edges[:, 0], edges[:, 1]
-    return np.concatenate([upper, lower]), np.concatenate(
+    return np.concatenate(
         [
             triangles,
-            triangles[:, ::-1] + n,
-            np.stack([start, start + n, end + n], axis=1),
-            np.stack([start, end + n, end], axis=1),
+            triangles[:, ::-1] + n_vertices,
+            np.stack([start, start + n_vertices, end + n_vertices], axis=1),
+            np.stack([start, end + n_vertices, end], axis=1),
         ]
     )

@@ -1,8 +1,7 @@
 """Closed triangle meshes of the halves a ruled sheet leaves of a billet.
 
-Each bilinear cell of the sheet becomes four triangles round the mean of its corners. That centre-fan has exactly the
-volume of the cell (the two diagonals bound the tetrahedron of the four corners, which the cell halves, and the fan
-does too), so the solids have exactly the volume of the closed form.
+Each bilinear cell of the sheet becomes four triangles round the mean of its corners (see `geometry.fan`), so the solids
+have exactly the volume of the closed form.
 """
 
 from collections.abc import Sequence
@@ -13,13 +12,17 @@ import numpy as np
 from cutblock.base.arrays import Floats, Ints, floats
 from cutblock.base.errors import GeometryError
 from cutblock.base.tolerances import PLAN_MM
-from cutblock.geometry.plan_clip import clip, drop_unused, solid_between
+from cutblock.geometry.fan import fan_connectivity, fan_vertices, sheet_grid, trim_rails
+from cutblock.geometry.plan_clip import boundary_edges, clip, closed_triangles, drop_unused
 from cutblock.geometry.volume import check_cover, check_rails
 
 if TYPE_CHECKING:
     from manifold3d import Manifold
 
 _SPARE = 0.05  # a cutter reaches this part of the billet's size past it
+
+Size = tuple[float, float, float]
+Offsets = tuple[float, float]
 
 
 class Mesh(NamedTuple):
@@ -34,8 +37,21 @@ class Sheet(NamedTuple):
 
     vertices: Floats  # (n, 3) mm
     triangles: Ints  # (m, 3)
+    closed: Ints  # (k, 3) of the solid between two faces over it
     across: Floats  # (n,) place along the wire, 0 at the near rail to 1 at the far one
     steepness: Floats  # (n,) 1 / (upward normal's z), at least 1
+
+    def heights(self, offset_mm: Offsets) -> Floats:
+        """Return (n,) heights of the face that lies off the sheet along its normal.
+
+        To second order in the offset that face stands the offset times the steepness off in height.
+
+        Args:
+            offset_mm: At the near and the far rail, linear between, upwards positive.
+        """
+        at_near, at_far = offset_mm
+        heights: Floats = self.vertices[:, 2] + (at_near + self.across * (at_far - at_near)) * self.steepness
+        return heights
 
 
 def mesh_volume(mesh: Mesh) -> float:
@@ -46,10 +62,28 @@ def mesh_volume(mesh: Mesh) -> float:
     return float(np.einsum("ij,ij->i", a, np.cross(b, c)).sum() / 6.0)
 
 
+def mesh_centre(mesh: Mesh) -> Floats:
+    """Return the centre of the volume a closed mesh encloses, (3,) mm."""
+    middle = mesh.vertices.mean(axis=0)
+    a, b, c = np.moveaxis(mesh.vertices[mesh.triangles] - middle, 1, 0)
+    parts = np.einsum("ij,ij->i", a, np.cross(b, c))
+    centre: Floats = middle + parts @ (a + b + c) / (4.0 * parts.sum())
+    return centre
+
+
+def joined(meshes: Sequence[Mesh]) -> Mesh:
+    """Return several meshes as one, without welding them."""
+    starts = np.cumsum([0, *(len(mesh.vertices) for mesh in meshes[:-1])])
+    return Mesh(
+        np.concatenate([mesh.vertices for mesh in meshes]),
+        np.concatenate([mesh.triangles + start for mesh, start in zip(meshes, starts, strict=True)]),
+    )
+
+
 def split_billet(
     near: Floats,
     far: Floats,
-    size_mm: tuple[float, float, float],
+    size_mm: Size,
     outline: Floats | Sequence[Floats] | None = None,
     *,
     n_across: int = 24,
@@ -70,42 +104,81 @@ def split_billet(
         facet_mm: Largest distance of a facet from the sheet; rulings are put in between until it holds.
 
     Returns:
-        The lower and the upper half.
+        The lower and the upper half. Their arrays of triangles may be shared and are then read-only.
 
     Raises:
         GeometryError: Wrong shapes, crossing rulings, a sheet that does not cover the billet or leaves it in height,
             an outline that encloses nothing.
     """
-    length_mm, width_mm, height_mm = (float(side) for side in floats(size_mm, (3,), "size_mm"))
-    near, far = check_rails(near, far, width_mm)
+    size = _size(size_mm)
+    near, far = check_rails(near, far, size[1])
     rings = _rings(outline)
-    if len(rings) > 1 or (rings and not _is_convex(rings[0])):
-        return _split_by_cutter(near, far, (length_mm, width_mm, height_mm), rings, n_across, facet_mm)
-    sheet = sheet_over(near, far, length_mm, width_mm, rings[0] if rings else None, n_across, facet_mm)
-    check_height(sheet.vertices[:, 2], height_mm)
-    return halves_about(sheet, sheet.vertices[:, 2], sheet.vertices[:, 2], height_mm)
+    if len(rings) > 1 or (rings and not is_convex(rings[0])):
+        lower, upper, _ = _split_by_cutter(near, far, size, rings, (0.0, 0.0), n_across, facet_mm)
+        return lower, upper
+    sheet = sheet_over(near, far, size[0], size[1], rings[0] if rings else None, n_across, facet_mm)
+    heights = sheet.vertices[:, 2]
+    return solid_below(sheet, heights, size[2]), solid_above(sheet, heights, size[2])
 
 
-def halves_about(sheet: Sheet, lower_tops: Floats, upper_bottoms: Floats, height_mm: float) -> tuple[Mesh, Mesh]:
-    """Return the solids from z = 0 to `lower_tops` and from `upper_bottoms` to the billet's height.
+def halves_over(
+    near: Floats,
+    far: Floats,
+    size_mm: Size,
+    outline: Sequence[Floats],
+    offset_mm: Offsets,
+    *,
+    n_across: int = 24,
+    facet_mm: float = 0.01,
+) -> tuple[Mesh, Mesh, Mesh]:
+    """Return what a face off the sheet leaves of a billet over an outline, and that face.
 
     Args:
-        sheet: Footprint and connectivity.
-        lower_tops: (n,) heights over the sheet's vertices.
-        upper_bottoms: (n,) likewise.
-        height_mm: Height of the billet.
+        near: As in `split_billet`.
+        far: As there.
+        size_mm: As there.
+        outline: The outer ring, then holes.
+        offset_mm: How far the face lies off the sheet along its normal at the near and the far rail, linear between,
+            upwards positive.
+        n_across: As there.
+        facet_mm: As there.
+
+    Returns:
+        The solid below the face, the one above it, and the face itself, wound upwards.
+
+    Raises:
+        GeometryError: As there.
     """
-    plan = sheet.vertices[:, :2]
-    floor, top = np.zeros(len(plan)), np.full(len(plan), height_mm)
-    return (
-        solid_of(plan, lower_tops, floor, sheet.triangles),
-        solid_of(plan, top, upper_bottoms, sheet.triangles),
-    )
+    size = _size(size_mm)
+    near, far = check_rails(near, far, size[1])
+    rings = _rings(outline)
+    if len(rings) > 1 or not is_convex(rings[0]):
+        return _split_by_cutter(near, far, size, rings, offset_mm, n_across, facet_mm)
+    sheet = sheet_over(near, far, size[0], size[1], rings[0], n_across, facet_mm)
+    heights = sheet.heights(offset_mm)
+    face = Mesh(np.column_stack([sheet.vertices[:, :2], heights]), sheet.triangles)
+    return solid_below(sheet, heights, size[2]), solid_above(sheet, heights, size[2]), face
 
 
-def solid_of(plan: Floats, tops: Floats, bottoms: Floats, triangles: Ints) -> Mesh:
-    """Return the closed solid between two heights over plan points (n, 2) with the given connectivity."""
-    return Mesh(*solid_between(np.column_stack([plan, tops]), np.column_stack([plan, bottoms]), triangles))
+def solid_below(sheet: Sheet, tops: Floats, height_mm: float) -> Mesh:
+    """Return the solid from z = 0 to heights (n,) over a sheet's vertices; raises like `check_height`."""
+    check_height(tops, height_mm)
+    return solid_of(sheet, tops, np.zeros(len(tops)))
+
+
+def solid_above(sheet: Sheet, bottoms: Floats, height_mm: float) -> Mesh:
+    """Return the solid from heights (n,) over a sheet's vertices to the billet's; raises like `check_height`."""
+    check_height(bottoms, height_mm)
+    return solid_of(sheet, np.full(len(bottoms), height_mm), bottoms)
+
+
+def solid_of(sheet: Sheet, tops: Floats, bottoms: Floats) -> Mesh:
+    """Return the closed solid between two heights (n,) over a sheet's plan points."""
+    return Mesh(_between(sheet.vertices[:, :2], tops, bottoms), sheet.closed)
+
+
+def _between(plan: Floats, tops: Floats, bottoms: Floats) -> Floats:
+    return np.column_stack([np.concatenate([plan, plan]), np.concatenate([tops, bottoms])])
 
 
 def check_height(heights: Floats, height_mm: float) -> None:
@@ -148,47 +221,29 @@ def sheet_over(
         GeometryError: The sheet does not cover the billet, or the outline encloses nothing of it.
     """
     check_cover(near, far, length_mm)
-    grid = _grid(near, far, width_mm, n_across, facet_mm)
-    vertices, triangles = _fan(grid)
+    near, far = trim_rails(near, far, length_mm)
+    grid = sheet_grid(near, far, width_mm, n_across, facet_mm)
+    vertices = fan_vertices(grid)
+    triangles, closed = fan_connectivity(*grid.shape[:2])
+    is_square = (near[[0, -1], 0] == [0.0, length_mm]) & (far[[0, -1], 0] == [0.0, length_mm])
     planes = [(np.array([1.0, 0.0]), 0.0), (np.array([-1.0, 0.0]), -length_mm)]
-    if outline is not None:
-        planes += _edge_planes(outline)
+    planes = [plane for plane, is_end in zip(planes, is_square, strict=True) if not is_end]
+    planes += _edge_planes(outline) if outline is not None else []
     for normal, distance in planes:
         vertices, triangles = clip(vertices, triangles, normal, distance)
     if len(triangles) == 0:
         raise GeometryError(
             "the outline encloses nothing of the billet", "outline", "Give a ring over the billet's plan."
         )
-    vertices, triangles = drop_unused(vertices, triangles)
-    return Sheet(vertices[:, :3], triangles, vertices[:, 1] / width_mm, vertices[:, 3])
+    if planes:
+        vertices, triangles = drop_unused(vertices, triangles)
+        closed = closed_triangles(triangles, len(vertices), boundary_edges(triangles))
+    return Sheet(vertices[:, :3], triangles, closed, vertices[:, 1] / width_mm, vertices[:, 3])
 
 
-def _grid(near: Floats, far: Floats, width_mm: float, n_across: int, facet_mm: float) -> Floats:
-    """Return (n, n_across + 1, 4) points of the sheet with their steepness, rulings added where a strip is twisted."""
-    # A fan departs from its bilinear cell by a sixteenth of the cell's second mixed difference.
-    mixed = np.linalg.norm(np.diff(far, axis=0) - np.diff(near, axis=0), axis=1)
-    counts = np.maximum(1, np.ceil(mixed / (16.0 * n_across * facet_mm))).astype(np.int64)
-    places = np.concatenate([[0.0], np.cumsum(np.repeat(1.0 / counts, counts))])
-    rows = np.arange(len(near), dtype=np.float64)
-    rails = [np.column_stack([np.interp(places, rows, rail[:, k]) for k in range(2)]) for rail in (near, far)]
-    across = np.linspace(0.0, 1.0, n_across + 1)[None, :, None]
-    points = rails[0][:, None] + across * (rails[1] - rails[0])[:, None]
-    run, climb = (np.gradient(points[..., k], axis=0) for k in range(2))
-    skew, rise = (rails[1] - rails[0]).T[:, :, None]
-    steepness = np.hypot(np.hypot(run, climb), (climb * skew - run * rise) / width_mm) / run
-    y = np.broadcast_to(across[..., 0] * width_mm, run.shape)
-    return np.stack([points[..., 0], y, points[..., 1], steepness], axis=-1)
-
-
-def _fan(grid: Floats) -> tuple[Floats, Ints]:
-    """Return the centre-fan of every cell of a grid (n, m, k), counter-clockwise seen from above."""
-    n, m, k = grid.shape
-    rows = np.arange(n * m).reshape(n, m)
-    corners = rows[:-1, :-1], rows[1:, :-1], rows[1:, 1:], rows[:-1, 1:]
-    centres = (grid[:-1, :-1] + grid[1:, :-1] + grid[1:, 1:] + grid[:-1, 1:]) / 4.0
-    middles = n * m + np.arange((n - 1) * (m - 1)).reshape(n - 1, m - 1)
-    triangles = [np.stack([corners[i], corners[(i + 1) % 4], middles], axis=-1).reshape(-1, 3) for i in range(4)]
-    return np.concatenate([grid.reshape(-1, k), centres.reshape(-1, k)]), np.concatenate(triangles)
+def _size(size_mm: Size) -> Size:
+    length_mm, width_mm, height_mm = (float(side) for side in floats(size_mm, (3,), "size_mm"))
+    return length_mm, width_mm, height_mm
 
 
 def _rings(outline: Floats | Sequence[Floats] | None) -> list[Floats]:
@@ -210,7 +265,7 @@ def _turns(ring: Floats) -> Floats:
     return turns
 
 
-def _is_convex(ring: Floats) -> bool:
+def is_convex(ring: Floats) -> bool:
     """Return whether a ring bounds a convex region and goes round it once."""
     turns = _turns(ring)
     edges = np.roll(ring, -1, axis=0) - ring
@@ -233,42 +288,61 @@ def _edge_planes(ring: Floats) -> list[tuple[Floats, float]]:
 def _split_by_cutter(
     near: Floats,
     far: Floats,
-    size_mm: tuple[float, float, float],
+    size_mm: Size,
     rings: list[Floats],
+    offset_mm: Offsets,
     n_across: int,
     facet_mm: float,
-) -> tuple[Mesh, Mesh]:
-    """Split a billet of any footprint with a solid cutter that reaches past it on every side."""
+) -> tuple[Mesh, Mesh, Mesh]:
+    """Split a billet of any footprint with a solid cutter that reaches past it on every side; also return the cut."""
     import manifold3d
 
     length_mm, width_mm, height_mm = size_mm
     check_cover(near, far, length_mm)
-    grid = _grid(near, far, width_mm, n_across, facet_mm)
-    spare = _SPARE * max(size_mm)
-    # Prismatic strips past the sheet's four edges: flush faces are where solid booleans fail.
-    along, aside = np.array([spare, 0.0, 0.0, 0.0]), np.array([0.0, spare, 0.0, 0.0])
-    grid = np.concatenate([grid[:1] - along, grid, grid[-1:] + along])
-    grid = np.concatenate([grid[:, :1] - aside, grid, grid[:, -1:] + aside], axis=1)
-    vertices, triangles = _fan(grid)
-    cutter = solid_of(vertices[:, :2], vertices[:, 2], np.full(len(vertices), -spare), triangles)
+    cutter = _cutter(*trim_rails(near, far, length_mm), size_mm, offset_mm, n_across, facet_mm)
     plan = manifold3d.CrossSection([ring.tolist() for ring in rings], manifold3d.FillRule.EvenOdd)
     plan = plan ^ manifold3d.CrossSection([[[0, 0], [length_mm, 0], [length_mm, width_mm], [0, width_mm]]])
     if plan.is_empty():
         raise GeometryError(
             "the outline encloses nothing of the billet", "outline", "Give rings over the billet's plan."
         )
-    solid = manifold3d.Manifold(
-        manifold3d.Mesh64(vert_properties=cutter.vertices, tri_verts=cutter.triangles.astype(np.uint64))
-    )
-    parts = manifold3d.Manifold.extrude(plan, height_mm).split(solid)
-    lower, upper = (_from_manifold(part) for part in parts)
+    lower, upper = manifold3d.Manifold.extrude(plan, height_mm).split(cutter)
+    lower_mesh, upper_mesh = _from_manifold(lower), _from_manifold(upper)
     # The sheet's own range over the footprint: the lower half's top and the upper half's bottom.
-    extremes = upper.vertices[:, 2].min(initial=height_mm), lower.vertices[:, 2].max(initial=0.0)
+    extremes = upper_mesh.vertices[:, 2].min(initial=height_mm), lower_mesh.vertices[:, 2].max(initial=0.0)
     check_height(np.array(extremes), height_mm)
-    return lower, upper
+    return lower_mesh, upper_mesh, _part_of(lower, cutter.original_id())
+
+
+def _cutter(near: Floats, far: Floats, size_mm: Size, offset_mm: Offsets, n_across: int, facet_mm: float) -> "Manifold":
+    """Return the solid below the face off the sheet, past a billet on every side."""
+    import manifold3d
+
+    grid = sheet_grid(near, far, size_mm[1], n_across, facet_mm)
+    spare = _SPARE * max(size_mm)
+    # Prismatic strips past the sheet's four edges: flush faces are where solid booleans fail.
+    along, aside = np.array([spare, 0.0, 0.0, 0.0]), np.array([0.0, spare, 0.0, 0.0])
+    grid = np.concatenate([grid[:1] - along, grid, grid[-1:] + along])
+    grid = np.concatenate([grid[:, :1] - aside, grid, grid[:, -1:] + aside], axis=1)
+    vertices = fan_vertices(grid)
+    triangles, closed = fan_connectivity(*grid.shape[:2])
+    sheet = Sheet(vertices[:, :3], triangles, closed, vertices[:, 1] / size_mm[1], vertices[:, 3])
+    solid = solid_of(sheet, sheet.heights(offset_mm), np.full(len(vertices), -spare))
+    mesh = manifold3d.Mesh64(vert_properties=solid.vertices, tri_verts=solid.triangles.astype(np.uint64))
+    return manifold3d.Manifold(mesh).as_original()
 
 
 def _from_manifold(solid: "Manifold") -> Mesh:
     """Return a solid's mesh."""
     mesh = solid.to_mesh64()
     return Mesh(np.array(mesh.vert_properties[:, :3]), np.array(mesh.tri_verts, dtype=np.int64))
+
+
+def _part_of(solid: "Manifold", original: int) -> Mesh:
+    """Return the facets of a solid that come from one of those it was made of."""
+    mesh = solid.to_mesh64()
+    starts = np.array(mesh.run_index, dtype=np.int64) // 3
+    runs = zip(starts[:-1], starts[1:], mesh.run_original_id, strict=True)
+    triangles = np.array(mesh.tri_verts, dtype=np.int64)
+    kept = np.concatenate([triangles[start:end] for start, end, source in runs if source == original])
+    return Mesh(*drop_unused(np.array(mesh.vert_properties[:, :3]), kept))

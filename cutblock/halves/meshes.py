@@ -1,7 +1,7 @@
 """The two halves of a sweep and the foam the wire melts between them, as closed solids."""
 
 from cutblock.base.errors import GeometryError
-from cutblock.geometry.solids import Mesh, check_height, halves_about, sheet_over, solid_of
+from cutblock.geometry.solids import Mesh, sheet_over, solid_above, solid_below, solid_of
 from cutblock.geometry.volume import check_rails
 from cutblock.records.sweep import Sweep
 
@@ -26,13 +26,9 @@ def half_meshes(sweep: Sweep) -> tuple[Mesh, Mesh, Mesh]:
         near, far = check_rails(sweep.near, sweep.far, sweep.width_mm)
         sheet = sheet_over(near, far, sweep.length_mm, sweep.width_mm)
         at_near, at_far = sweep.kerf_mm
-        # To second order in the kerf the faces at +-w/2 along the normal stand w/2 times the steepness off in height.
-        offsets = (at_near + sheet.across * (at_far - at_near)) / 2.0 * sheet.steepness
-        plan, heights = sheet.vertices[:, :2], sheet.vertices[:, 2]
-        tops, bottoms = heights - offsets, heights + offsets
-        check_height(tops, sweep.height_mm)
-        check_height(bottoms, sweep.height_mm)
+        tops = sheet.heights((-at_near / 2.0, -at_far / 2.0))
+        bottoms = sheet.heights((at_near / 2.0, at_far / 2.0))
+        lower, upper = solid_below(sheet, tops, sweep.height_mm), solid_above(sheet, bottoms, sweep.height_mm)
     except GeometryError as error:
         raise GeometryError(error.message, f"sweep {sweep.id}", error.remedy) from error
-    lower, upper = halves_about(sheet, tops, bottoms, sweep.height_mm)
-    return lower, upper, solid_of(plan, bottoms, tops, sheet.triangles)
+    return lower, upper, solid_of(sheet, bottoms, tops)

@@ -5,8 +5,9 @@ from hypothesis import strategies as st
 
 from cutblock.base.errors import GeometryError
 from cutblock.geometry import split_billet, volume_below
-from cutblock.geometry.plan_clip import boundary_edges
-from cutblock.geometry.solids import mesh_volume
+from cutblock.geometry.fan import fan_connectivity, fan_vertices
+from cutblock.geometry.plan_clip import boundary_edges, clip
+from cutblock.geometry.solids import Mesh, halves_over, joined, mesh_centre, mesh_volume
 from cutblock.geometry.volume import volume_below_within
 
 SIZE = (1200.0, 1000.0, 500.0)
@@ -146,3 +147,69 @@ def test_crossing_rails_are_refused():
         split_billet(near, far, SIZE)
     with pytest.raises(GeometryError, match="shape"):
         split_billet(*HYPAR, (1200.0, 1000.0))
+
+
+@given(
+    n=st.integers(3, 30),
+    cuts=st.lists(st.tuples(st.floats(0, 6.28), st.floats(-0.4, 0.4)), max_size=4),
+    hole=st.sets(st.integers(0, 400), max_size=40),
+)
+def test_the_edges_on_the_boundary_are_those_of_one_triangle_only(n, cuts, hole):
+    triangles = fan_connectivity(n, n).triangles
+    grid = np.stack(np.meshgrid(*[np.linspace(-1, 1, n)] * 2, indexing="ij"), axis=-1)
+    vertices = fan_vertices(grid)
+    for angle, distance in cuts:
+        vertices, triangles = clip(vertices, triangles, np.array([np.cos(angle), np.sin(angle)]), distance)
+    triangles = np.delete(triangles, [row for row in hole if row < len(triangles)], axis=0)
+
+    found = {tuple(edge) for edge in boundary_edges(triangles).tolist()}
+
+    edges = {tuple(edge) for row in triangles.tolist() for edge in zip(row, row[1:] + row[:1], strict=True)}
+    assert found == {(start, end) for start, end in edges if (end, start) not in edges}
+
+
+def test_rails_that_run_out_without_skew_are_ended_on_the_billet_and_stay_exact():
+    near, far = wavy_rails(6, n=31)
+    x = np.linspace(-113.0, 1290.0, 31)
+    near, far = np.column_stack([x, near[:, 1]]), np.column_stack([x, far[:, 1]])
+
+    lower, upper = split_billet(near, far, SIZE, facet_mm=5.0)
+
+    assert is_closed(lower)
+    assert mesh_volume(lower) == pytest.approx(volume_below_within(near, far, 1200.0, 1000.0), rel=1e-12)
+    assert mesh_volume(lower) + mesh_volume(upper) == pytest.approx(BILLET, rel=1e-13)
+
+
+@given(seed=st.integers(0, 2**32 - 1), offset=st.floats(-30.0, 30.0))
+def test_a_face_off_the_sheet_is_the_same_over_convex_parts_and_over_their_union(seed, offset):
+    near, far = wavy_rails(seed, run_out=120.0)
+    shape = np.array([[0, 0], [1200, 0], [1200, 500], [600, 500], [600, 1000], [0, 1000]], dtype=float)
+    parts = [
+        np.array([[0, 0], [1200, 0], [1200, 500], [0, 500]], dtype=float),
+        np.array([[0, 500], [600, 500], [600, 1000], [0, 1000]], dtype=float),
+    ]
+
+    below, above, face = halves_over(near, far, SIZE, [shape], (offset, -offset), facet_mm=0.1)
+
+    apart = [halves_over(near, far, SIZE, [part], (offset, -offset), facet_mm=0.1) for part in parts]
+    assert mesh_volume(below) == pytest.approx(sum(mesh_volume(half[0]) for half in apart), rel=1e-6)
+    assert mesh_volume(above) == pytest.approx(sum(mesh_volume(half[1]) for half in apart), rel=1e-6)
+    assert plan_area(face) == pytest.approx(900_000.0, rel=1e-9)
+    assert plan_area(joined([half[2] for half in apart])) == pytest.approx(900_000.0, rel=1e-9)
+
+
+def plan_area(mesh):
+    a, b, c = np.moveaxis(mesh.vertices[mesh.triangles][..., :2], 1, 0)
+    return ((b - a)[:, 0] * (c - a)[:, 1] - (b - a)[:, 1] * (c - a)[:, 0]).sum() / 2.0
+
+
+def test_the_centre_of_a_wedge_is_that_of_a_prism_on_a_trapezium():
+    """Centre of a trapezium a, b, base L: L (a + 2 b) / 3 (a + b) along it, (a2 + a b + b2) / 3 (a + b) above it."""
+    rail = np.array([[0.0, 100.0], [1200.0, 400.0]])
+
+    lower, _ = split_billet(rail, rail, SIZE)
+
+    expected = [1200.0 * 900.0 / 1500.0, 500.0, (100.0**2 + 100.0 * 400.0 + 400.0**2) / 1500.0]
+    np.testing.assert_allclose(mesh_centre(lower), expected, rtol=1e-12)
+    aside = Mesh(lower.vertices + 1e6, lower.triangles)
+    np.testing.assert_allclose(mesh_centre(aside), np.array(expected) + 1e6, rtol=1e-12)
