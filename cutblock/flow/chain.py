@@ -13,8 +13,9 @@ _STEPS = (
     (steps.fit, "Fitting sweeps", 0.50),
     (steps.pair, "Pairing halves", 0.06),
     (steps.set_speeds, "Setting speeds", 0.04),
+    (steps.compare, "Measuring finished faces", 0.02),
     (steps.measure, "Measuring halves", 0.05),
-    (steps.pack, "Packing blocks", 0.10),
+    (steps.pack, "Packing blocks", 0.08),
     (steps.try_machine, "Trying the machine", 0.04),
     (steps.account, "Counting", 0.01),
 )

@@ -14,6 +14,7 @@ from cutblock.base.units import MM3_PER_LITRE, hours
 from cutblock.flow import plan_schema as schema
 from cutblock.records.account import Hours, Ledger
 from cutblock.records.block import Block
+from cutblock.records.deviation import PanelDeviation
 from cutblock.records.panel import Panel
 from cutblock.records.plan import Plan
 from cutblock.records.record import Record
@@ -73,6 +74,14 @@ def plan_file(plan: Plan) -> schema.PlanFile:
         findings=[
             schema.FindingEntry(severity=entry.severity.value, code=entry.code, subject=entry.subject, text=entry.text)
             for entry in plan.findings
+        ],
+        faces=[
+            schema.FaceEntry(
+                name=bend.face,
+                area_mm2=_digits(bend.area_mm2, 3),
+                domed_percent=_digits(bend.domed_percent, 3),
+            )
+            for bend in plan.bends
         ],
     )
 
@@ -141,10 +150,13 @@ def _panels(plan: Plan) -> list[schema.PanelEntry]:
             lower, upper = sweep.serves
             partner.setdefault(lower, upper)
             partner.setdefault(upper, lower)
-    return [_panel(panel, served[panel.id], partner.get(panel.id)) for panel in plan.panels]
+    maps = {entry.panel: entry for entry in plan.deviations}
+    return [_panel(panel, served[panel.id], partner.get(panel.id), maps.get(panel.id)) for panel in plan.panels]
 
 
-def _panel(panel: Panel, servings: Sequence[Serving], partner: str | None) -> schema.PanelEntry:
+def _panel(
+    panel: Panel, servings: Sequence[Serving], partner: str | None, deviation: PanelDeviation | None
+) -> schema.PanelEntry:
     def worst(name: str) -> float | None:
         return max((_digits(getattr(serving, name)) for serving in servings), default=None)
 
@@ -166,6 +178,10 @@ def _panel(panel: Panel, servings: Sequence[Serving], partner: str | None) -> sc
         axes=_axes(panel.axes),
         outline_mm=[_pairs(ring) for ring in panel.outline],
         neighbours=list(panel.neighbours),
+        finished_p95_mm=None if deviation is None else _digits(deviation.p95_mm),
+        worst_mm=None if deviation is None else _digits(deviation.worst_mm),
+        worst_at_mm=None if deviation is None else _vector(deviation.worst_at_mm),
+        samples_per_m2=None if deviation is None else _digits(deviation.samples_per_m2, 3),
     )
 
 

@@ -13,6 +13,7 @@ from cutblock.base.units import MM3_PER_LITRE, SECONDS_PER_HOUR
 from cutblock.flow import plan_schema as schema
 from cutblock.records.account import Cost, Hours, Ledger
 from cutblock.records.block import Block, Cut, Offcut, PlacedBillet
+from cutblock.records.deviation import FaceBend, PanelDeviation
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.piece import Piece
@@ -54,6 +55,11 @@ def _plan(file: schema.PlanFile) -> Plan:
         pieces=tuple(_piece(entry) for entry in file.pieces),
         volumes=tuple(_volumes(entry) for entry in file.sweeps),
         timings=tuple(_timing(entry) for entry in file.sweeps),
+        deviations=tuple(deviation for entry in file.panels if (deviation := _deviation(entry)) is not None),
+        bends=tuple(
+            FaceBend(face=entry.name, area_mm2=entry.area_mm2, domed_mm2=entry.area_mm2 * entry.domed_percent / 100.0)
+            for entry in file.faces
+        ),
         blocks=tuple(_block(entry) for entry in file.blocks),
         n_blocks_bound=file.ledger.blocks_lower_bound,
         bound_proof=file.bound_proof,
@@ -131,6 +137,21 @@ def _panel(entry: schema.PanelEntry) -> Panel:
         normals=np.zeros((0, 3)),
         areas_mm2=np.array([entry.area_mm2]),
         neighbours=tuple(entry.neighbours),
+    )
+
+
+def _deviation(entry: schema.PanelEntry) -> PanelDeviation | None:
+    """Return the measures of a panel's map; the points are not in the file."""
+    if entry.worst_mm is None or entry.worst_at_mm is None or entry.finished_p95_mm is None:
+        return None
+    return PanelDeviation(
+        panel=entry.id,
+        points_mm=np.zeros((0, 3)),
+        deviation_mm=np.zeros(0),
+        samples_per_m2=entry.samples_per_m2 or 0.0,
+        worst_mm=entry.worst_mm,
+        worst_at_mm=np.array(entry.worst_at_mm),
+        p95_mm=entry.finished_p95_mm,
     )
 
 

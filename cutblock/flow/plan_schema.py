@@ -69,6 +69,18 @@ class PanelEntry(_Entry, frozen=True):
     axes: tuple[Vector, Vector, Vector]
     outline_mm: list[list[Pair]]
     neighbours: list[tuple[str, str]]
+    finished_p95_mm: float | None = None  # 95 of 100 parts of the area are no farther off
+    worst_mm: float | None = None  # signed: over 0 where foam stands above the form; kerf as the speeds leave it
+    worst_at_mm: Vector | None = None  # where, in form coordinates
+    samples_per_m2: float | None = None  # that it was measured at
+
+
+class FaceEntry(_Entry, frozen=True):
+    """One face of the form, all copies alike."""
+
+    name: str
+    area_mm2: float
+    domed_percent: float  # curved the same way in all directions, which a straight wire only follows in strips
 
 
 class ServingEntry(_Entry, frozen=True):
@@ -303,3 +315,4 @@ class PlanFile(_Entry, frozen=True):
     time: TimeEntry
     cost: CostEntry
     findings: list[FindingEntry]
+    faces: list[FaceEntry] = []

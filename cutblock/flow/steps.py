@@ -55,6 +55,15 @@ def set_speeds(plan: Plan, progress: Progress) -> Plan:
     return _with(plan, findings, sweeps=sweeps, timings=timings)
 
 
+def compare(plan: Plan, progress: Progress) -> Plan:
+    """Hold every finished face against the form, as the settled speeds leave it."""
+    from cutblock.sweeps.maps import deviation_maps, face_bends, findings_of
+
+    deviations = deviation_maps(plan.job, plan.panels, plan.sweeps, progress)
+    findings = findings_of(plan.job, deviations, plan.sweeps)
+    return _with(plan, findings, deviations=deviations, bends=face_bends(plan.panels))
+
+
 def measure(plan: Plan, progress: Progress) -> Plan:
     """Measure both halves of every sweep."""
     from cutblock.halves.measure import measure_halves

@@ -4,6 +4,7 @@ from dataclasses import dataclass
 
 from cutblock.records.account import Cost, Hours, Ledger
 from cutblock.records.block import Block
+from cutblock.records.deviation import FaceBend, PanelDeviation
 from cutblock.records.form import Face
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
@@ -48,6 +49,8 @@ class Plan(Record):
     pieces: tuple[Piece, ...] = ()
     volumes: tuple[SweepVolumes, ...] = ()
     timings: tuple[SweepTiming, ...] = ()
+    deviations: tuple[PanelDeviation, ...] = ()  # of the finished faces, one for each panel that has a mould
+    bends: tuple[FaceBend, ...] = ()
     blocks: tuple[Block, ...] = ()
     n_blocks_bound: int = 0
     bound_proof: str = ""  # what proved the bound

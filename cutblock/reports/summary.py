@@ -15,6 +15,7 @@ def summary_lines(plan: Plan) -> tuple[tuple[str, str], ...]:
     return (
         ("panels", _panels(plan)),
         ("sweeps", str(len(plan.sweeps))),
+        *_strips(plan),
         ("pieces", f"{len(plan.pieces)}: {duty_counts(plan)}"),
         ("blocks", f"{len(plan.blocks)} ({bound_words(plan)})"),
         ("foam", _foam(plan)),
@@ -73,6 +74,18 @@ def cost_parts(plan: Plan) -> str:
 def _panels(plan: Plan) -> str:
     paired = {panel for sweep in plan.sweeps if len(set(sweep.serves)) > 1 for panel in sweep.serves}
     return f"{len(plan.panels)}, {len(paired)} of them share their cut"
+
+
+def _strips(plan: Plan) -> tuple[tuple[str, str], ...]:
+    """Return how many panels need strips and how much of their faces is domed; nothing where none does."""
+    in_strips = {v.panel for sweep in plan.sweeps for v in sweep.serving if v.n_strips > 1}
+    if not in_strips:
+        return ()
+    faces = {panel.face for panel in plan.panels if panel.id in in_strips}
+    bends = [bend for bend in plan.bends if bend.face in faces]
+    area = sum(bend.area_mm2 for bend in bends)
+    share = f"; {100.0 * sum(bend.domed_mm2 for bend in bends) / area:.0f} % of their faces is domed" if area else ""
+    return (("strips", f"{count_text(len(in_strips), 'panel')} cut in strips{share}"),)
 
 
 def _foam(plan: Plan) -> str:

@@ -1,5 +1,6 @@
 import json
 import math
+from dataclasses import replace
 
 import msgspec
 import numpy as np
@@ -9,6 +10,7 @@ from kit.sample import sample_plan
 from cutblock.base.errors import InputError
 from cutblock.flow.plan_json import plan_text
 from cutblock.flow.plan_read import read_plan_text
+from cutblock.records.deviation import FaceBend, PanelDeviation
 
 
 def test_a_plan_comes_back_from_its_file_as_it_went_in():
@@ -73,3 +75,31 @@ def test_a_file_of_another_shape_is_refused_naming_the_key(key, value):
 
     with pytest.raises(InputError, match=key):
         read_plan_text(msgspec.json.encode(values), "plan.json")
+
+
+def test_where_the_worst_point_lies_and_how_domed_each_face_is_come_back():
+    deviation = PanelDeviation(
+        panel="S1-A01",
+        points_mm=np.zeros((2, 3)),
+        deviation_mm=np.array([-0.4, 0.2]),
+        samples_per_m2=560.0,
+        worst_mm=-0.4,
+        worst_at_mm=np.array([100.0, 200.0, 150.5]),
+        p95_mm=0.3,
+    )
+    bend = FaceBend(face="S", area_mm2=4e6, domed_mm2=1e6)
+    plan = replace(sample_plan(), deviations=(deviation,), bends=(bend,))
+    text = plan_text(plan)
+
+    values = json.loads(text)
+    first, second, _ = values["panels"]
+    assert first["worst_mm"] == -0.4
+    assert first["worst_at_mm"] == [100.0, 200.0, 150.5]
+    assert first["finished_p95_mm"] == 0.3
+    assert first["samples_per_m2"] == 560.0
+    assert second["worst_mm"] is None
+    assert values["faces"] == [{"name": "S", "area_mm2": 4e6, "domed_percent": 25.0}]
+    read = read_plan_text(text.encode(), "plan.json")
+    assert plan_text(read) == text
+    assert len(read.deviations[0].points_mm) == 0
+    assert read.bends[0].domed_percent == 25.0

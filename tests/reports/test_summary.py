@@ -6,6 +6,7 @@ import pytest
 from kit.sample import sample_plan
 
 from cutblock.records.account import Cost
+from cutblock.records.deviation import FaceBend
 from cutblock.records.words import Duty, Severity
 from cutblock.reports.figures import count_text, plain_text, size_text
 from cutblock.reports.summary import summary_lines, worst_serving
@@ -84,3 +85,14 @@ def test_sizes_carry_their_unit_once():
 
 def test_signs_no_page_may_hold_are_replaced_in_sight():
     assert plain_text("a\x00b\x1bc\td") == "a\ufffdb\ufffdc\td"
+
+
+def test_strips_and_how_domed_their_faces_are_are_told_only_where_there_are_strips():
+    plan = sample_plan()
+    assert "strips" not in dict(summary_lines(plan))
+
+    whole, *others = plan.sweeps
+    parted = replace(whole, serving=tuple(replace(serving, n_strips=2) for serving in whole.serving))
+    bends = (FaceBend(face="S", area_mm2=4e6, domed_mm2=1e6), FaceBend(face="T", area_mm2=1e6, domed_mm2=0.0))
+    lines = dict(summary_lines(replace(plan, sweeps=(parted, *others), bends=bends)))
+    assert lines["strips"] == "2 panels cut in strips; 25 % of their faces is domed"
