@@ -244,6 +244,7 @@ def _pieces(plan: Plan) -> list[schema.PieceEntry]:
             litres=_litres(piece.volume_mm3),
             mass_kg=_digits(piece.mass_kg),
             code=piece.code,
+            centre_mm=None if piece.centre_mm is None else _vector(piece.centre_mm),
         )
         for piece in plan.pieces
     ]

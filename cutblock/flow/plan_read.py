@@ -53,7 +53,7 @@ def _plan(file: schema.PlanFile) -> Plan:
         panels=tuple(_panel(entry) for entry in file.panels),
         sweeps=tuple(_sweep(entry) for entry in file.sweeps),
         pieces=tuple(_piece(entry) for entry in file.pieces),
-        volumes=tuple(_volumes(entry) for entry in file.sweeps),
+        volumes=_volumes(file),
         timings=tuple(_timing(entry) for entry in file.sweeps),
         deviations=tuple(deviation for entry in file.panels if (deviation := _deviation(entry)) is not None),
         bends=tuple(
@@ -193,14 +193,20 @@ def _sweep(entry: schema.SweepEntry) -> Sweep:
     )
 
 
-def _volumes(entry: schema.SweepEntry) -> SweepVolumes:
-    return SweepVolumes(
-        sweep=entry.id,
-        lower_mm3=entry.lower_litres * MM3_PER_LITRE,
-        upper_mm3=entry.upper_litres * MM3_PER_LITRE,
-        kerf_mm3=entry.kerf_litres * MM3_PER_LITRE,
-        face_mm2=entry.face_mm2,
-        trimmed_mm3=entry.trimmed_litres * MM3_PER_LITRE,
+def _volumes(file: schema.PlanFile) -> tuple[SweepVolumes, ...]:
+    centres = {(piece.sweep, piece.half): piece.centre_mm for piece in file.pieces}
+    return tuple(
+        SweepVolumes(
+            sweep=entry.id,
+            lower_mm3=entry.lower_litres * MM3_PER_LITRE,
+            upper_mm3=entry.upper_litres * MM3_PER_LITRE,
+            kerf_mm3=entry.kerf_litres * MM3_PER_LITRE,
+            face_mm2=entry.face_mm2,
+            trimmed_mm3=entry.trimmed_litres * MM3_PER_LITRE,
+            lower_centre_mm=centres.get((entry.id, "lower")),
+            upper_centre_mm=centres.get((entry.id, "upper")),
+        )
+        for entry in file.sweeps
     )
 
 
@@ -230,6 +236,7 @@ def _piece(entry: schema.PieceEntry) -> Piece:
         block=entry.block,
         volume_mm3=entry.litres * MM3_PER_LITRE,
         mass_kg=entry.mass_kg,
+        centre_mm=entry.centre_mm,
     )
 
 

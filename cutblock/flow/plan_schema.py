@@ -148,6 +148,7 @@ class PieceEntry(_Entry, frozen=True):
     litres: float
     mass_kg: float
     code: str
+    centre_mm: Vector | None = None  # of mass, billet frame
 
 
 class BilletEntry(_Entry, frozen=True):

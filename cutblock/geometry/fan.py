@@ -90,15 +90,16 @@ def trim_rails(near: Floats, far: Floats, length_mm: float) -> tuple[Floats, Flo
 
 def _trim_start(near: Floats, far: Floats) -> tuple[Floats, Floats]:
     """Trim what lies behind x = 0."""
-    is_behind = np.maximum(near[:, 0], far[:, 0]) <= PLAN_MM
-    first = max(int(np.count_nonzero(is_behind)) - 1, 0)
+    x = np.stack([near[:, 0], far[:, 0]])
+    is_end = (np.abs(x) < PLAN_MM).all(axis=0)
+    if is_end.any():
+        first = int(np.argmax(is_end))
+        ends = near[first], far[first]
+    else:
+        first = max(int(np.count_nonzero((x <= 0.0).all(axis=0))) - 1, 0)
+        fraction = float(np.mean(-x[:, first] / (x[:, first + 1] - x[:, first])))
+        ends = tuple(rail[first] + fraction * (rail[first + 1] - rail[first]) for rail in (near, far))
     near, far = near[first:], far[first:]
-    starts = np.array([near[0], far[0]])
-    steps = np.array([near[1], far[1]]) - starts
-    fractions = -starts[:, :1] / steps[:, :1]
-    fraction = float(fractions.mean())
-    ends = starts + fraction * steps
-    if np.abs(ends[:, 0]).max() < PLAN_MM:
-        ends[:, 0] = 0.0
-        near, far = np.concatenate([ends[:1], near[1:]]), np.concatenate([ends[1:], far[1:]])
+    if max(abs(end[0]) for end in ends) < PLAN_MM and min(near[1, 0], far[1, 0]) > 0.0:
+        near, far = (np.concatenate([[[0.0, end[1]]], rail[1:]]) for end, rail in zip(ends, (near, far), strict=True))
     return near, far

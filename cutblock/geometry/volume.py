@@ -20,8 +20,8 @@ _FINE_RULING_POINTS = 4  # likewise where the rulings lie close together
 _FINE_RULINGS = 24
 
 # Takes, for each of the n - 1 strips, m places across the wire in [0, 1] and m values of x, (n - 1, m) each; returns
-# the integral over the strip along x, from its first ruling to there, likewise.
-_Integral = Callable[[Floats, Floats], Floats]
+# one or more integrals over the strip along x, from its first ruling to there, (..., n - 1, m).
+Integral = Callable[[Floats, Floats], Floats]
 
 
 def check_rails(near: Floats, far: Floats, width_mm: float) -> tuple[Floats, Floats]:
@@ -116,12 +116,12 @@ def volume_below_within(
     near, far = check_rails(near, far, width_mm)
 
     def below(across: Floats, x: Floats) -> Floats:
-        begins, steps = _strips_at(near, far, across)
+        begins, steps = strips_at(near, far, across)
         fractions = np.clip((x - begins[..., 0]) / steps[..., 0], 0.0, 1.0)
         integral: Floats = fractions * steps[..., 0] * (begins[..., 1] + fractions * steps[..., 1] / 2.0)
         return integral
 
-    return _integrate(near, far, length_mm, width_mm, outline, below)
+    return float(integrate_over(near, far, length_mm, width_mm, outline, below))
 
 
 def sheet_area(
@@ -171,13 +171,12 @@ def kerf_volume(
         GeometryError: See `volume_below_within`.
     """
     near, far = check_rails(near, far, width_mm)
-    n_points = _RULING_POINTS if len(near) <= _FINE_RULINGS else _FINE_RULING_POINTS
-    nodes, weights = _gauss(n_points)
+    nodes, weights = ruling_points(len(near))
     # The ruling's vector d = (skew, W, rise) runs linearly from ruling to ruling.
     skews, rises = (far - near).T[..., None]
 
     def melted(across: Floats, x: Floats) -> Floats:
-        begins, steps = _strips_at(near, far, across)
+        begins, steps = strips_at(near, far, across)
         run, climb = steps[..., 0], steps[..., 1]
         fractions = np.clip((x - begins[..., 0]) / run, 0.0, 1.0)
         areas = np.zeros_like(run)
@@ -189,22 +188,34 @@ def kerf_volume(
         integral: Floats = (kerf_mm[0] + across * (kerf_mm[1] - kerf_mm[0])) * fractions * areas
         return integral
 
-    return _integrate(near, far, length_mm, width_mm, outline, melted)
+    return float(integrate_over(near, far, length_mm, width_mm, outline, melted))
 
 
-def _integrate(
+def integrate_over(
     near: Floats,
     far: Floats,
     length_mm: float,
     width_mm: float,
     outline: Sequence[Floats] | None,
-    integral: _Integral,
-) -> float:
-    """Return the integral over the footprint of what `integral` has integrated along x."""
+    integral: Integral,
+) -> Floats:
+    """Return the integrals (...) over a footprint of what `integral` has integrated along x.
+
+    Args:
+        near: As in `volume_below_within`.
+        far: As there.
+        length_mm: As there.
+        width_mm: As there.
+        outline: As there.
+        integral: The integrals along x.
+
+    Raises:
+        GeometryError: The sheet does not cover the billet.
+    """
     check_cover(near, far, length_mm)
     if outline is None:
         outline = (np.array([[0.0, 0.0], [length_mm, 0.0], [length_mm, width_mm], [0.0, width_mm]]),)
-    total = 0.0
+    total: Floats = np.zeros(())
     for index, ring in enumerate(outline):
         corners = floats(ring, (None, 2), "outline")
         turned = np.roll(corners, -1, axis=0)
@@ -212,27 +223,28 @@ def _integrate(
         sign = float(np.sign(around)) * (1.0 if index == 0 else -1.0)
         for start, end in zip(corners, turned, strict=True):  # a handful of edges
             if start[1] != end[1]:
-                total += sign * _along_edge(near, far, width_mm, start, end, integral)
+                total = total + sign * _along_edge(near, far, width_mm, start, end, integral)
     return total
 
 
-def _along_edge(near: Floats, far: Floats, width_mm: float, start: Floats, end: Floats, integral: _Integral) -> float:
-    """Return the integral of F dy along one edge of the footprint."""
+def _along_edge(near: Floats, far: Floats, width_mm: float, start: Floats, end: Floats, integral: Integral) -> Floats:
+    """Return the integrals (...) of F dy along one edge of the footprint."""
     skews = (far - near)[:, 0] / width_mm
     before, behind = (point[0] - near[:, 0] - skews * point[1] for point in (start, end))
     is_crossed = before * behind < 0.0
     crossings = np.where(is_crossed, before / np.where(is_crossed, before - behind, 1.0), 0.0)
     ends = np.zeros(len(near) - 1), np.ones(len(near) - 1)
     breaks = np.sort(np.stack([ends[0], crossings[:-1], crossings[1:], ends[1]], axis=1), axis=1)
-    nodes, weights = _gauss(_EDGE_POINTS)
+    nodes, weights = gauss_points(_EDGE_POINTS)
     lengths = np.diff(breaks, axis=1)[..., None]
     along = (breaks[:, :-1, None] + lengths * nodes).reshape(len(breaks), -1)
     x, y = start[0] + along * (end[0] - start[0]), start[1] + along * (end[1] - start[1])
     parts = (lengths * weights).reshape(len(breaks), -1) * integral(y / width_mm, x)
-    return float(parts.sum() * (end[1] - start[1]))
+    total: Floats = parts.sum(axis=(-2, -1)) * (end[1] - start[1])
+    return total
 
 
-def _strips_at(near: Floats, far: Floats, across: Floats) -> tuple[Floats, Floats]:
+def strips_at(near: Floats, far: Floats, across: Floats) -> tuple[Floats, Floats]:
     """Return x and z of each strip's first ruling at places across (n - 1, m), and the steps to its second one."""
     begins = near[:-1, None] + across[..., None] * (far - near)[:-1, None]
     ends = near[1:, None] + across[..., None] * (far - near)[1:, None]
@@ -260,7 +272,12 @@ def check_cover(near: Floats, far: Floats, length_mm: float) -> None:
             )
 
 
-def _gauss(n_points: int) -> tuple[Floats, Floats]:
+def ruling_points(n_rulings: int) -> tuple[Floats, Floats]:
+    """Return the nodes and weights on [0, 1] from ruling to ruling that integrate the sheet's area."""
+    return gauss_points(_RULING_POINTS if n_rulings <= _FINE_RULINGS else _FINE_RULING_POINTS)
+
+
+def gauss_points(n_points: int) -> tuple[Floats, Floats]:
     """Return Gauss-Legendre nodes and weights on [0, 1]."""
     nodes, weights = np.polynomial.legendre.leggauss(n_points)
     return (nodes + 1.0) / 2.0, weights / 2.0

@@ -1,6 +1,6 @@
-"""Volumes and masses of the halves, from the closed forms."""
+"""Volumes, masses and centres of the halves, from the closed forms."""
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -9,18 +9,14 @@ from cutblock.base.arrays import Floats
 from cutblock.base.errors import GeometryError
 from cutblock.base.progress import Progress, silent
 from cutblock.base.units import mass_kg
-from cutblock.geometry.volume import kerf_volume, sheet_area, volume_below_within
+from cutblock.geometry.moments import prism_moments, sheet_moments
+from cutblock.halves.footprints import Footprints, Region, find_footprints
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.piece import Piece
 from cutblock.records.shop import Conditions
-from cutblock.records.sweep import Serving, Sweep, SweepVolumes
-from cutblock.records.words import Duty, Half, Layup
-
-_Rings = tuple[Floats, ...]
-
-# A half with one of these duties follows the outline of the panel it supports.
-_FOLLOWING = (Duty.COUNTER_MOULD, Duty.CRADLE)
+from cutblock.records.sweep import Sweep, SweepVolumes
+from cutblock.records.words import Half
 
 
 def measure_halves(
@@ -31,10 +27,10 @@ def measure_halves(
     conditions: Conditions,
     progress: Progress = silent,
 ) -> tuple[tuple[SweepVolumes, ...], tuple[Piece, ...]]:
-    """Return the volumes of every sweep, and the pieces with their volume and mass.
+    """Return the volumes of every sweep, and the pieces with their volume, mass and centre.
 
-    Half of the kerf, taken by the tube formula, comes off each side of the sheet. On the bed a half whose panel is no
-    rectangle is trimmed to the panel's outline; a counter-mould or cradle follows the panel it supports.
+    Half of the kerf, taken by the tube formula, comes off each side of the sheet; halves are trimmed to their
+    footprints.
 
     Args:
         job: Its lay-up.
@@ -50,14 +46,12 @@ def measure_halves(
     Raises:
         GeometryError: A sweep's rails cross or do not cover its billet.
     """
-    by_id = {panel.id: panel for panel in panels}
-    duties = {(piece.sweep, piece.half): piece.duty for piece in pieces}
     volumes = []
-    for index, sweep in enumerate(sweeps):
+    footprints = find_footprints(job.layup, panels, sweeps, pieces)
+    for index, (sweep, plan) in enumerate(zip(sweeps, footprints, strict=True)):
         progress(index / len(sweeps), f"Measuring {sweep.id}")
-        footprints = _footprints(sweep, by_id, duties) if job.layup is Layup.BED else (None, None)
         try:
-            volumes.append(_measure(sweep, *footprints))
+            volumes.append(_measure(sweep, plan))
         except GeometryError as error:
             raise GeometryError(error.message, f"sweep {sweep.id}", error.remedy) from error
     by_sweep = {volume.sweep: volume for volume in volumes}
@@ -65,75 +59,54 @@ def measure_halves(
 
 
 def _weighed(piece: Piece, volumes: SweepVolumes, conditions: Conditions) -> Piece:
-    volume_mm3 = volumes.lower_mm3 if piece.half is Half.LOWER else volumes.upper_mm3
-    return replace(piece, volume_mm3=volume_mm3, mass_kg=mass_kg(volume_mm3, conditions.density_kg_m3))
-
-
-def _measure(sweep: Sweep, lower_plan: list[_Rings] | None, upper_plan: list[_Rings] | None) -> SweepVolumes:
-    """Return the volumes of one sweep; a footprint of None is the whole billet."""
-    near, far, length, width = sweep.near, sweep.far, sweep.length_mm, sweep.width_mm
-    billet = length * width * sweep.height_mm
-    kerf = kerf_volume(near, far, length, width, sweep.kerf_mm)
-    whole_lower = volume_below_within(near, far, length, width) - kerf / 2.0
-    lower, upper = whole_lower, billet - kerf - whole_lower
-    if lower_plan is not None:
-        lower = sum(
-            volume_below_within(near, far, length, width, rings)
-            - kerf_volume(near, far, length, width, sweep.kerf_mm, rings) / 2.0
-            for rings in lower_plan
-        )
-    if upper_plan is not None:
-        upper = sum(
-            _plan_area(rings) * sweep.height_mm
-            - volume_below_within(near, far, length, width, rings)
-            - kerf_volume(near, far, length, width, sweep.kerf_mm, rings) / 2.0
-            for rings in upper_plan
-        )
-    is_trimmed = lower_plan is not None or upper_plan is not None
-    return SweepVolumes(
-        sweep=sweep.id,
-        lower_mm3=lower,
-        upper_mm3=upper,
-        kerf_mm3=kerf,
-        face_mm2=sheet_area(near, far, length, width),
-        trimmed_mm3=billet - kerf - lower - upper if is_trimmed else 0.0,
+    is_lower = piece.half is Half.LOWER
+    volume_mm3 = volumes.lower_mm3 if is_lower else volumes.upper_mm3
+    return replace(
+        piece,
+        volume_mm3=volume_mm3,
+        mass_kg=mass_kg(volume_mm3, conditions.density_kg_m3),
+        centre_mm=volumes.lower_centre_mm if is_lower else volumes.upper_centre_mm,
     )
 
 
-def _footprints(
-    sweep: Sweep, panels: Mapping[str, Panel], duties: Mapping[tuple[str, Half], Duty]
-) -> tuple[list[_Rings] | None, list[_Rings] | None]:
-    """Return what each half is trimmed to, in the billet's plan; None where it stays whole."""
-    servings = {serving.half: serving for serving in sweep.serving}
-    plans: dict[Half, list[_Rings] | None] = {Half.LOWER: None, Half.UPPER: None}
-    for half in plans:
-        serving = servings.get(half)
-        if serving is None and duties.get((sweep.id, half)) in _FOLLOWING:
-            serving = sweep.serving[0]
-        if serving is not None and not panels[serving.panel].is_rectangle:
-            plans[half] = _outline_in_billet(panels[serving.panel], serving, sweep)
-    return plans[Half.LOWER], plans[Half.UPPER]
+def _measure(sweep: Sweep, plan: Footprints) -> SweepVolumes:
+    """Return the volumes of one sweep."""
+    length, width, height = sweep.length_mm, sweep.width_mm, sweep.height_mm
+    billet = length * width * height
+    rails = sweep.near, sweep.far, length, width, sweep.kerf_mm
+    whole = sheet_moments(*rails)
+    corners = np.array([[0.0, 0.0], [length, 0.0], [length, width], [0.0, width]])
+    kerf = 2.0 * float(whole.layer[0])
+    lower, upper = whole.lower(), whole.upper(prism_moments((corners,), height))
+    if plan.lower is not None:
+        lower = sum((sheet_moments(*rails, region).lower() for region in plan.lower), start=np.zeros(4))
+    if plan.upper is not None:
+        upper = sum((_upper_over(region, sweep) for region in plan.upper), start=np.zeros(4))
+    is_trimmed = plan.lower is not None or plan.upper is not None
+    lower_mm3 = float(lower[0])
+    # Of an untrimmed billet the upper half is the rest, so that the parts are the billet to rounding.
+    upper_mm3 = float(upper[0]) if is_trimmed else billet - kerf - lower_mm3
+    return SweepVolumes(
+        sweep=sweep.id,
+        lower_mm3=lower_mm3,
+        upper_mm3=upper_mm3,
+        kerf_mm3=kerf,
+        face_mm2=whole.area_mm2,
+        trimmed_mm3=billet - kerf - lower_mm3 - upper_mm3 if is_trimmed else 0.0,
+        lower_centre_mm=_centre(lower),
+        upper_centre_mm=_centre(upper),
+    )
 
 
-def _outline_in_billet(panel: Panel, serving: Serving, sweep: Sweep) -> list[_Rings]:
-    """Return the regions of a panel's outline that lie over a billet, each an outer ring and its holes."""
-    import shapely
-
-    # p = b R' + shift gives b = (p - shift) R; the turn keeps plan and height apart, so the plan part stands alone.
-    plan_turn, plan_shift = serving.rotation[:2, :2], serving.shift_mm[:2]
-    rings = [(ring - plan_shift) @ plan_turn for ring in panel.outline]
-    region = shapely.Polygon(rings[0], rings[1:]).intersection(shapely.box(0.0, 0.0, sweep.length_mm, sweep.width_mm))
-    return [
-        tuple(np.asarray(ring.coords)[:-1] for ring in (part.exterior, *part.interiors))
-        for part in shapely.get_parts(region)
-        if part.geom_type == "Polygon"
-    ]
+def _upper_over(region: Region, sweep: Sweep) -> Floats:
+    """Return the moments (4,) of the upper half over one region."""
+    about = sheet_moments(sweep.near, sweep.far, sweep.length_mm, sweep.width_mm, sweep.kerf_mm, region)
+    return about.upper(prism_moments(region, sweep.height_mm))
 
 
-def _plan_area(rings: _Rings) -> float:
-    """Return the area of an outer ring less its holes, mm2."""
-    areas = []
-    for ring in rings:
-        turned = np.roll(ring, -1, axis=0)
-        areas.append(abs(float(np.sum(ring[:, 0] * turned[:, 1] - ring[:, 1] * turned[:, 0]))) / 2.0)
-    return areas[0] - sum(areas[1:])
+def _centre(moments: Floats) -> tuple[float, float, float] | None:
+    volume, *firsts = moments.tolist()
+    if volume <= 0.0:
+        return None
+    x, y, z = (first / volume for first in firsts)
+    return x, y, z

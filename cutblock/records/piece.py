@@ -20,3 +20,4 @@ class Piece(Record):
     block: str | None = None
     volume_mm3: float = 0.0
     mass_kg: float = 0.0
+    centre_mm: tuple[float, float, float] | None = None  # centre of mass, billet frame

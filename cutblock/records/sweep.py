@@ -73,6 +73,8 @@ class SweepVolumes(Record):
     kerf_mm3: float
     face_mm2: float  # area of the cut surface
     trimmed_mm3: float = 0.0  # cut away outside the outline of the panel (bed lay-up)
+    lower_centre_mm: tuple[float, float, float] | None = None  # centre of mass, billet frame
+    upper_centre_mm: tuple[float, float, float] | None = None
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)

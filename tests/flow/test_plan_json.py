@@ -25,6 +25,19 @@ def test_a_plan_comes_back_from_its_file_as_it_went_in():
     assert back.machine == plan.machine
 
 
+def test_the_centres_of_the_pieces_come_back_with_the_volumes_of_their_sweep():
+    plan = sample_plan()
+    lower, *others = plan.pieces
+    plan = replace(plan, pieces=(replace(lower, centre_mm=(601.25, 500.0, 74.5)), *others))
+
+    back = read_plan_text(plan_text(plan).encode(), "plan.json")
+
+    assert back.pieces[0].centre_mm == (601.25, 500.0, 74.5)
+    assert back.pieces[1].centre_mm is None
+    assert back.volumes[0].lower_centre_mm == (601.25, 500.0, 74.5)
+    assert back.volumes[0].upper_centre_mm is None
+
+
 def test_the_litres_of_the_file_sum_to_what_was_bought():
     ledger = json.loads(plan_text(sample_plan()))["ledger"]
 

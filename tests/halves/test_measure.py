@@ -16,8 +16,9 @@ from kit.sample import (
 
 from cutblock.base.errors import GeometryError
 from cutblock.geometry import split_billet
-from cutblock.geometry.solids import mesh_volume
+from cutblock.geometry.solids import mesh_centre, mesh_volume
 from cutblock.halves.measure import measure_halves
+from cutblock.halves.meshes import half_meshes
 from cutblock.records.words import Duty, Half, Layup
 
 BILLET = 1200.0 * 1000.0 * 300.0
@@ -51,6 +52,36 @@ def test_pieces_weigh_their_volume_of_foam():
     assert upper.volume_mm3 == volumes.upper_mm3
     assert lower.mass_kg == pytest.approx(volumes.lower_mm3 * 20e-9, rel=1e-14)
     assert (lower.half, upper.half) == (Half.LOWER, Half.UPPER)
+
+
+@given(at_near=st.floats(0.2, 8.0), at_far=st.floats(0.2, 8.0), skew=st.floats(-18.0, 18.0))
+def test_the_centres_of_both_halves_and_the_kerf_balance_in_the_middle_of_the_billet(at_near, at_far, skew):
+    sweep = sample_sweep(kerf_mm=(at_near, at_far))
+    aside = np.array([skew, 0.0])
+    sweep = replace(sweep, near=sweep.near - aside, far=sweep.far + aside)
+
+    volumes, (lower, upper) = measure(sweep, (sample_panel(), sample_panel("S2-A01")))
+
+    solids = half_meshes(sweep)
+    for piece, centre, solid in zip(
+        (lower, upper), (volumes.lower_centre_mm, volumes.upper_centre_mm), solids, strict=False
+    ):
+        assert piece.centre_mm == centre
+        np.testing.assert_allclose(centre, mesh_centre(solid), atol=1e-3)
+    melted = volumes.kerf_mm3 * mesh_centre(solids[2])
+    balance = volumes.lower_mm3 * np.array(lower.centre_mm) + volumes.upper_mm3 * np.array(upper.centre_mm) + melted
+    np.testing.assert_allclose(balance / BILLET, [600.0, 500.0, 150.0], atol=1e-4)
+
+
+def test_a_half_of_which_nothing_is_left_has_no_centre():
+    sweep = sample_sweep(panels=("S1-A01",))
+    away = replace(sweep.serving[0], shift_mm=np.array([5000.0, 0.0, 0.0]))
+    panel = sample_panel(is_rectangle=False, outline=(TRAPEZOID,))
+
+    volumes, (lower, _) = measure(replace(sweep, serving=(away,)), (panel,), duty=Duty.SURPLUS)
+
+    assert volumes.lower_mm3 == 0.0
+    assert lower.centre_mm is None
 
 
 def test_on_the_bed_both_halves_are_trimmed_to_the_outlines_of_their_panels():

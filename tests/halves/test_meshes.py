@@ -2,7 +2,7 @@ from dataclasses import replace
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 from kit.sample import sample_sweep
 
@@ -14,6 +14,8 @@ from cutblock.halves.meshes import half_meshes
 
 
 @given(at_near=st.floats(0.3, 6.0), at_far=st.floats(0.3, 6.0), skew=st.floats(-18.0, 18.0))
+@example(at_near=1.0, at_far=1.0, skew=1e-6)
+@example(at_near=1.0, at_far=1.0, skew=2.0**-23)
 def test_halves_and_kerf_body_are_closed_and_fill_the_billet(at_near, at_far, skew):
     sweep = sample_sweep(kerf_mm=(at_near, at_far))
     aside = np.array([skew, 0.0])
