@@ -41,10 +41,12 @@ class WavesTable(_Table, frozen=True):
 
 
 class PanelsTable(_Table, frozen=True):
-    """`panels = { length, width }`, or the cuts."""
+    """`panels = { length, width }`, or the cuts; `angle` (degrees) and `phase` turn and shift the grid of cells."""
 
     length: Positive | None = None
     width: Positive | None = None
+    angle: Annotated[float, msgspec.Meta(ge=-180.0, le=180.0)] | None = None
+    phase: tuple[float, float] | None = None
     cuts_x: list[float] | None = None
     cuts_y: list[float] | None = None
 

@@ -223,6 +223,7 @@ class _Reader:
             what = "has no source" if not given else f"has several sources ({', '.join(given)})"
             self._refuse(path, f'face "{face.name}" {what}', f"Give exactly one of {', '.join(_SOURCES)}.")
         cell, cuts_x, cuts_y = self._division(face, path)
+        angle, phase = self._grid(face, path)
         return FaceSpec(
             name=face.name,
             source=self._source(face, path),
@@ -231,7 +232,21 @@ class _Reader:
             cuts_x_mm=cuts_x,
             cuts_y_mm=cuts_y,
             count=face.count,
+            angle_rad=angle,
+            phase_mm=phase,
         )
+
+    def _grid(self, face: FaceTable, path: KeyPath) -> tuple[float | None, tuple[float, float] | None]:
+        table = face.panels
+        if table is None or (table.angle is None and table.phase is None):
+            return None, None
+        if table.length is None:
+            key = "angle" if table.angle is not None else "phase"
+            self._refuse(
+                (*path, "panels", key), "goes with length and width of the cells", "Give both, or leave it out."
+            )
+        phase = None if table.phase is None else (table.phase[0] * self._mm, table.phase[1] * self._mm)
+        return None if table.angle is None else math.radians(table.angle), phase
 
     def _division(
         self, face: FaceTable, path: KeyPath

@@ -4,10 +4,13 @@ import math
 from itertools import pairwise
 from typing import NamedTuple
 
+import numpy as np
+
+from cutblock.base.arrays import Floats
 from cutblock.base.errors import GeometryError, InputError
 from cutblock.base.progress import Progress
 from cutblock.base.units import length_text
-from cutblock.geometry.outline import Area, area_of_rings, box, parts_of
+from cutblock.geometry.outline import Area, Rings, area_of_rings, box, parts_of
 from cutblock.records.form import Face
 from cutblock.records.job import FaceSpec
 from cutblock.records.plan import Finding
@@ -21,7 +24,10 @@ _MOST_CELLS = 20_000
 
 
 class Cell(NamedTuple):
-    """One cell: its rectangle of (u, v) and, where the face is trimmed, the part of it on the face."""
+    """One cell: its rectangle of (u, v) and, where the face is trimmed, the part of it on the face.
+
+    Where the grid is turned all of it is in the grid's own coordinates: the face's, turned back by `angle_rad`.
+    """
 
     row: int  # along v, from 1
     column: int  # along u, from 1
@@ -30,6 +36,11 @@ class Cell(NamedTuple):
     v_low: float
     v_high: float
     area: Area | None = None  # None: the whole rectangle
+    angle_rad: float = 0.0  # of the grid against the face's u
+
+    def on_face(self, u: Floats, v: Floats) -> tuple[Floats, Floats]:
+        """Return where points of the grid's coordinates lie in those of the face."""
+        return _turned(u, v, self.angle_rad)
 
     @property
     def name(self) -> str:
@@ -44,6 +55,13 @@ def row_letters(row: int) -> str:
         row, rest = divmod(row - 1, 26)
         letters = chr(ord("A") + rest) + letters
     return letters
+
+
+def _turned(u: Floats, v: Floats, angle_rad: float) -> tuple[Floats, Floats]:
+    if angle_rad == 0.0:
+        return u, v
+    cosine, sine = math.cos(angle_rad), math.sin(angle_rad)
+    return cosine * u - sine * v, sine * u + cosine * v
 
 
 def cells_of(
@@ -64,25 +82,71 @@ def cells_of(
         InputError: The cuts or the cell size cannot be used.
         GeometryError: A sliver has no neighbour, or a cell falls into parts.
     """
+    if spec.is_grid_set:
+        return _set_grid(face, spec, units, progress)
     cuts = ((), ()) if spec.cuts_x_mm is None and spec.cuts_y_mm is None else (spec.cuts_x_mm, spec.cuts_y_mm)
     wanted: tuple[float | None, float | None] = spec.cell_mm if spec.cell_mm is not None else (None, None)
     lines_u = _lines(face.length_mm, wanted[0], cuts[0] or (), "x", face.name, spec.place, units)
     lines_v = _lines(face.width_mm, wanted[1], cuts[1] or (), "y", face.name, spec.place, units)
-    n_cells = (len(lines_u) - 1) * (len(lines_v) - 1)
-    if n_cells > _MOST_CELLS:
+    _refuse_many((len(lines_u) - 1) * (len(lines_v) - 1), face.name, spec.place)
+    cells = _between(lines_u, lines_v, 0.0)
+    if face.outline is None:
+        return tuple(cells), ()
+    return _trimmed(face.name, face.outline, spec, cells, units, progress)
+
+
+def _set_grid(
+    face: Face, spec: FaceSpec, units: str, progress: Progress
+) -> tuple[tuple[Cell, ...], tuple[Finding, ...]]:
+    """Divide a face by a grid of cells of exactly the wanted size, turned and shifted as the job says."""
+    if spec.cell_mm is None:
         raise InputError(
-            f'face "{face.name}" would fall into {n_cells} panels; at most {_MOST_CELLS} are taken',
-            spec.place,
-            "Give larger panels, or check the units.",
+            f'face "{face.name}" has an angle or a phase but no cell size', spec.place, "Give length and width."
         )
-    cells = [
-        Cell(row, column, u_low, u_high, v_low, v_high)
+    narrowest = min(spec.cell_mm)
+    if narrowest < NARROWEST_MM:
+        raise _too_narrow(face.name, narrowest, "xy"[spec.cell_mm.index(narrowest)], spec.place, units)
+    angle = spec.angle_rad if spec.angle_rad is not None else 0.0
+    outline = face.outline
+    if outline is None:
+        length, width = face.length_mm, face.width_mm
+        outline = (np.array([[0.0, 0.0], [length, 0.0], [length, width], [0.0, width]]),)
+    rings = tuple(np.stack(_turned(ring[:, 0], ring[:, 1], -angle), axis=1) for ring in outline)
+    lines = []
+    for axis, (size, phase) in enumerate(zip(spec.cell_mm, spec.phase_mm or (0.0, 0.0), strict=True)):
+        low, high = float(rings[0][:, axis].min()), float(rings[0][:, axis].max())
+        # The slack keeps an edge that lies on a line but for rounding from getting a row of nothing.
+        first, last = math.floor((low - phase) / size + _OVER), math.ceil((high - phase) / size - _OVER)
+        _refuse_many(last - first, face.name, spec.place)
+        lines.append([phase + size * number for number in range(first, last + 1)])
+    _refuse_many((len(lines[0]) - 1) * (len(lines[1]) - 1), face.name, spec.place)
+    return _trimmed(face.name, rings, spec, _between(lines[0], lines[1], angle), units, progress)
+
+
+def _between(lines_u: list[float], lines_v: list[float], angle_rad: float) -> list[Cell]:
+    return [
+        Cell(row, column, u_low, u_high, v_low, v_high, angle_rad=angle_rad)
         for row, (v_low, v_high) in enumerate(pairwise(lines_v), 1)
         for column, (u_low, u_high) in enumerate(pairwise(lines_u), 1)
     ]
-    if face.outline is None:
-        return tuple(cells), ()
-    return _trimmed(face, spec, cells, units, progress)
+
+
+def _refuse_many(n_cells: int, face: str, place: str) -> None:
+    if n_cells > _MOST_CELLS:
+        raise InputError(
+            f'face "{face}" would fall into {n_cells} panels; at most {_MOST_CELLS} are taken',
+            place,
+            "Give larger panels, or check the units.",
+        )
+
+
+def _too_narrow(face: str, narrowest_mm: float, axis: str, place: str, units: str) -> InputError:
+    return InputError(
+        f'face "{face}" would get a panel {length_text(narrowest_mm, units, 1)} wide along {axis}; '
+        f"the least is {length_text(NARROWEST_MM, units)}",
+        place,
+        "Move the cuts or give larger panels.",
+    )
 
 
 def _lines(
@@ -105,28 +169,22 @@ def _lines(
                 )
     narrowest = min(after - before for before, after in pairwise(lines))
     if narrowest < NARROWEST_MM:
-        raise InputError(
-            f'face "{face}" would get a panel {length_text(narrowest, units, 1)} wide along {axis}; '
-            f"the least is {length_text(NARROWEST_MM, units)}",
-            place,
-            "Move the cuts or give larger panels.",
-        )
+        raise _too_narrow(face, narrowest, axis, place, units)
     return lines
 
 
 def _trimmed(
-    face: Face, spec: FaceSpec, cells: list[Cell], units: str, progress: Progress
+    face: str, rings: Rings, spec: FaceSpec, cells: list[Cell], units: str, progress: Progress
 ) -> tuple[tuple[Cell, ...], tuple[Finding, ...]]:
     import shapely
 
-    assert face.outline is not None
-    whole = area_of_rings(face.outline)
+    whole = area_of_rings(rings)
     shapely.prepare(whole)
     kept: dict[int, list[Area]] = {}
     slivers: list[tuple[int, Area]] = []
     for index, cell in enumerate(cells):
         if index % 50 == 0:
-            progress(index / len(cells), f"Dividing face {face.name}")
+            progress(index / len(cells), f"Dividing face {face}")
         rectangle = box(cell.u_low, cell.v_low, cell.u_high, cell.v_high)
         if whole.contains(rectangle):
             kept[index] = [rectangle]
@@ -144,7 +202,7 @@ def _trimmed(
         cell, parts = cells[index], kept[index]
         if len(parts) > 1:
             raise GeometryError(
-                f"cell {cell.name} of face {face.name} falls into {len(parts)} separate parts",
+                f"cell {cell.name} of face {face} falls into {len(parts)} separate parts",
                 spec.place,
                 "Move the cuts so that every panel is in one piece.",
             )
@@ -155,7 +213,7 @@ def _trimmed(
 
 
 def _merge_slivers(
-    face: Face,
+    face: str,
     spec: FaceSpec,
     cells: list[Cell],
     kept: dict[int, list[Area]],
@@ -189,17 +247,18 @@ def _merge_slivers(
                 Finding(
                     severity=Severity.WARNING,
                     code="sliver-merged",
-                    subject=f"{face.name} {cells[best[1]].name}",
+                    subject=f"{face} {cells[best[1]].name}",
                     text=f"A sliver of cell {cell.name} was joined to this panel, which is larger than its cell; "
                     "move the cuts to avoid it.",
                 )
             )
         if len(left) == len(waiting):
             index, sliver = left[0]
-            u, v = sliver.representative_point().coords[0]
+            point = np.array(sliver.representative_point().coords)
+            (u,), (v,) = cells[index].on_face(point[:, 0], point[:, 1])
             raise GeometryError(
-                f"cell {cells[index].name} of face {face.name} is a sliver at x {length_text(u, units)}, "
-                f"y {length_text(v, units)} of the face, with no panel beside it to join",
+                f"cell {cells[index].name} of face {face} is a sliver at x {length_text(float(u), units)}, "
+                f"y {length_text(float(v), units)} of the face, with no panel beside it to join",
                 spec.place,
                 "Move the cuts or give smaller panels.",
             )

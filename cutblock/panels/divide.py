@@ -1,5 +1,6 @@
 """Divides the faces of a form into panels, each in a frame of its own."""
 
+import math
 from collections.abc import Iterator
 from dataclasses import replace
 
@@ -52,7 +53,7 @@ def divide_faces(
                 "Give larger panels or fewer copies.",
             )
         originals = _face_panels(job, face, cells, part_of(report, 0.2, 1.0))
-        beside = _neighbours(face, cells, originals)
+        beside = _neighbours(face, spec, cells, originals)
         for copy in range(1, spec.count + 1):
             stem = _stem(face.name) + (str(copy) if spec.count > 1 else "")
             if stem in taken:
@@ -103,11 +104,13 @@ def _face_panels(job: Job, face: Face, cells: tuple[Cell, ...], progress: Progre
     return panels
 
 
-def _neighbours(face: Face, cells: tuple[Cell, ...], panels: list[Panel]) -> list[list[tuple[str, int]]]:
+def _neighbours(
+    face: Face, spec: FaceSpec, cells: tuple[Cell, ...], panels: list[Panel]
+) -> list[list[tuple[str, int]]]:
     """Return for each panel its edges and the index of the panel behind each."""
     index_at = {(cell.row, cell.column): index for index, cell in enumerate(cells)}
     n_columns = max(cell.column for cell in cells)
-    is_closed = n_columns > 2 and _is_closed(face)
+    is_closed = n_columns > 2 and not spec.is_grid_set and _is_closed(face)
     steps = {"u_high": (0, 1), "u_low": (0, -1), "v_high": (1, 0), "v_low": (-1, 0)}
     result = []
     for cell, panel in zip(cells, panels, strict=True):
@@ -133,9 +136,10 @@ def _is_closed(face: Face) -> bool:
 
 def _edge_names(face: Face, cell: Cell, panel: Panel) -> dict[str, str]:
     middle = np.array([0.5 * (cell.u_low + cell.u_high)]), np.array([0.5 * (cell.v_low + cell.v_high)])
-    _, along_u, along_v = surface_tangents(face.patch, *middle)
-    u_x, u_y = panel.axes[:2] @ along_u[0]
-    v_x, v_y = panel.axes[:2] @ along_v[0]
+    _, along_u, along_v = surface_tangents(face.patch, *cell.on_face(*middle))
+    cosine, sine = math.cos(cell.angle_rad), math.sin(cell.angle_rad)
+    u_x, u_y = panel.axes[:2] @ (cosine * along_u[0] + sine * along_v[0])
+    v_x, v_y = panel.axes[:2] @ (cosine * along_v[0] - sine * along_u[0])
     if abs(u_x) >= abs(u_y):
         east, north = ("u_high" if u_x >= 0.0 else "u_low"), ("v_high" if v_y >= 0.0 else "v_low")
     else:

@@ -115,11 +115,16 @@ def _samples(face: Face, cell: Cell) -> _Samples:
     if cell.area is None:
         u, weights_u = _gauss(cell.u_low, cell.u_high, _N_SAMPLES_U)
         v, weights_v = _gauss(cell.v_low, cell.v_high, _N_SAMPLES_V)
-        arrays = [array.reshape(-1, 3) for array in surface_grid(face.patch, u, v)]
-        u, v = (grid.ravel() for grid in np.meshgrid(u, v, indexing="ij"))
         weights = np.outer(weights_u, weights_v).ravel()
+        grid = u, v
+        u, v = cell.on_face(*(axis.ravel() for axis in np.meshgrid(u, v, indexing="ij")))
+        if cell.angle_rad == 0.0:
+            arrays = [array.reshape(-1, 3) for array in surface_grid(face.patch, *grid)]
+        else:
+            arrays = list(surface_tangents(face.patch, u, v))
     else:
         u, v, weights = _clipped_boxes(cell)
+        u, v = cell.on_face(u, v)
         arrays = list(surface_tangents(face.patch, u, v))
     points, along_u, along_v = arrays
     normals, stretch = unit_normals(along_u, along_v)
@@ -157,15 +162,15 @@ def _clipped_boxes(cell: Cell) -> tuple[Floats, Floats, Floats]:
 def _dense_rings(cell: Cell) -> Rings:
     area = cell.area if cell.area is not None else box(cell.u_low, cell.v_low, cell.u_high, cell.v_high)
     longest = np.array([cell.u_high - cell.u_low, cell.v_high - cell.v_low]) / _N_EDGE_STEPS
-    return tuple(densified(ring, longest) for ring in rings_of(area))
+    dense = [densified(ring, longest) for ring in rings_of(area)]
+    return tuple(np.stack(cell.on_face(ring[:, 0], ring[:, 1]), axis=1) for ring in dense)
 
 
 def _frame(
     panel_id: str, face: Face, cell: Cell, layup: Layup, samples: _Samples, edge_points: Floats, units: str
 ) -> tuple[Floats, Floats, float]:
     """Return origin, axes, and 1 or -1: the side of r_u x r_v on which the frame's z lies."""
-    corners, _, _ = surface_grid(face.patch, np.array([cell.u_low, cell.u_high]), np.array([cell.v_low, cell.v_high]))
-    along = (corners[1] - corners[0]).sum(axis=0)
+    along = _grid_direction(face, cell, samples)
     facing = (samples.areas_mm2[:, None] * samples.normals).sum(axis=0)
     if layup is Layup.BED:
         return np.zeros(3), frame_axes(np.array([0.0, 0.0, 1.0]), along), 1.0 if facing[2] >= 0.0 else -1.0
@@ -176,6 +181,19 @@ def _frame(
     if smallest < _CLEARLY_SMALLER * present:
         axes = frame_axes(axes[2], rotation_about(axes[2], turn) @ axes[0])
     return origin, axes, 1.0
+
+
+def _grid_direction(face: Face, cell: Cell, samples: _Samples) -> Floats:
+    """Return the direction of the cell's u edges in the form."""
+    if cell.angle_rad == 0.0:
+        ends = np.array([cell.u_low, cell.u_high]), np.array([cell.v_low, cell.v_high])
+        corners, _, _ = surface_grid(face.patch, *ends)
+        along: Floats = (corners[1] - corners[0]).sum(axis=0)
+        return along
+    # The corners of a turned cell may lie far off the face.
+    mean_u, mean_v = ((samples.areas_mm2[:, None] * part).sum(axis=0) for part in (samples.along_u, samples.along_v))
+    turned: Floats = math.cos(cell.angle_rad) * mean_u + math.sin(cell.angle_rad) * mean_v
+    return turned
 
 
 def _refuse_steep(panel_id: str, upwards: Floats, points: Floats, layup: Layup, units: str) -> None:

@@ -71,6 +71,15 @@ class FaceSpec(Record):
     cuts_x_mm: tuple[float, ...] | None = None
     cuts_y_mm: tuple[float, ...] | None = None
     count: int = 1
+    # Of the grid of cells, counter-clockwise from the face's x, and how far it is shifted from the face's corner along
+    # its own two directions; with either, cells have their wanted size exactly and the face's edges trim them.
+    angle_rad: float | None = None
+    phase_mm: tuple[float, float] | None = None
+
+    @property
+    def is_grid_set(self) -> bool:
+        """Whether the grid lies where the job says, not evenly on the face."""
+        return self.angle_rad is not None or self.phase_mm is not None
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)

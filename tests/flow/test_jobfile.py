@@ -168,3 +168,27 @@ def test_the_job_lists_its_inputs_by_the_names_it_gives_them(tmp_path):
     assert [name for name, _ in job.inputs] == ["job.toml", "near.csv", "far.csv"]
     assert all(len(digest) == 64 for _, digest in job.inputs)
     assert os.sep in job.faces[1].source.near_path
+
+
+@pytest.mark.parametrize("units", ["mm", "in"])
+def test_the_grid_of_cells_can_be_turned_and_shifted(tmp_path, units):
+    plain = "panels = {{ length = 1200, width = 1000 }}\n\n[[form.face]]"
+    turned = "panels = {{ length = 1200, width = 1000, angle = -20, phase = [300, 200] }}\n\n[[form.face]]"
+    assert plain in WHOLE
+    first, second = read_job(write(tmp_path, WHOLE.replace(plain, turned).format(units=units))).faces
+
+    mm = 1.0 if units == "mm" else 25.4
+    assert first.angle_rad == pytest.approx(math.radians(-20.0))
+    assert first.phase_mm == pytest.approx((300.0 * mm, 200.0 * mm))
+    assert first.is_grid_set
+    assert (second.angle_rad, second.phase_mm, second.is_grid_set) == (None, None, False)
+
+
+@pytest.mark.parametrize("extra", ["angle = 5", "phase = [1, 2]"])
+def test_an_angle_or_phase_without_a_cell_size_is_refused_with_its_line(tmp_path, extra):
+    text = WHOLE.replace(
+        "panels = {{ length = 1200, width = 1000 }}", f"panels = {{{{ cuts_x = [1000], {extra} }}}}", 1
+    )
+    with pytest.raises(InputError, match=r"goes with length and width") as caught:
+        read_job(write(tmp_path, text.format(units="mm")))
+    assert "job.toml:16" in str(caught.value)

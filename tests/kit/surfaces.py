@@ -9,7 +9,11 @@ from cutblock.records.words import Layup
 
 def job_of(source, *, layup=Layup.BED, name="S", **changes):
     """A job of one face; keywords of FaceSpec and of Job may be mixed."""
-    of_face = {key: changes.pop(key) for key in ("cell_mm", "cuts_x_mm", "cuts_y_mm", "count") if key in changes}
+    of_face = {
+        key: changes.pop(key)
+        for key in ("cell_mm", "cuts_x_mm", "cuts_y_mm", "count", "angle_rad", "phase_mm")
+        if key in changes
+    }
     return sample_job(
         layup=layup, faces=(FaceSpec(name=name, source=source, place="job.toml:12", **of_face),), **changes
     )
