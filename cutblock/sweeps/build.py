@@ -2,7 +2,6 @@
 
 import numpy as np
 
-from cutblock.base.errors import GeometryError
 from cutblock.geometry.rails import sheet_range
 from cutblock.records.sweep import Serving, Sweep
 from cutblock.records.words import Half
@@ -24,8 +23,6 @@ def _sweep(job_id: str, panel_id: str, cut: CutStrip, kerf_mm: float, wall_mm: f
     # Rounded like the rails, so that lifting them keeps their digits.
     lift = round(height / 2.0 - (low + high) / 2.0, 6)
     near, far = (np.round(rail + np.array([0.0, lift]), 6) + 0.0 for rail in (cut.near, cut.far))
-    if not (np.diff(near[:, 0]) > 0.0).all() or not (np.diff(far[:, 0]) > 0.0).all():
-        raise GeometryError(f"a rail of sweep {sweep_id} turns back in plan", panel_id, "Divide the panel differently.")
     start = strip.billet_span_mm[0]
     shift = lie.shift_mm + np.array([0.0, start, -lift]) @ lie.rotation.T
     serving = Serving(

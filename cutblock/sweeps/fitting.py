@@ -14,15 +14,15 @@ from cutblock.geometry.outline import is_inside
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.plan import Finding
-from cutblock.records.shop import Conditions
+from cutblock.records.shop import Conditions, Machine
 from cutblock.records.sweep import Sweep
 from cutblock.records.words import Severity
 from cutblock.sweeps.build import sweeps_of
-from cutblock.sweeps.checks import STEEPEST_WIRE_DEG, check_sweep
 from cutblock.sweeps.cutting import Aim
 from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm
 from cutblock.sweeps.lie import Lie, lie_of
 from cutblock.sweeps.strips import MOST_STRIPS, NARROWEST_MM, Choice, choose_cuts
+from cutblock.sweeps.validity import STEEPEST_WIRE_DEG, Check, check_sweep, findings_of
 
 BATCH = 8
 
@@ -33,7 +33,7 @@ def fit_panels(
     """Return the sweeps that cut every panel within the job's tolerance, each serving one panel with its lower half.
 
     Panels alike in shape are fitted once. A panel one sweep cannot cut is divided into strips across the wire; one
-    that strips cannot cut either gets no sweep but an error finding.
+    that strips cannot cut either, or with a sweep that fails a check, gets no sweep but an error finding.
 
     Args:
         job: Tolerance, kerf, coat, favour, wall and margin.
@@ -44,7 +44,8 @@ def fit_panels(
     Raises:
         NotCuttable: No panel at all can be cut.
     """
-    aim = _aim(job, conditions)
+    tool = machine(job.machine)
+    aim = _aim(job, conditions, tool)
     alike = _alike(panels)
     firsts = list(dict.fromkeys(alike))
     choices: dict[int, Choice] = {}
@@ -56,25 +57,33 @@ def fit_panels(
         choices.update(zip(batch, choose_cuts(lies, aim, report), strict=True))
     sweeps: list[Sweep] = []
     findings: list[Finding] = []
+    checks: dict[int, list[tuple[Check, ...]]] = {}
     for panel, first in zip(panels, alike, strict=True):
         choice = choices[first]
         if choice.is_within:
             made = sweeps_of(job.id, panel.id, choice.panel, conditions.kerf_mm, job.wall_mm)
-            sweeps += made
-            findings += [finding for sweep in made for finding in check_sweep(sweep)]
+            if first not in checks:
+                checks[first] = [check_sweep(sweep, job.wall_mm, tool) for sweep in made]
+            notes = [
+                note
+                for sweep, tested in zip(made, checks[first], strict=True)
+                for note in findings_of(tested, sweep, panel, job.units)
+            ]
+            findings += notes
+            if not any(note.severity is Severity.ERROR for note in notes):
+                sweeps += made
         else:
             findings.append(_not_cuttable(panel, choice, aim))
     if panels and not sweeps:
-        worst = findings[0]
+        worst = next(finding for finding in findings if finding.severity is Severity.ERROR)
         raise NotCuttable(f"no panel can be cut; the first: {worst.text}", worst.subject)
     findings += _domed_faces(panels, alike, choices)
     progress(1.0, "Panels fitted")
     return tuple(sweeps), tuple(findings)
 
 
-def _aim(job: Job, conditions: Conditions) -> Aim:
+def _aim(job: Job, conditions: Conditions, tool: Machine) -> Aim:
     kerf = conditions.kerf_mm
-    tool = machine(job.machine)
     aim = Aim(
         tolerance_mm=job.tolerance_mm,
         kerf_mm=kerf,

@@ -50,7 +50,7 @@ def test_the_rails_of_an_exactly_ruled_panel_fit_to_the_sag():
 
 
 @settings(max_examples=8)
-@given(degrees=st.floats(-25.0, 25.0), margin=st.sampled_from([0.0, 30.0]))
+@given(degrees=st.floats(5.0, 25.0), margin=st.sampled_from([0.0, 30.0]))
 def test_the_wire_comes_from_the_air_and_leaves_into_it(degrees, margin):
     layup = Layup.BENCH if margin else Layup.BED
     sweeps, _ = fitted(panel_of(turned(scherk, degrees)), layup=layup, margin_mm=margin)
