@@ -14,7 +14,7 @@ from cutblock.geometry.fit_target import Patch, Target, make_target
 from cutblock.geometry.heights import HeightField, height_field
 from cutblock.geometry.rails import SheetFit, polyline_rails
 
-BATCH = 16
+BATCH = 64
 FINE_CONTROLS = 32
 FINE_ROUNDS = 5
 FINE_SAG_MM = 1e-4
@@ -23,6 +23,8 @@ SPLINE_ERROR_MM = 1e-5
 # A least-squares fit whose largest deviation lies between these shares of the tolerance is worth polishing: the least
 # largest deviation is about half to three quarters of it.
 NEARLY = 0.95
+HOPELESS = 1.05  # times the tolerance: a lower bound above it ends a polish
+SQUARENESS = 0.1
 ENOUGH = 0.9
 POLISH_REACH = 2.2
 
@@ -154,21 +156,27 @@ def fit_patches(
     is_polished: bool = True,
     polish_until: float = ENOUGH,
     n_controls: int = N_CONTROLS,
+    squareness: float = SQUARENESS,
+    starts: Sequence[SheetFit] | None = None,
+    report: Callable[[], None] = lambda: None,
 ) -> tuple[SheetFit, ...]:
     """Return for each patch the ruled sheet closest to it.
 
-    Both families of rulings and rulings of one constant skew are tried. The closest sheet is kept; of sheets that
-    differ by less than a tenth of the tolerance, the one with the least skew.
+    Both families of rulings and rulings of one constant skew are tried.
 
     Args:
         patches: Any number, of any sizes; those with equally many grid values are fitted together.
         tolerance_mm: Wanted largest normal deviation.
         is_polished: Whether sheets that just miss the tolerance are brought closer to the least largest deviation.
-        polish_until: Share of the tolerance at which a sheet is close enough.
+        polish_until: Share of the tolerance at which a sheet is close enough; 0: as close as it can come.
         n_controls: Control values of each rail.
+        squareness: What less skew is worth: of sheets that differ by less than this share of the tolerance, the one
+            with the least skew is kept. 0 always keeps the closest, a large value the squarest.
+        starts: Sheets of the same patches that were fitted before; only polished.
+        report: Called every now and then.
     """
     results: list[SheetFit | None] = [None] * len(patches)
-    groups: dict[tuple[int, int], list[int]] = {}
+    groups: dict[tuple[int, ...], list[int]] = {}
     for number, patch in enumerate(patches):
         n_weights = 1 if patch.weights is None else len(patch.weights)
         groups.setdefault((patch.heights_mm.shape[0], n_weights), []).append(number)
@@ -176,14 +184,18 @@ def fit_patches(
         for first in range(0, len(numbers), BATCH):
             batch = numbers[first : first + BATCH]
             target = make_target([patches[number] for number in batch])
-            fits = _fit_batch(target, tolerance_mm, n_controls)
-            fits = _polished(target, fits, tolerance_mm, polish_until) if is_polished else fits
+            if starts is None:
+                fits = _fit_batch(target, tolerance_mm, n_controls, squareness)
+            else:
+                fits = _resumed(target, [starts[number] for number in batch])
+            report()
+            fits = _polished(target, fits, tolerance_mm, polish_until, report) if is_polished else fits
             for place, number in enumerate(batch):
                 results[number] = _with_plane(target, fits, place)
     return tuple(fit for fit in results if fit is not None)
 
 
-def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
+def _fit_batch(target: Target, tolerance_mm: float, n_controls: int, squareness: float) -> Fits:
     first, second, constant = best_paths(target)
     is_fine = n_controls != N_CONTROLS
     give_up_mm = np.inf if is_fine else 2.0 * POLISH_REACH * tolerance_mm
@@ -194,7 +206,7 @@ def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
         if not len(index):
             return best
         fits = refine(target.take(index), paths.take(index), give_up_mm, n_rounds)
-        return _better(best, index, fits, tolerance_mm)
+        return _better(best, index, fits, squareness * tolerance_mm)
 
     best = refine(target, first, give_up_mm, n_rounds)
     best = rival(best, second, _is_worth(first, second, tolerance_mm) & ~_alike(first, second))
@@ -207,17 +219,20 @@ def _fit_batch(target: Target, tolerance_mm: float, n_controls: int) -> Fits:
     return best
 
 
-def _polished(target: Target, fits: Fits, tolerance_mm: float, until: float) -> Fits:
+def _polished(
+    target: Target, fits: Fits, tolerance_mm: float, until: float, report: Callable[[], None] = lambda: None
+) -> Fits:
     """Return the fits with those that miss the tolerance by little brought closer to the least largest deviation."""
     index = np.flatnonzero((fits.max_mm > NEARLY * tolerance_mm) & (fits.max_mm < POLISH_REACH * tolerance_mm))
     if not len(index):
         return fits
     rough, part = fits.take(index), target.take(index)
-    polished = polish(part, rough, until * tolerance_mm)
+    hopeless_mm = HOPELESS * tolerance_mm if until > 0.0 else np.inf
+    polished = polish(part, rough, until * tolerance_mm, hopeless_mm=hopeless_mm, report=report)
     # With the skews held the problem is linear and Lawson's weights must converge, where free skews may get stuck.
     left = np.flatnonzero(polished.max_mm > until * tolerance_mm)
     if len(left):
-        held = polish(part.take(left), rough.take(left), until * tolerance_mm, is_held=True)
+        held = polish(part.take(left), rough.take(left), until * tolerance_mm, is_held=True, hopeless_mm=hopeless_mm)
         better = np.flatnonzero(held.max_mm < polished.max_mm[left])
         polished = polished.put(left[better], held.take(better))
     return fits.put(index, polished)
@@ -239,25 +254,39 @@ def _alike(paths: Paths, others: Paths) -> Bools:
     return result
 
 
-def _better(best: Fits, index: Ints, rivals: Fits, tolerance_mm: float) -> Fits:
+def _better(best: Fits, index: Ints, rivals: Fits, worth_mm: float) -> Fits:
     """Return the fits so far, those of the given indices replaced by rivals that are better."""
     old = best.take(index)
     gain = old.max_mm - rivals.max_mm
     less_skew = rivals.skew_mm < old.skew_mm - 1e-6
-    is_better = np.where(np.abs(gain) < 0.1 * tolerance_mm, less_skew, gain > 0.0)
+    is_better = np.where(np.abs(gain) < worth_mm, less_skew, gain > 0.0)
     return best.put(index[is_better], rivals.take(np.flatnonzero(is_better)))
 
 
 def _with_plane(target: Target, fits: Fits, place: int) -> SheetFit:
     """Return one fit of a batch with the plane taken off its target put back."""
-    level, slope_x, slope_y = target.planes[place]
-    controls = fits.controls[place].copy()
     start, end = float(fits.start[place]), float(fits.end[place])
-    n_controls = controls.shape[1]
+    controls = fits.controls[place] + _plane_controls(target, fits.controls[place, 0], start, end, place)
+    return SheetFit(controls, start, end, float(fits.max_mm[place]), float(fits.rms_mm[place]))
+
+
+def _resumed(target: Target, sheets: Sequence[SheetFit]) -> Fits:
+    """Return sheets as the fits of a batch, the plane taken off its target taken off them too."""
+    controls = [
+        sheet.controls - _plane_controls(target, sheet.controls[0], sheet.start_mm, sheet.end_mm, place)
+        for place, sheet in enumerate(sheets)
+    ]
+    columns = ([getattr(s, name) for s in sheets] for name in ("start_mm", "end_mm", "max_mm", "rms_mm"))
+    return Fits(np.stack(controls), *(np.array(column) for column in columns))
+
+
+def _plane_controls(target: Target, skews: Floats, start: float, end: float, place: int) -> Floats:
+    """Return the control values (3, c) of the plane taken off a target, for rulings of the given skews."""
+    level, slope_x, slope_y = target.planes[place]
     # A B-spline with the Greville abscissae as control values is the station itself.
-    knots = knots_of(n_controls)
+    knots = knots_of(len(skews))
     greville = (knots[1:-3] + knots[2:-2] + knots[3:-1]) / 3.0
     stations = start + (end - start) * greville
-    controls[1] += level + slope_x * (stations - controls[0] / 2.0)
-    controls[2] += level + slope_x * (stations + controls[0] / 2.0) + slope_y * float(target.width[place, 0, 0])
-    return SheetFit(controls, start, end, float(fits.max_mm[place]), float(fits.rms_mm[place]))
+    near = level + slope_x * (stations - skews / 2.0)
+    far = level + slope_x * (stations + skews / 2.0) + slope_y * float(target.width[place, 0, 0])
+    return np.stack([np.zeros_like(skews), near, far])

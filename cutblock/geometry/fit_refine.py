@@ -5,14 +5,19 @@ sheet is a tensor-product B-spline of degree (3, 1) (Chen and Pottmann, J. Compu
 The residual is the first-order normal distance (z - f) / sqrt(1 + f_x^2 + f_y^2) on Gauss-Lobatto nodes of the wire.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import lru_cache
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.geometry.fit_start import Paths
 from cutblock.geometry.fit_target import NODE_WEIGHTS, Target
+
+if TYPE_CHECKING:
+    from scipy.interpolate import BSpline
 
 N_CONTROLS = 16
 N_STATIONS = 57
@@ -74,11 +79,15 @@ def knots_of(n_controls: int) -> Floats:
 
 def basis_at(places: Floats, n_controls: int, derivative: int = 0) -> Floats:
     """Return the B-splines, or their derivatives by u, at places of [0, 1]; (m, n_controls)."""
+    result: Floats = _splines(n_controls)(places, nu=derivative)
+    return result
+
+
+@lru_cache(maxsize=8)
+def _splines(n_controls: int) -> "BSpline":
     from scipy.interpolate import BSpline
 
-    splines = BSpline(knots_of(n_controls), np.eye(n_controls), 3)
-    result: Floats = splines(places, nu=derivative)
-    return result
+    return BSpline(knots_of(n_controls), np.eye(n_controls), 3)
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -206,19 +215,29 @@ def _evaluate(target: Target, fits: Fits, basis: Basis, emphasis: Floats | None)
     lean = target.places - 0.5
     x = stations[:, :, None] + values[:, 0, :, None] * lean
     heights, slope_x, slope_y = target.heights(x)
-    sheet = values[:, 1, :, None] * (1.0 - target.places) + values[:, 2, :, None] * target.places
-    plane_x = target.planes[:, 1][:, None, None]
-    cosines = 1.0 / np.sqrt(1.0 + (slope_x + plane_x) ** 2 + slope_y**2)
+    residuals = values[:, 1, :, None] + (values[:, 2] - values[:, 1])[:, :, None] * target.places
+    residuals -= heights
+    cosines = slope_x + target.planes[:, 1][:, None, None]
+    cosines *= cosines
+    slope_y *= slope_y
+    cosines += slope_y
+    cosines += 1.0
+    np.sqrt(cosines, out=cosines)
+    np.divide(1.0, cosines, out=cosines)
+    residuals *= cosines
+    slope_x *= cosines
+    slope_x *= -lean
     ramp = (0.5 / N_STATIONS) * length[:, None, None] * STATION_WEIGHTS[:, None]
-    advance = 1.0 + (fits.controls[:, 0] @ basis.rates.T / length[:, None])[:, :, None] * lean
+    # Both rails advance, so the nodes between them do.
+    advance = (fits.controls[:, 0] @ basis.rates.T * (STATION_WEIGHTS / length[:, None]))[:, :, None] * lean
+    advance += STATION_WEIGHTS[:, None]
     weights = target.weight(x, ramp)
     counts = weights >= 0.5 * NODE_WEIGHTS
-    weights = weights * np.maximum(advance, 0.0) * STATION_WEIGHTS[:, None]
+    weights *= advance
     if emphasis is not None:
-        weights = weights * emphasis
-    residuals = (sheet - heights) * cosines
+        weights *= emphasis
     cost = np.einsum("psq,psq,psq->p", weights, residuals, residuals)
-    return _State(residuals, weights, -slope_x * cosines * lean, cosines, counts, cost)
+    return _State(residuals, weights, slope_x, cosines, counts, cost)
 
 
 def _normal_equations(target: Target, state: _State, basis: Basis) -> tuple[Floats, Floats]:
@@ -312,7 +331,16 @@ def _raised(target: Target, fits: Fits, emphasis: Floats | None = None) -> Fits:
     return _measured(raised, _evaluate(target, raised, basis, emphasis))
 
 
-def polish(target: Target, fits: Fits, enough_mm: float, n_turns: int = 16, *, is_held: bool = False) -> Fits:
+def polish(
+    target: Target,
+    fits: Fits,
+    enough_mm: float,
+    n_turns: int = 16,
+    *,
+    is_held: bool = False,
+    hopeless_mm: float = np.inf,
+    report: Callable[[], None] = lambda: None,
+) -> Fits:
     """Return the fits brought closer to the least largest deviation, each the best met on the way.
 
     Lawson's weights: points far off count for more from turn to turn, in proportion to how far off they are (Lawson
@@ -325,13 +353,18 @@ def polish(target: Target, fits: Fits, enough_mm: float, n_turns: int = 16, *, i
         enough_mm: A patch is left alone once its largest deviation is below this.
         n_turns: Most changes of the weights.
         is_held: Keep the skews as they are.
+        hopeless_mm: A patch is given up once its weighted root mean square is above this: no sheet near by has a
+            largest deviation below it.
+        report: Called every turn.
     """
     basis = spline_stations(fits.controls.shape[2])
     best = current = fits
+    bounds = np.zeros(len(fits.start))
     index: Ints = np.arange(len(fits.start))
     emphasis = np.ones((len(index), N_STATIONS, target.places.shape[2]))
     for turn in range(n_turns):
-        left = np.flatnonzero(best.max_mm[index] > enough_mm)
+        report()
+        left = np.flatnonzero((best.max_mm[index] > enough_mm) & (bounds[index] < hopeless_mm))
         if not len(left):
             break
         index, emphasis, current = index[left], emphasis[left], current.take(left)
@@ -342,6 +375,7 @@ def polish(target: Target, fits: Fits, enough_mm: float, n_turns: int = 16, *, i
         else:
             current = recentre(part, current, basis.n_controls) if turn % 4 == 3 else current
             current = improve(part, current, n_steps=3, precision=1e-6, emphasis=emphasis, start_damping=1e-2)
+        bounds[index] = current.rms_mm
         better = np.flatnonzero(current.max_mm < best.max_mm[index])
         best = best.put(index[better], current.take(better))
     return best

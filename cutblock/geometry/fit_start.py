@@ -9,14 +9,15 @@ ruled fits: Wang and Elber, Computer-Aided Design 51 (2014) 39-49, with a state 
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.lib.stride_tricks import sliding_window_view
 
 from cutblock.base.arrays import Floats, Ints
-from cutblock.geometry.fit_target import NODE_WEIGHTS, Target
+from cutblock.geometry.fit_target import Target
 
 N_STATIONS = 49
 N_SKEWS = 49
-SKEW_CAP = 1.2  # largest |skew| / width: a strip of an isotropic saddle turned half a right angle needs 1.0
-N_FINE = 257
+N_FINE = 5
+FAR = 200.0  # mm beyond the grid where the spline is not asked any more
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -39,14 +40,14 @@ def best_paths(target: Target) -> tuple[Paths, Paths, Paths]:
     constant skew.
     """
     stations, skews, residuals, total = _table(target)
-    spacing, gap = stations[:, 1] - stations[:, 0], skews[:, 1] - skews[:, 0]
-    steps = _step_cost(spacing, gap, residuals, target.advance[:, 0, 0])
+    gap = skews[:, 1] - skews[:, 0]
+    steps = _step_cost(stations[:, 1] - stations[:, 0], gap, residuals, target.advance[:, 0, 0])
     first, cost = _search(residuals, steps)
     # The second path must stay at least a third of the width away from the first.
     clear = np.maximum(target.width[:, 0, 0] / 3.0 / gap, 1.0)[:, None, None]
-    near_first = np.abs(np.arange(N_SKEWS) - first[:, :, None]) < clear
-    walled = residuals + near_first * (10.0 * residuals.max(axis=(1, 2), keepdims=True) + 1.0)
-    second, cost_second = _search(walled, steps)
+    wall = 10.0 * residuals.max(axis=(1, 2)) + 1.0
+    is_near = np.abs(np.arange(N_SKEWS) - first[:, :, None]) < clear
+    second, cost_second = _search(residuals + is_near * wall[:, None, None], steps)
 
     def paths(path: Ints, cost: Floats) -> Paths:
         rms = np.sqrt(np.maximum(cost, 0.0) / total)
@@ -59,77 +60,106 @@ def best_paths(target: Target) -> tuple[Paths, Paths, Paths]:
 
 def _table(target: Target) -> tuple[Floats, Floats, Floats, Floats]:
     """Return stations (p, s), skews (p, k), squared residuals (p, s, k) and the whole weight (p,)."""
-    low, high, width = target.low[:, 0, 0], target.high[:, 0, 0], target.width[:, 0, 0]
-    cap = np.minimum(SKEW_CAP * width, target.limit[:, 0, 0])
-    fractions = np.linspace(0.0, 1.0, N_STATIONS)
-    stations = (low - cap / 2)[:, None] + (high - low + cap)[:, None] * fractions
+    low, high = target.low[:, 0, 0], target.high[:, 0, 0]
+    cap = target.limit[:, 0, 0]
+    spacing = (high - low + cap) / (N_STATIONS - 1)
+    stations = (low - cap / 2)[:, None] + spacing[:, None] * np.arange(N_STATIONS)
     skews = cap[:, None] * np.linspace(-1.0, 1.0, N_SKEWS)
-    lean = target.places[:, 0, :] - 0.5  # (p, q)
-    x = stations[:, :, None, None] + skews[:, None, :, None] * lean[:, None, None, :]
-    # Linear look-up in a fine table of each node row; good to a thousandth of a mm of a smooth surface, and quick.
-    fine_x = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, N_FINE)
-    fine_x = np.broadcast_to(fine_x[:, :, None], (*fine_x.shape, lean.shape[1]))
-    heights = target.heights(fine_x)[0]
-    step = (high - low) / (N_FINE - 1)
-    weights = target.weight(fine_x, step[:, None, None]) / NODE_WEIGHTS
-    along = (x - low[:, None, None, None]) / step[:, None, None, None]
-    is_over = (along >= -1e-9) & (along <= N_FINE - 1 + 1e-9)
-    cells = np.clip(along.astype(np.int32), 0, N_FINE - 2)
-    fraction = along - cells
-    n_p, n_q = lean.shape
-    base = cells * n_q + (np.arange(n_p) * (N_FINE * n_q))[:, None, None, None] + np.arange(n_q)
-    flat = heights.ravel()
-    f = flat[base]
-    f += fraction * (flat[base + n_q] - f)
-    w = weights.ravel()[base] * is_over * NODE_WEIGHTS
-    residuals, total = _line_residuals(f, w, target.places[:, 0, :])
+    # Skews and stations both lie on equal steps: along the stations of one skew a node meets every N_FINE-th point of a
+    # fine row, shifted. Linear between them; good to a hundredth of a mm of a smooth surface, and quick.
+    n_beyond = int(np.ceil((cap / spacing).max() / 2.0)) + 1
+    n_rows = N_STATIONS + 2 * n_beyond + 1
+    fine_x = stations[:, :1] + spacing[:, None] * (np.arange(n_rows * N_FINE) / N_FINE - n_beyond)
+    fine_x = np.broadcast_to(fine_x[:, :, None], (*fine_x.shape, target.places.shape[2]))
+    weights = (
+        target.weight(fine_x, (spacing / N_FINE)[:, None, None]) * (target.low <= fine_x) * (fine_x <= target.high)
+    )
+    heights = _windows(target.levels(np.clip(fine_x, target.low - FAR, target.high + FAR)))
+    weights = _windows(weights)
+    patches = np.arange(len(low))[:, None]
+    sums = np.zeros((6, len(low), N_SKEWS, N_STATIONS))
+    for node, places in enumerate((target.places[:, 0] - 0.5).T):  # one node at a time, so that arrays stay small
+        shift = skews * places[:, None] / spacing[:, None] * N_FINE + n_beyond * N_FINE
+        whole = np.floor(shift).astype(np.int64)
+        f = heights[node, patches, whole % N_FINE, whole // N_FINE]
+        rise = heights[node, patches, (whole + 1) % N_FINE, (whole + 1) // N_FINE]
+        rise -= f
+        rise *= (shift - whole)[:, :, None]
+        f += rise
+        nearest = np.floor(shift + 0.5).astype(np.int64)
+        w = weights[node, patches, nearest % N_FINE, nearest // N_FINE]
+        _add_moments(sums, f, w, places[:, None, None])
+    residuals, total = _line_residuals(sums)
     return stations, skews, residuals, np.maximum(total, 1e-12)
 
 
-def _line_residuals(f: Floats, w: Floats, places: Floats) -> tuple[Floats, Floats]:
-    """Return the weighted squared residual of the best straight line through each ruling, and a mean whole weight."""
-    n_p, n_s, n_k, n_q = f.shape
-    powers = np.stack([np.ones_like(places), places - 0.5, (places - 0.5) ** 2], axis=2)  # (p, q, 3)
-    moments = (w.reshape(n_p, n_s * n_k, n_q) @ powers).reshape(n_p, n_s, n_k, 3)
+def _windows(values: Floats) -> Floats:
+    """Return (q, p, r, i, s): from fine row r and station i on, every N_FINE-th value of (p, fine, q)."""
+    n_p, n_fine, n_q = values.shape
+    rows = np.ascontiguousarray(values.reshape(n_p, n_fine // N_FINE, N_FINE, n_q).transpose(3, 0, 2, 1))
+    return sliding_window_view(rows, N_STATIONS, axis=3)
+
+
+def _add_moments(sums: Floats, f: Floats, w: Floats, place: Floats) -> None:
+    """Add one node's w, w t, w t^2, w f, w t f and w f^2 to the sums."""
+    sums[0] += w
     weighted = w * f
-    sums = (weighted.reshape(n_p, n_s * n_k, n_q) @ powers[:, :, :2]).reshape(n_p, n_s, n_k, 2)
-    squares = np.einsum("pskq,pskq->psk", weighted, f)
-    m0, m1, m2 = np.moveaxis(moments, 3, 0)
-    b0, b1 = np.moveaxis(sums, 3, 0)
+    sums[3] += weighted
+    f *= weighted
+    sums[5] += f
+    w *= place
+    sums[1] += w
+    w *= place
+    sums[2] += w
+    weighted *= place
+    sums[4] += weighted
+
+
+def _line_residuals(sums: Floats) -> tuple[Floats, Floats]:
+    """Return the weighted squared residual of the best straight line through each ruling, and a mean whole weight."""
+    m0, m1, m2, b0, b1, squares = sums
     scale = m0 + 1e-30
     middle = m1 / scale
     spread = m2 - m1 * middle
     slope_sum = b1 - b0 * middle
     explained = b0 * b0 / scale + np.where(spread > 1e-6 * scale, slope_sum**2 / (spread + 1e-30), 0.0)
-    residuals = np.maximum(squares - explained, 0.0)
-    return residuals, m0[:, :, n_k // 2].sum(axis=1)
+    residuals = np.maximum(squares - explained, 0.0).transpose(0, 2, 1)
+    return np.ascontiguousarray(residuals), m0[:, N_SKEWS // 2].sum(axis=1)
 
 
 def _step_cost(spacing: Floats, gap: Floats, residuals: Floats, advance: Floats) -> Floats:
-    """Return the cost (p, k, k) of going from one skew to the next: out of reach, or a trace of smoothness."""
-    index = np.arange(N_SKEWS)
-    change = np.abs(index[:, None] - index) * gap[:, None, None]
-    reach = 2.0 * spacing * (1.0 - advance)
-    trace = 1e-6 * residuals.mean(axis=(1, 2)) + 1e-15
-    smooth = trace[:, None, None] * (change / gap[:, None, None]) ** 2
+    """Return the cost (p, 2 r + 1) of a change of skew by -r to r steps: out of reach, or a trace of smoothness."""
     # One step is always open, so that a coarse table of skews cannot freeze the path.
-    return np.where(change <= np.maximum(reach, gap)[:, None, None] * (1.0 + 1e-9), smooth, np.inf)
+    reach = np.maximum(2.0 * spacing * (1.0 - advance), gap) * (1.0 + 1e-9)
+    most = min(int((reach / gap).max()), N_SKEWS - 1)
+    steps = np.abs(np.arange(-most, most + 1))
+    trace = 1e-6 * residuals.mean(axis=(1, 2)) + 1e-15
+    return np.where(steps * gap[:, None] <= reach[:, None], trace[:, None] * steps**2, np.inf)
 
 
 def _search(residuals: Floats, steps: Floats) -> tuple[Ints, Floats]:
     """Return the cheapest path (p, s) as skew indices, and its cost (p,)."""
     n_p, n_s, n_k = residuals.shape
+    n_steps = steps.shape[1]
+    most = n_steps // 2
     # A trace of cost on the skew itself keeps rulings square where the surface does not care.
     lean = np.abs(np.arange(n_k) - n_k // 2) * (1e-9 * residuals.mean(axis=(1, 2), keepdims=True) + 1e-18)
-    cost = residuals[:, 0] + lean[:, 0]
-    came_from = np.zeros((n_s, n_p, n_k), dtype=np.int64)
+    own = residuals + lean
+    costs = np.full((n_s, n_p, n_k + 2 * most), np.inf)
+    costs[0, :, most : most + n_k] = own[:, 0]
     for station in range(1, n_s):  # each station needs the one before it
-        ways = cost[:, :, None] + steps
-        came_from[station] = ways.argmin(axis=1)
-        best = np.take_along_axis(ways, came_from[station][:, None, :], axis=1)[:, 0]
-        cost = best + residuals[:, station] + lean[:, 0]
+        before = costs[station - 1]
+        best = before[:, most : most + n_k] + steps[:, most, None]
+        for way in range(n_steps):
+            if way != most:
+                np.minimum(best, before[:, way : way + n_k] + steps[:, way, None], out=best)
+        costs[station, :, most : most + n_k] = best + own[:, station]
     path = np.zeros((n_p, n_s), dtype=np.int64)
-    path[:, -1] = cost.argmin(axis=1)
+    last = costs[-1, :, most : most + n_k]
+    path[:, -1] = last.argmin(axis=1)
+    patches, ways = np.arange(n_p)[:, None], np.arange(n_steps)
     for station in range(n_s - 1, 0, -1):
-        path[:, station - 1] = came_from[station][np.arange(n_p), path[:, station]]
-    return path, cost.min(axis=1)
+        after = path[:, station]
+        came_from = (costs[station - 1][patches, after[:, None] + ways] + steps).argmin(axis=1)
+        path[:, station - 1] = after + came_from - most
+    return path, last.min(axis=1)

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from cutblock.base.arrays import Floats, Ints
-from cutblock.geometry.heights import spline_basis, spline_matrix
+from cutblock.geometry.heights import grid_basis, spline_basis, spline_matrix
 
 N_NODES = 9
 # Points outside the wanted area count a little, ever less with distance: they hold rulings that only cross a corner.
@@ -17,6 +17,7 @@ OVERRUN_WEIGHT = 0.001
 OVERRUN_REACH = 0.03  # of the width
 BEYOND_WEIGHT = 1e-7
 LEAST_ADVANCE = 0.1
+SKEW_CAP = 1.2  # largest |skew| / width: a strip of an isotropic saddle turned half a right angle needs 1.0
 MASKED_WEIGHT = 1e-6  # of points inside the rectangle that were masked out
 
 
@@ -65,8 +66,7 @@ class Patch:
 class Target:
     """A batch of p patches along q node rows."""
 
-    rows: Floats  # (p, q, n + 2) spline coefficients of z along x, less a plane
-    slopes: Floats  # (p, q, n) dz/dy at the grid values, the plane included
+    pieces: Floats  # (p, 6, q, n - 1) between grid values: z less a plane as a cubic, dz/dy as a line (plane included)
     planes: Floats  # (p, 3) level, slope along x, slope along y (from x = 0, y = 0 of the billet)
     low: Floats  # (p, 1, 1) x of the first grid value
     high: Floats  # (p, 1, 1) x of the last
@@ -79,77 +79,107 @@ class Target:
     @property
     def n_x(self) -> int:
         """Number of grid values along x."""
-        return int(self.rows.shape[2]) - 2
+        return int(self.pieces.shape[3]) + 1
 
     def take(self, index: Ints) -> "Target":
         """Return the patches of the given indices."""
         return Target(*(getattr(self, name)[index] for name in self.__slots__))
 
+    def levels(self, x: Floats) -> Floats:
+        """Return z less the plane at x (p, s, q)."""
+        base, fraction, stride = self._cells(x)
+        flat = self.pieces.ravel()
+        z = flat[3 * stride :].take(base)
+        for order in (2, 1, 0):
+            z *= fraction
+            z += flat[order * stride :].take(base)
+        return z
+
     def heights(self, x: Floats) -> tuple[Floats, Floats, Floats]:
         """Return z less the plane, its slope along x, and the whole slope along y, at x (p, s, q)."""
-        step = (self.high - self.low) / (self.n_x - 1)
-        along = (x - self.low) / step
-        cells = np.clip(np.floor(along), 0, self.n_x - 2)
-        fraction = along - cells
-        n_p, n_q, n_c = self.rows.shape
-        base = cells.astype(np.int64) + (np.arange(n_p * n_q) * n_c).reshape(n_p, 1, n_q)
-        z, z_x = _cubic(self.rows.ravel(), base, fraction)
+        base, fraction, stride = self._cells(x)
+        flat = self.pieces.ravel()
+        c0, c1, c2, c3, before, change = (flat[order * stride :].take(base) for order in range(6))
+        # Horner's rule for the value and the rate at once.
+        c3 *= fraction
+        value = c3 + c2
+        rate = c3 + value
+        value *= fraction
+        value += c1
+        rate *= fraction
+        rate += value
+        value *= fraction
+        value += c0
+        rate *= (self.n_x - 1) / (self.high - self.low)
         # The slope along the wire only weighs the residuals: linear between the spline's knots is close enough.
-        flat = self.slopes.ravel()
-        before = base - (2 * np.arange(n_p * n_q)).reshape(n_p, 1, n_q)
-        z_y = flat[before]
-        z_y = z_y + fraction * (flat[before + 1] - z_y)
-        return z, z_x / step, z_y
+        change *= fraction
+        change += before
+        return value, rate, change
+
+    def _cells(self, x: Floats) -> tuple[Ints, Floats, int]:
+        """Return where the first coefficients at x lie, the place in the piece, and the way to the next coefficient."""
+        n_p, n_orders, n_q, n_cells = self.pieces.shape
+        fraction = (x - self.low) * (n_cells / (self.high - self.low))
+        cells = np.clip(fraction, 0, n_cells - 1).astype(np.int64)
+        fraction -= cells
+        stride = n_q * n_cells
+        cells += np.arange(0, n_p * n_orders * stride, n_orders * stride)[:, None, None]
+        cells += np.arange(0, stride, n_cells)
+        return cells, fraction, stride
 
     def weight(self, x: Floats, ramp: Floats) -> Floats:
         """Return how much the points at x (p, s, q) count; fades over `ramp` beyond the wanted area's ends."""
-        beyond = np.maximum(np.maximum(self.low - x, x - self.high), 0.0)
-        inside = np.clip(1.0 - beyond / ramp, 0.0, 1.0)
         n_p, n_q, n_m = self.weights.shape
-        if n_m > 1:
-            along = np.clip((x - self.low) / (self.high - self.low), 0.0, 1.0) * (n_m - 1)
-            cells = np.minimum(along.astype(np.int64), n_m - 2)
-            base = cells + (np.arange(n_p * n_q) * n_m).reshape(n_p, 1, n_q)
-            flat = self.weights.ravel()
-            before = flat[base]
-            inside = inside * (before + (along - cells) * (flat[base + 1] - before))
+        beyond = np.maximum(self.low - x, x - self.high)
+        if n_m == 1:
+            # Few points lie outside, and what they weigh takes long to say.
+            weight = np.empty(x.shape)
+            weight[:] = NODE_WEIGHTS
+            outside = np.flatnonzero(beyond > 0.0)
+            patch, node = outside // (x.shape[1] * n_q), outside % n_q
+            ramps = np.broadcast_to(ramp, (n_p, x.shape[1], 1)).reshape(-1)[outside // n_q]
+            far = beyond.ravel()[outside]
+            fading = OVERRUN_WEIGHT * np.exp(-far / (OVERRUN_REACH * self.width[patch, 0, 0]))
+            weight.ravel()[outside] = (
+                np.maximum(1.0 - far / ramps, np.maximum(fading, BEYOND_WEIGHT)) * NODE_WEIGHTS[node]
+            )
+            return weight
+        beyond = np.maximum(beyond, 0.0)
+        inside = np.clip(1.0 - beyond / ramp, 0.0, 1.0)
+        along = np.clip((x - self.low) / (self.high - self.low), 0.0, 1.0) * (n_m - 1)
+        cells = np.minimum(along.astype(np.int64), n_m - 2)
+        base = cells + (np.arange(n_p * n_q) * n_m).reshape(n_p, 1, n_q)
+        flat = self.weights.ravel()
+        before = flat[base]
+        inside = inside * (before + (along - cells) * (flat[base + 1] - before))
         fading = OVERRUN_WEIGHT * np.exp(-beyond / (OVERRUN_REACH * self.width))
         fading = np.where(beyond > 0.0, fading, MASKED_WEIGHT)
-        weight: Floats = np.maximum(inside, np.maximum(fading, BEYOND_WEIGHT)) * NODE_WEIGHTS
-        return weight
-
-
-def _cubic(flat: Floats, base: Floats, fraction: Floats) -> tuple[Floats, Floats]:
-    c0, c1, c2, c3 = (flat[base + shift] for shift in range(4))
-    a1 = (c2 - c0) * 0.5
-    a2 = (c0 + c2) * 0.5 - c1
-    a3 = (c3 - c0) / 6.0 + (c1 - c2) * 0.5
-    value = (c0 + c2 + 4.0 * c1) / 6.0 + fraction * (a1 + fraction * (a2 + fraction * a3))
-    return value, a1 + fraction * (2.0 * a2 + 3.0 * fraction * a3)
+        masked: Floats = np.maximum(inside, np.maximum(fading, BEYOND_WEIGHT)) * NODE_WEIGHTS
+        return masked
 
 
 def make_target(patches: list[Patch]) -> Target:
     """Return the batch of patches; all have the same number of grid values along x, and weights alike in shape."""
-    rows, slopes, planes = zip(*(_rows(patch) for patch in patches), strict=True)
+    pieces, planes = zip(*(_pieces(patch) for patch in patches), strict=True)
 
     def column(values: list[float]) -> Floats:
         return np.array(values, dtype=np.float64).reshape(-1, 1, 1)
 
     return Target(
-        rows=np.stack(rows),
-        slopes=np.stack(slopes),
+        pieces=np.stack(pieces),
         planes=np.stack(planes),
         low=column([patch.low_x_mm for patch in patches]),
         high=column([patch.high_x_mm for patch in patches]),
         width=column([patch.width_mm for patch in patches]),
         places=np.stack([patch.node_y_mm / patch.width_mm for patch in patches])[:, None, :],
-        limit=column([patch.skew_limit_mm for patch in patches]),
+        limit=column([min(patch.skew_limit_mm, SKEW_CAP * patch.width_mm) for patch in patches]),
         advance=column([patch.least_advance for patch in patches]),
         weights=np.stack([np.ones((N_NODES, 1)) if p.weights is None else p.weights.T for p in patches]),
     )
 
 
-def _rows(patch: Patch) -> tuple[Floats, Floats, Floats]:
+def _pieces(patch: Patch) -> tuple[Floats, Floats]:
+    """Return the cubics of z along the node rows, the lines of dz/dy, and the plane taken off z."""
     n_x, n_y = patch.heights_mm.shape
     x = np.linspace(patch.low_x_mm, patch.high_x_mm, n_x)
     y = np.linspace(patch.low_y_mm, patch.high_y_mm, n_y)
@@ -164,6 +194,13 @@ def _rows(patch: Patch) -> tuple[Floats, Floats, Floats]:
     coefficients = spline_matrix(n_x) @ rest @ spline_matrix(n_y).T
     places = (patch.node_y_mm - patch.low_y_mm) / step
     rows = coefficients @ spline_basis(places, n_y).T
-    at_values = spline_basis(np.arange(n_x, dtype=np.float64), n_x) @ coefficients
+    at_values = grid_basis(n_x) @ coefficients
     slopes = at_values @ spline_basis(places, n_y, 1).T / step + slope_y
-    return rows.T, slopes.T, np.array([level + float(patch.heights_mm[0, 0]), slope_x, slope_y])
+    return _polynomials(rows.T, slopes.T), np.array([level + float(patch.heights_mm[0, 0]), slope_x, slope_y])
+
+
+def _polynomials(rows: Floats, slopes: Floats) -> Floats:
+    """Return the power coefficients (6, q, n - 1) of cubic splines given by (q, n + 2), and of lines by (q, n)."""
+    c0, c1, c2, c3 = rows[:, :-3], rows[:, 1:-2], rows[:, 2:-1], rows[:, 3:]
+    cubics = ((c0 + c2 + 4.0 * c1) / 6.0, (c2 - c0) * 0.5, (c0 + c2) * 0.5 - c1, (c3 - c0) / 6.0 + (c1 - c2) * 0.5)
+    return np.stack([*cubics, slopes[:, :-1], np.diff(slopes, axis=1)])

@@ -55,6 +55,14 @@ def spline_basis(places: Floats, n: int, derivative: int = 0) -> Floats:
     return basis
 
 
+@lru_cache(maxsize=64)
+def grid_basis(n: int, derivative: int = 0) -> Floats:
+    """Return `spline_basis` at the n values themselves."""
+    basis = spline_basis(np.arange(n, dtype=np.float64), n, derivative)
+    basis.flags.writeable = False
+    return basis
+
+
 def _cell_weights(fraction: Floats, derivative: int) -> tuple[Floats, Floats, Floats, Floats]:
     rest = 1.0 - fraction
     if derivative == 0:
@@ -123,9 +131,8 @@ class HeightField:
         """Return the partial derivative of the given orders (0 to 2) at the grid points, (n_x, n_y)."""
         n_x, n_y = self.counts
         step_x, step_y = self.length_mm / (n_x - 1), self.width_mm / (n_y - 1)
-        along = spline_basis(np.arange(n_x, dtype=np.float64), n_x, order_x) / step_x**order_x
-        across = spline_basis(np.arange(n_y, dtype=np.float64), n_y, order_y) / step_y**order_y
-        result: Floats = along @ self.coefficients @ across.T
+        along, across = grid_basis(n_x, order_x), grid_basis(n_y, order_y)
+        result: Floats = along @ self.coefficients @ across.T / (step_x**order_x * step_y**order_y)
         return result
 
 

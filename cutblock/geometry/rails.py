@@ -1,6 +1,7 @@
 """From fitted B-spline rails to the polyline rails a sweep is made of."""
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -91,8 +92,8 @@ def polyline_rails(
 
 def _places(fit: SheetFit, sag_mm: float, most_rulings: int) -> Floats:
     """Return places in [0, 1], closer where the rails bend more: a chord of step h strays |curve''| h^2 / 8."""
-    u = np.linspace(0.0, 1.0, 257)
-    skew, near_z, far_z = np.abs(fit.controls @ basis_at(u, fit.controls.shape[1], 2).T)
+    u, bends = _bends(fit.controls.shape[1])
+    skew, near_z, far_z = np.abs(fit.controls @ bends)
     bend = np.hypot(np.maximum(near_z, far_z), TANGENT_SHARE * skew / 2.0)
     density = np.sqrt(bend / (8.0 * sag_mm))
     # The larger of neighbouring densities, and never far below the mean: steps must not jump.
@@ -102,6 +103,13 @@ def _places(fit: SheetFit, sag_mm: float, most_rulings: int) -> Floats:
     n_steps = max(FEWEST_RULINGS - 1, min(int(np.ceil(counts[-1] - 1e-6)), most_rulings - 1))
     places: Floats = np.interp(np.linspace(0.0, counts[-1], n_steps + 1), counts, u)
     return places
+
+
+@lru_cache(maxsize=8)
+def _bends(n_controls: int) -> tuple[Floats, Floats]:
+    """Return equal places in [0, 1] and the second derivatives (n_controls, m) of the B-splines there."""
+    u = np.linspace(0.0, 1.0, 257)
+    return u, np.ascontiguousarray(basis_at(u, n_controls, 2).T)
 
 
 def sheet_range(near: Floats, far: Floats, width_mm: float, length_mm: float) -> tuple[float, float]:

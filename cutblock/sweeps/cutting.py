@@ -1,17 +1,19 @@
 """Ruled sheets for strips of panels: fitted, laid out as rails, measured as finished faces."""
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
 from cutblock.base.arrays import Floats
 from cutblock.geometry.deviation import deviation_measures, face_deviation
-from cutblock.geometry.fit import fit_patches
-from cutblock.geometry.rails import polyline_rails
+from cutblock.geometry.fit import SQUARENESS, fit_patches
+from cutblock.geometry.rails import SheetFit, polyline_rails
 from cutblock.sweeps.lie import Lie, Strip
 
 SAG_MM = 0.002
+FAR_OFF = 1.5  # times the room of the fit: such strips are not measured, they cannot do
+REPORT_EVERY = 16
 CLEAR_MM = 10.0  # the wire starts and ends at least this and the kerf away from the billet
 
 
@@ -20,6 +22,7 @@ class CutStrip:
     """A strip with the rails that cut it, z still the panel's, and how well the finished face fits."""
 
     strip: Strip
+    sheet: SheetFit
     near: Floats
     far: Floats
     max_mm: float
@@ -65,6 +68,7 @@ class Aim:
     face_offset_mm: float  # of the lower half's finished face above the centreline
     kerf_error_mm: float  # what kerf and coat alone leave between finished face and form
     stretch: float  # longest wire between the machine's towers by their distance
+    squareness: float = SQUARENESS  # share of the tolerance that less skew is worth
 
     @property
     def lean_deg(self) -> float:
@@ -77,21 +81,38 @@ class Aim:
         return self.tolerance_mm - abs(self.kerf_error_mm)
 
 
-def cut_panels(lies: Sequence[tuple[Lie, int]], aim: Aim, *, is_polished: bool) -> list[CutPanel]:
+def cut_panels(
+    lies: Sequence[tuple[Lie, int]],
+    aim: Aim,
+    *,
+    is_polished: bool = False,
+    tried: Sequence[CutPanel] | None = None,
+    report: Callable[[], None] = lambda: None,
+) -> list[CutPanel]:
     """Return every given lie cut in the given number of strips, whether it meets the tolerance or not.
 
     Args:
         lies: Lies, each with a number of strips.
         aim: What is fitted for.
         is_polished: Whether sheets that just miss are fitted for the least largest deviation, which takes longer.
+        tried: The same lies cut by least squares before, to start from.
+        report: Called every now and then.
     """
     strips = [Strip(lie, number, count) for lie, count in lies for number in range(1, count + 1)]
-    fits = fit_patches([strip.patch(aim.stretch) for strip in strips], aim.room_mm, is_polished=is_polished)
+    starts = None if tried is None else [strip.sheet for panel in tried for strip in panel.strips]
+    sheets = fit_patches(
+        [strip.patch(aim.stretch) for strip in strips],
+        aim.room_mm,
+        is_polished=is_polished,
+        squareness=aim.squareness,
+        starts=starts,
+        report=report,
+    )
     cuts = []
-    for strip, fit in zip(strips, fits, strict=True):
-        away = CLEAR_MM + aim.kerf_mm
-        near, far = polyline_rails(fit, -away, strip.lie.size_mm[0] + away, SAG_MM)
-        cuts.append(measured(strip, near, far, aim))
+    for number, (strip, sheet) in enumerate(zip(strips, sheets, strict=True)):
+        cuts.append(_cut_strip(strip, sheet, aim))
+        if number % REPORT_EVERY == 0:
+            report()
     panels, first = [], 0
     for _, count in lies:
         panels.append(CutPanel(tuple(cuts[first : first + count])))
@@ -99,8 +120,14 @@ def cut_panels(lies: Sequence[tuple[Lie, int]], aim: Aim, *, is_polished: bool) 
     return panels
 
 
-def measured(strip: Strip, near: Floats, far: Floats, aim: Aim) -> CutStrip:
-    """Return a strip's rails with the deviations of its finished face."""
+def _cut_strip(strip: Strip, sheet: SheetFit, aim: Aim) -> CutStrip:
+    """Return a strip with its rails and the deviations of its finished face; those of the fit where it is far off."""
+    if sheet.max_mm > FAR_OFF * aim.room_mm:
+        off = sheet.max_mm + abs(aim.kerf_error_mm)
+        ends = np.stack(sheet.rails_at(np.array([sheet.start_mm, sheet.end_mm])))
+        return CutStrip(strip, sheet, ends[0], ends[1], off, sheet.rms_mm, off, sheet.max_mm, sheet.rms_mm)
+    away = CLEAR_MM + aim.kerf_mm
+    near, far = polyline_rails(sheet, -away, strip.lie.size_mm[0] + away, SAG_MM)
     samples, normals, areas = strip.samples()
     if len(samples):
         deviations = face_deviation(near, far, strip.width_mm, samples, normals, aim.face_offset_mm)
@@ -109,13 +136,4 @@ def measured(strip: Strip, near: Floats, far: Floats, aim: Aim) -> CutStrip:
         fit = deviation_measures(deviations - aim.kerf_error_mm, areas)
     else:
         face = fit = (0.0, 0.0, 0.0)
-    return CutStrip(
-        strip=strip,
-        near=near,
-        far=far,
-        max_mm=face[0],
-        rms_mm=face[1],
-        p95_mm=face[2],
-        fit_max_mm=fit[0],
-        fit_rms_mm=fit[1],
-    )
+    return CutStrip(strip, sheet, near, far, *face, *fit[:2])

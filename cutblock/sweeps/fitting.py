@@ -9,6 +9,7 @@ import numpy as np
 from cutblock.base.errors import NotCuttable
 from cutblock.base.progress import Progress, silent
 from cutblock.catalog.load import machine
+from cutblock.geometry.fit import SQUARENESS
 from cutblock.geometry.heights import is_domed, offset_heights
 from cutblock.geometry.outline import is_inside
 from cutblock.records.job import Job
@@ -24,11 +25,16 @@ from cutblock.sweeps.lie import Lie, lie_of
 from cutblock.sweeps.strips import MOST_STRIPS, NARROWEST_MM, Choice, choose_cuts
 from cutblock.sweeps.validity import STEEPEST_WIRE_DEG, Check, check_sweep, findings_of
 
-BATCH = 8
+BATCH = 32
 
 
 def fit_panels(
-    job: Job, panels: Sequence[Panel], conditions: Conditions, progress: Progress = silent
+    job: Job,
+    panels: Sequence[Panel],
+    conditions: Conditions,
+    progress: Progress = silent,
+    *,
+    squareness: float = SQUARENESS,
 ) -> tuple[tuple[Sweep, ...], tuple[Finding, ...]]:
     """Return the sweeps that cut every panel within the job's tolerance, each serving one panel with its lower half.
 
@@ -40,19 +46,21 @@ def fit_panels(
         panels: In the order the sweeps shall have.
         conditions: The kerf at the planned speed.
         progress: Called after every few panels.
+        squareness: What a squarer wire is worth: of ways to cut a panel whose deviations differ by less than this share
+            of the tolerance, the one with the least skew is taken. 0 always takes the closest.
 
     Raises:
         NotCuttable: No panel at all can be cut.
     """
     tool = machine(job.machine)
-    aim = _aim(job, conditions, tool)
+    aim = _aim(job, conditions, tool, squareness)
     alike = _alike(panels)
     firsts = list(dict.fromkeys(alike))
     choices: dict[int, Choice] = {}
     for start in range(0, len(firsts), BATCH):
         batch = firsts[start : start + BATCH]
-        report = partial(progress, start / len(firsts), f"Fitting panel {panels[batch[0]].id}")
-        report()
+        report = partial(_report, progress, start, len(batch), len(firsts), f"Fitting panel {panels[batch[0]].id}")
+        report(0.0)
         lies = [_lies(job, panels[number], conditions) for number in batch]
         choices.update(zip(batch, choose_cuts(lies, aim, report), strict=True))
     sweeps: list[Sweep] = []
@@ -82,7 +90,11 @@ def fit_panels(
     return tuple(sweeps), tuple(findings)
 
 
-def _aim(job: Job, conditions: Conditions, tool: Machine) -> Aim:
+def _report(progress: Progress, n_done: int, n_batch: int, n_panels: int, text: str, share: float) -> None:
+    progress((n_done + share * n_batch) / n_panels, text)
+
+
+def _aim(job: Job, conditions: Conditions, tool: Machine, squareness: float) -> Aim:
     kerf = conditions.kerf_mm
     aim = Aim(
         tolerance_mm=job.tolerance_mm,
@@ -90,6 +102,7 @@ def _aim(job: Job, conditions: Conditions, tool: Machine) -> Aim:
         face_offset_mm=face_offset_mm(kerf, job.coat_mm),
         kerf_error_mm=kerf_error_mm(job.favour, kerf, job.coat_mm),
         stretch=min(tool.longest_wire_mm / tool.span_mm, 1.0 / math.cos(math.radians(STEEPEST_WIRE_DEG))),
+        squareness=squareness,
     )
     if aim.room_mm <= 0.0:
         raise NotCuttable(

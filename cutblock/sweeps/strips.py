@@ -2,6 +2,7 @@
 
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field
+from functools import partial
 
 import numpy as np
 
@@ -34,7 +35,7 @@ class _Search:
     n_failed: int = 0  # this many and fewer are known not to do
     best: CutPanel | None = None  # fewest strips that do
     last: CutPanel | None = None
-    is_polished: bool = False  # the first, quick try was close
+    tried: CutPanel | None = None  # a cut by least squares that misses by so little that it is to be polished
     limit: int = field(init=False)
 
     def __post_init__(self) -> None:
@@ -56,15 +57,14 @@ class _Search:
     def take(self, cut: CutPanel) -> None:
         n_strips = len(cut.strips)
         self.last = cut
+        was_polished, self.tried = self.tried is not None, None
         if cut.max_mm <= self.aim.tolerance_mm:
             self.best = cut
             self.n_next = n_strips - 1
-        elif not self.is_polished:
-            self.is_polished = True
-            if max(strip.fit_max_mm for strip in cut.strips) > POLISH_REACH * self.aim.room_mm:
-                self._divide(n_strips)
-        else:
+        elif was_polished or max(strip.fit_max_mm for strip in cut.strips) > POLISH_REACH * self.aim.room_mm:
             self._divide(n_strips)
+        else:
+            self.tried = cut
 
     def _divide(self, n_failed: int) -> None:
         self.n_failed = n_failed
@@ -91,30 +91,41 @@ class _Search:
         return max(self.limit + 1, int(np.ceil(len(self.last.strips) * np.sqrt(excess))))
 
 
-def choose_cuts(lies: Sequence[tuple[Lie, Lie]], aim: Aim, report: Callable[[], None] = lambda: None) -> list[Choice]:
+def choose_cuts(
+    lies: Sequence[tuple[Lie, Lie]], aim: Aim, report: Callable[[float], None] = lambda _: None
+) -> list[Choice]:
     """Return for each panel, given with the wire along its y and along its x, the best way to cut it.
 
-    Fewest strips first, then the least deviation, then, where two differ by less than a tenth of the tolerance, the
-    least skew, then the wire along y.
+    Fewest strips first, then the least deviation, then, where two differ by less than the aim's squareness, the least
+    skew, then the wire along y.
+
+    Args:
+        lies: Of each panel, two.
+        aim: What is fitted for.
+        report: Called every now and then with the share of the ways to cut that are settled.
     """
     searches = [tuple(_Search(lie, aim) for lie in pair) for pair in lies]
-    _cut([along_y for along_y, _ in searches], aim)
+    _cut([along_y for along_y, _ in searches], aim, partial(report, 0.0))
     while True:
-        report()
         open_searches = [search for pair in searches for search in pair if not _is_settled(search, pair)]
+        settled = partial(report, 1.0 - len(open_searches) / max(2 * len(lies), 1))
+        settled()
         if not open_searches:
             break
-        for is_polished in (False, True):
-            _cut([search for search in open_searches if search.is_polished is is_polished], aim)
+        _cut(open_searches, aim, settled)
     return [_chosen(pair, aim) for pair in searches]
 
 
-def _cut(searches: Sequence[_Search], aim: Aim) -> None:
-    """Make the next cut of searches that all are, or all are not, polishing."""
-    if searches:
-        wanted = [(search.lie, search.n_next) for search in searches]
-        cuts = cut_panels(wanted, aim, is_polished=searches[0].is_polished)
-        for search, cut in zip(searches, cuts, strict=True):
+def _cut(searches: Sequence[_Search], aim: Aim, report: Callable[[], None]) -> None:
+    """Make the next cut of searches: by least squares, or polishing what least squares gave."""
+    for is_repeated in (False, True):
+        part = [search for search in searches if (search.tried is not None) is is_repeated]
+        if not part:
+            continue
+        tried = [search.tried for search in part if search.tried is not None] if is_repeated else None
+        wanted = [(search.lie, search.n_next) for search in part]
+        cuts = cut_panels(wanted, aim, is_polished=is_repeated, tried=tried, report=report)
+        for search, cut in zip(part, cuts, strict=True):
             search.take(cut)
 
 
@@ -144,6 +155,6 @@ def _chosen(pair: tuple[_Search, ...], aim: Aim) -> Choice:
 def _is_preferred(other: CutPanel, best: CutPanel, aim: Aim) -> bool:
     """Tell whether another way to cut a panel in equally many strips is better than the best so far."""
     gain = best.max_mm - other.max_mm
-    if abs(gain) >= 0.1 * aim.tolerance_mm:
+    if abs(gain) >= aim.squareness * aim.tolerance_mm:
         return gain > 0.0
     return other.skew_mm < best.skew_mm - SAME_SKEW_MM
