@@ -1,5 +1,6 @@
-"""The three desks as tabs, made and filled one at a time so that the window never stands still for long."""
+"""The three desks as tabs, made and filled in small steps so that the window never stands still for long."""
 
+from collections.abc import Iterator
 from typing import TYPE_CHECKING, ClassVar
 
 from PySide6.QtCore import QTimer, Signal, Slot
@@ -9,7 +10,7 @@ if TYPE_CHECKING:
     from cutblock.window.detailing import DetailingDesk
     from cutblock.window.estimating import EstimatingDesk
     from cutblock.window.workshop import WorkshopDesk
-    from cutblock.worker.requests import ShownPlan
+    from cutblock.worker.requests import Pictures, ShownPlan
 
 
 class Desks(QTabWidget):
@@ -19,9 +20,11 @@ class Desks(QTabWidget):
 
     Signals:
         export_asked(): The tags shall be written as PDF.
+        filled(): Everything of the plan is shown, but pictures still to come.
     """
 
     export_asked = Signal()
+    filled = Signal()
     TITLES: ClassVar = ("Detailing", "Workshop", "Estimating")
 
     def __init__(self, parent: QWidget | None = None) -> None:
@@ -29,8 +32,10 @@ class Desks(QTabWidget):
         self.detailing: DetailingDesk
         self.workshop: WorkshopDesk
         self.estimating: EstimatingDesk
-        self._shown: ShownPlan | None = None
-        self._unfilled: list[int] = []
+        self._filling: dict[int, Iterator[None]] = {}  # the desks not shown whole yet
+        self._timer = QTimer(self)
+        self._timer.setInterval(0)
+        self._timer.timeout.connect(self._fill_on)
         self.setAccessibleName("Desks")
         self.setDocumentMode(True)
         self.currentChanged.connect(self._fill)
@@ -43,18 +48,44 @@ class Desks(QTabWidget):
             QTimer.singleShot(0, self, self.prepare)
 
     def show_plan(self, shown: "ShownPlan") -> None:
-        """Show a plan on the desk in front, and on the others in the next turns of the event loop."""
+        """Show a plan step by step in the next turns of the event loop, the desk in front first."""
         while self.count() < len(self.TITLES):
             self._make_next()
-        self._shown = shown
-        self._unfilled = list(range(self.count()))
-        self._fill(self.currentIndex())
-        QTimer.singleShot(0, self, self._fill_next)
+        fillings = (self.detailing.showing(shown), self.workshop.showing(shown), self.estimating.showing(shown))
+        self._filling = dict(enumerate(fillings))
+        self._fill_on()
+        self._timer.start()
+
+    def add_pictures(self, shown: "ShownPlan", pictures: "Pictures") -> None:
+        """Take more pictures of the plan shown.
+
+        Args:
+            shown: The plan with all the pictures it has by now.
+            pictures: Those that have just come.
+        """
+        self.workshop.add_pictures(shown, pictures)
+        self.estimating.add_pictures(shown)
+
+    @property
+    def is_filled(self) -> bool:
+        """Whether everything is shown."""
+        return not self._filling
 
     def finish(self) -> None:
-        """Fill the desks that still wait."""
-        for number in tuple(self._unfilled):
-            self._fill(number)
+        """Show at once what is still to be shown."""
+        while self._filling:
+            self._fill_on()
+
+    def go_to(self, subject: str) -> bool:
+        """Turn to the panel, sweep, piece or block called `subject`; tell whether there is one."""
+        self.finish()
+        if self.detailing.go_to(subject):
+            self.setCurrentWidget(self.detailing)
+        elif self.workshop.go_to(subject):
+            self.setCurrentWidget(self.workshop)
+        else:
+            return False
+        return True
 
     def _make_next(self) -> None:
         title = self.TITLES[self.count()]
@@ -73,16 +104,22 @@ class Desks(QTabWidget):
             from cutblock.window.estimating import EstimatingDesk
 
             self.estimating = EstimatingDesk()
+            self.estimating.place_asked.connect(self.go_to)
             self.addTab(self.estimating, title)
-
-    @Slot()
-    def _fill_next(self) -> None:
-        if self._unfilled:
-            self._fill(self._unfilled[0])
-            QTimer.singleShot(0, self, self._fill_next)
 
     @Slot(int)
     def _fill(self, number: int) -> None:
-        if self._shown is not None and number in self._unfilled:
-            self._unfilled.remove(number)
-            (self.detailing, self.workshop, self.estimating)[number].show_plan(self._shown)
+        """Show the rest of the desk the user turns to."""
+        for _ in self._filling.pop(number, ()):
+            pass
+
+    @Slot()
+    def _fill_on(self) -> None:
+        """Take one step, of the desk in front where it is not whole."""
+        if self._filling:
+            number = self.currentIndex() if self.currentIndex() in self._filling else min(self._filling)
+            if next(self._filling[number], self) is self:
+                del self._filling[number]
+        if not self._filling:
+            self._timer.stop()
+            self.filled.emit()

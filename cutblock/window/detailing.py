@@ -1,5 +1,7 @@
 """The detailer's desk: every panel with its fit, the plan picture, and the sweep that moulds it."""
 
+from collections.abc import Iterator
+
 from PySide6.QtCore import Qt, Slot
 from PySide6.QtWidgets import QHBoxLayout, QSplitter, QVBoxLayout, QWidget
 
@@ -50,12 +52,14 @@ class DetailingDesk(QWidget):
         self.table.picked.connect(self._show_picked)
         self.map.panel_picked.connect(self._pick_panel)
 
-    def show_plan(self, shown: ShownPlan) -> None:
-        """Replace everything by this plan."""
+    def showing(self, shown: ShownPlan) -> Iterator[None]:
+        """Replace everything by this plan, one part in each step."""
         plan = shown.plan
         self._plan = plan
         self.map.show_plan(plan)
+        yield
         self.rows.show_rows(panel_rows(plan))
+        yield
         self.table.fit_columns()
         self._count.setText(
             f"{counted(len(plan.panels), 'panel')}, {counted(len(plan.sweeps), 'sweep')}, "
@@ -73,9 +77,23 @@ class DetailingDesk(QWidget):
         self.section.show_sweep(sweep, self._plan.job.wall_mm)
         self.map.pick(panel)
 
+    def go_to(self, subject: str) -> bool:
+        """Pick the panel or sweep called `subject`, or the first panel of a face; tell whether there is one."""
+        plan = self._plan
+        if plan is None:
+            return False
+        panel = next((panel.id for panel in plan.panels if subject in (panel.id, panel.face)), "")
+        sweep = next((sweep for sweep in plan.sweeps if sweep.id == subject), None)
+        if sweep is not None and sweep.serves:
+            panel = sweep.serves[0]
+        if panel:
+            self._pick_panel(panel)
+        return bool(panel)
+
     @Slot(str)
     def _pick_panel(self, panel: str) -> None:
         self.filter.clear()
+        self.rows.complete()
         for number in range(self.rows.rowCount()):
             key = self.rows.key_at(number)
             if key.partition(" ")[0] == panel:

@@ -1,5 +1,6 @@
 """The questions the window asks; each returns the answer, or None where the user backed out."""
 
+from enum import Enum
 from pathlib import PurePath
 
 from PySide6.QtCore import Qt
@@ -7,6 +8,14 @@ from PySide6.QtWidgets import QFileDialog, QMessageBox, QWidget
 
 import cutblock
 from cutblock.window.cautions import CAUTIONS, DEFERENCE
+
+
+class Answer(Enum):
+    """What shall become of a plan that is not saved."""
+
+    SAVE = "save"
+    DISCARD = "discard"
+    CANCEL = "cancel"
 
 
 def ask_job(parent: QWidget, folder: str) -> str | None:
@@ -37,6 +46,17 @@ def ask_pdf(parent: QWidget, suggested: str) -> str | None:
     if not path:
         return None
     return path if path.lower().endswith(".pdf") else f"{path}.pdf"
+
+
+def ask_unsaved(parent: QWidget, title: str) -> Answer:
+    """Ask what becomes of a plan that is not saved."""
+    box = _box(parent, "Plan not saved", f"The plan of {title} is not saved.", "Save it in a plan folder first?")
+    buttons = QMessageBox.StandardButton
+    box.setIcon(QMessageBox.Icon.Question)
+    box.setStandardButtons(buttons.Save | buttons.Discard | buttons.Cancel)
+    box.setDefaultButton(buttons.Save)
+    answers = {buttons.Save: Answer.SAVE, buttons.Discard: Answer.DISCARD}
+    return answers.get(buttons(box.exec()), Answer.CANCEL)
 
 
 def cautions_box(parent: QWidget) -> QMessageBox:

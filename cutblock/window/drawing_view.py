@@ -8,6 +8,7 @@ from cutblock.records.drawing import Drawing, Polygon
 from cutblock.window.paint import fitted, paint_drawing, painting, polygon_of
 from cutblock.window.theme import ink_of, paper_colour
 
+PREPARING = "This picture is being prepared."
 _MARGIN_PX = 8.0
 
 
@@ -26,7 +27,7 @@ class DrawingView(QWidget):
             parent: Qt parent.
         """
         super().__init__(parent)
-        self._empty_text = empty_text
+        self._empty_text = self._words = empty_text
         self._drawing: Drawing | None = None
         self.setAccessibleName(name)
         self.setAccessibleDescription(empty_text)
@@ -34,10 +35,14 @@ class DrawingView(QWidget):
         self.setMinimumSize(160, 110)
         self.setFocusPolicy(Qt.FocusPolicy.StrongFocus)
 
-    def show_drawing(self, drawing: Drawing | None) -> None:
-        """Replace the picture; None empties it."""
+    def show_drawing(self, drawing: Drawing | None, why_empty: str = "") -> None:
+        """Replace the picture; None empties it and says why, where the usual text would be wrong."""
+        words = why_empty or self._empty_text
+        if drawing is self._drawing and words == self._words:
+            return
         self._drawing = drawing
-        self.setAccessibleDescription(drawing.title if drawing is not None else self._empty_text)
+        self._words = words
+        self.setAccessibleDescription(drawing.title if drawing is not None else words)
         self.update()
 
     def sizeHint(self) -> QSize:
@@ -52,7 +57,7 @@ class DrawingView(QWidget):
             if self._drawing is None:
                 painter.setPen(ink.faint)
                 flags = Qt.AlignmentFlag.AlignCenter | Qt.TextFlag.TextWordWrap
-                painter.drawText(self.rect().adjusted(12, 12, -12, -12), flags, self._empty_text)
+                painter.drawText(self.rect().adjusted(12, 12, -12, -12), flags, self._words)
                 return
             sheet = self._sheet()
             painter.setRenderHint(QPainter.RenderHint.Antialiasing)

@@ -1,23 +1,44 @@
 """The estimator's desk: blocks, waste, hours and cost, and the account that adds up."""
 
-from PySide6.QtCore import Qt, Slot
-from PySide6.QtWidgets import QFormLayout, QScrollArea, QSplitter, QVBoxLayout, QWidget
+from collections.abc import Iterator
+
+from PySide6.QtCore import QModelIndex, Qt, Signal, Slot
+from PySide6.QtWidgets import QFormLayout, QHBoxLayout, QPushButton, QScrollArea, QSplitter, QVBoxLayout, QWidget
 
 from cutblock.base.units import litres
 from cutblock.records.account import Ledger
+from cutblock.records.plan import Plan
 from cutblock.records.words import Severity
 from cutblock.window.desk_parts import titled
-from cutblock.window.drawing_view import DrawingView
+from cutblock.window.drawing_view import PREPARING, DrawingView
 from cutblock.window.labels import counted, label
 from cutblock.window.ledger_bar import LedgerBar
 from cutblock.window.parts import ledger_parts
-from cutblock.window.rows import BLOCK_COLUMNS, FINDING_COLUMNS, LEDGER_COLUMNS, block_rows, finding_rows, ledger_rows
+from cutblock.window.rows import (
+    BLOCK_COLUMNS,
+    FINDING_COLUMNS,
+    LEDGER_COLUMNS,
+    block_rows,
+    finding_rows,
+    ledger_rows,
+    with_signs,
+)
 from cutblock.window.tables import RowsModel, RowsView
 from cutblock.worker.requests import ShownPlan
 
+_WASTE_WORDS = (
+    "Waste is skin trim, kerf, halves without a use and scrap; offcuts worth keeping count as neither used nor waste."
+)
+
 
 class EstimatingDesk(QWidget):
-    """What the job takes in foam, time and money."""
+    """What the job takes in foam, time and money.
+
+    Signals:
+        place_asked(str): The user wants to see the panel, sweep, piece or block of a finding.
+    """
+
+    place_asked = Signal(str)
 
     def __init__(self, parent: QWidget | None = None) -> None:
         super().__init__(parent)
@@ -35,6 +56,9 @@ class EstimatingDesk(QWidget):
         self.findings = RowsModel(FINDING_COLUMNS)
         self.finding_table = RowsView(self.findings, "Findings")
         self._finding_words = label(kind="note")
+        self._places: frozenset[str] = frozenset()
+        self.show_place = QPushButton("Show &where")
+        self.show_place.setAccessibleName("Show the panel, sweep, piece or block of the finding")
         self._finding_text = label(wraps=True)
         self._finding_text.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
         left = QSplitter(Qt.Orientation.Vertical)
@@ -56,17 +80,23 @@ class EstimatingDesk(QWidget):
         layout.addWidget(split)
         self.block_table.picked.connect(self._show_block)
         self.finding_table.picked.connect(self._show_finding)
+        self.finding_table.activated.connect(self._ask_place)
+        self.show_place.clicked.connect(self._ask_place)
 
-    def show_plan(self, shown: ShownPlan) -> None:
-        """Replace everything by this plan."""
+    def showing(self, shown: ShownPlan) -> Iterator[None]:
+        """Replace everything by this plan, one part in each step."""
         self._shown = shown
         self._show_summary(shown.views.summary)
+        yield
         self._show_account(shown.plan.ledger)
+        yield
         self.blocks.show_rows(block_rows(shown.plan))
         self.block_table.fit_columns()
         self.block_table.pick_first()
         self._show_block(self.block_table.picked_key)
+        yield
         findings = shown.plan.findings
+        self._places = _places(shown.plan)
         self.findings.show_rows(finding_rows(findings))
         self.finding_table.fit_columns()
         self.finding_table.pick_first()
@@ -75,15 +105,21 @@ class EstimatingDesk(QWidget):
             sum(finding.severity is severity for finding in findings)
             for severity in (Severity.ERROR, Severity.WARNING, Severity.INFO)
         )
-        counts = f"{counted(n_errors, 'error')}, {counted(n_warnings, 'warning')}, {n_infos} info"
+        counts = f"{counted(n_errors, 'error')}, {counted(n_warnings, 'warning')}, {counted(n_infos, 'note')}"
         self._finding_words.setText(counts)
+
+    def add_pictures(self, shown: ShownPlan) -> None:
+        """Show the block's picture where it has come."""
+        self._shown = shown
+        self._show_block(self.block_table.picked_key)
 
     @Slot(str)
     def _show_block(self, block_id: str) -> None:
         if self._shown is None:
             return
-        ids = [block.id for block in self._shown.plan.blocks]
-        self.picture.show_drawing(self._shown.views.blocks[ids.index(block_id)] if block_id in ids else None)
+        pairs = zip(self._shown.plan.blocks, self._shown.views.blocks, strict=False)  # pictures come later
+        drawing = next((drawing for block, drawing in pairs if block.id == block_id), None)
+        self.picture.show_drawing(drawing, PREPARING if block_id else "")
 
     @Slot(str)
     def _show_finding(self, key: str) -> None:
@@ -91,8 +127,16 @@ class EstimatingDesk(QWidget):
         findings = self._shown.plan.findings if self._shown is not None else ()
         finding = findings[int(key)] if key else None
         self._finding_text.setText(
-            f"{finding.subject}: {finding.text}" if finding is not None else "Nothing to look at."
+            f"{finding.subject}: {with_signs(finding.text)}" if finding is not None else "Nothing to look at."
         )
+        self.show_place.setEnabled(finding is not None and finding.subject in self._places)
+
+    @Slot()
+    @Slot(QModelIndex)
+    def _ask_place(self, index: QModelIndex | None = None) -> None:
+        key = self.finding_table.picked_key
+        if key and self._shown is not None and self.show_place.isEnabled():
+            self.place_asked.emit(self._shown.plan.findings[int(key)].subject)
 
     def _show_summary(self, lines: tuple[tuple[str, str], ...]) -> None:
         while self._lines.rowCount():
@@ -113,7 +157,7 @@ class EstimatingDesk(QWidget):
         self._words.setText(
             f"Used {ledger.used_percent:.1f} %, wasted {ledger.waste_percent:.1f} % "
             f"of {litres(ledger.bought_mm3):.0f} l bought in {counted(ledger.n_blocks, 'block')} "
-            f"(at least {ledger.n_blocks_bound})"
+            f"(no packing needs fewer than {ledger.n_blocks_bound})"
         )
 
     def _summary_area(self) -> QScrollArea:
@@ -130,6 +174,7 @@ class EstimatingDesk(QWidget):
         layout = QVBoxLayout(box)
         layout.setContentsMargins(0, 0, 0, 0)
         layout.addWidget(self._words)
+        layout.addWidget(label(_WASTE_WORDS, "note", wraps=True))
         layout.addWidget(self.bar)
         layout.addWidget(self.ledger_table, 1)
         return box
@@ -140,5 +185,15 @@ class EstimatingDesk(QWidget):
         layout.setContentsMargins(0, 0, 0, 0)
         layout.addWidget(self._finding_words)
         layout.addWidget(self.finding_table, 1)
-        layout.addWidget(self._finding_text)
+        below = QHBoxLayout()
+        below.addWidget(self._finding_text, 1)
+        below.addWidget(self.show_place, 0, Qt.AlignmentFlag.AlignTop)
+        layout.addLayout(below)
         return box
+
+
+def _places(plan: Plan) -> frozenset[str]:
+    """Return everything a finding may be about that a desk can show."""
+    ids = {panel.id for panel in plan.panels} | {panel.face for panel in plan.panels}
+    ids |= {sweep.id for sweep in plan.sweeps} | {piece.id for piece in plan.pieces}
+    return frozenset(ids | {block.id for block in plan.blocks})

@@ -4,16 +4,18 @@ Nothing that needs numpy is imported before a plan is asked for, so that the win
 """
 
 from collections.abc import Callable
+from functools import partial
 from pathlib import PurePath
-from typing import TYPE_CHECKING, TypeAlias
+from typing import TYPE_CHECKING
 
-from PySide6.QtCore import Slot
-from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence, QUndoCommand, QUndoStack
+from PySide6.QtCore import QTimer, Slot
+from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence, QUndoStack
 from PySide6.QtWidgets import QMainWindow, QStackedWidget
 
 from cutblock.window import dialogs
 from cutblock.window.desks import Desks
 from cutblock.window.failures import FailureDialog
+from cutblock.window.history import Entry, ShowCommand
 from cutblock.window.labels import counted
 from cutblock.window.menus import Menus
 from cutblock.window.runner import Runner
@@ -27,8 +29,11 @@ from cutblock.worker.events import Failure
 if TYPE_CHECKING:
     from cutblock.worker.requests import ShownPlan
 
-_Shown: TypeAlias = "tuple[ShownPlan | None, str | None]"  # with the path of its job file
-_MOST_UNDO = 10
+_MOST_UNDO = 5  # a plan of 1,000 panels with its pictures takes some 30 MB
+
+
+def _nothing() -> None:
+    """Do nothing more."""
 
 
 class MainWindow(QMainWindow):
@@ -41,10 +46,13 @@ class MainWindow(QMainWindow):
         self._runner = runner
         self._settings = settings
         self._theme = theme
-        self._shown: ShownPlan | None = None
+        self._entry = Entry()
         self._job_path: str | None = None  # the one asked for last, planned or not
-        self._shown_path: str | None = None  # of the plan shown
+        self._receiving: Entry | None = None  # the one whose pictures are on their way
+        self._takes_saved = False  # the plan on its way comes from a plan folder
         self._after: Callable[[object], None] = self._ignore
+        self._then: Callable[[], object] = _nothing  # once the plan is saved
+        self._saving = self._entry
         self._stack = QUndoStack(self)
         self._stack.setUndoLimit(_MOST_UNDO)
         self.undo_action = self._stack.createUndoAction(self, "Undo")
@@ -74,7 +82,7 @@ class MainWindow(QMainWindow):
     @property
     def shown(self) -> "ShownPlan | None":
         """The plan shown, None while there is none."""
-        return self._shown
+        return self._entry.shown
 
     def open_job(self, path: str) -> None:
         """Plan a job file and show it; does nothing while something else runs."""
@@ -83,8 +91,9 @@ class MainWindow(QMainWindow):
         if self._runner.is_busy:
             return
         self._job_path = path
+        self._takes_saved = False
         self.start_page.show_state(f"Planning {PurePath(path).parent.name}/{PurePath(path).name}")
-        self._run(PlanRequest(job_path=path), "Reading the job file", self._take_plan)
+        self._run(PlanRequest(job_path=path), "Reading the job file", self._take_planned)
 
     def open_folder(self, folder: str) -> None:
         """Show the plan of a plan folder; does nothing while something else runs."""
@@ -92,52 +101,62 @@ class MainWindow(QMainWindow):
 
         if not self._runner.is_busy:
             self._job_path = None
-            self._run(OpenRequest(folder=folder), "Reading the plan folder", self._take_plan)
+            self._takes_saved = True
+            self._run(OpenRequest(folder=folder), "Reading the plan folder", self._take_planned)
 
     def save(self, folder: str) -> None:
         """Write the plan folder."""
         from cutblock.worker.requests import SaveRequest
 
-        if self._shown is not None and not self._runner.is_busy:
-            self._run(SaveRequest(plan=self._shown.plan, folder=folder), "Writing the plan folder", self._take_saved)
+        if self.shown is not None and not self._runner.is_busy:
+            self._saving = self._entry
+            self._run(SaveRequest(plan=self.shown.plan, folder=folder), "Writing the plan folder", self._take_saved)
 
     def export_tags(self, path: str) -> None:
         """Write the tags as the workshop's desk says."""
         from cutblock.worker.requests import TagsRequest
 
-        if self._shown is None or self._runner.is_busy:
+        if self.shown is None or self._runner.is_busy:
             return
         self.desks.finish()
         tags = self.desks.workshop.tags
-        request = TagsRequest(plan=self._shown.plan, sheet=tags.sheet_name, start=tags.start.value(), path=path)
+        request = TagsRequest(plan=self.shown.plan, sheet=tags.sheet_name, start=tags.start.value(), path=path)
         self._run(request, "Drawing the tags", self._take_tags)
 
     def show_plan(self, shown: "ShownPlan") -> None:
         """Show a plan; the one before it comes back with Undo."""
-        self._stack.push(_ShowCommand(self, (self._shown, self._shown_path), (shown, self._job_path)))
+        entry = Entry(shown, self._job_path, self._takes_saved)
+        self._receiving = entry
+        self._stack.push(ShowCommand(self.put_entry, self._entry, entry))
 
-    def put_plan(self, shown: "ShownPlan | None", job_path: str | None) -> None:
-        """Replace what the desks show, and the job file it comes from; None shows the start page."""
-        self._shown = shown
-        self._shown_path = self._job_path = job_path
+    def put_entry(self, entry: Entry) -> None:
+        """Replace what the desks show; an entry without a plan shows the start page."""
+        self._entry = entry
+        self._job_path = entry.job_path
+        shown = entry.shown
         if shown is not None:
             self.desks.show_plan(shown)
             job = shown.plan.job
-            self.setWindowTitle(f"{job.title} ({job.id}), revision {job.revision}[*] – cutblock")
+            self.setWindowTitle(f"[*]{job.title} ({job.id}), revision {job.revision} – cutblock")
         else:
             self.setWindowTitle("cutblock")
+        self.setWindowModified(shown is not None and not entry.is_saved)
         self.pages.setCurrentWidget(self.start_page if shown is None else self.desks)
         self._show_state()
 
     @Slot(object)
     def show_failure(self, failure: Failure) -> None:
         """Show what went wrong."""
+        self._then = _nothing
         self.start_page.show_state("")
         self.status.rest("Not done")
         self.failure_dialog.show_failure(failure)
 
     def closeEvent(self, event: QCloseEvent) -> None:
-        """Stop what runs and remember the window."""
+        """Ask about a plan that is not saved; stop what runs and remember the window."""
+        if not self._entry.is_saved and not self._may_leave(self.close):
+            event.ignore()
+            return
         self._settings.geometry = self.saveGeometry()
         self._settings.save()
         self._runner.close()
@@ -149,23 +168,24 @@ class MainWindow(QMainWindow):
             event.acceptProposedAction()
 
     def dropEvent(self, event: QDropEvent) -> None:
-        """Plan the job file dropped."""
+        """Plan the job file dropped, once the drop itself is over."""
         path = self._dropped_path(event)
         if path:
             event.acceptProposedAction()
-            self.open_job(path)
+            QTimer.singleShot(0, self, partial(self._leave_for, partial(self.open_job, path)))
 
     def _connect(self) -> None:
         runner, menus = self._runner, self.menus
         runner.started.connect(self._show_started)
         runner.progressed.connect(self.status.show_progress)
         runner.ended.connect(self._show_state)
+        runner.came.connect(self._take_part)
         runner.succeeded.connect(self._take)
         runner.failed.connect(self.show_failure)
         runner.cancelled.connect(self._show_cancelled)
         self.status.cancel_asked.connect(self._cancel)
         self.start_page.open_asked.connect(self._ask_job)
-        self.start_page.job_picked.connect(self.open_job)
+        self.start_page.job_picked.connect(self._open_picked)
         self.desks.export_asked.connect(self._ask_tags)
         menus.recent.triggered.connect(self._open_recent)
         pairs = (
@@ -193,23 +213,54 @@ class MainWindow(QMainWindow):
         self._after = after
         self._runner.run(request, text)
 
-    def _take_plan(self, value: object) -> None:
-        from cutblock.worker.requests import ShownPlan
+    @Slot(object)
+    def _take_part(self, value: object) -> None:
+        """Show the plan, or more of its pictures."""
+        from cutblock.worker.requests import Pictures, ShownPlan
 
-        assert isinstance(value, ShownPlan)
-        self.start_page.show_state("")
-        self.show_plan(value)
-        self.setWindowModified(True)
-        if self._job_path is not None:
-            self._settings.add_recent(self._job_path)
-            self._show_recent()
-        plan = value.plan
-        counts = ((len(plan.panels), "panel"), (len(plan.sweeps), "sweep"), (len(plan.blocks), "block"))
-        self.status.rest("Planned: " + ", ".join(counted(number, noun) for number, noun in counts))
+        if isinstance(value, ShownPlan):
+            self.start_page.show_state("")
+            self.show_plan(value)
+            if self._job_path is not None:
+                self._settings.add_recent(self._job_path)
+                self._show_recent()
+            self.status.show_progress(0.95, "Preparing pictures and tags")
+        elif isinstance(value, Pictures) and self._receiving is not None and self._receiving.shown is not None:
+            self._receiving.shown = self._receiving.shown.with_pictures(value)
+            if self._receiving is self._entry:
+                self.desks.add_pictures(self._receiving.shown, value)
+
+    def _take_planned(self, value: object) -> None:
+        shown = self._receiving.shown if self._receiving is not None else None
+        self._receiving = None
+        if shown is not None:
+            plan = shown.plan
+            counts = ((len(plan.panels), "panel"), (len(plan.sweeps), "sweep"), (len(plan.blocks), "block"))
+            self.status.rest("Planned: " + ", ".join(counted(number, noun) for number, noun in counts))
 
     def _take_saved(self, value: object) -> None:
-        self.setWindowModified(False)
+        self._saving.is_saved = True
+        self.setWindowModified(not self._entry.is_saved)
         self.status.rest(f"Saved in {value}")
+        then, self._then = self._then, _nothing
+        then()
+
+    def _may_leave(self, then: Callable[[], object]) -> bool:
+        """Tell whether the plan shown may go; where it shall be saved first, `then` is done after that."""
+        if self._entry.is_saved or self.shown is None:
+            return True
+        answer = dialogs.ask_unsaved(self, self.shown.plan.job.title)
+        if answer is dialogs.Answer.SAVE:
+            folder = self._ask_folder_to_save()
+            if folder is not None:
+                self._then = then
+                self.save(folder)
+        return answer is dialogs.Answer.DISCARD
+
+    def _leave_for(self, then: Callable[[], object]) -> None:
+        """Do `then`, once it is settled what becomes of the plan shown."""
+        if not self._runner.is_busy and self._may_leave(then):
+            then()
 
     def _take_tags(self, value: object) -> None:
         self.status.rest(f"Tags written to {value}")
@@ -229,12 +280,15 @@ class MainWindow(QMainWindow):
     @Slot()
     def _show_cancelled(self) -> None:
         self.start_page.show_state("")
-        self.status.rest("Cancelled; nothing was changed")
+        self._then = _nothing
+        has_come, self._receiving = self._receiving is not None, None
+        words = "Stopped; pictures and tags are missing: plan again to have them" if has_come else ""
+        self.status.rest(words or "Cancelled; nothing was changed")
 
     @Slot()
     def _show_state(self) -> None:
         is_busy = self._runner.is_busy
-        has_plan = self._shown is not None
+        has_plan = self.shown is not None
         self.menus.show_state(has_plan=has_plan, has_job=self._job_path is not None, is_busy=is_busy)
         self.start_page.setEnabled(not is_busy)
 
@@ -248,13 +302,13 @@ class MainWindow(QMainWindow):
     def _ask_job(self) -> None:
         path = dialogs.ask_job(self, self._folder())
         if path is not None:
-            self.open_job(path)
+            self._open_picked(path)
 
     @Slot()
     def _ask_folder(self) -> None:
         folder = dialogs.ask_plan_folder(self, self._folder())
         if folder is not None:
-            self.open_folder(folder)
+            self._leave_for(partial(self.open_folder, folder))
 
     @Slot()
     def _plan_again(self) -> None:
@@ -263,9 +317,12 @@ class MainWindow(QMainWindow):
 
     @Slot()
     def _ask_save(self) -> None:
-        folder = dialogs.ask_new_folder(self, f"{self._folder()}/{self._name()}-plan")
+        folder = self._ask_folder_to_save()
         if folder is not None:
             self.save(folder)
+
+    def _ask_folder_to_save(self) -> str | None:
+        return dialogs.ask_new_folder(self, f"{self._folder()}/{self._name()}-plan")
 
     @Slot()
     def _ask_tags(self) -> None:
@@ -275,7 +332,11 @@ class MainWindow(QMainWindow):
 
     @Slot(QAction)
     def _open_recent(self, action: QAction) -> None:
-        self.open_job(str(action.data()))
+        self._open_picked(str(action.data()))
+
+    @Slot(str)
+    def _open_picked(self, path: str) -> None:
+        self._leave_for(partial(self.open_job, path))
 
     @Slot()
     def _show_desk(self) -> None:
@@ -329,24 +390,10 @@ class MainWindow(QMainWindow):
         return str(PurePath(path).parent) if path else ""
 
     def _name(self) -> str:
-        return self._shown.plan.job.id if self._shown is not None else "cutblock"
+        return self.shown.plan.job.id if self.shown is not None else "cutblock"
 
     @staticmethod
     def _dropped_path(event: QDropEvent) -> str:
         """Return the one local .toml file that is dropped, empty where it is anything else."""
         paths = [url.toLocalFile() for url in event.mimeData().urls()]
         return paths[0] if len(paths) == 1 and paths[0].lower().endswith(".toml") else ""
-
-
-class _ShowCommand(QUndoCommand):
-    """Show another plan."""
-
-    def __init__(self, window: MainWindow, before: "_Shown", after: "_Shown") -> None:
-        super().__init__("change of plan")
-        self._window, self._before, self._after = window, before, after
-
-    def redo(self) -> None:
-        self._window.put_plan(*self._after)
-
-    def undo(self) -> None:
-        self._window.put_plan(*self._before)

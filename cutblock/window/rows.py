@@ -1,6 +1,7 @@
 """The plan as rows of text, one function a table; every number carries its unit in the column's title."""
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Iterator
+from itertools import groupby
 
 from cutblock.base.units import MM3_PER_LITRE, SECONDS_PER_MINUTE, hours, litres, mm_per_minute
 from cutblock.records.account import Ledger
@@ -41,8 +42,6 @@ PIECE_COLUMNS = (
 )
 CUT_COLUMNS = (
     Column("Order", is_number=True),
-    Column("Set-up", is_number=True, tip="One clamping of one part; the number rises with each new clamping or turn"),
-    Column("Clamped", tip="How the part lies on the machine"),
     Column("Cut"),
     Column("At", tip="Where the wire's slab begins, in the frame of the raw block"),
     Column("Speed, mm/min", is_number=True),
@@ -70,23 +69,19 @@ FINDING_COLUMNS = (Column("Severity"), Column("Where"), Column("Code"), Column("
 _SEVERITIES = {
     Severity.ERROR: ("Error", VERMILLION, 0),
     Severity.WARNING: ("Warning", YELLOW, 1),
-    Severity.INFO: ("Info", SKY, 2),
+    Severity.INFO: ("Note", SKY, 2),
 }
 
 
-def panel_rows(plan: Plan) -> list[Row]:
-    """Return a row for every panel, or every strip of one; its key is "panel sweep"."""
+def panel_rows(plan: Plan) -> Iterator[Row]:
+    """Give a row for every panel, or every strip of one; its key is "panel sweep"."""
     halves = servings_by_panel(plan.sweeps)
     duties = {(piece.sweep, piece.half): piece for piece in plan.pieces}
-    rows = []
     for panel in plan.panels:
-        if panel.id in halves:
-            rows += [
-                _panel_row(panel, sweep, serving, duties, plan.job.tolerance_mm) for sweep, serving in halves[panel.id]
-            ]
-        else:
-            rows.append(_uncut_row(panel))
-    return rows
+        for sweep, serving in halves.get(panel.id, []):
+            yield _panel_row(panel, sweep, serving, duties, plan.job.tolerance_mm)
+        if panel.id not in halves:
+            yield _uncut_row(panel)
 
 
 def panel_key(panel: str, sweep: str) -> str:
@@ -94,9 +89,9 @@ def panel_key(panel: str, sweep: str) -> str:
     return f"{panel} {sweep}"
 
 
-def piece_rows(pieces: Iterable[Piece]) -> list[Row]:
-    """Return a row for every piece; a scanned code finds it."""
-    return [
+def piece_rows(pieces: Iterable[Piece]) -> Iterator[Row]:
+    """Give a row for every piece; a scanned code finds it."""
+    return (
         Row(
             piece.id,
             (
@@ -112,14 +107,21 @@ def piece_rows(pieces: Iterable[Piece]) -> list[Row]:
             ),
         )
         for piece in pieces
-    ]
+    )
 
 
-def cut_rows(plan: Plan, block: Block) -> list[Row]:
-    """Return a row for every pass of the wire through a block, in order; flat cuts go at the job's planned speed."""
+def cut_rows(plan: Plan, block: Block) -> Iterator[Row]:
+    """Give a row for every pass of the wire through a block, in order, and a heading for each set-up.
+
+    Flat cuts go at the job's planned speed.
+    """
     by_sweep = {timing.sweep: timing for timing in plan.timings}
     flat_mm_s = plan.conditions.planned_mm_s
-    return [_cut_row(cut, by_sweep.get(cut.sweep or ""), flat_mm_s) for cut in block.cuts]
+    for setup, cuts in groupby(block.cuts, key=lambda cut: cut.setup):
+        for number, cut in enumerate(cuts):
+            if number == 0:
+                yield Row(f"set-up {setup}", (Cell(_setup_text(cut)),), is_heading=True)
+            yield _cut_row(cut, by_sweep.get(cut.sweep or ""), flat_mm_s)
 
 
 def block_rows(plan: Plan) -> list[Row]:
@@ -154,20 +156,23 @@ def ledger_rows(parts: tuple[LedgerPart, ...], ledger: Ledger) -> list[Row]:
     return rows
 
 
-def finding_rows(findings: tuple[Finding, ...]) -> list[Row]:
-    """Return a row for every finding, the gravest first; its key is the finding's number."""
+def finding_rows(findings: tuple[Finding, ...]) -> Iterator[Row]:
+    """Give a row for every finding, the gravest first; its key is the finding's number."""
     ordered = sorted(enumerate(findings), key=lambda numbered: _SEVERITIES[numbered[1].severity][2])
-    rows = []
     for number, finding in ordered:
         word, colour, rank = _SEVERITIES[finding.severity]
         cells = (
             Cell(word, key=float(rank), colour=colour),
             Cell(finding.subject),
             Cell(finding.code),
-            Cell(finding.text, tip=finding.text),
+            Cell(with_signs(finding.text), tip=with_signs(finding.text)),
         )
-        rows.append(Row(str(number), cells))
-    return rows
+        yield Row(str(number), cells)
+
+
+def with_signs(text: str) -> str:
+    """Return text of the plan with the signs people write in place of those of plain files."""
+    return text.replace("+-", "±").replace(" degC", " °C").replace(" deg ", "° ")
 
 
 def size_text(size_mm: Iterable[float]) -> str:
@@ -229,9 +234,15 @@ def _size_cell(panel: Panel) -> Cell:
 def _duty_cell(piece: Piece | None, panel: str) -> Cell:
     if piece is None:
         return Cell("none")
-    if piece.duty is Duty.MOULD and piece.panel is not None and piece.panel != panel:
-        return Cell(f"{piece.duty.value} of {piece.panel}")
+    if piece.duty is Duty.MOULD and piece.panel is not None:
+        return Cell("mould of this panel" if piece.panel == panel else f"mould of {piece.panel}")
     return Cell(piece.duty.value)
+
+
+def _setup_text(cut: Cut) -> str:
+    """Return how the part lies on the machine from this cut on."""
+    lies = "turned 90°" if cut.turn else "as laid"
+    return f"Set-up {cut.setup}: {lies}, part {size_text(cut.part_size_mm)} mm"
 
 
 def _cut_row(cut: Cut, timing: SweepTiming | None, flat_mm_s: float) -> Row:
@@ -242,8 +253,6 @@ def _cut_row(cut: Cut, timing: SweepTiming | None, flat_mm_s: float) -> Row:
         str(cut.order),
         (
             _number(cut.order, 0),
-            _number(cut.setup, 0),
-            Cell("turned 90°" if cut.turn else "as laid"),
             Cell(cut.kind.value),
             Cell(place),
             _number(mm_per_minute(speed_mm_s), 0),
@@ -255,7 +264,7 @@ def _cut_row(cut: Cut, timing: SweepTiming | None, flat_mm_s: float) -> Row:
 
 
 def _block_row(block: Block, used_mm3: float, seconds: float | None) -> Row:
-    left = "; ".join(size_text(offcut.size_mm) for offcut in block.offcuts) or "nothing worth keeping"
+    left = "; ".join(size_text(offcut.size_mm) for offcut in block.offcuts) or "none"
     name = f"{block.id} (from an offcut)" if block.from_offcut else block.id
     return Row(
         block.id,

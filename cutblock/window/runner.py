@@ -3,7 +3,7 @@
 from PySide6.QtCore import QObject, QTimer, Signal, Slot
 
 from cutblock.worker.child import Request
-from cutblock.worker.events import Cancelled, Event, Failure, Progress, Result
+from cutblock.worker.events import Cancelled, Event, Failure, Part, Progress, Result
 from cutblock.worker.process import Worker
 
 POLL_MS = 50
@@ -15,6 +15,7 @@ class Runner(QObject):
     Signals:
         started(str): A request has begun; what it does.
         progressed(float, str): Fraction done and what is being done.
+        came(object): A part of the request's value, ready before the rest.
         succeeded(object): The request's value.
         failed(object): A `Failure`.
         cancelled(): The request was stopped as asked.
@@ -23,6 +24,7 @@ class Runner(QObject):
 
     started = Signal(str)
     progressed = Signal(float, str)
+    came = Signal(object)
     succeeded = Signal(object)
     failed = Signal(object)
     cancelled = Signal()
@@ -69,6 +71,9 @@ class Runner(QObject):
     def _tell(self, event: Event) -> None:
         if isinstance(event, Progress):
             self.progressed.emit(event.fraction, event.text)
+            return
+        if isinstance(event, Part):
+            self.came.emit(event.value)
             return
         self._timer.stop()
         self.ended.emit()

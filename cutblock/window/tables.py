@@ -1,6 +1,7 @@
 """Read-only tables: one model for all of them, and the view that shows it."""
 
-from collections.abc import Sequence
+from collections.abc import Iterable, Iterator, Sequence
+from itertools import islice
 from typing import Any, NamedTuple
 
 from PySide6.QtCore import (
@@ -15,7 +16,7 @@ from PySide6.QtCore import (
     Signal,
     Slot,
 )
-from PySide6.QtGui import QColor, QIcon, QPixmap
+from PySide6.QtGui import QColor, QFont, QIcon, QPixmap
 from PySide6.QtWidgets import QAbstractItemView, QTableView, QWidget
 
 from cutblock.window.paint import hatch_brush, painting
@@ -24,7 +25,9 @@ from cutblock.window.theme import text_on
 Index = QModelIndex | QPersistentModelIndex
 NOWHERE = QModelIndex()
 
-_ROWS_MEASURED = 50  # for the column widths; measuring thousands takes most of a second
+ROWS_AT_ONCE = 200  # taken in one turn of the event loop; the rest follows in the next turns
+_TEXTS_MEASURED = 3  # the longest of a column; measuring thousands takes most of a second
+_CELL_PADDING_PX = 18
 _WIDEST_PX = 420
 _SQUARE_PX = 14
 _SQUARE_EDGE = "#808080"  # seen on a dark and on a light ground
@@ -56,6 +59,10 @@ class Row(NamedTuple):
     key: str
     cells: tuple[Cell, ...]
     words: str = ""  # found by the filter beside the texts, e.g. a scanned code
+    is_heading: bool = False  # of the rows below it; its first cell takes the whole width
+
+
+_NO_CELL = Cell("")  # of a heading, beside its one
 
 
 class RowsModel(QAbstractTableModel):
@@ -64,18 +71,62 @@ class RowsModel(QAbstractTableModel):
     def __init__(self, columns: Sequence[Column], parent: QWidget | None = None) -> None:
         super().__init__(parent)
         self._columns = tuple(columns)
-        self._all: tuple[Row, ...] = ()
+        self._all: list[Row] = []
+        self._coming: Iterator[Row] = iter(())
+        self._is_whole = True
+        self._timer = QTimer(self)
+        self._timer.setInterval(0)
+        self._timer.timeout.connect(self.take_more)
         self._rows: list[Row] = []
         self._squares: dict[tuple[str, str], QIcon] = {}
+        self._bold = QFont()
+        self._bold.setBold(True)
         self._text = ""
         self._order: tuple[int, Qt.SortOrder] = (-1, Qt.SortOrder.AscendingOrder)
 
-    def show_rows(self, rows: Sequence[Row]) -> None:
-        """Replace all rows."""
+    def show_rows(self, rows: Iterable[Row]) -> None:
+        """Replace all rows: the first ones now, the others in the next turns of the event loop."""
         self.beginResetModel()
-        self._all = tuple(rows)
+        self._coming = iter(rows)
+        self._all = list(islice(self._coming, ROWS_AT_ONCE))
+        self._is_whole = len(self._all) < ROWS_AT_ONCE
         self._rows = self._arranged()
         self.endResetModel()
+        if self._is_whole:
+            self._timer.stop()
+        else:
+            self._timer.start()
+
+    @Slot()
+    def take_more(self) -> None:
+        """Take the next rows; they are put in order once all are there."""
+        more = list(islice(self._coming, ROWS_AT_ONCE))
+        self._all += more
+        words = self._text.casefold().split()
+        shown = [row for row in more if _holds(row, words)]
+        if shown:
+            self.beginInsertRows(NOWHERE, len(self._rows), len(self._rows) + len(shown) - 1)
+            self._rows += shown
+            self.endInsertRows()
+        if len(more) < ROWS_AT_ONCE:
+            self._timer.stop()
+            self._is_whole = True
+            if self._order[0] >= 0:
+                self.sort(*self._order)
+
+    def complete(self) -> None:
+        """Take all rows that still wait."""
+        while not self._is_whole:
+            self.take_more()
+
+    def longest_texts(self, column: int) -> list[str]:
+        """Return the longest texts of a column among the first rows."""
+        texts = {row.cells[column].text for row in self._rows[:ROWS_AT_ONCE] if not row.is_heading}
+        return sorted(texts, key=len)[-_TEXTS_MEASURED:]
+
+    def headings(self, first: int, last: int) -> list[int]:
+        """Return which of the rows from `first` to `last` are headings."""
+        return [number for number in range(first, last + 1) if self._rows[number].is_heading]
 
     def filter_by(self, text: str) -> None:
         """Keep the rows that hold every word of `text` somewhere, whatever the case."""
@@ -91,6 +142,10 @@ class RowsModel(QAbstractTableModel):
     def row_of(self, key: str) -> int:
         """Return the first row about `key`, -1 where none is shown."""
         return next((number for number, row in enumerate(self._rows) if row.key == key), -1)
+
+    def has_squares(self, column: int) -> bool:
+        """Tell whether a coloured square stands before the texts of a column."""
+        return any(row.cells[column].colour for row in self._rows[:1] if not row.is_heading)
 
     @property
     def n_rows_in_all(self) -> int:
@@ -109,16 +164,17 @@ class RowsModel(QAbstractTableModel):
         """Return what Qt asks of a field."""
         if not index.isValid():
             return None
-        cell = self._rows[index.row()].cells[index.column()]
+        row = self._rows[index.row()]
+        cell = row.cells[index.column()] if index.column() < len(row.cells) else _NO_CELL
         if role == Qt.ItemDataRole.DisplayRole:
             return cell.text
         if role == Qt.ItemDataRole.TextAlignmentRole:
-            return _RIGHT if self._columns[index.column()].is_number else _LEFT
-        if role == Qt.ItemDataRole.DecorationRole and cell.colour:
-            return self._square(cell.colour, cell.hatch)
-        if role == Qt.ItemDataRole.ToolTipRole and cell.tip:
-            return cell.tip
-        return None
+            return _RIGHT if self._columns[index.column()].is_number and not row.is_heading else _LEFT
+        if role == Qt.ItemDataRole.FontRole:
+            return self._bold if row.is_heading else None
+        if role == Qt.ItemDataRole.DecorationRole:
+            return self._square(cell.colour, cell.hatch) if cell.colour else None
+        return (cell.tip or None) if role == Qt.ItemDataRole.ToolTipRole else None
 
     def headerData(  # noqa: D102 - Qt's
         self, section: int, orientation: Qt.Orientation, role: int = Qt.ItemDataRole.DisplayRole
@@ -198,7 +254,6 @@ class RowsView(QTableView):
         self.verticalHeader().hide()
         header = self.horizontalHeader()
         header.setHighlightSections(False)
-        header.setResizeContentsPrecision(_ROWS_MEASURED)
         header.setStretchLastSection(True)
         if is_sortable:
             header.setSortIndicator(-1, Qt.SortOrder.AscendingOrder)
@@ -206,17 +261,26 @@ class RowsView(QTableView):
             self.setSortingEnabled(True)
         self._set_row_height()
         model.modelReset.connect(self._tell_picked)
+        model.modelReset.connect(self._span_headings)
+        model.rowsInserted.connect(self._span_new_headings)
 
     @Slot()
     def fit_columns(self) -> None:
         """Make every column as wide as its text, within reason."""
-        self.resizeColumnsToContents()
-        for column in range(self._rows_model.columnCount() - 1):
-            self.setColumnWidth(column, min(self.columnWidth(column), _WIDEST_PX))
+        metrics, header = self.fontMetrics(), self.horizontalHeader()
+        for column in range(self._rows_model.columnCount()):
+            texts = self._rows_model.longest_texts(column)
+            wanted = max((metrics.horizontalAdvance(text) for text in texts), default=0) + _CELL_PADDING_PX
+            if self._rows_model.has_squares(column):
+                wanted += 2 * _SQUARE_PX
+            self.setColumnWidth(column, min(max(wanted, header.sectionSizeHint(column)), _WIDEST_PX))
 
     def pick(self, key: str) -> None:
         """Make the first row about `key` current and bring it into view; does nothing where none is shown."""
         row = self._rows_model.row_of(key)
+        if row < 0:
+            self._rows_model.complete()
+            row = self._rows_model.row_of(key)
         if row >= 0 and row != self.currentIndex().row():
             self.setCurrentIndex(self._rows_model.index(row, 0))
 
@@ -246,6 +310,19 @@ class RowsView(QTableView):
     @Slot()
     def _tell_picked(self) -> None:
         self.picked.emit(self.picked_key)
+
+    @Slot()
+    def _span_headings(self) -> None:
+        self.clearSpans()
+        self._span(0, self._rows_model.rowCount() - 1)
+
+    @Slot(QModelIndex, int, int)
+    def _span_new_headings(self, parent: QModelIndex, first: int, last: int) -> None:
+        self._span(first, last)
+
+    def _span(self, first: int, last: int) -> None:
+        for number in self._rows_model.headings(first, last):
+            self.setSpan(number, 0, 1, self._rows_model.columnCount())
 
     def _set_row_height(self) -> None:
         self.verticalHeader().setMinimumSectionSize(1)

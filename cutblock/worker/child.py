@@ -6,13 +6,13 @@ import os
 import pickle
 import signal
 import time
-from collections.abc import Sequence
+from collections.abc import Generator, Sequence
 from multiprocessing.connection import Connection
 from typing import Protocol
 
 from cutblock.base.errors import Cancelled as Stopped
 from cutblock.base.progress import Progress as Report
-from cutblock.worker.events import Cancelled, Event, Progress, Result, failure_of
+from cutblock.worker.events import Cancelled, Event, Part, Progress, Result, failure_of
 
 # Imported before the first request, so that it starts at once; together they take some seconds.
 WARM_UP = (
@@ -35,7 +35,10 @@ class Request(Protocol):
     """Something the worker can do: a picklable record."""
 
     def run(self, progress: Report) -> object:
-        """Do it and return a picklable value; `progress` raises `Cancelled` when the user wants to stop."""
+        """Do it and return a picklable value; `progress` raises `Cancelled` when the user wants to stop.
+
+        A generator's values are told one by one as soon as they are there; the value it returns comes last.
+        """
 
 
 def serve(talk: Connection, orders: Connection, warm_up: Sequence[str]) -> None:
@@ -73,13 +76,26 @@ def _answer(ticket: int, pickled: bytes, talk: Connection, orders: Connection) -
 
     try:
         request: Request = pickle.loads(pickled)
-        return Result(ticket=ticket, value=request.run(report))
+        value = request.run(report)
+        if isinstance(value, Generator):
+            value = _tell_parts(value, ticket, talk)
+        return Result(ticket=ticket, value=value)
     except Stopped:
         return Cancelled(ticket=ticket)
     except BrokenPipeError:
         raise  # nobody listens any more
     except Exception as error:  # noqa: BLE001 - the one place where a fault of a request is caught and told
         return failure_of(error, ticket)
+
+
+def _tell_parts(parts: Generator[object, None, object], ticket: int, talk: Connection) -> object:
+    """Send what the generator yields and return what it returns."""
+    while True:
+        try:
+            value = next(parts)
+        except StopIteration as end:
+            return end.value
+        talk.send(Part(ticket=ticket, value=value))
 
 
 def _send_last(talk: Connection, event: Event) -> None:

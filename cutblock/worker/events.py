@@ -16,6 +16,14 @@ class Progress:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Part:
+    """Something the request has ready before it is done; more follows."""
+
+    ticket: int
+    value: object
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Result:
     """The request is done; nothing more follows."""
 
@@ -42,7 +50,7 @@ class Cancelled:
     ticket: int
 
 
-Event = Progress | Result | Failure | Cancelled
+Event = Progress | Part | Result | Failure | Cancelled
 
 
 def failure_of(error: BaseException, ticket: int) -> Failure:

@@ -6,6 +6,7 @@ unpickled in the caller's thread.
 """
 
 import contextlib
+import gc
 import multiprocessing
 import pickle
 import queue
@@ -14,10 +15,11 @@ import time
 from collections.abc import Sequence
 
 from cutblock.worker.child import WARM_UP, Request, serve
-from cutblock.worker.events import Cancelled, Event, Failure, Progress, failure_of
+from cutblock.worker.events import Cancelled, Event, Failure, Part, Progress, failure_of
 
 GRACE_S = 0.6  # for a request to notice that it shall stop, before its process is killed
 _JOIN_S = 5.0
+_LARGE_BYTES = 100_000
 
 
 class Worker:
@@ -96,7 +98,7 @@ class Worker:
     def _settled(self, event: Event | None) -> Event:
         """Return the event to tell, None standing for the end of the process; finish the request at its last event."""
         assert self._ticket is not None
-        if isinstance(event, Progress):
+        if isinstance(event, Progress | Part):
             return event
         ticket, was_cancelled = self._ticket, self._deadline_s is not None
         self._finish()
@@ -180,10 +182,26 @@ class _Child:
                 pickled = pickle.dumps(request)  # before anything is sent: it may fail
                 self._talk.send(ticket)
                 self._talk.send_bytes(pickled)
-                while isinstance(event := self._talk.recv(), Progress):
+                while isinstance(event := self._receive(), Progress | Part):
                     self.inbox.put(event)
                 self.inbox.put(event)
             except (EOFError, OSError):
                 self.inbox.put(None)
             except Exception as error:  # noqa: BLE001 - what cannot be pickled is a fault of the program to be told
                 self.inbox.put(failure_of(error, message[0]))
+
+    def _receive(self) -> Event:
+        """Wait for the next event and unpickle it.
+
+        The cyclic garbage collector rests meanwhile and then forgets what there is: it would stop every thread, the
+        window's too, for as long as it takes to look at each of the many objects of a plan.
+        """
+        pickled = self._talk.recv_bytes()
+        gc.disable()
+        try:
+            event: Event = pickle.loads(pickled)
+            if len(pickled) > _LARGE_BYTES:
+                gc.freeze()
+        finally:
+            gc.enable()
+        return event

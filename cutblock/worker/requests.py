@@ -1,6 +1,7 @@
 """The kinds of request the window makes; each is a record that travels to the worker process and runs there."""
 
-from dataclasses import dataclass, field
+from collections.abc import Generator, Iterator
+from dataclasses import dataclass, field, replace
 from pathlib import Path
 
 from cutblock.base.progress import Progress, part_of
@@ -10,16 +11,18 @@ from cutblock.records.plan import Plan, Settings
 from cutblock.records.record import Record
 from cutblock.records.shop import LabelSheet
 
+BLOCKS_AT_ONCE, TAGS_AT_ONCE = 2, 40  # pictures sent together: few, because the window takes them in one go
+
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Views(Record):
-    """What the window shows of a plan beside the plan itself."""
+    """What the window shows of a plan beside the plan itself; tags and blocks follow as `Pictures`."""
 
-    tags: tuple[Drawing, ...]  # one a piece, in the order they are cut, titled with its code
-    blocks: tuple[Drawing, ...]  # one a block, in the order of the plan's blocks
     summary: tuple[tuple[str, str], ...]  # (what, how much with its unit)
     chart: SpeedChart
     sheets: tuple[LabelSheet, ...]
+    tags: tuple[Drawing, ...] = ()  # one a piece, in the order they are cut, titled with its code
+    blocks: tuple[Drawing, ...] = ()  # one a block, in the order of the plan's blocks
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -29,15 +32,31 @@ class ShownPlan(Record):
     plan: Plan
     views: Views
 
+    def with_pictures(self, pictures: "Pictures") -> "ShownPlan":
+        """Return this with more pictures, behind those it has."""
+        tags, blocks = self.views.tags + pictures.tags, self.views.blocks + pictures.blocks
+        return replace(self, views=replace(self.views, tags=tags, blocks=blocks))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Pictures(Record):
+    """The next pictures of a plan that is shown already."""
+
+    tags: tuple[Drawing, ...] = ()
+    blocks: tuple[Drawing, ...] = ()
+
+
+Parts = Generator[ShownPlan | Pictures, None, None]
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class PlanRequest(Record):
-    """Read a job file and make its plan; gives a `ShownPlan`."""
+    """Read a job file and make its plan; tells a `ShownPlan` and then its `Pictures`, some at a time."""
 
     job_path: str
     settings: Settings = field(default_factory=Settings)
 
-    def run(self, progress: Progress) -> ShownPlan:
+    def run(self, progress: Progress) -> Parts:
         """Do it; raises CutblockError as `read_job` and `make_plan` do."""
         from cutblock.flow.chain import make_plan
         from cutblock.flow.jobfile import read_job
@@ -45,22 +64,22 @@ class PlanRequest(Record):
         progress(0.0, "Reading the job file")
         job = read_job(self.job_path)
         plan = make_plan(job, progress=part_of(progress, 0.0, 0.95), settings=self.settings)
-        return _shown(plan, part_of(progress, 0.95, 1.0))
+        yield from _show(plan, part_of(progress, 0.95, 1.0))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class OpenRequest(Record):
-    """Read a plan folder back; gives a `ShownPlan`."""
+    """Read a plan folder back; tells a `ShownPlan` and then its `Pictures`, some at a time."""
 
     folder: str
 
-    def run(self, progress: Progress) -> ShownPlan:
+    def run(self, progress: Progress) -> Parts:
         """Do it; raises CutblockError as `read_plan` does."""
         from cutblock.flow.folder import read_plan
 
         progress(0.0, "Reading the plan folder")
         plan = read_plan(self.folder)
-        return _shown(plan, part_of(progress, 0.5, 1.0))
+        yield from _show(plan, part_of(progress, 0.5, 1.0))
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -99,17 +118,21 @@ class TagsRequest(Record):
         return self.path
 
 
-def _shown(plan: Plan, progress: Progress) -> ShownPlan:
+def _show(plan: Plan, progress: Progress) -> Parts:
+    """Tell the plan first: its pictures take longer than all the rest that is shown."""
     from cutblock.catalog.load import label_sheets
     from cutblock.flow.views import block_drawings, speed_chart, summary, tag_drawings
 
-    progress(0.0, "Drawing tags and blocks")
-    views = Views(
-        tags=tag_drawings(plan),
-        blocks=block_drawings(plan),
-        summary=summary(plan),
-        chart=speed_chart(plan),
-        sheets=label_sheets(),
-    )
+    yield ShownPlan(plan=plan, views=Views(summary=summary(plan), chart=speed_chart(plan), sheets=label_sheets()))
+    progress(0.0, "Preparing the pictures of the blocks")
+    for few in batched(block_drawings(plan), BLOCKS_AT_ONCE):
+        yield Pictures(blocks=few)
+    progress(0.4, "Preparing the tags")
+    for few in batched(tag_drawings(plan), TAGS_AT_ONCE):
+        yield Pictures(tags=few)
     progress(1.0, "Done")
-    return ShownPlan(plan=plan, views=views)
+
+
+def batched(drawings: tuple[Drawing, ...], size: int) -> Iterator[tuple[Drawing, ...]]:
+    """Return the drawings in order, at most `size` at a time."""
+    return (drawings[start : start + size] for start in range(0, len(drawings), size))

@@ -1,8 +1,11 @@
 """A window with a worker that does what a test tells it to, and one with the real worker."""
 
+from types import SimpleNamespace
+
 import pytest
 from PySide6.QtWidgets import QApplication
 
+from cutblock.window import dialogs
 from cutblock.window.frame import MainWindow
 from cutblock.window.runner import Runner
 from cutblock.window.settings import WindowSettings
@@ -61,6 +64,20 @@ def settings_path(tmp_path):
 def theme(qapp):
     """One theme for all tests: it keeps the desktop's font as 100 %."""
     return Theme(QApplication.instance())
+
+
+@pytest.fixture(autouse=True)
+def unsaved(monkeypatch):
+    """Answers every question about a plan that is not saved, with DISCARD unless a test says otherwise."""
+    answers = []
+
+    def answer(parent, title):
+        answers.append(title)
+        return unsaved_answer[0]
+
+    unsaved_answer = [dialogs.Answer.DISCARD]
+    monkeypatch.setattr(dialogs, "ask_unsaved", answer)
+    return SimpleNamespace(asked=answers, answer=unsaved_answer)
 
 
 @pytest.fixture

@@ -18,7 +18,7 @@ from cutblock.window.workshop import WorkshopDesk
 def detailing(qtbot):
     desk = DetailingDesk()
     qtbot.addWidget(desk)
-    desk.show_plan(shown_of(grid_plan(2, 3, {"S-A03": None})))
+    fill(desk, shown_of(grid_plan(2, 3, {"S-A03": None})))
     return desk
 
 
@@ -26,7 +26,7 @@ def detailing(qtbot):
 def workshop(qtbot):
     desk = WorkshopDesk()
     qtbot.addWidget(desk)
-    desk.show_plan(sample_shown())
+    fill(desk, sample_shown())
     return desk
 
 
@@ -34,8 +34,14 @@ def workshop(qtbot):
 def estimating(qtbot):
     desk = EstimatingDesk()
     qtbot.addWidget(desk)
-    desk.show_plan(sample_shown())
+    fill(desk, sample_shown())
     return desk
+
+
+def fill(desk, shown):
+    """Show a plan in all its steps."""
+    for _ in desk.showing(shown):
+        pass
 
 
 def words(widget):
@@ -103,7 +109,7 @@ def test_sorting_the_pieces_keeps_each_with_its_own_tag(workshop):
 def test_pieces_are_listed_in_the_order_their_tags_are_printed(workshop):
     keys = [workshop.tags.rows.key_at(row) for row in range(workshop.tags.rows.rowCount())]
 
-    assert keys == ["SM-T-A01-U", "SM-T-A01-L", "SM-S1-A01-U", "SM-S1-A01-L"]
+    assert keys == ["SM-S1-A01-L", "SM-S1-A01-U", "SM-T-A01-L", "SM-T-A01-U"]
 
 
 def test_the_first_label_can_be_no_later_than_the_last_of_the_sheet(workshop):
@@ -118,12 +124,12 @@ def test_the_cut_list_follows_the_block_chosen(qtbot):
     second = replace(plan.blocks[0], id="SM-B02", cuts=plan.blocks[0].cuts[:3])
     desk = WorkshopDesk()
     qtbot.addWidget(desk)
-    desk.show_plan(shown_of(replace(plan, blocks=(*plan.blocks, second))))
-    assert desk.cuts.rows.rowCount() == 12
+    fill(desk, shown_of(replace(plan, blocks=(*plan.blocks, second))))
+    assert desk.cuts.rows.rowCount() == 12 + len({cut.setup for cut in plan.blocks[0].cuts})
 
     desk.cuts.block.setCurrentIndex(1)
 
-    assert desk.cuts.rows.rowCount() == 3
+    assert desk.cuts.rows.rowCount() == 3 + 1
     assert "2 of 2: 3 cuts in 1 set-up" in words(desk.cuts)
     assert desk.cuts.picture._drawing.title == "Block SM-B02"
 
@@ -151,7 +157,7 @@ def test_speeds_are_given_in_both_units_and_called_uncalibrated(workshop):
 def test_the_estimate_says_used_waste_blocks_and_the_least(estimating):
     found = words(estimating)
 
-    assert "Used 32.8 %, wasted 19.8 % of 2188 l bought in 1 block (at least 1)" in found
+    assert "Used 32.8 %, wasted 19.8 % of 2188 l bought in 1 block (no packing needs fewer than 1)" in found
     assert "Machine time" in found
     assert "1.30 h" in found
 
@@ -163,10 +169,10 @@ def test_a_finding_picked_is_told_in_full(qtbot):
     )
     desk = EstimatingDesk()
     qtbot.addWidget(desk)
-    desk.show_plan(sample_shown(findings=findings))
+    fill(desk, sample_shown(findings=findings))
 
     assert desk._finding_text.text() == "S-A02: over the tolerance by 1.3 mm"
-    assert "1 error, 0 warnings, 1 info" in words(desk)
+    assert "1 error, 0 warnings, 1 note" in words(desk)
     desk.finding_table.pick("0")
     assert desk._finding_text.text() == "S-A01: a note"
 
@@ -176,13 +182,13 @@ def test_a_plan_without_blocks_ledger_or_findings_is_shown_all_the_same(qtbot):
     for kind in (DetailingDesk, WorkshopDesk, EstimatingDesk):
         desk = kind()
         qtbot.addWidget(desk)
-        desk.show_plan(sample_shown())
-        desk.show_plan(shown)
+        fill(desk, sample_shown())
+        fill(desk, shown)
         desk.grab()
 
 
 def test_the_next_plan_replaces_every_row(estimating):
-    estimating.show_plan(sample_shown(findings=()))
+    fill(estimating, sample_shown(findings=()))
 
     assert estimating.findings.rowCount() == 0
     assert estimating._finding_text.text() == "Nothing to look at."

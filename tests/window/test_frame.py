@@ -1,6 +1,7 @@
 import gc
 import re
 import threading
+from dataclasses import replace
 
 import pytest
 from kit.shown import sample_shown
@@ -12,13 +13,19 @@ from cutblock.window import dialogs
 from cutblock.window.frame import MainWindow
 from cutblock.window.runner import Runner
 from cutblock.window.settings import WindowSettings
-from cutblock.worker.events import Cancelled, Failure, Progress, Result
+from cutblock.worker.events import Cancelled, Failure, Part, Progress, Result
 from cutblock.worker.process import Worker
-from cutblock.worker.requests import OpenRequest, PlanRequest, SaveRequest, TagsRequest
+from cutblock.worker.requests import OpenRequest, Pictures, PlanRequest, SaveRequest, ShownPlan, TagsRequest
 
 
 def finish(qtbot, window, worker, value):
-    """Let the worker give its result and wait until the window has taken it."""
+    """Let the worker give its result and wait until the window has taken it; a plan comes in parts."""
+    if isinstance(value, ShownPlan):
+        views = value.views
+        first = replace(value, views=replace(views, tags=(), blocks=()))
+        pictures = Pictures(tags=views.tags, blocks=views.blocks)
+        worker.events += [Part(ticket=1, value=first), Part(ticket=1, value=pictures)]
+        value = None
     worker.events.append(Result(ticket=1, value=value))
     qtbot.waitUntil(lambda: not worker.is_busy and not worker.events, timeout=2000)
     window.desks.finish()
@@ -52,9 +59,11 @@ def test_the_desk_in_front_is_filled_first_and_the_others_right_after(qtbot, win
     qtbot.waitUntil(lambda: window.desks.count() == 3, timeout=2000)
     window.desks.setCurrentIndex(2)
     window.show_plan(sample_shown())
-    assert window.desks.estimating.blocks.rowCount() == 1
+    assert "Machine time" in [found.text() for found in window.desks.estimating.findChildren(QLabel)]
     assert window.desks.detailing.rows.rowCount() == 0
 
+    qtbot.waitUntil(lambda: window.desks.estimating.blocks.rowCount() == 1, timeout=2000)
+    assert window.desks.detailing.rows.rowCount() == 0
     qtbot.waitUntil(lambda: window.desks.detailing.rows.rowCount() == 3, timeout=2000)
     qtbot.waitUntil(lambda: window.desks.workshop.tags.rows.rowCount() == 4, timeout=2000)
 
@@ -122,13 +131,14 @@ def test_undo_brings_back_the_plan_before_and_redo_the_later_one(qtbot, window, 
     plan_job(qtbot, window, worker, shown=second)
 
     window.undo_action.trigger()
-    assert window.shown is first
+    assert window.shown.plan is first.plan
+    assert window.shown.views.tags == first.views.tags
     window.undo_action.trigger()
     assert window.shown is None
     assert window.pages.currentWidget() is window.start_page
     window.redo_action.trigger()
     window.redo_action.trigger()
-    assert window.shown is second
+    assert window.shown.plan is second.plan
 
 
 def test_planning_again_after_undo_reads_the_job_of_the_plan_shown(qtbot, window, worker):
@@ -220,15 +230,17 @@ def drop(window, *paths):
     window.dropEvent(event)
 
 
-def test_a_dropped_job_file_is_planned(window, worker):
+def test_a_dropped_job_file_is_planned(qtbot, window, worker):
     drop(window, "/jobs/wall/job.toml")
 
+    qtbot.waitUntil(lambda: bool(worker.requests), timeout=2000)
     assert worker.requests == [PlanRequest(job_path="/jobs/wall/job.toml")]
 
 
 @pytest.mark.parametrize("paths", [("/a/picture.png",), ("/a/job.toml", "/b/job.toml")])
-def test_anything_else_dropped_is_left_alone(window, worker, paths):
+def test_anything_else_dropped_is_left_alone(qtbot, window, worker, paths):
     drop(window, *paths)
+    qtbot.wait(20)
 
     assert worker.requests == []
 

@@ -31,9 +31,10 @@ def test_every_table_has_a_cell_for_every_column():
         (rows.LEDGER_COLUMNS, rows.ledger_rows(ledger_parts(plan.ledger), plan.ledger)),
         (rows.FINDING_COLUMNS, rows.finding_rows(plan.findings)),
     )
-    for columns, found in tables:
+    for columns, generated in tables:
+        found = list(generated)
         assert found
-        assert all(len(row.cells) == len(columns) for row in found)
+        assert all(len(row.cells) == (1 if row.is_heading else len(columns)) for row in found)
 
 
 def test_a_panel_says_whether_it_is_within_by_letter_and_word():
@@ -47,10 +48,10 @@ def test_a_panel_says_whether_it_is_within_by_letter_and_word():
 
 
 def test_a_shared_cut_names_the_other_panel_and_both_duties():
-    first = texts(rows.panel_rows(sample_plan())[0])
+    first = texts(next(rows.panel_rows(sample_plan())))
 
     assert first[column(rows.PANEL_COLUMNS, "Shares")] == "S2-A01"
-    assert first[-2:] == ["mould", "mould of S2-A01"]
+    assert first[-2:] == ["mould of this panel", "mould of S2-A01"]
 
 
 def test_a_panel_in_strips_has_a_row_for_each():
@@ -60,18 +61,21 @@ def test_a_panel_in_strips_has_a_row_for_each():
         sweeps.append(replace(sweep, serving=(replace(sweep.serving[0], strip=strip, n_strips=2),)))
     plan = replace(sample_plan(), panels=(sample_panel("S-A01"),), sweeps=tuple(sweeps), pieces=())
 
-    found = rows.panel_rows(plan)
+    found = list(rows.panel_rows(plan))
 
     assert [texts(row)[0] for row in found] == ["S-A01, strip 1 of 2", "S-A01, strip 2 of 2"]
     assert [row.key for row in found] == ["S-A01 SM-S-A01.1", "S-A01 SM-S-A01.2"]
 
 
-def test_the_cut_list_gives_order_place_turn_and_speed():
+def test_the_cut_list_gives_order_place_and_speed_under_a_heading_for_each_set_up():
     plan = sample_plan()
     found = [texts(row) for row in rows.cut_rows(plan, plan.blocks[0])]
 
-    assert found[4] == ["5", "2", "turned 90°", "trim", "y = 13.8 mm", "159", "", "2470 × 1250 × 670", "15, 0, 15"]
-    assert found[10][3:7] == ["sweep", "SM-S1-A01", "159", "7.8"]
+    assert found[0] == ["Set-up 1: as laid, part 2500 × 1250 × 700 mm"]
+    assert found[5] == ["Set-up 2: turned 90°, part 2470 × 1250 × 670 mm"]
+    assert found[6] == ["5", "trim", "y = 13.8 mm", "159", "", "2470 × 1250 × 670", "15, 0, 15"]
+    assert ["sweep", "SM-S1-A01", "159", "7.8"] in [row[1:5] for row in found]
+    assert len([row for row in found if len(row) == 1]) == len({cut.setup for cut in plan.blocks[0].cuts})
 
 
 def test_a_block_says_how_much_of_it_is_used_and_what_is_left():
@@ -100,9 +104,9 @@ def test_findings_come_gravest_first_and_keep_their_number():
         for severity in (Severity.INFO, Severity.ERROR, Severity.WARNING)
     )
 
-    found = rows.finding_rows(findings)
+    found = list(rows.finding_rows(findings))
 
-    assert [texts(row)[0] for row in found] == ["Error", "Warning", "Info"]
+    assert [texts(row)[0] for row in found] == ["Error", "Warning", "Note"]
     assert [row.key for row in found] == ["1", "2", "0"]
 
 

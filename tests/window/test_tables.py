@@ -93,6 +93,7 @@ def test_a_square_keeps_its_colour_in_a_picked_row(model):
 def test_ten_thousand_rows_sort_and_filter_at_once():
     model = RowsModel(COLUMNS)
     model.show_rows([Row(f"P{n:05d}", (Cell(f"P{n:05d}"), Cell("1", key=float(-n)))) for n in range(10_000)])
+    model.complete()
 
     start = time.perf_counter()
     model.sort(1)

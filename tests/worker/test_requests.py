@@ -1,3 +1,5 @@
+from functools import reduce
+
 import numpy as np
 import pytest
 from kit.sample import sample_job, sample_plan
@@ -6,7 +8,15 @@ from cutblock.base.errors import Cancelled
 from cutblock.flow.views import SpeedChart
 from cutblock.records.drawing import Drawing
 from cutblock.records.plan import Settings
-from cutblock.worker.requests import OpenRequest, PlanRequest, SaveRequest, TagsRequest
+from cutblock.worker.requests import (
+    BLOCKS_AT_ONCE,
+    TAGS_AT_ONCE,
+    OpenRequest,
+    PlanRequest,
+    SaveRequest,
+    ShownPlan,
+    TagsRequest,
+)
 
 DRAWING = Drawing(width_mm=80.0, height_mm=60.0, marks=())
 CHART = SpeedChart(
@@ -39,11 +49,16 @@ def test_a_plan_request_reads_the_job_and_plans_it_with_the_given_settings(plan,
     )
     fractions = []
 
-    shown = PlanRequest(job_path="a/job.toml", settings=Settings(seed=5)).run(lambda f, text: fractions.append(f))
+    request = PlanRequest(job_path="a/job.toml", settings=Settings(seed=5))
+    first, *pictures = request.run(lambda f, text: fractions.append(f))
 
-    assert shown.plan is plan
+    assert first.plan is plan
+    assert first.views.tags == first.views.blocks == ()
+    shown = reduce(ShownPlan.with_pictures, pictures, first)
     assert seen == ["a/job.toml", Settings(seed=5)]
     assert len(shown.views.tags) == len(plan.pieces)
+    assert len(shown.views.blocks) == len(plan.blocks)
+    assert all(len(few.tags) <= TAGS_AT_ONCE and len(few.blocks) <= BLOCKS_AT_ONCE for few in pictures)
     assert fractions == sorted(fractions)
     assert fractions[-1] == 1.0
 
@@ -57,13 +72,13 @@ def test_a_cancel_in_the_progress_passes_through_a_plan_request(plan, monkeypatc
             raise Cancelled
 
     with pytest.raises(Cancelled):
-        PlanRequest(job_path="a/job.toml").run(stop)
+        list(PlanRequest(job_path="a/job.toml").run(stop))
 
 
 def test_an_open_request_gives_the_plan_of_the_folder(plan, monkeypatch):
     monkeypatch.setattr("cutblock.flow.folder.read_plan", lambda folder: plan if folder == "here" else None)
 
-    assert OpenRequest(folder="here").run(lambda f, text: None).plan is plan
+    assert next(OpenRequest(folder="here").run(lambda f, text: None)).plan is plan
 
 
 def test_a_save_request_writes_the_plan_and_gives_the_folder(plan, monkeypatch):
