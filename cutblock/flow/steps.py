@@ -7,7 +7,7 @@ the hours come after the packing, because the set-ups do.
 from dataclasses import replace
 
 from cutblock.base.errors import NotCuttable
-from cutblock.base.progress import Progress
+from cutblock.base.progress import Progress, part_of
 from cutblock.records.plan import Finding, Plan
 from cutblock.records.words import Severity
 
@@ -48,11 +48,15 @@ def pair(plan: Plan, progress: Progress) -> Plan:
 
 
 def set_speeds(plan: Plan, progress: Progress) -> Plan:
-    """Settle the speed along every sweep and the kerf at both ends that follows."""
+    """Settle the speed along every sweep and the kerf at both ends that follows, and fit the sweeps for that kerf."""
     from cutblock.schedule.times import time_sweeps
+    from cutblock.sweeps.kerf_pass import refit_for_kerf
 
-    sweeps, timings, findings = time_sweeps(plan.sweeps, plan.conditions, plan.machine, progress)
-    return _with(plan, findings, sweeps=sweeps, timings=timings)
+    timed, timings, findings = time_sweeps(plan.sweeps, plan.conditions, plan.machine, part_of(progress, 0.0, 0.4))
+    sweeps, notes = refit_for_kerf(plan.job, plan.panels, timed, plan.conditions, part_of(progress, 0.4, 0.6))
+    if any(old is not new for old, new in zip(timed, sweeps, strict=True)):
+        sweeps, timings, findings = time_sweeps(sweeps, plan.conditions, plan.machine, part_of(progress, 0.6, 1.0))
+    return _with(plan, findings + notes, sweeps=sweeps, timings=timings)
 
 
 def compare(plan: Plan, progress: Progress) -> Plan:
