@@ -10,7 +10,7 @@ from cutblock.records.plan import Plan
 from cutblock.records.record import Record
 from cutblock.reports.summary import summary_lines
 
-__all__ = ["SpeedChart", "block_drawings", "speed_chart", "summary", "tag_drawings", "tags_pdf"]
+__all__ = ["LABEL_SHEET", "SpeedChart", "block_drawings", "speed_chart", "summary", "tag_drawings", "tags_pdf"]
 
 _LIGHTEST_KG_M3, _HEAVIEST_KG_M3 = 10.0, 40.0
 

@@ -20,10 +20,12 @@ class Desks(QTabWidget):
 
     Signals:
         export_asked(): The tags shall be written as PDF.
+        sheet_chosen(str): The tags shall be laid out for another label sheet.
         filled(): Everything of the plan is shown, but pictures still to come.
     """
 
     export_asked = Signal()
+    sheet_chosen = Signal(str)
     filled = Signal()
     TITLES: ClassVar = ("Detailing", "Workshop", "Estimating")
 
@@ -66,6 +68,16 @@ class Desks(QTabWidget):
         self.workshop.add_pictures(shown, pictures)
         self.estimating.add_pictures(shown)
 
+    def show_busy(self, is_busy: bool) -> None:
+        """Let nothing be asked for while something runs."""
+        if self.count() == len(self.TITLES):
+            self.workshop.tags.show_busy(is_busy)
+
+    @property
+    def chosen_sheet(self) -> str:
+        """The label sheet the user chose, empty for the usual one."""
+        return self.workshop.tags.chosen_sheet if self.count() == len(self.TITLES) else ""
+
     @property
     def is_filled(self) -> bool:
         """Whether everything is shown."""
@@ -99,6 +111,7 @@ class Desks(QTabWidget):
 
             self.workshop = WorkshopDesk()
             self.workshop.export_asked.connect(self.export_asked)
+            self.workshop.sheet_chosen.connect(self.sheet_chosen)
             self.addTab(self.workshop, title)
         else:
             from cutblock.window.estimating import EstimatingDesk

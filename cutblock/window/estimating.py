@@ -65,7 +65,7 @@ class EstimatingDesk(QWidget):
         left.addWidget(titled("Summary", self._summary_area()))
         left.addWidget(titled("Blocks", self.block_table))
         left.addWidget(self.picture)
-        left.setSizes([230, 160, 340])
+        left.setSizes([250, 140, 340])
         right = QSplitter(Qt.Orientation.Vertical)
         right.addWidget(titled("Foam account", self._account()))
         right.addWidget(titled("Findings", self._finding_area()))
@@ -157,7 +157,7 @@ class EstimatingDesk(QWidget):
         self._words.setText(
             f"Used {ledger.used_percent:.1f} %, wasted {ledger.waste_percent:.1f} % "
             f"of {litres(ledger.bought_mm3):.0f} l bought in {counted(ledger.n_blocks, 'block')} "
-            f"(no packing needs fewer than {ledger.n_blocks_bound})"
+            f"(at least {ledger.n_blocks_bound} needed)"
         )
 
     def _summary_area(self) -> QScrollArea:

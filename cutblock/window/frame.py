@@ -13,6 +13,7 @@ from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKe
 from PySide6.QtWidgets import QMainWindow, QStackedWidget
 
 from cutblock.window import dialogs
+from cutblock.window.appearance import Appearance
 from cutblock.window.desks import Desks
 from cutblock.window.failures import FailureDialog
 from cutblock.window.history import Entry, ShowCommand
@@ -22,7 +23,7 @@ from cutblock.window.runner import Runner
 from cutblock.window.settings import WindowSettings
 from cutblock.window.start_page import StartPage
 from cutblock.window.status_line import StatusLine
-from cutblock.window.theme import ZOOMS, Theme
+from cutblock.window.theme import Theme
 from cutblock.worker.child import Request
 from cutblock.worker.events import Failure
 
@@ -42,10 +43,9 @@ class MainWindow(QMainWindow):
     def __init__(self, runner: Runner, settings: WindowSettings, theme: Theme) -> None:
         super().__init__()
         # Before any other widget is made: those made earlier would keep the size of text from before.
-        theme.apply(settings.theme, settings.zoom)
+        self._appearance = Appearance(settings, theme, self)
         self._runner = runner
         self._settings = settings
-        self._theme = theme
         self._entry = Entry()
         self._job_path: str | None = None  # the one asked for last, planned or not
         self._receiving: Entry | None = None  # the one whose pictures are on their way
@@ -93,7 +93,7 @@ class MainWindow(QMainWindow):
         self._job_path = path
         self._takes_saved = False
         self.start_page.show_state(f"Planning {PurePath(path).parent.name}/{PurePath(path).name}")
-        self._run(PlanRequest(job_path=path), "Reading the job file", self._take_planned)
+        self._run(PlanRequest(job_path=path, sheet=self.desks.chosen_sheet), "Reading the job file", self._take_planned)
 
     def open_folder(self, folder: str) -> None:
         """Show the plan of a plan folder; does nothing while something else runs."""
@@ -102,7 +102,9 @@ class MainWindow(QMainWindow):
         if not self._runner.is_busy:
             self._job_path = None
             self._takes_saved = True
-            self._run(OpenRequest(folder=folder), "Reading the plan folder", self._take_planned)
+            self._run(
+                OpenRequest(folder=folder, sheet=self.desks.chosen_sheet), "Reading the plan folder", self._take_planned
+            )
 
     def save(self, folder: str) -> None:
         """Write the plan folder."""
@@ -122,6 +124,16 @@ class MainWindow(QMainWindow):
         tags = self.desks.workshop.tags
         request = TagsRequest(plan=self.shown.plan, sheet=tags.sheet_name, start=tags.start.value(), path=path)
         self._run(request, "Drawing the tags", self._take_tags)
+
+    @Slot(str)
+    def _lay_tags_out(self, sheet: str) -> None:
+        """Prepare the tags for another label sheet; the preview must be what is printed."""
+        from cutblock.worker.requests import LayOutRequest
+
+        if self.shown is not None and not self._runner.is_busy:
+            self._receiving = self._entry
+            request = LayOutRequest(plan=self.shown.plan, sheet=sheet)
+            self._run(request, "Preparing the tags", self._take_tags_laid_out)
 
     def show_plan(self, shown: "ShownPlan") -> None:
         """Show a plan; the one before it comes back with Undo."""
@@ -187,6 +199,7 @@ class MainWindow(QMainWindow):
         self.start_page.open_asked.connect(self._ask_job)
         self.start_page.job_picked.connect(self._open_picked)
         self.desks.export_asked.connect(self._ask_tags)
+        self.desks.sheet_chosen.connect(self._lay_tags_out)
         menus.recent.triggered.connect(self._open_recent)
         pairs = (
             (menus.open, self._ask_job),
@@ -196,9 +209,9 @@ class MainWindow(QMainWindow):
             (menus.tags, self._ask_tags),
             (menus.quit, self.close),
             (menus.cancel, self._cancel),
-            (menus.larger, self._zoom_in),
-            (menus.smaller, self._zoom_out),
-            (menus.usual, self._zoom_usual),
+            (menus.larger, self._appearance.zoom_in),
+            (menus.smaller, self._appearance.zoom_out),
+            (menus.usual, self._appearance.zoom_usual),
             (menus.cautions, self._show_cautions),
             (menus.about, self._show_about),
         )
@@ -207,7 +220,7 @@ class MainWindow(QMainWindow):
         for action in menus.desks:
             action.triggered.connect(self._show_desk)
         for action in menus.themes.values():
-            action.triggered.connect(self._set_theme)
+            action.triggered.connect(self._appearance.set_theme)
 
     def _run(self, request: Request, text: str, after: Callable[[object], None]) -> None:
         self._after = after
@@ -262,6 +275,10 @@ class MainWindow(QMainWindow):
         if not self._runner.is_busy and self._may_leave(then):
             then()
 
+    def _take_tags_laid_out(self, value: object) -> None:
+        self._receiving = None
+        self.status.rest("Tags laid out for the label sheet chosen")
+
     def _take_tags(self, value: object) -> None:
         self.status.rest(f"Tags written to {value}")
 
@@ -290,7 +307,8 @@ class MainWindow(QMainWindow):
         is_busy = self._runner.is_busy
         has_plan = self.shown is not None
         self.menus.show_state(has_plan=has_plan, has_job=self._job_path is not None, is_busy=is_busy)
-        self.start_page.setEnabled(not is_busy)
+        self.start_page.show_busy(is_busy)
+        self.desks.show_busy(is_busy)
 
     @Slot()
     def _cancel(self) -> None:
@@ -345,41 +363,12 @@ class MainWindow(QMainWindow):
         self.desks.setCurrentIndex(self.menus.desks.index(sender))
 
     @Slot()
-    def _set_theme(self) -> None:
-        sender = self.sender()
-        assert isinstance(sender, QAction)
-        self._settings.theme = str(sender.data())
-        self._apply_theme()
-
-    @Slot()
-    def _zoom_in(self) -> None:
-        self._set_zoom(1)
-
-    @Slot()
-    def _zoom_out(self) -> None:
-        self._set_zoom(-1)
-
-    @Slot()
-    def _zoom_usual(self) -> None:
-        self._settings.zoom = 1.0
-        self._apply_theme()
-
-    @Slot()
     def _show_cautions(self) -> None:
         dialogs.cautions_box(self).open()
 
     @Slot()
     def _show_about(self) -> None:
         dialogs.about_box(self).open()
-
-    def _set_zoom(self, step: int) -> None:
-        at = ZOOMS.index(self._settings.zoom) + step
-        if 0 <= at < len(ZOOMS):
-            self._settings.zoom = ZOOMS[at]
-            self._apply_theme()
-
-    def _apply_theme(self) -> None:
-        self._theme.apply(self._settings.theme, self._settings.zoom)
 
     def _show_recent(self) -> None:
         self.menus.show_recent(self._settings.recent)

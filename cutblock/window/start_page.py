@@ -77,6 +77,14 @@ class StartPage(QWidget):
             button.clicked.connect(self._pick)
             self._recent.addWidget(button)
 
+    def show_busy(self, is_busy: bool) -> None:
+        """Let nothing be opened while something runs."""
+        self.open.setEnabled(not is_busy)
+        for number in range(self._recent.count()):
+            item = self._recent.itemAt(number)
+            if item is not None and (widget := item.widget()) is not None:
+                widget.setEnabled(not is_busy)
+
     def show_state(self, text: str) -> None:
         """Say what is going on."""
         self._state.setText(text)

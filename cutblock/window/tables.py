@@ -27,7 +27,7 @@ NOWHERE = QModelIndex()
 
 ROWS_AT_ONCE = 200  # taken in one turn of the event loop; the rest follows in the next turns
 _TEXTS_MEASURED = 3  # the longest of a column; measuring thousands takes most of a second
-_CELL_PADDING_PX = 18
+_CELL_PADDING_PX = 26
 _WIDEST_PX = 420
 _SQUARE_PX = 14
 _SQUARE_EDGE = "#808080"  # seen on a dark and on a light ground
@@ -268,7 +268,7 @@ class RowsView(QTableView):
     def fit_columns(self) -> None:
         """Make every column as wide as its text, within reason."""
         metrics, header = self.fontMetrics(), self.horizontalHeader()
-        for column in range(self._rows_model.columnCount()):
+        for column in range(self._rows_model.columnCount() - 1):  # the last takes what is left
             texts = self._rows_model.longest_texts(column)
             wanted = max((metrics.horizontalAdvance(text) for text in texts), default=0) + _CELL_PADDING_PX
             if self._rows_model.has_squares(column):

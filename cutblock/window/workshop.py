@@ -35,9 +35,11 @@ class WorkshopDesk(QWidget):
 
     Signals:
         export_asked(): The tags shall be written as PDF; `sheet` and `start` say how.
+        sheet_chosen(str): The tags shall be laid out for another label sheet.
     """
 
     export_asked = Signal()
+    sheet_chosen = Signal(str)
 
     def __init__(self, parent: QWidget | None = None) -> None:
         super().__init__(parent)
@@ -71,6 +73,7 @@ class WorkshopDesk(QWidget):
         layout.addWidget(self.pages, 1)
         layout.addWidget(strip)
         self.tags.export_asked.connect(self.export_asked)
+        self.tags.sheet_chosen.connect(self.sheet_chosen)
 
     def showing(self, shown: ShownPlan) -> Iterator[None]:
         """Replace everything by this plan, one part in each step."""
@@ -180,15 +183,18 @@ class TagsPage(QWidget):
 
     Signals:
         export_asked(): The tags shall be written as PDF.
+        sheet_chosen(str): The tags shall be laid out for another label sheet.
     """
 
     export_asked = Signal()
+    sheet_chosen = Signal(str)
 
     def __init__(self, parent: QWidget | None = None) -> None:
         super().__init__(parent)
         self._shown: ShownPlan | None = None
         self._tags: dict[str, Drawing] = {}  # by code
         self._codes: dict[str, str] = {}  # by piece
+        self.chosen_sheet = ""  # the label sheet the user chose, empty for the usual one
         self.rows = RowsModel(PIECE_COLUMNS)
         self.table = RowsView(self.rows, "Pieces")
         self.filter = filter_field("Find a piece, or scan its tag", self.rows, self)
@@ -224,7 +230,7 @@ class TagsPage(QWidget):
         layout = QVBoxLayout(self)
         layout.addWidget(split)
         self.table.picked.connect(self._show_tag)
-        self.sheet.currentIndexChanged.connect(self._set_most_labels)
+        self.sheet.currentIndexChanged.connect(self._choose_sheet)
         self.export.clicked.connect(self.export_asked)
 
     def showing(self, shown: ShownPlan) -> Iterator[None]:
@@ -232,11 +238,13 @@ class TagsPage(QWidget):
         self._shown = shown
         self._codes = {piece.id: piece.code for piece in shown.plan.pieces}
         self._tags = {tag.title: tag for tag in shown.views.tags}
-        chosen = self.sheet.currentData()
+        self.sheet.blockSignals(True)
         self.sheet.clear()
         for sheet in shown.views.sheets:
             self.sheet.addItem(sheet.title, sheet.name)
-        self.sheet.setCurrentIndex(max(self.sheet.findData(chosen), 0))
+        self.sheet.setCurrentIndex(max(self.sheet.findData(shown.views.sheet), 0))
+        self.sheet.blockSignals(False)
+        self._set_most_labels(self.sheet.currentIndex())
         yield
         self.rows.show_rows(piece_rows(pieces_as_cut(shown.plan)))
         yield
@@ -250,6 +258,11 @@ class TagsPage(QWidget):
         self._tags |= {tag.title: tag for tag in tags}
         if tags:
             self._show_tag(self.table.picked_key)
+
+    def show_busy(self, is_busy: bool) -> None:
+        """Let no tags be asked for while something runs."""
+        self.sheet.setEnabled(not is_busy)
+        self.export.setEnabled(not is_busy)
 
     def go_to(self, subject: str) -> bool:
         """Pick the piece called `subject`; tell whether there is one."""
@@ -269,6 +282,12 @@ class TagsPage(QWidget):
         self.picture.show_drawing(self._tags.get(self._codes.get(piece, "")), PREPARING if piece else "")
 
     @Slot(int)
+    def _choose_sheet(self, number: int) -> None:
+        self._set_most_labels(number)
+        if self._shown is not None and self.sheet_name:
+            self.chosen_sheet = self.sheet_name
+            self.sheet_chosen.emit(self.sheet_name)
+
     def _set_most_labels(self, number: int) -> None:
         if self._shown is not None and 0 <= number < len(self._shown.views.sheets):
             sheet = self._shown.views.sheets[number]

@@ -21,6 +21,7 @@ class Views(Record):
     summary: tuple[tuple[str, str], ...]  # (what, how much with its unit)
     chart: SpeedChart
     sheets: tuple[LabelSheet, ...]
+    sheet: str  # name of the one the tags are laid out for
     tags: tuple[Drawing, ...] = ()  # one a piece, in the order they are cut, titled with its code
     blocks: tuple[Drawing, ...] = ()  # one a block, in the order of the plan's blocks
 
@@ -34,16 +35,20 @@ class ShownPlan(Record):
 
     def with_pictures(self, pictures: "Pictures") -> "ShownPlan":
         """Return this with more pictures, behind those it has."""
-        tags, blocks = self.views.tags + pictures.tags, self.views.blocks + pictures.blocks
-        return replace(self, views=replace(self.views, tags=tags, blocks=blocks))
+        views = self.views
+        tags = pictures.tags if pictures.sheet != views.sheet else views.tags + pictures.tags
+        if pictures.tags:
+            views = replace(views, tags=tags, sheet=pictures.sheet)
+        return replace(self, views=replace(views, blocks=views.blocks + pictures.blocks))
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Pictures(Record):
-    """The next pictures of a plan that is shown already."""
+    """The next pictures of a plan that is shown already; a tag takes the place of the one with the same title."""
 
     tags: tuple[Drawing, ...] = ()
     blocks: tuple[Drawing, ...] = ()
+    sheet: str = ""  # name of the label sheet the tags are laid out for
 
 
 Parts = Generator[ShownPlan | Pictures, None, None]
@@ -55,6 +60,7 @@ class PlanRequest(Record):
 
     job_path: str
     settings: Settings = field(default_factory=Settings)
+    sheet: str = ""  # name of the label sheet to lay the tags out for; empty for the usual one
 
     def run(self, progress: Progress) -> Parts:
         """Do it; raises CutblockError as `read_job` and `make_plan` do."""
@@ -64,7 +70,7 @@ class PlanRequest(Record):
         progress(0.0, "Reading the job file")
         job = read_job(self.job_path)
         plan = make_plan(job, progress=part_of(progress, 0.0, 0.95), settings=self.settings)
-        yield from _show(plan, part_of(progress, 0.95, 1.0))
+        yield from _show(plan, self.sheet, part_of(progress, 0.95, 1.0))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -72,6 +78,7 @@ class OpenRequest(Record):
     """Read a plan folder back; tells a `ShownPlan` and then its `Pictures`, some at a time."""
 
     folder: str
+    sheet: str = ""  # name of the label sheet to lay the tags out for; empty for the usual one
 
     def run(self, progress: Progress) -> Parts:
         """Do it; raises CutblockError as `read_plan` does."""
@@ -79,7 +86,20 @@ class OpenRequest(Record):
 
         progress(0.0, "Reading the plan folder")
         plan = read_plan(self.folder)
-        yield from _show(plan, part_of(progress, 0.5, 1.0))
+        yield from _show(plan, self.sheet, part_of(progress, 0.5, 1.0))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class LayOutRequest(Record):
+    """Lay the tags of a plan out for another label sheet; tells them as `Pictures`, some at a time."""
+
+    plan: Plan
+    sheet: str  # name of a label sheet of the catalogue
+
+    def run(self, progress: Progress) -> Parts:
+        """Do it."""
+        progress(0.0, "Preparing the tags")
+        yield from _lay_out(self.plan, self.sheet)
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -118,19 +138,29 @@ class TagsRequest(Record):
         return self.path
 
 
-def _show(plan: Plan, progress: Progress) -> Parts:
+def _show(plan: Plan, sheet: str, progress: Progress) -> Parts:
     """Tell the plan first: its pictures take longer than all the rest that is shown."""
     from cutblock.catalog.load import label_sheets
-    from cutblock.flow.views import block_drawings, speed_chart, summary, tag_drawings
+    from cutblock.flow.views import LABEL_SHEET, block_drawings, speed_chart, summary
 
-    yield ShownPlan(plan=plan, views=Views(summary=summary(plan), chart=speed_chart(plan), sheets=label_sheets()))
+    sheet = sheet or LABEL_SHEET
+
+    yield ShownPlan(
+        plan=plan, views=Views(summary=summary(plan), chart=speed_chart(plan), sheets=label_sheets(), sheet=sheet)
+    )
     progress(0.0, "Preparing the pictures of the blocks")
     for few in batched(block_drawings(plan), BLOCKS_AT_ONCE):
         yield Pictures(blocks=few)
     progress(0.4, "Preparing the tags")
-    for few in batched(tag_drawings(plan), TAGS_AT_ONCE):
-        yield Pictures(tags=few)
+    yield from _lay_out(plan, sheet)
     progress(1.0, "Done")
+
+
+def _lay_out(plan: Plan, sheet: str) -> Parts:
+    from cutblock.flow.views import tag_drawings
+
+    for few in batched(tag_drawings(plan, sheet), TAGS_AT_ONCE):
+        yield Pictures(tags=few, sheet=sheet)
 
 
 def batched(drawings: tuple[Drawing, ...], size: int) -> Iterator[tuple[Drawing, ...]]:

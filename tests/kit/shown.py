@@ -37,6 +37,7 @@ def shown_of(plan):
         blocks=tuple(_block(block) for block in plan.blocks),
         summary=(("Blocks", "1 (at least 1)"), ("Machine time", "1.30 h")),
         chart=sample_chart(),
+        sheet="a4-2x4",
         sheets=(sample_sheet("a4-2x4", 2, 4), sample_sheet("a4-3x8", 3, 8)),
     )
     return ShownPlan(plan=plan, views=views)

@@ -11,6 +11,7 @@ from cutblock.records.words import Severity
 from cutblock.window.cautions import CUTTING_CAUTIONS, DEFERENCE
 from cutblock.window.detailing import DetailingDesk
 from cutblock.window.estimating import EstimatingDesk
+from cutblock.window.tables import ROWS_AT_ONCE, RowsModel
 from cutblock.window.workshop import WorkshopDesk
 
 
@@ -157,7 +158,7 @@ def test_speeds_are_given_in_both_units_and_called_uncalibrated(workshop):
 def test_the_estimate_says_used_waste_blocks_and_the_least(estimating):
     found = words(estimating)
 
-    assert "Used 32.8 %, wasted 19.8 % of 2188 l bought in 1 block (no packing needs fewer than 1)" in found
+    assert "Used 32.8 %, wasted 19.8 % of 2188 l bought in 1 block (at least 1 needed)" in found
     assert "Machine time" in found
     assert "1.30 h" in found
 
@@ -192,3 +193,58 @@ def test_the_next_plan_replaces_every_row(estimating):
 
     assert estimating.findings.rowCount() == 0
     assert estimating._finding_text.text() == "Nothing to look at."
+
+
+@pytest.mark.parametrize(
+    ("subject", "desk", "page"), [("S2-A01", 0, 0), ("SM-T-A01", 0, 0), ("SM-T-A01-U", 1, 1), ("SM-B01", 1, 0)]
+)
+def test_a_finding_leads_to_its_panel_sweep_piece_or_block(qtbot, window, subject, desk, page):
+    window.show_plan(sample_shown(findings=(Finding(severity=Severity.INFO, code="a", subject=subject, text="look"),)))
+    window.desks.finish()
+    window.desks.setCurrentIndex(2)
+    assert window.desks.estimating.show_place.isEnabled()
+
+    window.desks.estimating.show_place.click()
+
+    assert window.desks.currentIndex() == desk
+    assert window.desks.workshop.pages.currentIndex() == page
+
+
+def test_a_finding_about_the_whole_job_leads_nowhere(estimating):
+    fill(estimating, sample_shown(findings=(Finding(severity=Severity.INFO, code="a", subject="SM", text="look"),)))
+
+    assert not estimating.show_place.isEnabled()
+
+
+def test_the_speed_for_the_block_stands_above_its_cuts(workshop):
+    found = words(workshop.cuts)
+
+    assert "Wire speed 159 mm/min; keep between 92 and 218 mm/min" in found
+    assert "20.0 kg/m³" in found
+    assert "±50 %" in found
+
+
+def test_a_plan_of_a_thousand_panels_is_shown_in_small_pieces(qtbot, window, monkeypatch):
+    taken = []
+    monkeypatch.setattr(RowsModel, "_arranged", counting(RowsModel._arranged, taken, lambda model: len(model._all)))
+    monkeypatch.setattr(RowsModel, "take_more", counting(RowsModel.take_more, taken, lambda model: ROWS_AT_ONCE))
+    shown = shown_of(grid_plan(25, 40, {}))
+    window.show_plan(shown)
+    desks = window.desks
+    assert not desks.is_filled
+    qtbot.waitUntil(lambda: desks.is_filled and desks.workshop.tags.rows.rowCount() == 2000, timeout=5000)
+    qtbot.waitUntil(lambda: desks.detailing.rows.rowCount() == 1000, timeout=5000)
+
+    assert max(taken) <= ROWS_AT_ONCE
+    assert desks.detailing.rows.key_at(999).startswith("S-Y40 ")
+
+
+def counting(method, taken, count):
+    """Note how many rows a method had in hand."""
+
+    def counted(model, *arguments):
+        result = method(model, *arguments)
+        taken.append(count(model))
+        return result
+
+    return counted

@@ -10,6 +10,7 @@ from PySide6.QtGui import QAccessible, QAction, QDropEvent, QShortcut
 from PySide6.QtWidgets import QApplication, QLabel, QPushButton, QTabWidget, QWidget
 
 from cutblock.window import dialogs
+from cutblock.window.drawing_view import PREPARING
 from cutblock.window.frame import MainWindow
 from cutblock.window.runner import Runner
 from cutblock.window.settings import WindowSettings
@@ -23,7 +24,7 @@ def finish(qtbot, window, worker, value):
     if isinstance(value, ShownPlan):
         views = value.views
         first = replace(value, views=replace(views, tags=(), blocks=()))
-        pictures = Pictures(tags=views.tags, blocks=views.blocks)
+        pictures = Pictures(tags=views.tags, blocks=views.blocks, sheet=views.sheet)
         worker.events += [Part(ticket=1, value=first), Part(ticket=1, value=pictures)]
         value = None
     worker.events.append(Result(ticket=1, value=value))
@@ -202,6 +203,13 @@ def test_tags_are_exported_on_the_sheet_and_from_the_label_chosen(qtbot, window,
     monkeypatch.setattr(dialogs, "ask_pdf", lambda parent, path: "/out/tags.pdf")
     tags = window.desks.workshop.tags
     tags.sheet.setCurrentIndex(1)
+    assert worker.requests[-1].sheet == "a4-3x8"
+    assert not tags.export.isEnabled()
+    laid_out = tuple(replace(tag, width_mm=70.0) for tag in window.shown.views.tags)
+    worker.events.append(Part(ticket=2, value=Pictures(tags=laid_out, sheet="a4-3x8")))
+    finish(qtbot, window, worker, None)
+    assert tags.picture._drawing.width_mm == 70.0
+    assert window.shown.views.tags == laid_out
     tags.start.setValue(5)
 
     tags.export.click()
@@ -220,6 +228,94 @@ def test_a_plan_folder_is_opened(qtbot, window, worker, monkeypatch):
     assert worker.requests == [OpenRequest(folder="/out/SM-plan")]
     assert window.shown is not None
     assert not window.menus.again.isEnabled()
+
+
+def test_a_plan_read_from_a_folder_counts_as_saved(qtbot, window, worker):
+    window.open_folder("/out/SM-plan")
+    finish(qtbot, window, worker, sample_shown())
+
+    assert not window.isWindowModified()
+    assert window.close()
+
+
+def test_the_plan_is_shown_before_its_pictures_and_the_status_says_so(qtbot, window, worker):
+    shown = sample_shown()
+    window.open_job("/jobs/wall/job.toml")
+    worker.events.append(Part(ticket=1, value=replace(shown, views=replace(shown.views, tags=(), blocks=()))))
+    qtbot.waitUntil(lambda: window.shown is not None, timeout=2000)
+    window.desks.finish()
+
+    assert window.status.text.text() == "Preparing pictures and tags"
+    assert window.desks.workshop.tags.picture.accessibleDescription() == PREPARING
+    assert window.desks.estimating.picture.accessibleDescription() == PREPARING
+
+    worker.events.append(Part(ticket=1, value=Pictures(blocks=shown.views.blocks)))
+    finish(qtbot, window, worker, None)
+
+    assert window.desks.estimating.picture._drawing is shown.views.blocks[0]
+    assert window.status.text.text() == "Planned: 3 panels, 2 sweeps, 1 block"
+
+
+def test_pictures_of_a_plan_taken_back_meanwhile_go_to_that_plan(qtbot, window, worker):
+    shown = sample_shown()
+    window.open_job("/jobs/wall/job.toml")
+    worker.events.append(Part(ticket=1, value=replace(shown, views=replace(shown.views, tags=(), blocks=()))))
+    qtbot.waitUntil(lambda: window.shown is not None, timeout=2000)
+    window.undo_action.trigger()
+    worker.events.append(Part(ticket=1, value=Pictures(blocks=shown.views.blocks)))
+    finish(qtbot, window, worker, None)
+    assert window.shown is None
+
+    window.redo_action.trigger()
+
+    assert window.shown.views.blocks == shown.views.blocks
+
+
+@pytest.mark.parametrize("answer", list(dialogs.Answer))
+def test_opening_another_job_asks_about_a_plan_not_saved(qtbot, window, worker, unsaved, monkeypatch, answer):
+    plan_job(qtbot, window, worker)
+    unsaved.answer[0] = answer
+    monkeypatch.setattr(dialogs, "ask_job", lambda parent, folder: "/jobs/b/job.toml")
+    monkeypatch.setattr(dialogs, "ask_new_folder", lambda parent, suggested: "/out/SM-plan")
+
+    window.menus.open.trigger()
+
+    assert unsaved.asked == ["Sample wall"]
+    wanted = PlanRequest(job_path="/jobs/b/job.toml")
+    if answer is dialogs.Answer.SAVE:
+        assert isinstance(worker.requests[-1], SaveRequest)
+        worker.events.append(Result(ticket=2, value="/out/SM-plan"))
+        qtbot.waitUntil(lambda: worker.requests[-1] == wanted, timeout=2000)
+    assert (worker.requests[-1] == wanted) == (answer is not dialogs.Answer.CANCEL)
+
+
+@pytest.mark.parametrize("answer", list(dialogs.Answer))
+def test_closing_asks_about_a_plan_not_saved(qtbot, window, worker, unsaved, monkeypatch, answer):
+    plan_job(qtbot, window, worker)
+    unsaved.answer[0] = answer
+    monkeypatch.setattr(dialogs, "ask_new_folder", lambda parent, suggested: "/out/SM-plan")
+
+    assert window.close() == (answer is dialogs.Answer.DISCARD)
+
+    if answer is dialogs.Answer.SAVE:
+        finish(qtbot, window, worker, "/out/SM-plan")
+        qtbot.waitUntil(lambda: worker.is_closed, timeout=2000)
+    assert unsaved.asked == ["Sample wall"]
+    unsaved.answer[0] = dialogs.Answer.DISCARD
+
+
+def test_a_plan_that_could_not_be_saved_is_not_left(qtbot, window, worker, unsaved, monkeypatch):
+    plan_job(qtbot, window, worker)
+    unsaved.answer[0] = dialogs.Answer.SAVE
+    monkeypatch.setattr(dialogs, "ask_new_folder", lambda parent, suggested: "/out/SM-plan")
+    window.close()
+    worker.events.append(Failure(ticket=2, message="cannot be written"))
+    qtbot.waitUntil(window.failure_dialog.isVisible, timeout=2000)
+    window.failure_dialog.close()
+
+    assert window.isVisible()
+    assert window.isWindowModified()
+    unsaved.answer[0] = dialogs.Answer.DISCARD
 
 
 def drop(window, *paths):

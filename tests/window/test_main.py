@@ -58,11 +58,15 @@ from cutblock.window import frame, main
 opened = []
 frame.MainWindow.open_job = lambda window, path: opened.append(path)
 application = QApplication([])
+waited = []
 def look():
+    waited.append(1)
+    if not opened and len(waited) < 100:
+        return QTimer.singleShot(100, look)
     window = application.topLevelWidgets()
     print(opened, [w.windowTitle() for w in window if isinstance(w, frame.MainWindow) and w.isVisible()])
     next(w for w in window if isinstance(w, frame.MainWindow)).close()
-QTimer.singleShot(1500, look)
+QTimer.singleShot(100, look)
 print("exit", main.open_window("job.toml", {str(tmp_path / "w.ini")!r}))
 """
     done = run_python(code)

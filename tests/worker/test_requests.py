@@ -33,7 +33,7 @@ CHART = SpeedChart(
 def plan(monkeypatch):
     """Give a plan whose views are small stand-ins: what the rooms draw is tested there."""
     made = sample_plan()
-    monkeypatch.setattr("cutblock.flow.views.tag_drawings", lambda plan: (DRAWING,) * len(plan.pieces))
+    monkeypatch.setattr("cutblock.flow.views.tag_drawings", lambda plan, sheet: (DRAWING,) * len(plan.pieces))
     monkeypatch.setattr("cutblock.flow.views.block_drawings", lambda plan: (DRAWING,) * len(plan.blocks))
     monkeypatch.setattr("cutblock.flow.views.summary", lambda plan: (("Blocks", "1"),))
     monkeypatch.setattr("cutblock.flow.views.speed_chart", lambda plan: CHART)
