@@ -134,3 +134,10 @@ def _seconds(text: str) -> float:
     if not 0.0 <= value <= 86_400.0:
         raise argparse.ArgumentTypeError(f"{text} is not between 0 and 86400 seconds")
     return value
+def _angles(text: str) -> int:
+    value = int(text)
+    if not 1 <= value <= 360:
+        raise argparse.ArgumentTypeError(f"{text} is not between 1 and 360")
+    return value
+
+

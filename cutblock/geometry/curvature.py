@@ -56,19 +56,26 @@ def bend_of(field: HeightField) -> Bend:
 def straight_directions(bend: Bend, shares: Floats) -> tuple[float, ...]:
     """Return the plan directions, rad in [0, pi), in which the surface bends least, averaged over the field.
 
-    Where the averaged second form a cos^2 + 2 b cos sin + c sin^2 changes sign these are its two asymptotic
-    directions; else the one direction of its smaller size, along which a wire strays least.
-
     Args:
         bend: From `bend_of`.
         shares: (n_x, n_y) weight of each grid point.
     """
-    xx, xy, yy = (float((shares * part).sum()) for part in bend.second)
+    whole = float(shares.sum())
+    xx, xy, yy = (float((shares * part).sum()) / whole for part in bend.second)
+    return directions_of_form(xx, xy, yy)
+
+
+def directions_of_form(xx: float, xy: float, yy: float) -> tuple[float, ...]:
+    """Return the directions, rad in [0, pi), in which xx cos^2 + 2 xy cos sin + yy sin^2 is least in size.
+
+    Where the form changes sign these are its two asymptotic directions; else the one of its smaller size, along which
+    a wire strays least; none where all are alike.
+    """
     half_sum, half_difference = (xx + yy) / 2.0, (xx - yy) / 2.0
     # The form is half_sum + radius cos(2 angle - lead).
     radius = float(np.hypot(half_difference, xy))
     lead = float(np.arctan2(xy, half_difference))
-    if radius <= 1e-12 * (abs(half_sum) + FLAT_PER_MM * float(shares.sum())):
+    if radius <= 1e-9 * abs(half_sum) + 1e-6 * FLAT_PER_MM:
         return ()
     if abs(half_sum) < radius:
         spread = float(np.arccos(-half_sum / radius))
