@@ -42,9 +42,13 @@ def fit(plan: Plan, progress: Progress) -> Plan:
 def pair(plan: Plan, progress: Progress) -> Plan:
     """Give both halves of every sweep a duty."""
     from cutblock.pairing.match import pair_sweeps
+    from cutblock.sweeps.counter import counter_mould_findings
 
-    sweeps, pieces, findings = pair_sweeps(plan.job, plan.panels, plan.sweeps, plan.conditions, progress)
-    return _with(plan, findings, sweeps=sweeps, pieces=pieces)
+    sweeps, pieces, findings = pair_sweeps(
+        plan.job, plan.panels, plan.sweeps, plan.conditions, part_of(progress, 0.0, 0.9)
+    )
+    notes = counter_mould_findings(plan.job, plan.panels, sweeps, pieces, plan.conditions, part_of(progress, 0.9, 1.0))
+    return _with(plan, findings + notes, sweeps=sweeps, pieces=pieces)
 
 
 def set_speeds(plan: Plan, progress: Progress) -> Plan:

@@ -1,11 +1,9 @@
 """Pieces: the two halves of each sweep with their duties, ids and codes, and what must be said about them."""
 
 import binascii
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 
-from cutblock.base.arrays import Floats
 from cutblock.records.job import Job
-from cutblock.records.panel import Panel
 from cutblock.records.piece import Piece
 from cutblock.records.plan import Finding
 from cutblock.records.sweep import Sweep
@@ -53,31 +51,11 @@ def _piece(job: Job, sweep: Sweep, half: Half) -> Piece:
     )
 
 
-def duty_findings(
-    job: Job, panels: Mapping[str, Panel], sweeps: Sequence[Sweep], pieces: Sequence[Piece]
-) -> tuple[Finding, ...]:
-    """Return what lifted counter-moulds lose in thickness, and how many halves have no use."""
-    findings = []
-    by_sweep = {sweep.id: sweep for sweep in sweeps}
-    lifted = [piece for piece in pieces if piece.duty is Duty.COUNTER_MOULD and piece.panel is not None]
-    if lifted:
-        worst_cosine, worst = min(
-            (least_cosine(panels[piece.panel or ""], by_sweep[piece.sweep]), piece.id) for piece in lifted
-        )
-        text = (
-            f"A counter-mould lifted {job.thickness_mm:g} mm leaves the concrete "
-            f"{job.thickness_mm * worst_cosine:.1f} mm thick at its steepest place."
-        )
-        findings.append(Finding(severity=Severity.INFO, code="counter-mould-by-lift", subject=worst, text=text))
+def duty_findings(job: Job, pieces: Sequence[Piece]) -> tuple[Finding, ...]:
+    """Return how many halves have no use."""
     n_surplus = sum(piece.duty is Duty.SURPLUS for piece in pieces)
-    if n_surplus:
-        halves = "1 upper half has" if n_surplus == 1 else f"{n_surplus} upper halves have"
-        text = f"{halves} no use yet. Give them a duty in the job, or choose panels that pair up."
-        findings.append(Finding(severity=Severity.WARNING, code="surplus", subject=job.id, text=text))
-    return tuple(findings)
-
-
-def least_cosine(panel: Panel, sweep: Sweep) -> float:
-    """Return the least cosine between the panel's normals and the vertical of the billet."""
-    vertical: Floats = sweep.serving[0].rotation[:, 2]
-    return float((panel.normals @ vertical).min())
+    if not n_surplus:
+        return ()
+    halves = "1 upper half has" if n_surplus == 1 else f"{n_surplus} upper halves have"
+    text = f"{halves} no use yet. Give them a duty in the job, or choose panels that pair up."
+    return (Finding(severity=Severity.WARNING, code="surplus", subject=job.id, text=text),)

@@ -53,7 +53,7 @@ def pair_sweeps(
     )
     pieces = make_pieces(job, kept)
     packed = _packing_finding(job, (part.packing_mm for part in search.found.values()))
-    return kept, pieces, (*packed, *duty_findings(job, by_id, kept, pieces))
+    return kept, pieces, (*packed, *duty_findings(job, pieces))
 
 
 @dataclass

@@ -1,13 +1,12 @@
 import binascii
 import re
 
-import pytest
 from hypothesis import given
 from hypothesis import strategies as st
-from kit.sample import sample_job, sample_panel, sample_pieces, sample_sweep
+from kit.sample import sample_job, sample_pieces, sample_sweep
 
-from cutblock.pairing.duties import duty_findings, least_cosine, make_pieces, piece_code
-from cutblock.records.words import Duty, Half
+from cutblock.pairing.duties import duty_findings, make_pieces, piece_code
+from cutblock.records.words import Duty
 
 
 def test_the_checksum_is_the_catalogued_one():
@@ -39,14 +38,4 @@ def test_each_half_knows_the_other():
 def test_nothing_is_said_where_every_half_is_a_mould():
     sweep = sample_sweep()
 
-    assert duty_findings(sample_job(), {}, [sweep], sample_pieces(sweep, Duty.MOULD)) == ()
-
-
-def test_the_steepest_place_is_where_the_normal_leans_most():
-    panel = sample_panel()
-    sweep = sample_sweep()
-
-    lean = least_cosine(panel, sweep)
-
-    assert lean == pytest.approx(1.0 / (1.0 + 0.1**2 + 0.12**2) ** 0.5)  # the corners of the hypar
-    assert sweep.serving[0].half is Half.LOWER
+    assert duty_findings(sample_job(), sample_pieces(sweep, Duty.MOULD)) == ()
