@@ -55,6 +55,10 @@ def _run(chosen: argparse.Namespace) -> int:
             from cutblock.cli.tags import run_tags
 
             return run_tags(chosen)
+        case "grid":
+            from cutblock.cli.grid import run_grid
+
+            return run_grid(chosen)
         case "wire":
             from cutblock.cli.wire import run_wire
 
@@ -107,6 +111,18 @@ def _parser() -> argparse.ArgumentParser:
     tags.add_argument("--sheet", metavar="NAME", default=None, help="label sheet; an unknown name lists them all")
     tags.add_argument("--start", type=_count, default=1, metavar="N", help="first free label of a part-used sheet (1)")
 
+    grid = commands.add_parser(
+        "grid",
+        help="search the panel grid of a face",
+        description="Look for the angle and the phase of a face's panel grid that need the fewest sweeps, then deviate "
+        "least. Nothing is changed: it tells what to write in the job.",
+    )
+    grid.add_argument("job", metavar="JOB", help="a job file, or a folder that holds job.toml")
+    grid.add_argument("--face", metavar="NAME", help="the face; needed where the job has several")
+    grid.add_argument("--angles", type=_angles, default=12, metavar="N", help="angles tried at first (12)")
+    grid.add_argument("--smaller", action="store_true", help="try smaller cells too, down to 60 %% of the job's")
+    grid.add_argument("--json", action="store_true", help="print what was found as JSON")
+
     wire = commands.add_parser(
         "wire",
         help="kerf, speed window and currents of a wire",
@@ -129,11 +145,6 @@ def _count(text: str) -> int:
     return value
 
 
-def _seconds(text: str) -> float:
-    value = float(text)
-    if not 0.0 <= value <= 86_400.0:
-        raise argparse.ArgumentTypeError(f"{text} is not between 0 and 86400 seconds")
-    return value
 def _angles(text: str) -> int:
     value = int(text)
     if not 1 <= value <= 360:
@@ -141,3 +152,8 @@ def _angles(text: str) -> int:
     return value
 
 
+def _seconds(text: str) -> float:
+    value = float(text)
+    if not 0.0 <= value <= 86_400.0:
+        raise argparse.ArgumentTypeError(f"{text} is not between 0 and 86400 seconds")
+    return value
