@@ -127,7 +127,9 @@ class EstimatingDesk(QWidget):
         findings = self._shown.plan.findings if self._shown is not None else ()
         finding = findings[int(key)] if key else None
         self._finding_text.setText(
-            f"{finding.subject}: {with_signs(finding.text)}" if finding is not None else "Nothing to look at."
+            f"{finding.subject}: {with_signs(finding.text)} ({finding.code})"
+            if finding is not None
+            else "Nothing to look at."
         )
         self.show_place.setEnabled(finding is not None and finding.subject in self._places)
 
@@ -156,7 +158,7 @@ class EstimatingDesk(QWidget):
             return
         self._words.setText(
             f"Used {ledger.used_percent:.1f} %, wasted {ledger.waste_percent:.1f} % "
-            f"of {litres(ledger.bought_mm3):.0f} l bought in {counted(ledger.n_blocks, 'block')} "
+            f"of {litres(ledger.bought_mm3):,.0f} l bought in {counted(ledger.n_blocks, 'block')} "
             f"(at least {ledger.n_blocks_bound} needed)"
         )
 

@@ -161,7 +161,7 @@ class PlanMap(QWidget):
 
     def _paint_panels(self, painter: QPainter, ink: Ink) -> None:
         # One path for each panel and a pen of one pixel: one path for all with a wider pen takes 20 times as long.
-        edge = QPen(ink.ground, 1.0)
+        edge = QPen(ink.faint, 1.0)
         for panel, path in zip(self._layout.panels, self._panel_paths(), strict=True):
             step = self._step(panel.panel)
             fill = QColor(step.colour)

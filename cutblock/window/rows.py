@@ -18,16 +18,16 @@ from cutblock.window.theme import SKY, VERMILLION, YELLOW
 
 PANEL_COLUMNS = (
     Column("Panel"),
-    Column("Face"),
-    Column("Size, mm", tip="Length × width"),
     Column("Finished, max mm", is_number=True, tip="Largest distance of the finished mould face from the form"),
     Column("Tolerance", tip="A to D: within, in quarters of the tolerance; E: over"),
-    Column("Fit, max mm", is_number=True, tip="What the straight wire leaves, kerf and coat set aside"),
-    Column("Fit, rms mm", is_number=True),
-    Column("Wire along", tip="The axis of the panel the wire lies along"),
+    Column("Lower half", tip="What the half below the cut is for"),
+    Column("Upper half", tip="What the half above the cut is for"),
     Column("Shares its cut with"),
-    Column("Lower half"),
-    Column("Upper half"),
+    Column("Size, mm", tip="Length × width"),
+    Column("Fit, max mm", is_number=True, tip="What the straight wire leaves, kerf and coat set aside"),
+    Column("Fit, rms mm", is_number=True, tip="The same, root mean square over the panel"),
+    Column("Wire along", tip="The axis of the panel the wire lies along"),
+    Column("Face"),
 )
 PIECE_COLUMNS = (
     Column("Piece"),
@@ -64,7 +64,7 @@ LEDGER_COLUMNS = (
     Column("Share, %", is_number=True),
     Column("Counts as"),
 )
-FINDING_COLUMNS = (Column("Severity"), Column("Where"), Column("Code"), Column("What"))
+FINDING_COLUMNS = (Column("Severity"), Column("Where"), Column("What"))
 
 _SEVERITIES = {
     Severity.ERROR: ("Error", VERMILLION, 0),
@@ -164,10 +164,9 @@ def finding_rows(findings: tuple[Finding, ...]) -> Iterator[Row]:
         cells = (
             Cell(word, key=float(rank), colour=colour),
             Cell(finding.subject),
-            Cell(finding.code),
             Cell(with_signs(finding.text), tip=with_signs(finding.text)),
         )
-        yield Row(str(number), cells)
+        yield Row(str(number), cells, words=finding.code)
 
 
 def with_signs(text: str) -> str:
@@ -191,18 +190,18 @@ def _panel_row(
         panel_key(panel.id, sweep.id),
         (
             Cell(name),
-            Cell(panel.face),
-            _size_cell(panel),
             _number(serving.max_mm, 2),
             Cell(
                 f"{step.letter}  {word}", colour=step.colour, hatch=step.hatch, tip=f"Tolerance {tolerance_mm:.2f} mm"
             ),
+            _duty_cell(duties.get((sweep.id, Half.LOWER)), panel.id),
+            _duty_cell(duties.get((sweep.id, Half.UPPER)), panel.id),
+            Cell(", ".join(others) or "no panel"),
+            _size_cell(panel),
             _number(sweep.fit_max_mm, 3),
             _number(sweep.fit_rms_mm, 3),
             Cell(sweep.wire_along),
-            Cell(", ".join(others) or "no panel"),
-            _duty_cell(duties.get((sweep.id, Half.LOWER)), panel.id),
-            _duty_cell(duties.get((sweep.id, Half.UPPER)), panel.id),
+            Cell(panel.face),
         ),
     )
 
@@ -213,8 +212,6 @@ def _uncut_row(panel: Panel) -> Row:
         panel_key(panel.id, ""),
         (
             Cell(panel.id),
-            Cell(panel.face),
-            _size_cell(panel),
             none,
             Cell(
                 f"{NOT_CUT.letter}  not cut",
@@ -222,7 +219,10 @@ def _uncut_row(panel: Panel) -> Row:
                 hatch=NOT_CUT.hatch,
                 tip="No sweep moulds it: see the findings",
             ),
-            *((none,) * 6),
+            *((Cell("none"),) * 3),
+            _size_cell(panel),
+            *((none,) * 3),
+            Cell(panel.face),
         ),
     )
 

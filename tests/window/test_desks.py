@@ -158,7 +158,7 @@ def test_speeds_are_given_in_both_units_and_called_uncalibrated(workshop):
 def test_the_estimate_says_used_waste_blocks_and_the_least(estimating):
     found = words(estimating)
 
-    assert "Used 32.8 %, wasted 19.8 % of 2188 l bought in 1 block (at least 1 needed)" in found
+    assert "Used 32.8 %, wasted 19.8 % of 2,188 l bought in 1 block (at least 1 needed)" in found
     assert "Machine time" in found
     assert "1.30 h" in found
 
@@ -172,10 +172,10 @@ def test_a_finding_picked_is_told_in_full(qtbot):
     qtbot.addWidget(desk)
     fill(desk, sample_shown(findings=findings))
 
-    assert desk._finding_text.text() == "S-A02: over the tolerance by 1.3 mm"
+    assert desk._finding_text.text() == "S-A02: over the tolerance by 1.3 mm (b)"
     assert "1 error, 0 warnings, 1 note" in words(desk)
     desk.finding_table.pick("0")
-    assert desk._finding_text.text() == "S-A01: a note"
+    assert desk._finding_text.text() == "S-A01: a note (a)"
 
 
 def test_a_plan_without_blocks_ledger_or_findings_is_shown_all_the_same(qtbot):
