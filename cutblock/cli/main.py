@@ -55,6 +55,10 @@ def _run(chosen: argparse.Namespace) -> int:
             from cutblock.cli.tags import run_tags
 
             return run_tags(chosen)
+        case "export":
+            from cutblock.cli.export import run_export
+
+            return run_export(chosen)
         case "grid":
             from cutblock.cli.grid import run_grid
 
@@ -110,6 +114,19 @@ def _parser() -> argparse.ArgumentParser:
     tags.add_argument("folder", metavar="DIR", help="a plan folder")
     tags.add_argument("--sheet", metavar="NAME", default=None, help="label sheet; an unknown name lists them all")
     tags.add_argument("--start", type=_count, default=1, metavar="N", help="first free label of a part-used sheet (1)")
+
+    export = commands.add_parser(
+        "export",
+        help="write solids or faces for other programs",
+        description="Write the halves, the form's finished faces, the billets in their blocks or the foam melted"
+        " as mesh files. Lengths are mm (glTF: metres), names are the ids of the plan.",
+    )
+    export.add_argument("folder", metavar="DIR", help="a plan folder")
+    export.add_argument("--what", required=True, metavar="WHAT", help="halves, form, billets or kerf")
+    export.add_argument("--as", required=True, dest="file_format", metavar="FORMAT", help="stl, obj, ply, 3mf or glb")
+    export.add_argument(
+        "--out", metavar="PATH", help="file to write, for stl and ply a folder; without it in DIR/solids"
+    )
 
     grid = commands.add_parser(
         "grid",

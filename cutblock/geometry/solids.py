@@ -72,7 +72,8 @@ def mesh_centre(mesh: Mesh) -> Floats:
 
 
 def joined(meshes: Sequence[Mesh]) -> Mesh:
-    """Return several meshes as one, without welding them."""
+    """Return several meshes as one, without welding them; an empty one of none."""
+    meshes = [Mesh(np.zeros((0, 3)), np.zeros((0, 3), dtype=np.int64)), *meshes]
     starts = np.cumsum([0, *(len(mesh.vertices) for mesh in meshes[:-1])])
     return Mesh(
         np.concatenate([mesh.vertices for mesh in meshes]),

@@ -16,6 +16,8 @@ Region = tuple[Floats, ...]  # an outer ring (k, 2), then its holes, billet fram
 # A half with one of these duties follows the outline of the panel it supports.
 _FOLLOWING = (Duty.COUNTER_MOULD, Duty.CRADLE)
 
+_LEAST_MM2 = 1e-3  # where outline and billet only touch, rounding may leave such a region
+
 
 class Footprints(NamedTuple):
     """The regions each half of a sweep is trimmed to; None where it keeps the whole plan of the billet."""
@@ -68,5 +70,5 @@ def outline_in_billet(panel: Panel, serving: Serving, sweep: Sweep) -> tuple[Reg
     return tuple(
         tuple(np.asarray(ring.coords)[:-1] for ring in (part.exterior, *part.interiors))
         for part in shapely.get_parts(region)
-        if part.geom_type == "Polygon" and not part.is_empty
+        if part.geom_type == "Polygon" and part.area > _LEAST_MM2
     )
