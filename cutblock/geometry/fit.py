@@ -8,7 +8,9 @@ import numpy as np
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.base.errors import GeometryError
 from cutblock.geometry.deviation import deviation_measures, face_deviation
-from cutblock.geometry.fit_refine import N_CONTROLS, N_ROUNDS, Fits, improve, knots_of, polish, recentre, refine
+from cutblock.geometry.fit_lawson import polish
+from cutblock.geometry.fit_minimax import DENSE_NODES, least_largest
+from cutblock.geometry.fit_refine import N_CONTROLS, N_ROUNDS, Fits, improve, knots_of, recentre, refine
 from cutblock.geometry.fit_start import Paths, best_paths
 from cutblock.geometry.fit_target import Patch, Target, make_target
 from cutblock.geometry.heights import HeightField, height_field
@@ -23,10 +25,14 @@ SPLINE_ERROR_MM = 1e-5
 # A least-squares fit whose largest deviation lies between these shares of the tolerance is worth polishing: the least
 # largest deviation is about half to three quarters of it.
 NEARLY = 0.95
+SPIKY = 3.5
+EVENING_TURNS = 2
 HOPELESS = 1.05  # times the tolerance: a lower bound above it ends a polish
 SQUARENESS = 0.1
 ENOUGH = 0.9
 POLISH_REACH = 2.2
+# What Lawson's weights leave within this many tolerances is worth linear programmes.
+PROGRAMME_REACH = 1.6
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -89,11 +95,12 @@ def fit_ruled(
     normals = field.normals(samples[:, 0], samples[:, 1])[1]
     curves = fit_patches([patch], tolerance_mm, is_polished=False, n_controls=FINE_CONTROLS)[0]
     fit = _measured(curves, length_mm, width_mm, samples, normals)
-    if NEARLY * tolerance_mm < fit.max_mm < POLISH_REACH * tolerance_mm:
-        # Few control values: many would chase the nodes and stray between them.
-        curves = fit_patches([patch], tolerance_mm, polish_until=0.0)[0]
-        polished = _measured(curves, length_mm, width_mm, samples, normals)
-        fit = polished if polished.max_mm < fit.max_mm else fit
+    if fit.max_mm > NEARLY * tolerance_mm:
+        # Few control values: many would chase the nodes and stray between them, as programmes do a little.
+        for has_programmes in (False, True):
+            curves = fit_patches([patch], tolerance_mm, polish_until=0.0, has_programmes=has_programmes)[0]
+            polished = _measured(curves, length_mm, width_mm, samples, normals)
+            fit = polished if polished.max_mm < fit.max_mm else fit
     return fit
 
 
@@ -155,6 +162,7 @@ def fit_patches(
     *,
     is_polished: bool = True,
     polish_until: float = ENOUGH,
+    has_programmes: bool = True,
     n_controls: int = N_CONTROLS,
     squareness: float = SQUARENESS,
     starts: Sequence[SheetFit] | None = None,
@@ -169,6 +177,7 @@ def fit_patches(
         tolerance_mm: Wanted largest normal deviation.
         is_polished: Whether sheets that just miss the tolerance are brought closer to the least largest deviation.
         polish_until: Share of the tolerance at which a sheet is close enough; 0: as close as it can come.
+        has_programmes: Whether linear programmes take over where Lawson's weights do not reach the tolerance.
         n_controls: Control values of each rail.
         squareness: What less skew is worth: of sheets that differ by less than this share of the tolerance, the one
             with the least skew is kept. 0 always keeps the closest, a large value the squarest.
@@ -183,13 +192,17 @@ def fit_patches(
     for numbers in groups.values():
         for first in range(0, len(numbers), BATCH):
             batch = numbers[first : first + BATCH]
-            target = make_target([patches[number] for number in batch])
+            wanted = [patches[number] for number in batch]
+            target = make_target(wanted)
             if starts is None:
                 fits = _fit_batch(target, tolerance_mm, n_controls, squareness)
             else:
                 fits = _resumed(target, [starts[number] for number in batch])
             report()
-            fits = _polished(target, fits, tolerance_mm, polish_until, report) if is_polished else fits
+            if is_polished:
+                smooth, fits = fits, _polished(target, fits, tolerance_mm, polish_until, report)
+                if has_programmes:
+                    fits = _programmed(wanted, fits, smooth, tolerance_mm, polish_until, report)
             for place, number in enumerate(batch):
                 results[number] = _with_plane(target, fits, place)
     return tuple(fit for fit in results if fit is not None)
@@ -214,28 +227,45 @@ def _fit_batch(target: Target, tolerance_mm: float, n_controls: int, squareness:
     best = rival(best, constant, is_worth & ~_alike(first, constant))
     straight = Paths(first.stations, np.zeros_like(first.skews), first.rms_mm)
     best = rival(best, straight, best.max_mm > tolerance_mm)
+    # A least-squares sheet may leave a corner far off that a few turns of Lawson's weights bring in.
+    spiky = np.flatnonzero((best.max_mm > tolerance_mm) & (best.max_mm > SPIKY * best.rms_mm))
+    if len(spiky):
+        evened = polish(target.take(spiky), best.take(spiky), 0.0, EVENING_TURNS)
+        best = best.put(spiky, evened)
     if is_fine:
         best = improve(target, recentre(target, best, n_controls), n_steps=20, precision=1e-7, floor_mm=1e-7)
     return best
 
 
-def _polished(
-    target: Target, fits: Fits, tolerance_mm: float, until: float, report: Callable[[], None] = lambda: None
-) -> Fits:
-    """Return the fits with those that miss the tolerance by little brought closer to the least largest deviation."""
-    index = np.flatnonzero((fits.max_mm > NEARLY * tolerance_mm) & (fits.max_mm < POLISH_REACH * tolerance_mm))
+def _polished(target: Target, fits: Fits, tolerance_mm: float, until: float, report: Callable[[], None]) -> Fits:
+    """Return the fits with those that miss the tolerance by little brought closer by Lawson's weights."""
+    index = _missing(fits, NEARLY * tolerance_mm, POLISH_REACH * tolerance_mm, until)
     if not len(index):
         return fits
-    rough, part = fits.take(index), target.take(index)
     hopeless_mm = HOPELESS * tolerance_mm if until > 0.0 else np.inf
-    polished = polish(part, rough, until * tolerance_mm, hopeless_mm=hopeless_mm, report=report)
-    # With the skews held the problem is linear and Lawson's weights must converge, where free skews may get stuck.
-    left = np.flatnonzero(polished.max_mm > until * tolerance_mm)
-    if len(left):
-        held = polish(part.take(left), rough.take(left), until * tolerance_mm, is_held=True, hopeless_mm=hopeless_mm)
-        better = np.flatnonzero(held.max_mm < polished.max_mm[left])
-        polished = polished.put(left[better], held.take(better))
-    return fits.put(index, polished)
+    part = target.take(index)
+    return fits.put(index, polish(part, fits.take(index), until * tolerance_mm, hopeless_mm=hopeless_mm, report=report))
+
+
+def _programmed(
+    patches: list[Patch], fits: Fits, smooth: Fits, tolerance_mm: float, until: float, report: Callable[[], None]
+) -> Fits:
+    """Return the fits with those that still miss the tolerance by little brought closer by linear programmes."""
+    index = _missing(fits, tolerance_mm, PROGRAMME_REACH * tolerance_mm, until)
+    if not len(index):
+        return fits
+    hopeless_mm = HOPELESS * tolerance_mm if until > 0.0 else np.inf
+    dense = make_target([patches[number] for number in index], DENSE_NODES)
+    enough_mm = until * tolerance_mm
+    least = least_largest(dense, fits.take(index), smooth.take(index), enough_mm, hopeless_mm, report)
+    return fits.put(index, least)
+
+
+def _missing(fits: Fits, low_mm: float, high_mm: float, until: float) -> Ints:
+    """Return which fits stray by more than one limit and less than another; nothing is out of reach of until = 0."""
+    if until == 0.0:
+        return np.arange(len(fits.max_mm))
+    return np.flatnonzero((fits.max_mm > low_mm) & (fits.max_mm < high_mm))
 
 
 def _is_worth(first: Paths, second: Paths, tolerance_mm: float) -> Bools:

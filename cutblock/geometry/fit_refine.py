@@ -5,7 +5,6 @@ sheet is a tensor-product B-spline of degree (3, 1) (Chen and Pottmann, J. Compu
 The residual is the first-order normal distance (z - f) / sqrt(1 + f_x^2 + f_y^2) on Gauss-Lobatto nodes of the wire.
 """
 
-from collections.abc import Callable
 from dataclasses import dataclass, replace
 from functools import lru_cache
 from typing import TYPE_CHECKING
@@ -14,7 +13,7 @@ import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.geometry.fit_start import Paths
-from cutblock.geometry.fit_target import NODE_WEIGHTS, Target
+from cutblock.geometry.fit_target import Target
 
 if TYPE_CHECKING:
     from scipy.interpolate import BSpline
@@ -193,7 +192,7 @@ def _held(skew_controls: Floats, length: Floats, target: Target, basis: Basis) -
 
 
 @dataclass(frozen=True, slots=True, eq=False)
-class _State:
+class State:
     """Residuals of a batch at one set of control values."""
 
     residuals: Floats  # (p, s, q) normal distances
@@ -203,12 +202,13 @@ class _State:
     counts: Bools  # (p, s, q) nodes over the wanted area
     cost: Floats  # (p,)
 
-    def take(self, index: Ints) -> "_State":
+    def take(self, index: Ints) -> "State":
         """Return the state of the patches of the given indices."""
-        return _State(*(getattr(self, name)[index] for name in self.__slots__))
+        return State(*(getattr(self, name)[index] for name in self.__slots__))
 
 
-def _evaluate(target: Target, fits: Fits, basis: Basis, emphasis: Floats | None) -> _State:
+def evaluate(target: Target, fits: Fits, basis: Basis, emphasis: Floats | None = None) -> State:
+    """Return the residuals of fits on the nodes, and what their steps need; `emphasis` (p, s, q) weighs the nodes."""
     values = fits.controls @ basis.values.T  # (p, 3, s)
     length = fits.end - fits.start
     stations = fits.start[:, None] + length[:, None] * STATIONS
@@ -232,15 +232,15 @@ def _evaluate(target: Target, fits: Fits, basis: Basis, emphasis: Floats | None)
     advance = (fits.controls[:, 0] @ basis.rates.T * (STATION_WEIGHTS / length[:, None]))[:, :, None] * lean
     advance += STATION_WEIGHTS[:, None]
     weights = target.weight(x, ramp)
-    counts = weights >= 0.5 * NODE_WEIGHTS
+    counts = weights >= 0.5 * target.node_weights
     weights *= advance
     if emphasis is not None:
         weights *= emphasis
     cost = np.einsum("psq,psq,psq->p", weights, residuals, residuals)
-    return _State(residuals, weights, slope_x, cosines, counts, cost)
+    return State(residuals, weights, slope_x, cosines, counts, cost)
 
 
-def _normal_equations(target: Target, state: _State, basis: Basis) -> tuple[Floats, Floats]:
+def _normal_equations(target: Target, state: State, basis: Basis) -> tuple[Floats, Floats]:
     n_c = basis.n_controls
     columns = (state.slopes, (1.0 - target.places) * state.cosines, target.places * state.cosines)
     weighted = [state.weights * column for column in columns]
@@ -282,12 +282,12 @@ def improve(
     result = fits
     index: Ints = np.arange(len(fits.start))
     damping = np.full(len(index), start_damping)
-    state = _evaluate(target, fits, basis, emphasis)
+    state = evaluate(target, fits, basis, emphasis)
     for _ in range(n_steps):
         change, promise = _step(target, state, basis, damping)
         trial = replace(fits, controls=fits.controls + change)
         trial.controls[:, 0] = _held(trial.controls[:, 0], fits.end - fits.start, target, basis)
-        trial_state = _evaluate(target, trial, basis, emphasis)
+        trial_state = evaluate(target, trial, basis, emphasis)
         is_better = trial_state.cost < state.cost
         damping = np.where(is_better, np.maximum(damping / 20.0, 1e-12), damping * 10.0)
         fits = replace(fits, controls=np.where(is_better[:, None, None], trial.controls, fits.controls))
@@ -297,14 +297,14 @@ def improve(
             break
         if is_open.sum() <= 0.75 * len(index):
             left, gone = np.flatnonzero(is_open), np.flatnonzero(~is_open)
-            result = result.put(index[gone], _measured(fits.take(gone), state.take(gone)))
+            result = result.put(index[gone], measured(fits.take(gone), state.take(gone)))
             index, damping, fits = index[left], damping[left], fits.take(left)
             target, state = target.take(left), state.take(left)
             emphasis = None if emphasis is None else emphasis[left]
-    return result.put(index, _measured(fits, state))
+    return result.put(index, measured(fits, state))
 
 
-def _step(target: Target, state: _State, basis: Basis, damping: Floats) -> tuple[Floats, Floats]:
+def _step(target: Target, state: State, basis: Basis, damping: Floats) -> tuple[Floats, Floats]:
     """Return the change of the control values (p, 3, c), and how much of the cost it would take if all were linear."""
     matrix, gradient = _normal_equations(target, state, basis)
     n_unknowns = gradient.shape[1]
@@ -316,10 +316,10 @@ def _step(target: Target, state: _State, basis: Basis, damping: Floats) -> tuple
     return change.reshape(len(change), 3, -1), promise
 
 
-def _raised(target: Target, fits: Fits, emphasis: Floats | None = None) -> Fits:
+def _raised(target: Target, fits: Fits) -> Fits:
     """Return the fits with the elevations that are best for their skews, a linear problem."""
     basis = spline_stations(fits.controls.shape[2])
-    matrix, gradient = _normal_equations(target, _evaluate(target, fits, basis, emphasis), basis)
+    matrix, gradient = _normal_equations(target, evaluate(target, fits, basis), basis)
     n_c = basis.n_controls
     matrix, gradient = matrix[:, n_c:, n_c:], gradient[:, n_c:]
     diagonal = np.einsum("pii->pi", matrix).copy()
@@ -328,80 +328,21 @@ def _raised(target: Target, fits: Fits, emphasis: Floats | None = None) -> Fits:
     controls = fits.controls.copy()
     controls[:, 1:] += change
     raised = replace(fits, controls=controls)
-    return _measured(raised, _evaluate(target, raised, basis, emphasis))
+    return measured(raised, evaluate(target, raised, basis))
 
 
-def polish(
-    target: Target,
-    fits: Fits,
-    enough_mm: float,
-    n_turns: int = 16,
-    *,
-    is_held: bool = False,
-    hopeless_mm: float = np.inf,
-    report: Callable[[], None] = lambda: None,
-) -> Fits:
-    """Return the fits brought closer to the least largest deviation, each the best met on the way.
-
-    Lawson's weights: points far off count for more from turn to turn, in proportion to how far off they are (Lawson
-    1961; Rice and Usow, Mathematics of Computation 22 (1968) 118-127). Linear convergence, and no guarantee where the
-    skew moves; a few turns take most of what there is to gain.
-
-    Args:
-        target: What is fitted.
-        fits: Where to start.
-        enough_mm: A patch is left alone once its largest deviation is below this.
-        n_turns: Most changes of the weights.
-        is_held: Keep the skews as they are.
-        hopeless_mm: A patch is given up once its weighted root mean square is above this: no sheet near by has a
-            largest deviation below it.
-        report: Called every turn.
-    """
-    basis = spline_stations(fits.controls.shape[2])
-    best = current = fits
-    bounds = np.zeros(len(fits.start))
-    index: Ints = np.arange(len(fits.start))
-    emphasis = np.ones((len(index), N_STATIONS, target.places.shape[2]))
-    for turn in range(n_turns):
-        report()
-        left = np.flatnonzero((best.max_mm[index] > enough_mm) & (bounds[index] < hopeless_mm))
-        if not len(left):
-            break
-        index, emphasis, current = index[left], emphasis[left], current.take(left)
-        part = target.take(index)
-        emphasis = _shifted(emphasis, _evaluate(part, current, basis, None))
-        if is_held:
-            current = _raised(part, current, emphasis)
-        else:
-            current = recentre(part, current, basis.n_controls) if turn % 4 == 3 else current
-            current = improve(part, current, n_steps=3, precision=1e-6, emphasis=emphasis, start_damping=1e-2)
-        bounds[index] = current.rms_mm
-        better = np.flatnonzero(current.max_mm < best.max_mm[index])
-        best = best.put(index[better], current.take(better))
-    return best
-
-
-def _shifted(emphasis: Floats, state: _State) -> Floats:
-    """Return Lawson's next weights, of mean 1 over the nodes that count."""
-    sizes = np.where(state.counts, np.abs(state.residuals), 0.0)
-    largest = np.maximum(sizes.max(axis=(1, 2), keepdims=True), 1e-12)
-    emphasis = emphasis * np.where(state.counts, sizes / largest, 1.0)
-    mean = np.where(state.counts, emphasis, 0.0).sum(axis=(1, 2)) / np.maximum(state.counts.sum(axis=(1, 2)), 1)
-    shifted: Floats = np.maximum(emphasis / np.maximum(mean, 1e-12)[:, None, None], 1e-3)
-    return shifted
-
-
-def _pick(is_new: Bools, new: _State, old: _State) -> _State:
+def _pick(is_new: Bools, new: State, old: State) -> State:
     wide = is_new[:, None, None]
-    return _State(
+    return State(
         *(
             np.where(wide if getattr(new, name).ndim == 3 else is_new, getattr(new, name), getattr(old, name))
-            for name in _State.__slots__
+            for name in State.__slots__
         )
     )
 
 
-def _measured(fits: Fits, state: _State) -> Fits:
+def measured(fits: Fits, state: State) -> Fits:
+    """Return the fits with the largest and the root mean square residual over the wanted area."""
     counts = state.counts
     largest = np.where(counts, np.abs(state.residuals), 0.0).max(axis=(1, 2))
     total = np.where(counts, state.weights, 0.0).sum(axis=(1, 2))

@@ -5,6 +5,7 @@ cubic spline in x. All fits of a batch share the number of grid values along x.
 """
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -21,7 +22,8 @@ SKEW_CAP = 1.2  # largest |skew| / width: a strip of an isotropic saddle turned 
 MASKED_WEIGHT = 1e-6  # of points inside the rectangle that were masked out
 
 
-def _lobatto(n: int) -> tuple[Floats, Floats]:
+@lru_cache(maxsize=4)
+def lobatto(n: int) -> tuple[Floats, Floats]:
     """Return the Gauss-Lobatto nodes and weights on [0, 1] (Abramowitz and Stegun 25.4.32)."""
     legendre = np.polynomial.legendre.Legendre.basis(n - 1)
     inner = np.sort(np.real(legendre.deriv().roots()))
@@ -30,7 +32,7 @@ def _lobatto(n: int) -> tuple[Floats, Floats]:
     return (nodes + 1.0) / 2.0, weights / 2.0
 
 
-NODES, NODE_WEIGHTS = _lobatto(N_NODES)
+NODES = lobatto(N_NODES)[0]
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -72,6 +74,7 @@ class Target:
     high: Floats  # (p, 1, 1) x of the last
     width: Floats  # (p, 1, 1)
     places: Floats  # (p, 1, q) node y as a fraction of the width
+    node_weights: Floats  # (p, 1, q) of the quadrature along the wire
     weights: Floats  # (p, q, m) over equal steps from low to high
     limit: Floats  # (p, 1, 1) largest size of the skew
     advance: Floats  # (p, 1, 1) least advance of either rail for each unit of station
@@ -134,14 +137,14 @@ class Target:
         if n_m == 1:
             # Few points lie outside, and what they weigh takes long to say.
             weight = np.empty(x.shape)
-            weight[:] = NODE_WEIGHTS
+            weight[:] = self.node_weights
             outside = np.flatnonzero(beyond > 0.0)
             patch, node = outside // (x.shape[1] * n_q), outside % n_q
             ramps = np.broadcast_to(ramp, (n_p, x.shape[1], 1)).reshape(-1)[outside // n_q]
             far = beyond.ravel()[outside]
             fading = OVERRUN_WEIGHT * np.exp(-far / (OVERRUN_REACH * self.width[patch, 0, 0]))
             weight.ravel()[outside] = (
-                np.maximum(1.0 - far / ramps, np.maximum(fading, BEYOND_WEIGHT)) * NODE_WEIGHTS[node]
+                np.maximum(1.0 - far / ramps, np.maximum(fading, BEYOND_WEIGHT)) * self.node_weights[patch, 0, node]
             )
             return weight
         beyond = np.maximum(beyond, 0.0)
@@ -154,31 +157,44 @@ class Target:
         inside = inside * (before + (along - cells) * (flat[base + 1] - before))
         fading = OVERRUN_WEIGHT * np.exp(-beyond / (OVERRUN_REACH * self.width))
         fading = np.where(beyond > 0.0, fading, MASKED_WEIGHT)
-        masked: Floats = np.maximum(inside, np.maximum(fading, BEYOND_WEIGHT)) * NODE_WEIGHTS
+        masked: Floats = np.maximum(inside, np.maximum(fading, BEYOND_WEIGHT)) * self.node_weights
         return masked
 
 
-def make_target(patches: list[Patch]) -> Target:
+def make_target(patches: list[Patch], n_nodes: int = N_NODES) -> Target:
     """Return the batch of patches; all have the same number of grid values along x, and weights alike in shape."""
-    pieces, planes = zip(*(_pieces(patch) for patch in patches), strict=True)
+    nodes, node_weights = lobatto(n_nodes)
+    pieces, planes = zip(*(_pieces(patch, nodes) for patch in patches), strict=True)
 
     def column(values: list[float]) -> Floats:
         return np.array(values, dtype=np.float64).reshape(-1, 1, 1)
 
+    width = column([patch.width_mm for patch in patches])
+    low_y, high_y = (column([getattr(p, name) for p in patches]) for name in ("strip_low_y_mm", "strip_high_y_mm"))
     return Target(
         pieces=np.stack(pieces),
         planes=np.stack(planes),
         low=column([patch.low_x_mm for patch in patches]),
         high=column([patch.high_x_mm for patch in patches]),
-        width=column([patch.width_mm for patch in patches]),
-        places=np.stack([patch.node_y_mm / patch.width_mm for patch in patches])[:, None, :],
+        width=width,
+        places=(low_y + (high_y - low_y) * nodes) / width,
+        node_weights=np.tile(node_weights, (len(patches), 1, 1)),
         limit=column([min(patch.skew_limit_mm, SKEW_CAP * patch.width_mm) for patch in patches]),
         advance=column([patch.least_advance for patch in patches]),
-        weights=np.stack([np.ones((N_NODES, 1)) if p.weights is None else p.weights.T for p in patches]),
+        weights=np.stack([_mask(patch, nodes) for patch in patches]),
     )
 
 
-def _pieces(patch: Patch) -> tuple[Floats, Floats]:
+def _mask(patch: Patch, nodes: Floats) -> Floats:
+    """Return how much the points of the node rows count, (q, m)."""
+    if patch.weights is None:
+        return np.ones((len(nodes), 1))
+    if len(nodes) == N_NODES:
+        return patch.weights.T
+    return np.stack([np.interp(nodes, NODES, column) for column in patch.weights], axis=1)
+
+
+def _pieces(patch: Patch, nodes: Floats) -> tuple[Floats, Floats]:
     """Return the cubics of z along the node rows, the lines of dz/dy, and the plane taken off z."""
     n_x, n_y = patch.heights_mm.shape
     x = np.linspace(patch.low_x_mm, patch.high_x_mm, n_x)
@@ -192,7 +208,7 @@ def _pieces(patch: Patch) -> tuple[Floats, Floats]:
     level = float(heights.mean() - slope_x * middle_x - slope_y * middle_y)
     rest = heights - (level + slope_x * x[:, None] + slope_y * y)
     coefficients = spline_matrix(n_x) @ rest @ spline_matrix(n_y).T
-    places = (patch.node_y_mm - patch.low_y_mm) / step
+    places = (patch.strip_low_y_mm - patch.low_y_mm + (patch.strip_high_y_mm - patch.strip_low_y_mm) * nodes) / step
     rows = coefficients @ spline_basis(places, n_y).T
     at_values = grid_basis(n_x) @ coefficients
     slopes = at_values @ spline_basis(places, n_y, 1).T / step + slope_y

@@ -134,9 +134,10 @@ def test_a_dome_is_met_as_well_as_straight_lines_can_meet_a_parabola():
     """
     kappa = 1.0 / 4000.0
     square = 1.0 / np.sqrt(1.0 + (kappa * W / 2) ** 2)
-    best = fit_ruled(over(dome), L, W, 10.0).max_mm
-    least_squares = fit_ruled(over(dome), L, W, 2.0).max_mm
-    assert square * kappa * W**2 / 16 * 0.99 < best < kappa * W**2 / 16 * 1.02
+    best = fit_ruled(over(dome), L, W, 10.0)
+    least_squares = fit_ruled(over(dome), L, W, 25.0).max_mm
+    assert best.curves.max_mm == pytest.approx(kappa * W**2 / 16, rel=0.01)
+    assert square * kappa * W**2 / 16 * 0.99 < best.max_mm < kappa * W**2 / 16 * 1.015
     assert least_squares == pytest.approx(kappa * W**2 / 12, rel=0.02)
 
 
