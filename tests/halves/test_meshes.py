@@ -4,13 +4,13 @@ import numpy as np
 import pytest
 from hypothesis import example, given
 from hypothesis import strategies as st
-from kit.sample import sample_sweep
+from kit.sample import sample_panel, sample_sweep
 
 from cutblock.base.errors import GeometryError
 from cutblock.geometry.plan_clip import boundary_edges
 from cutblock.geometry.solids import mesh_volume
 from cutblock.geometry.volume import kerf_volume, volume_below_within
-from cutblock.halves.meshes import half_meshes
+from cutblock.halves.meshes import finished_face, half_meshes
 
 
 @given(at_near=st.floats(0.3, 6.0), at_far=st.floats(0.3, 6.0), skew=st.floats(-18.0, 18.0))
@@ -54,3 +54,36 @@ def test_a_kerf_that_would_break_out_of_the_billet_is_refused_by_name():
 
     with pytest.raises(GeometryError, match="sweep SM-S1-A01: the sheet runs"):
         half_meshes(sweep)
+
+
+def test_a_finished_face_of_either_half_lies_on_its_panel_and_looks_out_of_the_mould():
+    sweep = sample_sweep(kerf_mm=(1.2, 1.2))
+    panels = {"S1-A01": sample_panel(), "S2-A01": sample_panel("S2-A01", 2)}
+
+    for serving in sweep.serving:
+        face = finished_face(sweep, serving, panels[serving.panel], 0.6)
+
+        x, y, z = face.vertices.T
+        wanted = 150.0 + 60.0 * (2.0 * x / 1200.0 - 1.0) * (2.0 * y / 1000.0 - 1.0)
+        np.testing.assert_allclose(z, wanted, atol=0.011)
+        a, b, c = np.moveaxis(face.vertices[face.triangles], 1, 0)
+        assert np.cross(b - a, c - a)[:, 2].min() > 0.0
+
+
+def test_a_coat_lifts_the_finished_face_of_either_half_out_of_the_mould():
+    sweep = sample_sweep(kerf_mm=(0.0, 0.0))
+    panel = sample_panel()
+
+    for serving in sweep.serving:
+        bare, coated = (finished_face(sweep, serving, panel, coat) for coat in (0.0, 2.0))
+
+        assert (coated.vertices - bare.vertices)[:, 2].min() == pytest.approx(2.0, rel=1e-9)
+
+
+def test_a_sweep_that_covers_nothing_of_its_panel_gives_no_face():
+    sweep = sample_sweep()
+    away = replace(sweep.serving[0], shift_mm=np.array([5000.0, 0.0, 0.0]))
+
+    face = finished_face(sweep, away, sample_panel(), 0.0)
+
+    assert len(face.triangles) == len(face.vertices) == 0

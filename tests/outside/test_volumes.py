@@ -1,14 +1,18 @@
 """Volumes and solids against closed forms and independent solid modellers."""
 
+from dataclasses import replace
+
 import manifold3d
 import numpy as np
 import pytest
 import trimesh
-from kit.sample import sample_sweep
+from kit.sample import sample_conditions, sample_job, sample_panel, sample_pieces, sample_sweep
 
 from cutblock.geometry import split_billet, volume_below
 from cutblock.geometry.solids import mesh_volume
 from cutblock.geometry.volume import kerf_volume, sheet_area, volume_below_within
+from cutblock.halves.footprints import find_footprints
+from cutblock.halves.measure import measure_halves
 from cutblock.halves.meshes import half_meshes
 
 LITRE = 1e6
@@ -132,6 +136,40 @@ def test_halves_with_their_kerf_are_sound_solids_that_fill_the_billet():
     assert_both_judges_accept(upper, billet - below - kerf / 2.0, 1e-6)
     assert_both_judges_accept(melted, kerf, 1e-5)
     assert sum(map(mesh_volume, (lower, upper, melted))) == pytest.approx(billet, rel=1e-9)
+
+
+@pytest.mark.parametrize(
+    "rings",
+    [
+        (np.array([[0.0, 0.0], [1200.0, 0.0], [1200.0, 500.0], [0.0, 1000.0]]),),
+        (np.array([[0, 0], [1200, 0], [1200, 500], [600, 500], [600, 1000], [0, 1000]], dtype=float),),
+        (
+            np.array([[30.0, 10.0], [1190.0, 40.0], [1150.0, 980.0], [20.0, 990.0]]),
+            np.array([[300.0, 200.0], [350.0, 700.0], [800.0, 600.0]]),
+        ),
+    ],
+    ids=["trapezium", "L", "hole"],
+)
+@pytest.mark.parametrize("skew", [0.0, 15.0])
+def test_trimmed_halves_with_their_kerf_are_sound_solids_with_the_litres_of_the_closed_form(rings, skew):
+    """Halves of a panel on the bed judged by trimesh and manifold3d against Green's theorem over the outline."""
+    panels = tuple(sample_panel(name, is_rectangle=False, outline=rings) for name in ("S1-A01", "S2-A01"))
+    sweep = sample_sweep(kerf_mm=(1.0, 1.8))
+    aside = np.array([skew, 0.0])
+    sweep = replace(sweep, near=sweep.near - aside, far=sweep.far + aside)
+    pieces = sample_pieces(sweep)
+    (volumes,), pieces = measure_halves(sample_job(), panels, (sweep,), pieces, sample_conditions())
+    (footprints,) = find_footprints(sample_job().layup, panels, (sweep,), pieces)
+
+    lower, upper, melted = half_meshes(sweep, footprints)
+
+    assert volumes.trimmed_mm3 > 1e7
+    assert_both_judges_accept(lower, volumes.lower_mm3, 1e-6)
+    assert_both_judges_accept(upper, volumes.upper_mm3, 1e-6)
+    assert_both_judges_accept(melted, volumes.kerf_mm3, 2e-5)
+    for solid, piece in zip((lower, upper), pieces, strict=True):
+        judged = trimesh.Trimesh(solid.vertices, solid.triangles)
+        np.testing.assert_allclose(judged.center_mass, piece.centre_mm, atol=1e-3)
 
 
 def test_a_split_over_a_pentagon_is_what_a_solid_modeller_cuts():
