@@ -14,8 +14,9 @@ _STEPS = (
     (steps.pair, "Pairing halves", 0.06),
     (steps.set_speeds, "Setting speeds", 0.04),
     (steps.compare, "Measuring finished faces", 0.02),
+    (steps.diagnose, "Trying what would help", 0.02),
     (steps.measure, "Measuring halves", 0.05),
-    (steps.pack, "Packing blocks", 0.08),
+    (steps.pack, "Packing blocks", 0.06),
     (steps.try_machine, "Trying the machine", 0.04),
     (steps.account, "Counting", 0.01),
 )

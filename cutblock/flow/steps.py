@@ -72,6 +72,13 @@ def compare(plan: Plan, progress: Progress) -> Plan:
     return _with(plan, findings, deviations=deviations, bends=face_bends(plan.panels))
 
 
+def diagnose(plan: Plan, progress: Progress) -> Plan:
+    """Try what would bring the hardest panel of each face in with one sweep."""
+    from cutblock.flow.diagnosis import diagnose as findings_of
+
+    return _with(plan, findings_of(plan, progress))
+
+
 def measure(plan: Plan, progress: Progress) -> Plan:
     """Measure both halves of every sweep."""
     from cutblock.halves.measure import measure_halves

@@ -2,8 +2,12 @@
 
 import math
 from collections.abc import Sequence
+from dataclasses import replace
 from typing import NamedTuple
 
+import numpy as np
+
+from cutblock.base.arrays import Floats
 from cutblock.base.progress import Progress, silent
 from cutblock.catalog.load import machine
 from cutblock.geometry.curvature import bend_of, domed_share
@@ -15,6 +19,7 @@ from cutblock.sweeps.cutting import Aim, CutPanel, cut_panels
 from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm
 from cutblock.sweeps.lie import Lie, lie_of
 
+_N_SAMPLES = 21  # a side, of a smaller cell
 _BATCH = 32  # panels fitted together: a fraction of a second
 _SAME = 0.1  # of the tolerance: of cuts that differ by less the squarer one is taken
 # The least-squares fit of a trial strays 2/3 of a dome's sagitta, the polished one 1/2.
@@ -50,8 +55,47 @@ def room_mm(job: Job, conditions: Conditions) -> float:
     return job.tolerance_mm - abs(kerf_error_mm(job.favour, conditions.kerf_mm, job.coat_mm))
 
 
+def part_of_panel(panel: Panel, share: float, place: tuple[float, float]) -> Panel:
+    """Return a smaller rectangle of a panel as a panel of its own, its surface taken from the panel's heights.
+
+    Args:
+        panel: The panel.
+        share: Of its length and of its width, over 0, at most 1.
+        place: Where: (0, 0) its corner at x = y = 0, (1, 1) the opposite one.
+    """
+    field = height_field(panel.heights_mm, panel.length_mm, panel.width_mm)
+    length, width = share * panel.length_mm, share * panel.width_mm
+    corner = np.array([place[0] * (panel.length_mm - length), place[1] * (panel.width_mm - width), 0.0])
+
+    def grid(n_x: int, n_y: int) -> tuple[Floats, Floats]:
+        x, y = np.meshgrid(np.linspace(0.0, length, n_x), np.linspace(0.0, width, n_y), indexing="ij")
+        return x, y
+
+    x, y = grid(*panel.heights_mm.shape)
+    heights = field.values(corner[0] + x, corner[1] + y)
+    x, y = grid(_N_SAMPLES, _N_SAMPLES)
+    z, normals = field.normals(corner[0] + x, corner[1] + y)
+    return replace(
+        panel,
+        length_mm=length,
+        width_mm=width,
+        origin_mm=panel.origin_mm + corner @ panel.axes,
+        outline=(np.array([[0.0, 0.0], [length, 0.0], [length, width], [0.0, width]]),),
+        is_rectangle=True,
+        heights_mm=heights,
+        samples_mm=np.stack([x, y, z], axis=-1).reshape(-1, 3),
+        normals=normals.reshape(-1, 3),
+        areas_mm2=np.full(z.size, length * width / z.size) / normals[..., 2].ravel(),
+    )
+
+
 def trial_cuts(
-    job: Job, panels: Sequence[Panel], conditions: Conditions, n_strips: int = 1, progress: Progress = silent
+    job: Job,
+    panels: Sequence[Panel],
+    conditions: Conditions,
+    n_strips: int = 1,
+    wires: Sequence[str] = (),
+    progress: Progress = silent,
 ) -> tuple[Trial, ...]:
     """Return for each panel the better of both wire directions, fitted by least squares alone.
 
@@ -60,6 +104,7 @@ def trial_cuts(
         panels: Any number.
         conditions: The kerf at the planned speed.
         n_strips: In how many strips each is cut.
+        wires: "x" or "y" for each panel where only that direction is to be tried; else empty.
         progress: Called every few panels.
     """
     aim = _aim(job, conditions)
@@ -67,17 +112,20 @@ def trial_cuts(
     for start in range(0, len(panels), _BATCH):
         progress(start / len(panels), "Trying cuts")
         batch = panels[start : start + _BATCH]
-        lies = [lie for panel in batch for lie in _lies(job, panel, conditions)]
-        cuts = cut_panels([(lie, n_strips) for lie in lies], aim, is_polished=False)
-        for panel, along_y, along_x in zip(batch, cuts[::2], cuts[1::2], strict=True):
-            trials.append(_trial(panel, along_y, along_x, job.tolerance_mm))
+        some = wires[start : start + _BATCH] if wires else ["yx"] * len(batch)
+        lies = [_lies(job, panel, conditions, along) for panel, along in zip(batch, some, strict=True)]
+        cuts = iter(cut_panels([(lie, n_strips) for each in lies for lie in each], aim, is_polished=False))
+        for panel, each in zip(batch, lies, strict=True):
+            trials.append(_trial(panel, [next(cuts) for _ in each], job.tolerance_mm))
     return tuple(trials)
 
 
-def _trial(panel: Panel, along_y: CutPanel, along_x: CutPanel, tolerance_mm: float) -> Trial:
-    gain = along_y.max_mm - along_x.max_mm
-    is_x = along_x.skew_mm < along_y.skew_mm - 1.0 if abs(gain) < _SAME * tolerance_mm else gain > 0.0
-    best = along_x if is_x else along_y
+def _trial(panel: Panel, cuts: Sequence[CutPanel], tolerance_mm: float) -> Trial:
+    best = cuts[0]
+    for other in cuts[1:]:
+        gain = best.max_mm - other.max_mm
+        is_better = other.skew_mm < best.skew_mm - 1.0 if abs(gain) < _SAME * tolerance_mm else gain > 0.0
+        best = other if is_better else best
     bend = bend_of(height_field(panel.heights_mm, panel.length_mm, panel.width_mm))
     return Trial(
         max_mm=best.max_mm,
@@ -99,9 +147,9 @@ def _aim(job: Job, conditions: Conditions) -> Aim:
     )
 
 
-def _lies(job: Job, panel: Panel, conditions: Conditions) -> tuple[Lie, Lie]:
+def _lies(job: Job, panel: Panel, conditions: Conditions, wires: str) -> list[Lie]:
     offset = centreline_offset_mm(job.favour, conditions.kerf_mm, job.coat_mm)
     heights = panel.heights_mm
     if offset:
         heights = offset_heights(heights, panel.length_mm, panel.width_mm, offset)
-    return lie_of(panel, heights, "y", job.margin_mm), lie_of(panel, heights, "x", job.margin_mm)
+    return [lie_of(panel, heights, along, job.margin_mm) for along in wires]
