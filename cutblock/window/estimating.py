@@ -3,7 +3,7 @@
 from collections.abc import Iterator
 
 from PySide6.QtCore import QModelIndex, Qt, Signal, Slot
-from PySide6.QtWidgets import QFormLayout, QHBoxLayout, QPushButton, QScrollArea, QSplitter, QVBoxLayout, QWidget
+from PySide6.QtWidgets import QGridLayout, QHBoxLayout, QPushButton, QScrollArea, QSplitter, QVBoxLayout, QWidget
 
 from cutblock.base.units import litres
 from cutblock.records.account import Ledger
@@ -43,9 +43,9 @@ class EstimatingDesk(QWidget):
     def __init__(self, parent: QWidget | None = None) -> None:
         super().__init__(parent)
         self._shown: ShownPlan | None = None
-        self._lines = QFormLayout()
-        self._lines.setLabelAlignment(Qt.AlignmentFlag.AlignLeft)
+        self._lines = QGridLayout()
         self._lines.setHorizontalSpacing(16)
+        self._lines.setColumnStretch(1, 1)
         self._words = label(kind="figure", wraps=True)
         self.bar = LedgerBar()
         self.ledger = RowsModel(LEDGER_COLUMNS)
@@ -65,11 +65,11 @@ class EstimatingDesk(QWidget):
         left.addWidget(titled("Summary", self._summary_area()))
         left.addWidget(titled("Blocks", self.block_table))
         left.addWidget(self.picture)
-        left.setSizes([250, 140, 340])
+        left.setSizes([240, 130, 370])
         right = QSplitter(Qt.Orientation.Vertical)
         right.addWidget(titled("Foam account", self._account()))
         right.addWidget(titled("Findings", self._finding_area()))
-        right.setSizes([430, 280])
+        right.setSizes([470, 240])
         split = QSplitter(Qt.Orientation.Horizontal)
         split.addWidget(left)
         split.addWidget(right)
@@ -141,12 +141,16 @@ class EstimatingDesk(QWidget):
             self.place_asked.emit(self._shown.plan.findings[int(key)].subject)
 
     def _show_summary(self, lines: tuple[tuple[str, str], ...]) -> None:
-        while self._lines.rowCount():
-            self._lines.removeRow(0)
-        for what, how_much in lines:
+        while (item := self._lines.takeAt(0)) is not None:
+            if (widget := item.widget()) is not None:
+                widget.hide()
+                widget.deleteLater()
+        for row, (what, how_much) in enumerate(lines):
             value = label(how_much, wraps=True)
             value.setTextInteractionFlags(Qt.TextInteractionFlag.TextSelectableByMouse)
-            self._lines.addRow(label(what[:1].upper() + what[1:], "note"), value)
+            name = label(what[:1].upper() + what[1:], "note")
+            self._lines.addWidget(name, row, 0, Qt.AlignmentFlag.AlignTop)
+            self._lines.addWidget(value, row, 1, Qt.AlignmentFlag.AlignTop)
 
     def _show_account(self, ledger: Ledger | None) -> None:
         parts = ledger_parts(ledger) if ledger is not None else ()
@@ -164,7 +168,9 @@ class EstimatingDesk(QWidget):
 
     def _summary_area(self) -> QScrollArea:
         inside = QWidget()
-        inside.setLayout(self._lines)
+        column = QVBoxLayout(inside)
+        column.addLayout(self._lines)
+        column.addStretch(1)
         area = QScrollArea()
         area.setWidgetResizable(True)
         area.setWidget(inside)

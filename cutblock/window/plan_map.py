@@ -137,12 +137,17 @@ class PlanMap(QWidget):
                 painter.setPen(ink.text)
                 scale, _ = self._scale()
                 for title in self._layout.titles:
-                    room = int(title.room_mm * scale)
-                    shown = self.fontMetrics().elidedText(title.text, Qt.TextElideMode.ElideRight, room)
+                    shown = self._title_text(title.text, int(title.room_mm * scale))
                     painter.drawText(self._place(title.x_mm, title.y_mm), shown)
                 self._paint_legend(painter)
             self._picture = (key, pixmap)
         return self._picture[1]
+
+    def _title_text(self, text: str, room_px: int) -> str:
+        """Return a group's title as far as there is room: R1 says more than Fa…"""
+        if self.fontMetrics().horizontalAdvance(text) > room_px:
+            text = text.removeprefix("Face ")
+        return self.fontMetrics().elidedText(text, Qt.TextElideMode.ElideRight, room_px)
 
     def _describe(self, panel: str) -> str:
         worst = self._worst.get(panel)

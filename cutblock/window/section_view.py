@@ -60,7 +60,8 @@ class _Section:
         self._metrics = QFontMetricsF(painter.font())
         line = self._metrics.height()
         left = self._metrics.horizontalAdvance("0000") + 14
-        frame = room.adjusted(left, line * 2 + 12, -12, -(line * 3 + 16))
+        right = self._metrics.horizontalAdvance("0000") / 2 + 6  # half of the last mark of the scale
+        frame = room.adjusted(left, line * 2 + 12, -right, -(line * 3 + 16))
         low = min(float(sweep.near[0, 0]), float(sweep.far[0, 0]), 0.0)
         high = max(float(sweep.near[-1, 0]), float(sweep.far[-1, 0]), sweep.length_mm)
         per_mm = frame.width() / (high - low)

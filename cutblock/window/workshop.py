@@ -337,7 +337,7 @@ def _block_speed_text(plan: Plan, block: Block) -> str:
     low = mm_per_minute(max([plan.conditions.low_mm_s, *(timing.low_mm_s for timing in timings)]))
     high = mm_per_minute(min([plan.conditions.high_mm_s, *(timing.high_mm_s for timing in timings)]))
     speed = f"{min(planned)}" if len(planned) == 1 else f"{min(planned)} to {max(planned)}"
-    return f"Wire speed {speed} mm/min; keep between {low:.0f} and {high:.0f} mm/min"
+    return f"Wire speed {speed} mm/min (limits {low:.0f} to {high:.0f})"
 
 
 def _block_foam_text(plan: Plan, block: Block) -> str:

@@ -219,7 +219,7 @@ def test_a_finding_about_the_whole_job_leads_nowhere(estimating):
 def test_the_speed_for_the_block_stands_above_its_cuts(workshop):
     found = words(workshop.cuts)
 
-    assert "Wire speed 159 mm/min; keep between 92 and 218 mm/min" in found
+    assert "Wire speed 159 mm/min (limits 92 to 218)" in found
     assert "20.0 kg/m³" in found
     assert "±50 %" in found
 
