@@ -251,7 +251,7 @@ def _programmed(
     patches: list[Patch], fits: Fits, smooth: Fits, tolerance_mm: float, until: float, report: Callable[[], None]
 ) -> Fits:
     """Return the fits with those that still miss the tolerance by little brought closer by linear programmes."""
-    index = _missing(fits, tolerance_mm, PROGRAMME_REACH * tolerance_mm, until)
+    index = _missing(fits, until * tolerance_mm, PROGRAMME_REACH * tolerance_mm, until)
     if not len(index):
         return fits
     hopeless_mm = HOPELESS * tolerance_mm if until > 0.0 else np.inf
