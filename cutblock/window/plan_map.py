@@ -144,7 +144,7 @@ class PlanMap(QWidget):
         return self._picture[1]
 
     def _title_text(self, text: str, room_px: int) -> str:
-        """Return a group's title as far as there is room: R1 says more than Fa…"""
+        """Return a group's title as far as there is room, without the word Face where it does not fit."""
         if self.fontMetrics().horizontalAdvance(text) > room_px:
             text = text.removeprefix("Face ")
         return self.fontMetrics().elidedText(text, Qt.TextElideMode.ElideRight, room_px)
