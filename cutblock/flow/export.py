@@ -14,7 +14,7 @@ from cutblock.base.errors import CheckFailed, InputError
 from cutblock.base.progress import Progress, silent
 from cutblock.base.tolerances import MESH_VOLUME_RELATIVE
 from cutblock.base.units import litres, mass_kg
-from cutblock.flow.folder import _flush_folder, _put_in_place, _write_file, replace_file
+from cutblock.flow.folder import _flush_folder, _put_in_place, _write_file
 from cutblock.geometry.solids import mesh_centre, mesh_volume
 from cutblock.halves.bodies import Body, billet_bodies, form_bodies, half_bodies, kerf_bodies
 from cutblock.halves.mesh_files import write_3mf, write_glb, write_obj, write_ply, write_stl
@@ -158,14 +158,29 @@ def _shown(bodies: Iterator[Body], count: int, progress: Progress) -> Iterator[B
 
 
 def _write_file_of(written: ExportFormat, target: Path, bodies: Iterator[Body]) -> int:
-    """Write one file that holds all bodies."""
+    """Write one file that holds all bodies, body by body; it takes its name when it is whole."""
     counted = _Counted(bodies)
-    content = io.BytesIO()
     writers = {ExportFormat.OBJ: write_obj, ExportFormat.THREE_MF: write_3mf, ExportFormat.GLB: write_glb}
-    writers[written](content, counted)
-    _refuse_nothing(counted.count)
-    replace_file(target, content.getvalue())
+    part = target.with_name(f".{target.name}.part-{os.getpid()}")
+    try:
+        with part.open("xb") as file:
+            writers[written](file, counted)
+            _refuse_nothing(counted.count)
+            file.flush()
+            os.fsync(file.fileno())
+        part.replace(target)
+        _flush_folder(target.parent)
+    except OSError as error:
+        raise _cannot_write(target, error) from error
+    finally:
+        part.unlink(missing_ok=True)
     return counted.count
+
+
+def _cannot_write(target: Path, error: OSError) -> InputError:
+    reason = error.strerror or type(error).__name__
+    remedy = "Nothing was written. Free some space or choose another place with --out."
+    return InputError(f"cannot be written ({reason}).", str(target), remedy)
 
 
 class _Counted:
@@ -200,6 +215,8 @@ def _write_folder(plan: Plan, chosen: ExportWhat, written: ExportFormat, target:
             else:
                 write_ply(content, body)
             name = f"{body.name}.{written}"
+            if Path(name).name != name:
+                raise InputError("is an id that cannot name a file.", body.name, "Make the plan again.")
             _write_file(part / name, content.getvalue())
             lines.append(_part_line(body, name, plan.conditions.density_kg_m3, shift))
         _refuse_nothing(len(lines) - 1)
@@ -207,9 +224,7 @@ def _write_folder(plan: Plan, chosen: ExportWhat, written: ExportFormat, target:
         _flush_folder(part)
         _put_in_place(part, target)
     except OSError as error:
-        reason = error.strerror or type(error).__name__
-        remedy = "Nothing was written. Free some space or choose another folder with --out."
-        raise InputError(f"cannot be written ({reason}).", str(target), remedy) from error
+        raise _cannot_write(target, error) from error
     finally:
         shutil.rmtree(part, ignore_errors=True)
     return len(lines) - 1

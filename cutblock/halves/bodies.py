@@ -5,6 +5,7 @@ from typing import NamedTuple
 
 import numpy as np
 
+from cutblock.base.errors import InputError
 from cutblock.geometry.fan import fan_connectivity
 from cutblock.geometry.solids import Mesh, joined
 from cutblock.halves.footprints import find_footprints
@@ -33,11 +34,14 @@ def half_bodies(
 
     Raises:
         GeometryError: See `half_meshes`.
+        InputError: A half has no piece; a plan that was edited by hand.
     """
     names = {(piece.sweep, piece.half): piece.id for piece in pieces}
     for sweep, footprints in zip(sweeps, find_footprints(layup, panels, sweeps, pieces), strict=True):
         lower, upper, _ = half_meshes(sweep, footprints)
         for half, mesh in ((Half.LOWER, lower), (Half.UPPER, upper)):
+            if (sweep.id, half) not in names:
+                raise InputError(f"its {half} half is missing from the pieces.", sweep.id, "Make the plan again.")
             if len(mesh.triangles):
                 yield Body(names[sweep.id, half], mesh)
 

@@ -111,11 +111,12 @@ def test_a_write_that_fails_half_way_leaves_what_was_there(made, tmp_path, monke
     assert export(made, "form", file_format, "--out", str(target)) == 0
     before = sorted((path.name, path.stat().st_mtime_ns) for path in tmp_path.rglob("*"))
 
-    def full(path, content):
+    def full(file, *bodies):
+        file.write(b"half a file")
         raise OSError(28, "No space left on device")
 
-    monkeypatch.setattr("cutblock.flow.folder._write_file", full)
-    monkeypatch.setattr("cutblock.flow.export._write_file", full)
+    monkeypatch.setattr("cutblock.flow.export.write_obj", full)
+    monkeypatch.setattr("cutblock.flow.export.write_stl", full)
 
     assert export(made, "halves", file_format, "--out", str(target)) == 2
 
@@ -134,3 +135,22 @@ def test_a_plan_whose_litres_are_not_those_of_its_rails_is_not_exported(made, tm
 
     assert "the plan says" in capsys.readouterr().err
     assert not (tmp_path / "out").exists()
+
+
+@pytest.mark.parametrize(
+    ("was", "becomes", "said"),
+    [
+        ('{"id":"SB-S1-A01-L"', '{"id":"../../SB-S1-A01-L"', "cannot name a file"),
+        ('"half":"lower","duty"', '"half":"upper","duty"', "its lower half is missing from the pieces"),
+    ],
+)
+def test_a_plan_that_was_edited_by_hand_is_refused_by_name(made, tmp_path, capsys, was, becomes, said):
+    (tmp_path / "plan").mkdir()
+    text = (made / "plan.json").read_text()
+    assert was in text
+    (tmp_path / "plan/plan.json").write_text(text.replace(was, becomes))
+
+    assert export(tmp_path / "plan", "halves", "stl", "--out", str(tmp_path / "out")) == 2
+
+    assert said in capsys.readouterr().err
+    assert [path.name for path in tmp_path.iterdir()] == ["plan"]
