@@ -17,7 +17,6 @@ from PySide6.QtGui import (
 )
 from PySide6.QtWidgets import QSizePolicy, QToolTip, QWidget
 
-from cutblock.base.arrays import Floats
 from cutblock.records.plan import Plan
 from cutblock.window.deviation import NOT_CUT, STEPS, Step, legend_text, step_of, worst_by_panel
 from cutblock.window.map_layout import Layout, PlacedPanel, lay_out
@@ -26,7 +25,7 @@ from cutblock.window.theme import Ink, ink_of, text_on
 
 _EMPTY = Layout((), (), (1.0, 1.0))
 _MARGIN_PX = 10.0
-_STRETCH_PX = 8.0  # between the points of a curved edge
+_STRETCH = 0.01  # between the points of a curved edge, of the larger side of the picture
 _STRAIGHT_COS = 0.98  # of the turn at a point that is no corner
 _STEPS_BY_KEY = {Qt.Key.Key_Left: -1, Qt.Key.Key_Up: -1, Qt.Key.Key_Right: 1, Qt.Key.Key_Down: 1}
 
@@ -55,7 +54,7 @@ class PlanMap(QWidget):
 
     def show_plan(self, plan: Plan) -> None:
         """Replace the picture."""
-        self._layout = lay_out(plan.panels, plan.job.layup)
+        self._layout = _thinned(lay_out(plan.panels, plan.job.layup))
         self._paths = (None, [])
         self._picture = (None, QPixmap())
         self._worst = worst_by_panel(plan.panels, plan.sweeps)
@@ -257,18 +256,29 @@ class PlanMap(QWidget):
         path = QPainterPath()
         for ring in panel.rings_mm:
             flipped = np.column_stack([ring[:, 0], self._layout.size_mm[1] - ring[:, 1]])
-            points = _thinned(flipped * scale + (corner.x(), corner.y()))
+            points = flipped * scale + (corner.x(), corner.y())
             path.addPolygon(QPolygonF([QPointF(x, y) for x, y in points.tolist()]))
             path.closeSubpath()
         return path
 
 
-def _thinned(points: Floats) -> Floats:
-    """Return the corners of a closed polygon, (n, 2) pixels, and a point every few pixels between them."""
-    sides = np.roll(points, -1, axis=0) - points
+def _thinned(layout: Layout) -> Layout:
+    """Return the layout with no more points on curved edges than a screen shows, all corners kept."""
+    rings = [ring for panel in layout.panels for ring in panel.rings_mm]
+    if not rings:
+        return layout
+    points = np.concatenate(rings)
+    ends = np.cumsum([len(ring) for ring in rings])
+    starts = np.concatenate([[0], ends[:-1]])
+    before = np.arange(len(points)) - 1
+    before[starts] = ends - 1
+    after = np.arange(len(points)) + 1
+    after[ends - 1] = starts
+    sides = points[after] - points
     lengths = np.hypot(sides[:, 0], sides[:, 1])
-    before = np.roll(sides, 1, axis=0)
-    straight = (sides * before).sum(axis=1) > _STRAIGHT_COS * lengths * np.roll(lengths, 1)
-    stretch = np.floor(np.cumsum(lengths) / _STRETCH_PX)
-    kept: Floats = points[~straight | (stretch != np.roll(stretch, 1))]
-    return kept if len(kept) > 2 else points
+    straight = (sides * sides[before]).sum(axis=1) > _STRAIGHT_COS * lengths * lengths[before]
+    stretch = np.floor(np.cumsum(lengths) / (_STRETCH * max(layout.size_mm)))
+    kept = ~straight | (stretch != stretch[before])
+    few = iter([ring[kept[start:end]] for ring, start, end in zip(rings, starts, ends, strict=True)])
+    panels = tuple(panel._replace(rings_mm=tuple(next(few) for _ in panel.rings_mm)) for panel in layout.panels)
+    return layout._replace(panels=panels)

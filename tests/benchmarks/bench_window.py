@@ -115,7 +115,7 @@ def main() -> None:
     heartbeat.report("start")
     for job in options.jobs:
         for number in range(options.repeat):
-            plan(application, window, runner, heartbeat, str(Path(job).resolve()))
+            plan(application, runner, heartbeat, str(Path(job).resolve()), window, walks=number == 0)
             heartbeat.report(f"{Path(job).resolve().parent.name} {number + 1}")
             if worker.pid is not None:
                 mb = memory_mb(os.getpid()), memory_mb(worker.pid)
@@ -126,7 +126,9 @@ def main() -> None:
     window.close()
 
 
-def plan(application: QApplication, window: MainWindow, runner: Runner, heartbeat: Heartbeat, job: str) -> None:
+def plan(
+    application: QApplication, runner: Runner, heartbeat: Heartbeat, job: str, window: MainWindow, *, walks: bool
+) -> None:
     """Plan and show one job, then walk through the desks."""
     heartbeat.phase = "planning"
     before = window.shown
@@ -135,9 +137,11 @@ def plan(application: QApplication, window: MainWindow, runner: Runner, heartbea
         application.processEvents()
         time.sleep(0.0005)
     heartbeat.phase = "showing"
-    spin(application, 3.0)
+    spin(application, 3.0 if walks else 0.5)
     if window.shown is before:
         raise SystemExit(f"{job}: {window.failure_dialog.text()}")
+    if not walks:
+        return
     heartbeat.phase = "walking through the desks"
     for number in range(window.desks.count()):
         window.desks.setCurrentIndex(number)
