@@ -8,6 +8,7 @@ from PySide6.QtWidgets import QHBoxLayout, QSplitter, QVBoxLayout, QWidget
 from cutblock.records.plan import Plan
 from cutblock.window.desk_parts import filter_field, titled
 from cutblock.window.labels import counted, label
+from cutblock.window.panel_map import PanelMap
 from cutblock.window.plan_map import PlanMap
 from cutblock.window.rows import PANEL_COLUMNS, panel_rows
 from cutblock.window.section_view import SectionView
@@ -22,6 +23,7 @@ class DetailingDesk(QWidget):
         super().__init__(parent)
         self._plan: Plan | None = None
         self.map = PlanMap()
+        self.panel_map = PanelMap()
         self.section = SectionView()
         self.rows = RowsModel(PANEL_COLUMNS)
         self.table = RowsView(self.rows, "Panels")
@@ -40,8 +42,9 @@ class DetailingDesk(QWidget):
         column.addWidget(self.table)
         pictures = QSplitter(Qt.Orientation.Horizontal)
         pictures.addWidget(titled("Plan of the form", self.map))
+        pictures.addWidget(titled("Chosen panel against the form", self.panel_map))
         pictures.addWidget(titled("Sweep in its billet, seen along the wire", self.section))
-        pictures.setSizes([500, 500])
+        pictures.setSizes([400, 300, 400])
         self._split = QSplitter(Qt.Orientation.Vertical)
         self._split.addWidget(pictures)
         self._split.addWidget(below)
@@ -76,6 +79,9 @@ class DetailingDesk(QWidget):
         sweep = next((sweep for sweep in self._plan.sweeps if sweep.id == sweep_id), None)
         self.section.show_sweep(sweep, self._plan.job.wall_mm)
         self.map.pick(panel)
+        chosen = next((one for one in self._plan.panels if one.id == panel), None)
+        deviation = next((one for one in self._plan.deviations if one.panel == panel), None)
+        self.panel_map.show_panel(chosen, deviation, self._plan.job.tolerance_mm)
 
     def go_to(self, subject: str) -> bool:
         """Pick the panel or sweep called `subject`, or the first panel of a face; tell whether there is one."""

@@ -2,6 +2,9 @@
 
 from typing import NamedTuple
 
+import numpy as np
+
+from cutblock.base.arrays import Floats, Ints
 from cutblock.records.panel import Panel
 from cutblock.records.sweep import Serving, Sweep
 
@@ -58,3 +61,42 @@ def worst_by_panel(panels: tuple[Panel, ...], sweeps: tuple[Sweep, ...]) -> dict
     return {
         panel.id: max((serving.max_mm for _, serving in halves.get(panel.id, [])), default=None) for panel in panels
     }
+
+
+class SignedStep(NamedTuple):
+    """One step of the map of a single panel; shares of the tolerance, foam above the form counting positive."""
+
+    colour: str
+    low_share: float
+    high_share: float
+
+
+# From deep blue (foam too low) over near white to vermillion (foam too high): told apart with any colour vision.
+SIGNED_STEPS = (
+    SignedStep("#003a63", -float("inf"), -1.0),
+    SignedStep("#0072B2", -1.0, -0.5),
+    SignedStep("#8cc4e6", -0.5, -0.1),
+    SignedStep("#f4f4f2", -0.1, 0.1),
+    SignedStep("#f6c88f", 0.1, 0.5),
+    SignedStep("#E69F00", 0.5, 1.0),
+    SignedStep("#b13a00", 1.0, float("inf")),
+)
+
+
+def signed_steps_of(deviations_mm: Floats, tolerance_mm: float) -> Ints:
+    """Return for each deviation the index of its step in `SIGNED_STEPS`; exactly the tolerance is within."""
+    shares = np.asarray(deviations_mm) / tolerance_mm
+    low = np.array([step.high_share for step in SIGNED_STEPS[:3]])
+    high = np.array([step.high_share for step in SIGNED_STEPS[3:-1]])
+    index = np.searchsorted(low, shares, side="right") + np.searchsorted(high, shares, side="left")
+    return index.astype(np.int64)
+
+
+def signed_text(step: SignedStep, tolerance_mm: float) -> str:
+    """Return what the legend of one panel says of a step, e.g. "0.20 to 1.00 mm"."""
+    low, high = step.low_share * tolerance_mm, step.high_share * tolerance_mm
+    if step.low_share == -float("inf"):
+        return f"under {high:.2f} mm"
+    if step.high_share == float("inf"):
+        return f"over {low:.2f} mm"
+    return f"{low:.2f} to {high:.2f} mm"
