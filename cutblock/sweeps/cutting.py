@@ -87,6 +87,7 @@ def cut_panels(
     *,
     is_polished: bool = False,
     tried: Sequence[CutPanel] | None = None,
+    joints_mm: Sequence[tuple[float, ...]] = (),
     report: Callable[[], None] = lambda: None,
 ) -> list[CutPanel]:
     """Return every given lie cut in the given number of strips, whether it meets the tolerance or not.
@@ -95,11 +96,20 @@ def cut_panels(
         lies: Lies, each with a number of strips.
         aim: What is fitted for.
         is_polished: Whether sheets that just miss are fitted for the least largest deviation, which takes longer.
+        joints_mm: Where the strips of each lie meet; empty: all about equally wide.
         tried: The same lies cut by least squares before, to start from.
         report: Called every now and then.
     """
-    strips = [Strip(lie, number, count) for lie, count in lies for number in range(1, count + 1)]
-    starts = None if tried is None else [strip.sheet for panel in tried for strip in panel.strips]
+    places = joints_mm if joints_mm else [()] * len(lies)
+    strips = [
+        Strip(lie, number, count, place)
+        for (lie, count), place in zip(lies, places, strict=True)
+        for number in range(1, count + 1)
+    ]
+    starts = None
+    if tried is not None:
+        strips = [cut.strip for panel in tried for cut in panel.strips]
+        starts = [cut.sheet for panel in tried for cut in panel.strips]
     sheets = fit_patches(
         [strip.patch(aim.stretch) for strip in strips],
         aim.room_mm,

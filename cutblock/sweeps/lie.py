@@ -85,11 +85,12 @@ def _billet_extent(extent_mm: float, margin_mm: float) -> float:
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Strip:
-    """One of n about equal strips of a panel across the wire; on the bench the outermost ones carry the margin."""
+    """One of n strips of a panel across the wire; on the bench the outermost ones carry the margin."""
 
     lie: Lie
     number: int  # from 1
     n_strips: int
+    joints_mm: tuple[float, ...] = ()  # y of the lie where the strips meet; empty: all about equally wide
 
     @property
     def panel_span_mm(self) -> tuple[float, float]:
@@ -102,7 +103,7 @@ class Strip:
         if number in (0, self.n_strips):
             return low if number == 0 else low + extent
         # Joints lie on tenths of a mm, which a workshop can measure and files hold exactly.
-        return round(low + extent * number / self.n_strips, 1)
+        return round(self.joints_mm[number - 1] if self.joints_mm else low + extent * number / self.n_strips, 1)
 
     @property
     def billet_span_mm(self) -> tuple[float, float]:
@@ -141,7 +142,8 @@ class Strip:
     def _skew_limit_mm(self, stretch: float) -> float:
         """Return how far askew a ruling may lie before the springs run out, given how far its ends differ in height."""
         n_y = self.lie.heights_mm.shape[1]
-        first, last = (self.number - 1) * (n_y - 1) // self.n_strips, -(-self.number * (n_y - 1) // self.n_strips)
+        steps = (np.array(self.panel_span_mm) - self.lie.corner_mm[1]) * ((n_y - 1) / self.lie.extent_mm[1])
+        first, last = int(np.floor(steps[0] + 1e-2)), int(np.ceil(steps[1] - 1e-2))
         fall = float(np.abs(self.lie.heights_mm[:, last] - self.lie.heights_mm[:, first]).max())
         rise = fall / (self.lie.extent_mm[1] * (last - first) / (n_y - 1))
         return SPARE * self.width_mm * float(np.sqrt(max(stretch**2 - 1.0 - rise**2, LEAST_LEAN**2)))

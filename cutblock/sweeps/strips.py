@@ -14,6 +14,8 @@ from cutblock.sweeps.lie import Lie
 MOST_STRIPS = 12
 NARROWEST_MM = 60.0
 SAME_SKEW_MM = 1.0
+UNEVEN = 1.1  # largest deviation of all strips by the smallest that is worth moving their joints
+LEAST_ERROR = 0.03  # share of the largest deviation below which strips do not become wider any more
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -36,6 +38,8 @@ class _Search:
     best: CutPanel | None = None  # fewest strips that do
     last: CutPanel | None = None
     tried: CutPanel | None = None  # a cut by least squares that misses by so little that it is to be polished
+    even: CutPanel | None = None  # strips of one width, until those of balanced widths are cut too
+    joints_mm: tuple[float, ...] = ()  # of the next cut
     limit: int = field(init=False)
 
     def __post_init__(self) -> None:
@@ -57,6 +61,14 @@ class _Search:
     def take(self, cut: CutPanel) -> None:
         n_strips = len(cut.strips)
         self.last = cut
+        if self.even is None and self.tried is None:
+            self.joints_mm = balanced_joints(cut)
+            if self.joints_mm:
+                self.even = cut
+                return
+        elif self.even is not None:
+            cut = min(self.even, cut, key=lambda panel: panel.max_mm)
+            self.last, self.even, self.joints_mm = cut, None, ()
         was_polished, self.tried = self.tried is not None, None
         if cut.max_mm <= self.aim.tolerance_mm:
             self.best = cut
@@ -116,6 +128,25 @@ def choose_cuts(
     return [_chosen(pair, aim) for pair in searches]
 
 
+def balanced_joints(cut: CutPanel) -> tuple[float, ...]:
+    """Return where strips of the widths at which all would stray alike meet; empty where they do already.
+
+    What a strip strays grows with the square of its width where the surface is domed, with the cube elsewhere.
+    """
+    strips = cut.strips
+    errors = np.array([strip.sheet.max_mm for strip in strips])
+    if len(strips) == 1 or errors.max() < UNEVEN * max(float(errors.min()), 1e-3 * float(errors.max())):
+        return ()
+    lie = strips[0].strip.lie
+    order = 2.0 if is_domed(lie.heights_mm, *lie.extent_mm).mean() > 0.5 else 3.0
+    edges = np.array([strip.strip.panel_span_mm[0] for strip in strips] + [strips[-1].strip.panel_span_mm[1]])
+    counts = np.concatenate([[0.0], np.cumsum(np.maximum(errors / errors.max(), LEAST_ERROR) ** (1.0 / order))])
+    joints = np.interp(np.arange(1, len(strips)) * (counts[-1] / len(strips)), counts, edges)
+    if np.diff(np.concatenate([edges[:1], joints, edges[-1:]])).min() < NARROWEST_MM:
+        return ()
+    return tuple(float(joint) for joint in np.round(joints, 1))
+
+
 def _cut(searches: Sequence[_Search], aim: Aim, report: Callable[[], None]) -> None:
     """Make the next cut of searches: by least squares, or polishing what least squares gave."""
     for is_repeated in (False, True):
@@ -124,7 +155,8 @@ def _cut(searches: Sequence[_Search], aim: Aim, report: Callable[[], None]) -> N
             continue
         tried = [search.tried for search in part if search.tried is not None] if is_repeated else None
         wanted = [(search.lie, search.n_next) for search in part]
-        cuts = cut_panels(wanted, aim, is_polished=is_repeated, tried=tried, report=report)
+        joints = [search.joints_mm for search in part]
+        cuts = cut_panels(wanted, aim, is_polished=is_repeated, tried=tried, joints_mm=joints, report=report)
         for search, cut in zip(part, cuts, strict=True):
             search.take(cut)
 

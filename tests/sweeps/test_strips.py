@@ -1,9 +1,9 @@
 import numpy as np
 from kit.shapes import dome, panel_of
 
-from cutblock.sweeps.cutting import Aim
+from cutblock.sweeps.cutting import Aim, cut_panels
 from cutblock.sweeps.lie import lie_of
-from cutblock.sweeps.strips import choose_cuts
+from cutblock.sweeps.strips import balanced_joints, choose_cuts
 
 
 def aim_of(tolerance_mm=2.0):
@@ -32,3 +32,37 @@ def test_the_strips_needed_are_told_where_the_limit_was_met():
     # kappa w^2 / (16 m^2) = 0.05 mm of room beside the kerf, at the gentler curvature of 1 / 1500 mm or 1 / 1000 mm.
     assert 30 < choice.n_needed < 60
     assert len(choice.panel.strips) == 12
+
+
+def steeper(x, y):
+    """A barrel across the wire whose curvature rises sixfold from one side to the other."""
+    place = (y + 500.0) / 1000.0
+    return -30.0 * place**2 - 50.0 * place**3 - (x / 1000.0) ** 2
+
+
+def test_joints_move_to_where_the_surface_bends_more():
+    lie = lies_of(steeper)[0]
+    aim = aim_of(3.0)
+    (even,) = cut_panels([(lie, 2)], aim)
+    joints = balanced_joints(even)
+    (balanced,) = cut_panels([(lie, 2)], aim, joints_mm=[joints])
+
+    assert joints[0] > 550.0
+    assert joints[0] == round(joints[0], 1)
+    assert balanced.strips[0].strip.panel_span_mm[1] == joints[0] == balanced.strips[1].strip.panel_span_mm[0]
+    fits = [[strip.sheet.max_mm for strip in cut.strips] for cut in (even, balanced)]
+    assert max(fits[1]) < 0.85 * max(fits[0])
+    assert max(fits[1]) < 1.3 * min(fits[1])
+
+
+def test_balanced_strips_do_with_fewer():
+    lies = lies_of(steeper)
+    (even,) = cut_panels([(lies[0], 2)], aim_of(2.0), is_polished=True)
+    (choice,) = choose_cuts([lies], aim_of(0.6 + 0.8 * max(strip.sheet.max_mm for strip in even.strips)))
+    assert choice.is_within
+    assert len(choice.panel.strips) <= 2
+
+
+def test_strips_that_stray_alike_stay_alike():
+    (even,) = cut_panels([(lies_of(dome)[0], 2)], aim_of(3.0))
+    assert balanced_joints(even) == ()
