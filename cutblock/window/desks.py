@@ -35,6 +35,7 @@ class Desks(QTabWidget):
         self.workshop: WorkshopDesk
         self.estimating: EstimatingDesk
         self._filling: dict[int, Iterator[None]] = {}  # the desks not shown whole yet
+        self._waiting: ShownPlan | None = None  # with pictures that came before all desks were shown whole
         self._timer = QTimer(self)
         self._timer.setInterval(0)
         self._timer.timeout.connect(self._fill_on)
@@ -55,17 +56,21 @@ class Desks(QTabWidget):
             self._make_next()
         fillings = (self.detailing.showing(shown), self.workshop.showing(shown), self.estimating.showing(shown))
         self._filling = dict(enumerate(fillings))
+        self._waiting = None
         self._fill_on()
         self._timer.start()
 
     def add_pictures(self, shown: "ShownPlan", pictures: "Pictures") -> None:
-        """Take more pictures of the plan shown.
+        """Take more pictures of the plan shown; those that come before it is shown whole wait until it is.
 
         Args:
             shown: The plan with all the pictures it has by now.
             pictures: Those that have just come.
         """
-        self.workshop.add_pictures(shown, pictures)
+        if self._filling:
+            self._waiting = shown
+            return
+        self.workshop.add_pictures(shown, pictures.tags)
         self.estimating.add_pictures(shown)
 
     def show_busy(self, is_busy: bool) -> None:
@@ -123,8 +128,10 @@ class Desks(QTabWidget):
     @Slot(int)
     def _fill(self, number: int) -> None:
         """Show the rest of the desk the user turns to."""
-        for _ in self._filling.pop(number, ()):
+        for _ in self._filling.get(number, ()):
             pass
+        if self._filling.pop(number, None) is not None:
+            self._end_filling()
 
     @Slot()
     def _fill_on(self) -> None:
@@ -133,6 +140,15 @@ class Desks(QTabWidget):
             number = self.currentIndex() if self.currentIndex() in self._filling else min(self._filling)
             if next(self._filling[number], self) is self:
                 del self._filling[number]
-        if not self._filling:
-            self._timer.stop()
-            self.filled.emit()
+        self._end_filling()
+
+    def _end_filling(self) -> None:
+        """Show the pictures that have come meanwhile, once all desks are shown whole."""
+        if self._filling:
+            return
+        self._timer.stop()
+        waiting, self._waiting = self._waiting, None
+        if waiting is not None:
+            self.workshop.add_pictures(waiting, waiting.views.tags)
+            self.estimating.add_pictures(waiting)
+        self.filled.emit()

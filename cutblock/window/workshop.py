@@ -27,7 +27,7 @@ from cutblock.window.labels import counted, label
 from cutblock.window.rows import CUT_COLUMNS, PIECE_COLUMNS, cut_rows, piece_rows
 from cutblock.window.speed_chart import SpeedChartView
 from cutblock.window.tables import RowsModel, RowsView
-from cutblock.worker.requests import Pictures, ShownPlan
+from cutblock.worker.requests import ShownPlan
 
 
 class WorkshopDesk(QWidget):
@@ -83,10 +83,10 @@ class WorkshopDesk(QWidget):
         yield
         self.speed.show_plan(shown)
 
-    def add_pictures(self, shown: ShownPlan, pictures: Pictures) -> None:
-        """Take more pictures of the plan shown."""
+    def add_pictures(self, shown: ShownPlan, tags: tuple[Drawing, ...]) -> None:
+        """Take more pictures of the plan shown, `tags` those of its tags that have just come."""
         self.cuts.add_pictures(shown)
-        self.tags.add_pictures(shown, pictures.tags)
+        self.tags.add_pictures(shown, tags)
 
     def go_to(self, subject: str) -> bool:
         """Show the block or piece called `subject`; tell whether there is one."""

@@ -13,6 +13,7 @@ from cutblock.window.detailing import DetailingDesk
 from cutblock.window.estimating import EstimatingDesk
 from cutblock.window.tables import ROWS_AT_ONCE, RowsModel
 from cutblock.window.workshop import WorkshopDesk
+from cutblock.worker.requests import Pictures
 
 
 @pytest.fixture
@@ -222,6 +223,22 @@ def test_the_speed_for_the_block_stands_above_its_cuts(workshop):
     assert "Wire speed 159 mm/min (limits 92 to 218)" in found
     assert "20.0 kg/m³" in found
     assert "±50 %" in found
+
+
+@pytest.mark.parametrize("turn", [0, 1, 2])
+def test_pictures_that_come_before_all_desks_are_filled_are_shown_all_the_same(qtbot, window, turn):
+    shown = sample_shown()
+    views = shown.views
+    window.show_plan(replace(shown, views=replace(views, tags=(), blocks=())))
+    desks = window.desks
+    assert not desks.is_filled
+    desks.add_pictures(shown, Pictures(tags=views.tags, blocks=views.blocks, sheet=views.sheet))
+    desks.setCurrentIndex(turn)
+    qtbot.waitUntil(lambda: desks.is_filled, timeout=2000)
+
+    for picture in (desks.workshop.cuts.picture, desks.estimating.picture):
+        assert picture._drawing is views.blocks[0]
+    assert desks.workshop.tags.picture._drawing in views.tags
 
 
 def test_a_plan_of_a_thousand_panels_is_shown_in_small_pieces(qtbot, window, monkeypatch):
