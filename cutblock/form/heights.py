@@ -5,7 +5,7 @@ from pathlib import Path
 import numpy as np
 
 from cutblock.base.arrays import Floats, Ints
-from cutblock.base.errors import InputError
+from cutblock.base.errors import GeometryError, InputError
 from cutblock.base.units import length_text, place_text
 from cutblock.form.patches import recorded
 from cutblock.form.tables import read_points
@@ -13,10 +13,11 @@ from cutblock.geometry.patch import interpolated_surface
 from cutblock.records.form import Face
 from cutblock.records.job import HeightsSource
 
+_FEWEST_FOR_NOISE = 9  # grid lines
 _OFF_LINE_SHARE = 0.01  # of the grid step; rounding in the file, no more
 
 
-def face_of_heights(name: str, source: HeightsSource, scale: float, units: str) -> Face:
+def face_of_heights(name: str, source: HeightsSource, scale: float, units: str, tolerance_mm: float) -> Face:
     """Return the bicubic patch through the grid; u and v are x and y less their least values.
 
     Args:
@@ -24,9 +25,11 @@ def face_of_heights(name: str, source: HeightsSource, scale: float, units: str) 
         source: The file; its rows may come in any order.
         scale: mm per unit of the file.
         units: The unit of messages.
+        tolerance_mm: More noise is refused.
 
     Raises:
         InputError: The rows do not form a complete regular grid; names file and line.
+        GeometryError: The heights are noisier than the tolerance; names the worst place.
     """
     points, lines = read_points(source.path, scale)
     file = Path(source.path).name
@@ -54,8 +57,31 @@ def face_of_heights(name: str, source: HeightsSource, scale: float, units: str) 
         )
     heights = points[order, 2].reshape(len(x), len(y))
     grid = np.stack([*np.meshgrid(x, y, indexing="ij"), heights], axis=-1)
+    _refuse_noise(grid, file, units, tolerance_mm)
     patch = recorded(interpolated_surface(x - x[0], y - y[0], grid))
     return Face(name=name, patch=patch, length_mm=float(x[-1] - x[0]), width_mm=float(y[-1] - y[0]))
+
+
+def _refuse_noise(grid: Floats, file: str, units: str, tolerance_mm: float) -> None:
+    """Refuse heights whose noise is larger than the tolerance.
+
+    Fourth differences take out what is smooth and leave sqrt(70) times the noise of single heights (von Neumann's
+    method of successive differences); their median in size, times 1.4826, does not see single creases.
+    """
+    for axis in (0, 1):
+        if grid.shape[axis] < _FEWEST_FOR_NOISE:
+            continue
+        strays = np.abs(np.diff(grid[..., 2], 4, axis=axis)) / np.sqrt(70.0)
+        noise = 1.4826 * float(np.median(strays))
+        if noise > tolerance_mm:
+            worst = np.array(np.unravel_index(int(np.argmax(strays)), strays.shape))
+            worst[axis] += 2
+            raise GeometryError(
+                f"the heights jump by about {length_text(noise, units, 2)} from point to point, more than the "
+                f"tolerance of {length_text(tolerance_mm, units, 2)}; most at {place_text(grid[tuple(worst)], units)}",
+                file,
+                "Smooth the heights, give a wider tolerance, or a finer grid if the form is really that wavy.",
+            )
 
 
 def _nearest(points: Floats, where: tuple[Floats, Floats]) -> int:

@@ -9,7 +9,7 @@ import numpy as np
 from cutblock.base.arrays import Floats, Ints
 from cutblock.base.errors import GeometryError, InputError
 from cutblock.base.progress import Progress
-from cutblock.base.units import length_text, mm_per
+from cutblock.base.units import length_text, mm_per, place_text
 from cutblock.form.obj import read_obj
 from cutblock.form.patches import recorded
 from cutblock.form.ply import read_ply
@@ -87,9 +87,9 @@ def faces_of_mesh(
             face_name,
             job.units,
         )
-        face = _face(face_name, upside)
+        face, stray_mm, stray_at_mm = _face(face_name, upside)
         faces.append(face)
-        notes.extend(_upside_findings(upside, face, job))
+        notes.extend(_upside_findings(upside, face, stray_mm, stray_at_mm, job))
     return tuple(faces), tuple(notes)
 
 
@@ -137,7 +137,12 @@ def _shell_findings(shell: Shell, name: str) -> list[Finding]:
     return notes
 
 
-def _upside_findings(upside: Upside, face: Face, job: Job) -> list[Finding]:
+def _upside_findings(upside: Upside, face: Face, stray_mm: float, stray_at_mm: Floats, job: Job) -> list[Finding]:
+    """Return what was done to the mesh, and how far its vertices stray from the surface.
+
+    Raises:
+        GeometryError: The noise is larger than the tolerance.
+    """
     notes = []
     if upside.was_closed:
         text = "The mesh is a closed solid; the side that faces up was taken, underside and side walls were dropped."
@@ -148,6 +153,20 @@ def _upside_findings(upside: Upside, face: Face, job: Job) -> list[Finding]:
     if upside.n_cracks:
         text = f"{upside.n_cracks} cracks narrower than 0.5 mm inside the surface were closed."
         notes.append(_note(Severity.WARNING, "mesh-gaps", face.name, text))
+    if face.noise_mm > job.tolerance_mm:
+        raise GeometryError(
+            f"the vertices lie {length_text(face.noise_mm, job.units, 2)} (rms) off any smooth surface of the mesh's "
+            f"own fineness, more than the tolerance of {length_text(job.tolerance_mm, job.units, 2)}; the worst, "
+            f"{length_text(stray_mm, job.units, 2)}, at {place_text(stray_at_mm, job.units)}",
+            f"face {face.name}",
+            "Smooth the mesh, export it from the model instead of a scan, or give a wider tolerance.",
+        )
+    if face.noise_mm <= 0.25 * job.tolerance_mm and stray_mm > job.tolerance_mm:
+        text = (
+            f"A vertex lies {length_text(stray_mm, job.units, 2)} off the smooth surface through the mesh at "
+            f"{place_text(stray_at_mm, job.units)}: a crease, a tip or a spike there is rounded. Cut the face along it."
+        )
+        notes.append(_note(Severity.WARNING, "mesh-crease", face.name, text))
     if face.noise_mm > 0.25 * job.tolerance_mm:
         text = (
             f"The mesh's vertices lie {length_text(face.noise_mm, job.units, 2)} (rms) off any smooth surface of its "
@@ -157,7 +176,8 @@ def _upside_findings(upside: Upside, face: Face, job: Job) -> list[Finding]:
     return notes
 
 
-def _face(name: str, upside: Upside) -> Face:
+def _face(name: str, upside: Upside) -> tuple[Face, float, Floats]:
+    """Return the smooth face, how far the worst vertex lies off it, and where in the form."""
     local, triangles = upside.vertices, upside.triangles
     steps = _knot_steps(upside)
     along = _points_along_edges(local, triangles, steps)
@@ -165,15 +185,17 @@ def _face(name: str, upside: Upside) -> Face:
     weights = np.concatenate([np.ones(len(local)), np.full(len(along), _EDGE_WEIGHT)])
     spline = spline_through(points, weights, upside.size, steps)
     slopes = _vertex_cosines(local, triangles)
-    noise = math.sqrt(float(((spline.residuals[: len(local)] * slopes) ** 2).mean()))
-    return Face(
+    strays = np.abs(spline.residuals[: len(local)] * slopes)
+    worst = int(np.argmax(strays))
+    face = Face(
         name=name,
         patch=recorded(_placed(spline, upside.origin, upside.axes)),
         length_mm=upside.size[0],
         width_mm=upside.size[1],
         outline=upside.outline,
-        noise_mm=noise,
+        noise_mm=math.sqrt(float((strays**2).mean())),
     )
+    return face, float(strays[worst]), upside.origin + local[worst] @ upside.axes
 
 
 def _knot_steps(upside: Upside) -> tuple[float, float]:

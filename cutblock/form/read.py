@@ -54,7 +54,7 @@ def _faces_of(job: Job, spec: FaceSpec, progress: Progress) -> tuple[tuple[Face,
     if isinstance(source, RailsSource):
         return (face_of_rails(spec.name, source, mm_per(job.units), job.layup, job.units),), ()
     if isinstance(source, HeightsSource):
-        return (face_of_heights(spec.name, source, mm_per(job.units), job.units),), ()
+        return (face_of_heights(spec.name, source, mm_per(job.units), job.units, job.tolerance_mm),), ()
     if isinstance(source, WavesSource):
         return (face_of_waves(spec.name, source, spec.place, job.units),), ()
     from cutblock.form.mesh import faces_of_mesh

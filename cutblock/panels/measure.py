@@ -30,6 +30,7 @@ from cutblock.records.panel import Panel
 from cutblock.records.words import Layup
 
 STEEPEST_RAD = math.radians(75.0)
+_UPRIGHT = 1e-6  # cosine; a wall this upright is steep, it does not fold
 _EXTRA_SLOPE_RAD = math.radians(5.0)  # by which a continuation may be steeper than the panel
 _NODE_SPACING_MM = 30.0
 _FEWEST_NODES, _MOST_NODES = 17, 81
@@ -200,9 +201,9 @@ def _refuse_steep(panel_id: str, upwards: Floats, points: Floats, layup: Layup, 
     worst = int(np.argmin(upwards))
     if upwards[worst] >= math.cos(STEEPEST_RAD):
         return
-    if upwards[worst] <= 0.0:
+    if upwards[worst] < -_UPRIGHT:
         _refuse_fold(panel_id, points[worst], units)
-    slope = math.degrees(math.acos(min(1.0, float(upwards[worst]))))
+    slope = math.degrees(math.acos(min(1.0, max(0.0, float(upwards[worst])))))
     remedy = "Use the bench lay-up, or make the face flatter." if layup is Layup.BED else "Divide the face smaller."
     raise GeometryError(
         f"the surface is {slope:.0f} degrees steep at {place_text(points[worst], units)}; a mould takes at most "

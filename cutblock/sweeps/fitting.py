@@ -6,11 +6,14 @@ from functools import partial
 
 import numpy as np
 
+from cutblock.base.arrays import Floats
 from cutblock.base.errors import NotCuttable
 from cutblock.base.progress import Progress, silent
+from cutblock.base.units import length_text, place_text
 from cutblock.catalog.load import machine
+from cutblock.geometry.curvature import bend_of
 from cutblock.geometry.fit import SQUARENESS
-from cutblock.geometry.heights import is_domed, offset_heights
+from cutblock.geometry.heights import height_field, is_domed, offset_heights
 from cutblock.geometry.outline import is_inside
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
@@ -81,7 +84,7 @@ def fit_panels(
             if not any(note.severity is Severity.ERROR for note in notes):
                 sweeps += made
         else:
-            findings.append(_not_cuttable(panel, choice, aim))
+            findings.append(_not_cuttable(panel, choice, aim, job.units))
     if panels and not sweeps:
         worst = next(finding for finding in findings if finding.severity is Severity.ERROR)
         raise NotCuttable(f"no panel can be cut; the first: {worst.text}", worst.subject)
@@ -135,7 +138,8 @@ def _shape_key(panel: Panel) -> bytes:
     return b"".join(digits)
 
 
-def _not_cuttable(panel: Panel, choice: Choice, aim: Aim) -> Finding:
+def _not_cuttable(panel: Panel, choice: Choice, aim: Aim, units: str) -> Finding:
+    place, radius_mm = _sharpest_bend(panel)
     n_tried = len(choice.panel.strips)
     return Finding(
         severity=Severity.ERROR,
@@ -143,9 +147,21 @@ def _not_cuttable(panel: Panel, choice: Choice, aim: Aim) -> Finding:
         subject=panel.id,
         text=f"Panel {panel.id} cannot be cut within the tolerance of {aim.tolerance_mm:.2f} mm: in {n_tried} "
         f"strip{'s' if n_tried > 1 else ''} (at most {MOST_STRIPS}, none under {NARROWEST_MM:g} mm wide) "
-        f"it still strays {choice.panel.max_mm:.2f} mm; about {choice.n_needed} strips would be needed. The machine's "
+        f"it still strays {choice.panel.max_mm:.2f} mm; about {choice.n_needed} strips would be needed. It bends "
+        f"most at {place_text(place, units)}, to a radius of {length_text(radius_mm, units)}. The machine's "
         f"wire may lean up to {aim.lean_deg:.0f} degrees. Make the cells smaller or the tolerance wider.",
     )
+
+
+def _sharpest_bend(panel: Panel) -> tuple[Floats, float]:
+    """Return where in the form a panel is curved most, and the radius there, mm."""
+    bend = bend_of(height_field(panel.heights_mm, panel.length_mm, panel.width_mm))
+    curvature = np.abs(np.stack(bend.principal())).max(axis=0)
+    n_x, n_y = curvature.shape
+    row, column = divmod(int(np.argmax(curvature)), n_y)
+    x, y = panel.length_mm * row / (n_x - 1), panel.width_mm * column / (n_y - 1)
+    place: Floats = panel.origin_mm + np.array([x, y, panel.heights_mm[row, column]]) @ panel.axes
+    return place, 1.0 / max(float(curvature[row, column]), 1e-9)
 
 
 def _domed_faces(panels: Sequence[Panel], alike: Sequence[int], choices: dict[int, Choice]) -> list[Finding]:
