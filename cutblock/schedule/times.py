@@ -52,7 +52,8 @@ def time_sweeps(
         seconds = step_times(steps, conditions, machine)
         near_kerfs = _mean_kerfs(steps, seconds, steps.near_moves, steps.near_shares, conditions)
         far_kerfs = _mean_kerfs(steps, seconds, steps.far_moves, steps.far_shares, conditions)
-        ratios = _largest(_end_ratios(steps), steps)
+        all_ratios = _end_ratios(steps)
+        ratios = _largest(all_ratios, steps)
         twists = _largest(_twists_deg_per_m(steps), steps)
         for index, sweep in enumerate(batch):
             part = slice(int(steps.firsts[index]), int(steps.firsts[index + 1]))
@@ -69,7 +70,7 @@ def time_sweeps(
                     twist_deg_per_m=float(twists[index]),
                 )
             )
-        findings += _ratio_findings(batch, ratios)
+        findings += _ratio_findings(batch, steps, all_ratios, ratios)
         findings += _melt_findings(batch, steps, seconds, conditions)
     return tuple(timed), tuple(timings), tuple(findings)
 
@@ -144,12 +145,15 @@ def _largest(values: Floats, steps: Steps) -> Floats:
     return result
 
 
-def _ratio_findings(sweeps: Sequence[Sweep], ratios: Floats) -> list[Finding]:
+def _ratio_findings(sweeps: Sequence[Sweep], steps: Steps, all_ratios: Floats, ratios: Floats) -> list[Finding]:
     findings = []
     for index in np.flatnonzero(ratios > WARN_RATIO).tolist():
         is_error = ratios[index] > LARGEST_RATIO
+        first, last = (int(step) for step in steps.firsts[index : index + 2])
+        worst = first + int(np.argmax(all_ratios[first:last]))
         text = (
-            f"One end of the wire runs {ratios[index]:.1f} times as fast as the other; over {WARN_RATIO:g} the kerf at"
+            f"One end of the wire runs {ratios[index]:.1f} times as fast as the other at ruling {worst - first + 1},"
+            f" {steps.travel[worst]:.0f} mm of the travel; over {WARN_RATIO:g} the kerf at"
             f" the two ends differs visibly{f', over {LARGEST_RATIO:g} it cannot be kept' if is_error else ''}."
             " Divide the panel, or lay the wire the other way."
         )

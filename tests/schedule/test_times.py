@@ -154,7 +154,10 @@ def test_a_fast_end_runs_at_the_contact_limit_and_the_slow_one_melts_too_much():
 def test_ends_too_uneven_are_an_error():
     _, (timing,), findings = time_sweeps([zigzag_sweep(slope=4.5)], CONDITIONS, MACHINE)
     assert timing.end_speed_ratio > 4.0
-    assert next(finding for finding in findings if finding.code == "uneven-ends").severity == "error"
+    finding = next(finding for finding in findings if finding.code == "uneven-ends")
+    assert finding.severity == "error"
+    assert " at ruling " in finding.text
+    assert " mm of the travel" in finding.text
 
 
 def test_a_pivot_inside_the_wire_is_found_though_both_ends_run():
