@@ -10,6 +10,7 @@ import gc
 import multiprocessing
 import pickle
 import queue
+import sys
 import threading
 import time
 from collections.abc import Sequence
@@ -20,6 +21,7 @@ from cutblock.worker.events import Cancelled, Event, Failure, Part, Progress, fa
 GRACE_S = 0.6  # for a request to notice that it shall stop, before its process is killed
 _JOIN_S = 5.0
 _LARGE_BYTES = 100_000
+_SWITCH_S = 0.0005
 
 
 class Worker:
@@ -194,14 +196,18 @@ class _Child:
         """Wait for the next event and unpickle it.
 
         The cyclic garbage collector rests meanwhile and then forgets what there is: it would stop every thread, the
-        window's too, for as long as it takes to look at each of the many objects of a plan.
+        window's too, for as long as it takes to look at each of the many objects of a plan. And the interpreter lock
+        is handed over soon, because the window asks for it many times in each of its paintings.
         """
         pickled = self._talk.recv_bytes()
+        usual_s = sys.getswitchinterval()
         gc.disable()
+        sys.setswitchinterval(_SWITCH_S)
         try:
             event: Event = pickle.loads(pickled)
             if len(pickled) > _LARGE_BYTES:
                 gc.freeze()
         finally:
+            sys.setswitchinterval(usual_s)
             gc.enable()
         return event
