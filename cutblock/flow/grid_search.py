@@ -131,9 +131,12 @@ def _face_of(plan: Plan, name: str) -> tuple[Face, FaceSpec]:
         raise InputError(
             f'there is no face "{name}"' if name else "the job has several faces", "face", f"Name one of {known}."
         )
-    specs = {spec.name: spec for spec in plan.job.faces}
-    spec = specs[name] if name in specs else specs[name.rstrip("0123456789")]
-    return faces[name], spec
+    fitting = [spec for spec in plan.job.faces if name == spec.name or _is_piece(name, spec.name)]
+    return faces[name], max(fitting, key=lambda spec: len(spec.name))
+
+
+def _is_piece(name: str, table: str) -> bool:
+    return name.startswith(table) and name[len(table) :].isdigit()
 
 
 class _Search:

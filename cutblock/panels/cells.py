@@ -115,8 +115,9 @@ def _set_grid(
     lines = []
     for axis, (size, phase) in enumerate(zip(spec.cell_mm, spec.phase_mm or (0.0, 0.0), strict=True)):
         low, high = float(rings[0][:, axis].min()), float(rings[0][:, axis].max())
-        # The slack keeps an edge that lies on a line but for rounding from getting a row of nothing.
-        first, last = math.floor((low - phase) / size + _OVER), math.ceil((high - phase) / size - _OVER)
+        # The slack keeps an edge that lies on a line but for rounding from getting a row of nothing; what is wider,
+        # however little, is a sliver and joins its neighbours.
+        first, last = math.floor((low - phase) / size + 1e-9), math.ceil((high - phase) / size - 1e-9)
         _refuse_many(last - first, face.name, spec.place)
         lines.append([phase + size * number for number in range(first, last + 1)])
     _refuse_many((len(lines[0]) - 1) * (len(lines[1]) - 1), face.name, spec.place)

@@ -9,11 +9,15 @@ from kit.height_jobs import job_over
 from kit.shapes import dome, turned
 
 from cutblock.base.errors import Cancelled, InputError
+from cutblock.base.progress import silent
 from cutblock.cli.grid import panels_text
 from cutblock.cli.main import main
-from cutblock.flow.grid_search import search_grid
+from cutblock.flow.chain import start_plan
+from cutblock.flow.grid_search import _face_of, search_grid
 from cutblock.flow.jobfile import read_job
+from cutblock.flow.steps import take_form
 from cutblock.records.grid import GridCandidate
+from cutblock.records.plan import Settings
 
 
 @pytest.fixture(scope="module")
@@ -126,3 +130,17 @@ def test_a_grid_is_written_in_the_unit_of_the_job():
     even = replace(candidate, angle_deg=None, phase_mm=(0.0, 0.0))
     assert panels_text(even, "mm") == "panels = { length = 1219.2, width = 914.4 }"
     assert candidate.n_strips == 1
+
+
+def test_a_piece_of_a_mesh_is_found_under_the_table_it_was_named_after(tmp_path):
+    plan = start_plan(read_job(job_over(tmp_path, dome, (1200.0, 1000.0))), Settings())
+    plan = take_form(plan, silent)
+    (face,), (spec,) = plan.faces, plan.job.faces
+    faces = tuple(replace(face, name=name) for name in ("R21", "R22", "R2X"))
+    specs = tuple(replace(spec, name=name) for name in ("R", "R2", "R2X"))
+    plan = replace(plan, faces=faces, job=replace(plan.job, faces=specs))
+
+    assert _face_of(plan, "R22")[1].name == "R2"
+    assert _face_of(plan, "R2X")[1].name == "R2X"
+    with pytest.raises(InputError, match=r"several faces.*Name one of R21, R22, R2X"):
+        _face_of(plan, "")

@@ -3,7 +3,7 @@ import re
 
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 from kit.surfaces import job_of
 
@@ -25,6 +25,10 @@ def divided(source=WAVES, **division):
     return faces, *divide_faces(job, faces)
 
 
+def middle(panel):
+    return panel.origin_mm + np.average(panel.samples_mm, axis=0, weights=panel.areas_mm2) @ panel.axes
+
+
 def test_a_grid_at_angle_0_is_the_even_one_where_cells_go_into_the_face():
     _, even, _ = divided()
     _, placed, findings = divided(angle_rad=0.0)
@@ -38,6 +42,7 @@ def test_a_grid_at_angle_0_is_the_even_one_where_cells_go_into_the_face():
 
 
 @settings(max_examples=10, deadline=None)
+@example(angle_deg=0.0, x=0.0, y=0.0625)
 @given(angle_deg=st.floats(-180.0, 180.0), x=st.floats(-2000.0, 2000.0), y=st.floats(-2000.0, 2000.0))
 def test_the_cells_of_a_turned_grid_cover_the_face_once(angle_deg, x, y):
     job = job_of(WAVES, cell_mm=CELL, angle_rad=math.radians(angle_deg), phase_mm=(x, y))
@@ -47,6 +52,14 @@ def test_the_cells_of_a_turned_grid_cover_the_face_once(angle_deg, x, y):
     whole = CELL[0] * CELL[1]
     assert sum(whole if cell.area is None else cell.area.area for cell in cells) == pytest.approx(4800 * 3000, rel=1e-9)
     assert len({cell.name for cell in cells}) == len(cells)
+
+
+def test_an_edge_just_beyond_a_line_of_the_grid_is_not_lost():
+    _, panels, findings = divided(phase_mm=(0.0, 0.0625))
+
+    assert len(panels) == 12
+    assert {finding.code for finding in findings} == {"sliver-merged"}
+    assert sum(float((panel.areas_mm2 * panel.normals[:, 2]).sum()) for panel in panels) == pytest.approx(4800 * 3000)
 
 
 def test_panels_of_a_turned_grid_lie_along_it_and_touch_the_form():
@@ -71,8 +84,9 @@ def test_panels_of_a_turned_grid_lie_along_it_and_touch_the_form():
     assert plan_area == pytest.approx(face.length_mm * face.width_mm, rel=1e-6)
 
 
-def test_neighbours_in_a_turned_grid_name_each_other():
-    _, panels, _ = divided(angle_rad=math.radians(20.0))
+@pytest.mark.parametrize("angle_deg", [20.0, 60.0, -100.0])
+def test_neighbours_in_a_turned_grid_name_each_other_on_the_right_side(angle_deg):
+    _, panels, _ = divided(angle_rad=math.radians(angle_deg))
     by_id = {panel.id: panel for panel in panels}
     opposite = {"east": "west", "west": "east", "north": "south", "south": "north"}
 
@@ -80,6 +94,8 @@ def test_neighbours_in_a_turned_grid_name_each_other():
     for panel in panels:
         for edge, other in panel.neighbours:
             assert (opposite[edge], panel.id) in by_id[other].neighbours
+            away = panel.axes @ (middle(by_id[other]) - middle(panel))
+            assert edge in {"east" if away[0] > 0.0 else "west", "north" if away[1] > 0.0 else "south"}
 
 
 def test_a_bench_panel_of_a_turned_grid_has_the_same_size_as_its_cell():
