@@ -117,7 +117,9 @@ class Fits:
         return Fits(*columns)
 
 
-def refine(target: Target, paths: Paths, give_up_mm: float = np.inf, n_rounds: int = N_ROUNDS) -> Fits:
+def refine(
+    target: Target, paths: Paths, give_up_mm: float = np.inf, n_rounds: int = N_ROUNDS, n_steps: int = N_STEPS
+) -> Fits:
     """Return least-squares fits that start from paths of skews; those still worse than `give_up_mm` are left rough."""
     basis = spline_stations(N_CONTROLS)
     start, end = _reach(target, paths.stations, paths.skews)
@@ -127,7 +129,7 @@ def refine(target: Target, paths: Paths, give_up_mm: float = np.inf, n_rounds: i
     controls[:, 0] = skews @ basis.smooth_inverse.T
     controls[:, 0] = _held(controls[:, 0], end - start, target, basis)
     no_fit = np.full(len(start), np.inf)
-    fits = improve(target, _raised(target, Fits(controls, start, end, no_fit, no_fit)))
+    fits = improve(target, _raised(target, Fits(controls, start, end, no_fit, no_fit)), n_steps=n_steps)
     for _ in range(n_rounds - 1):
         moved = recentre(target, fits, N_CONTROLS)
         shift = np.maximum(np.abs(moved.start - fits.start), np.abs(moved.end - fits.end))
