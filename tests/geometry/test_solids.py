@@ -5,7 +5,7 @@ from hypothesis import strategies as st
 
 from cutblock.base.errors import GeometryError
 from cutblock.geometry import split_billet, volume_below
-from cutblock.geometry.fan import fan_connectivity, fan_vertices
+from cutblock.geometry.fan import fan_connectivity, fan_vertices, trim_rails
 from cutblock.geometry.plan_clip import boundary_edges, clip
 from cutblock.geometry.solids import Mesh, halves_over, joined, mesh_centre, mesh_volume
 from cutblock.geometry.volume import volume_below_within
@@ -213,3 +213,13 @@ def test_the_centre_of_a_wedge_is_that_of_a_prism_on_a_trapezium():
     np.testing.assert_allclose(mesh_centre(lower), expected, rtol=1e-12)
     aside = Mesh(lower.vertices + 1e6, lower.triangles)
     np.testing.assert_allclose(mesh_centre(aside), np.array(expected) + 1e6, rtol=1e-12)
+
+
+def test_rails_trimmed_at_a_ruling_all_but_in_the_end_plane_still_run_forward():
+    near = np.array([[-20.0, 250.0], [-1e-7, 250.0], [600.0, 250.0], [1220.0, 250.0]])
+    far = np.array([[-20.0, 250.0], [1.5e-6, 250.0], [600.0, 250.0], [1220.0, 250.0]])
+
+    trimmed = trim_rails(near, far, 1200.0)
+
+    assert all((np.diff(rail[:, 0]) > 0.0).all() for rail in trimmed)
+    assert trimmed[0][-1, 0] == trimmed[1][-1, 0] == 1200.0
