@@ -18,6 +18,7 @@ from cutblock.records.shop import Conditions
 from cutblock.sweeps.cutting import Aim, CutPanel, cut_panels
 from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm
 from cutblock.sweeps.lie import Lie, lie_of
+from cutblock.sweeps.validity import STEEPEST_WIRE_DEG
 
 _N_SAMPLES = 21  # a side, of a smaller cell
 _BATCH = 32  # panels fitted together: a fraction of a second
@@ -143,7 +144,7 @@ def _aim(job: Job, conditions: Conditions) -> Aim:
         kerf_mm=conditions.kerf_mm,
         face_offset_mm=face_offset_mm(conditions.kerf_mm, job.coat_mm),
         kerf_error_mm=kerf_error_mm(job.favour, conditions.kerf_mm, job.coat_mm),
-        stretch=min(tool.longest_wire_mm / tool.span_mm, math.sqrt(2.0)),  # 45 degrees from square at most
+        stretch=min(tool.longest_wire_mm / tool.span_mm, 1.0 / math.cos(math.radians(STEEPEST_WIRE_DEG))),
     )
 
 
