@@ -69,7 +69,9 @@ def fit_panels(
     sweeps: list[Sweep] = []
     findings: list[Finding] = []
     checks: dict[int, list[tuple[Check, ...]]] = {}
-    for panel, first in zip(panels, alike, strict=True):
+    for number, (panel, first) in enumerate(zip(panels, alike, strict=True)):
+        if number % BATCH == 0:
+            progress(1.0, "Checking sweeps")
         choice = choices[first]
         if choice.is_within:
             made = sweeps_of(job.id, panel.id, choice.panel, conditions.kerf_mm, job.wall_mm)
