@@ -65,11 +65,11 @@ def set_speeds(plan: Plan, progress: Progress) -> Plan:
 
 def compare(plan: Plan, progress: Progress) -> Plan:
     """Hold every finished face against the form, as the settled speeds leave it."""
-    from cutblock.sweeps.maps import deviation_maps, face_bends, findings_of
+    from cutblock.sweeps.maps import face_bends, findings_of, settle
 
-    deviations = deviation_maps(plan.job, plan.panels, plan.sweeps, progress)
+    deviations, sweeps = settle(plan.job, plan.panels, plan.sweeps, progress)
     findings = findings_of(plan.job, deviations, plan.sweeps)
-    return _with(plan, findings, deviations=deviations, bends=face_bends(plan.panels))
+    return _with(plan, findings, sweeps=sweeps, deviations=deviations, bends=face_bends(plan.panels))
 
 
 def diagnose(plan: Plan, progress: Progress) -> Plan:

@@ -1,7 +1,7 @@
 """The finished face of every panel against the form, point by point, as the sweeps are really cut."""
 
 from collections.abc import Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -25,7 +25,14 @@ _OFTEN = 16  # panels between two words of progress
 def deviation_maps(
     job: Job, panels: Sequence[Panel], sweeps: Sequence[Sweep], progress: Progress = silent
 ) -> tuple[PanelDeviation, ...]:
-    """Return the signed deviation of every panel's finished face at the panel's samples.
+    """Return the signed deviation of every panel's finished face at the panel's samples; see `settle`."""
+    return settle(job, panels, sweeps, progress)[0]
+
+
+def settle(
+    job: Job, panels: Sequence[Panel], sweeps: Sequence[Sweep], progress: Progress = silent
+) -> tuple[tuple[PanelDeviation, ...], tuple[Sweep, ...]]:
+    """Return the signed deviation of every panel's finished face, and the sweeps with what they then leave.
 
     The kerf counts as the settled speeds leave it: linear along the wire between the kerfs at its two ends. At a joint
     of two strips the one that is farther off counts.
@@ -37,20 +44,25 @@ def deviation_maps(
         progress: Called every few panels.
 
     Returns:
-        One map for each panel that has a mould, in the order of the panels.
+        One map for each panel that has a mould, in the order of the panels; the sweeps in their order, the largest, the
+        root mean square and the 95 % deviation of every half those of the settled kerf.
     """
     served: dict[str, list[tuple[Sweep, Serving]]] = {}
     for sweep in sweeps:
         for serving in sweep.serving:
             served.setdefault(serving.panel, []).append((sweep, serving))
     maps = []
+    settled: dict[tuple[str, Half], Serving] = {}
     for number, panel in enumerate(panels):
         if number % _OFTEN == 0:
             progress(number / len(panels), "Measuring finished faces")
         halves = served.get(panel.id)
         if halves and len(panel.samples_mm):
-            maps.append(_map(panel, halves, job.coat_mm))
-    return tuple(maps)
+            maps.append(_map(panel, halves, job.coat_mm, settled))
+    return tuple(maps), tuple(
+        replace(sweep, serving=tuple(settled.get((sweep.id, half.half), half) for half in sweep.serving))
+        for sweep in sweeps
+    )
 
 
 def findings_of(job: Job, deviations: Sequence[PanelDeviation], sweeps: Sequence[Sweep]) -> tuple[Finding, ...]:
@@ -99,13 +111,21 @@ class _View:
     outside_mm: Floats  # how far outside the billet across the wire
 
 
-def _map(panel: Panel, halves: Sequence[tuple[Sweep, Serving]], coat_mm: float) -> PanelDeviation:
+def _map(
+    panel: Panel,
+    halves: Sequence[tuple[Sweep, Serving]],
+    coat_mm: float,
+    settled: dict[tuple[str, Half], Serving],
+) -> PanelDeviation:
+    """Return the map of one panel; write what each half leaves into `settled`."""
     views = [_view(panel, sweep, serving) for sweep, serving in halves]
     least = np.min([view.outside_mm for view in views], axis=0)
     deviations = np.zeros(len(panel.samples_mm))
     for (sweep, serving), view in zip(halves, views, strict=True):
         is_in = np.flatnonzero(view.outside_mm <= least + _EDGE_MM)
         found = _finished(sweep, serving, view.points[is_in], view.normals[is_in], coat_mm)
+        max_mm, rms_mm, p95_mm = deviation_measures(found, panel.areas_mm2[is_in])
+        settled[sweep.id, serving.half] = replace(serving, max_mm=max_mm, rms_mm=rms_mm, p95_mm=p95_mm)
         is_worse = np.abs(found) > np.abs(deviations[is_in])
         deviations[is_in[is_worse]] = found[is_worse]
     worst = int(np.argmax(np.abs(deviations)))

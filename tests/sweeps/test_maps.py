@@ -9,7 +9,7 @@ from kit.shapes import dome, panel_of
 from cutblock.base.errors import Cancelled
 from cutblock.records.words import Favour
 from cutblock.sweeps.fitting import fit_panels
-from cutblock.sweeps.maps import deviation_maps, face_bends, findings_of
+from cutblock.sweeps.maps import deviation_maps, face_bends, findings_of, settle
 
 PANELS = (sample_panel(), sample_panel("S2-A01", 2))
 
@@ -115,3 +115,14 @@ def test_the_domed_share_of_a_face_is_counted_once_for_all_copies():
 
     (flat,) = face_bends(PANELS)
     assert flat.domed_percent == 0.0
+
+
+def test_what_a_half_leaves_is_told_for_the_settled_kerf():
+    sweep = sample_sweep(kerf_mm=(1.0, 1.6))
+
+    maps, (settled,) = settle(sample_job(), PANELS, (sweep,))
+
+    for entry, half in zip(maps, settled.serving, strict=True):
+        assert half.max_mm == pytest.approx(np.abs(entry.deviation_mm).max())
+        assert half.max_mm == pytest.approx(0.8, abs=0.05)
+    assert sweep.serving[0].max_mm == 0.6
