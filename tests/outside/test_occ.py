@@ -29,6 +29,8 @@ from OCP.TopoDS import TopoDS
 
 LENGTH, WIDTH = 1200.0, 1000.0
 
+pytestmark = pytest.mark.occ
+
 
 def spline_rails():
     """Cubic rails x and z over [0, 1], from x = 0 to the length; skewed and wavy."""
