@@ -111,7 +111,7 @@ class PanelMap(QWidget):
             x += width
         top = self.height() - _MARGIN_PX - (row + 1) * (line + 4) - line
         painter.setPen(ink.faint)
-        title = "Foam above the form is positive; the ring marks the worst point"
+        title = "+ is foam above the form; the ring is the worst place"
         painter.drawText(QPointF(_MARGIN_PX, top + metrics.ascent()), title)
         for (colour, text), (left, number) in zip(entries, places, strict=True):
             y = top + line + 4 + number * (line + 4)

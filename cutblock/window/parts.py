@@ -12,13 +12,13 @@ USED, KEPT, WASTE = "used", "kept", "waste"
 _PARTS = (
     ("Moulds", "M", "mould_mm3", SKY, "", USED),
     ("Counter-moulds", "C", "counter_mould_mm3", ORANGE, "/", USED),
-    ("Cradles", "R", "cradle_mm3", GREEN, "\\", USED),
+    ("Cradles", "K", "cradle_mm3", GREEN, "\\", USED),
     ("Fillers", "F", "filler_mm3", PURPLE, "x", USED),
     ("Offcuts kept", "O", "offcut_mm3", "#F4F4F4", "/", KEPT),
-    ("Surplus halves", "H", "surplus_mm3", YELLOW, ".", WASTE),
+    ("Surplus halves", "H", "surplus_mm3", YELLOW, "x", WASTE),
     ("Skin trim", "T", "trim_mm3", "#BBBBBB", "", WASTE),
-    ("Kerf", "K", "kerf_mm3", VERMILLION, "", WASTE),
-    ("Scrap", "S", "scrap_mm3", "#303030", "", WASTE),
+    ("Kerf", "W", "kerf_mm3", VERMILLION, "", WASTE),
+    ("Scrap", "S", "scrap_mm3", "#FFFFFF", ".", WASTE),
 )
 
 

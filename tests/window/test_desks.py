@@ -174,7 +174,7 @@ def test_a_finding_picked_is_told_in_full(qtbot):
     fill(desk, sample_shown(findings=findings))
 
     assert desk._finding_text.text() == "S-A02: over the tolerance by 1.3 mm (b)"
-    assert "1 error, 0 warnings, 1 note" in words(desk)
+    assert "1 error, 0 warnings, 1 info" in words(desk)
     desk.finding_table.pick("0")
     assert desk._finding_text.text() == "S-A01: a note (a)"
 
