@@ -5,7 +5,6 @@ by t along its normals, keeps the thickness but takes a second billet. Lifting i
 tolerance; where it does not, both numbers are told.
 """
 
-import math
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
 
@@ -24,9 +23,9 @@ from cutblock.records.plan import Finding
 from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Sweep
 from cutblock.records.words import Duty, Severity
-from cutblock.sweeps.cutting import Aim, cut_panels
+from cutblock.sweeps.aim import aim_of
+from cutblock.sweeps.cutting import cut_panels
 from cutblock.sweeps.lie import lie_of
-from cutblock.sweeps.validity import STEEPEST_WIRE_DEG
 
 
 def counter_mould_findings(
@@ -90,13 +89,7 @@ def offset_deviation(job: Job, panel: Panel, conditions: Conditions) -> float:
     heights = offset_heights(panel.heights_mm, panel.length_mm, panel.width_mm, job.thickness_mm - raised)
     moved = replace(panel, samples_mm=panel.samples_mm + job.thickness_mm * panel.normals)
     tool = machine(job.machine)
-    aim = Aim(
-        tolerance_mm=job.tolerance_mm,
-        kerf_mm=conditions.kerf_mm,
-        face_offset_mm=raised,
-        kerf_error_mm=0.0,
-        stretch=min(tool.longest_wire_mm / tool.span_mm, 1.0 / math.cos(math.radians(STEEPEST_WIRE_DEG))),
-    )
+    aim = replace(aim_of(job, conditions, tool), face_offset_mm=raised, kerf_error_mm=0.0)
     lies = [(lie_of(moved, heights, along, job.margin_mm), 1) for along in ("y", "x")]
     return min(cut.max_mm for cut in cut_panels(lies, aim, is_polished=False))
 

@@ -7,8 +7,9 @@ import numpy as np
 
 from cutblock.base.arrays import Floats
 from cutblock.geometry.deviation import deviation_measures, face_deviation
-from cutblock.geometry.fit import SQUARENESS, fit_patches
+from cutblock.geometry.fit import fit_patches
 from cutblock.geometry.rails import SheetFit, polyline_rails
+from cutblock.sweeps.aim import Aim
 from cutblock.sweeps.lie import Lie, Strip
 
 SAG_MM = 0.002
@@ -57,28 +58,6 @@ class CutPanel:
     def wire_along(self) -> str:
         """The panel axis the wire lies along."""
         return self.strips[0].strip.lie.wire_along
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Aim:
-    """What every sheet of a job is fitted and measured for."""
-
-    tolerance_mm: float  # of the finished face
-    kerf_mm: float
-    face_offset_mm: float  # of the lower half's finished face above the centreline
-    kerf_error_mm: float  # what kerf and coat alone leave between finished face and form
-    stretch: float  # longest wire between the machine's towers by their distance
-    squareness: float = SQUARENESS  # share of the tolerance that less skew is worth
-
-    @property
-    def lean_deg(self) -> float:
-        """How far from square the machine's wire may lean."""
-        return float(np.degrees(np.arccos(min(1.0, 1.0 / self.stretch))))
-
-    @property
-    def room_mm(self) -> float:
-        """What kerf and coat leave of the tolerance for the ruled fit."""
-        return self.tolerance_mm - abs(self.kerf_error_mm)
 
 
 def cut_panels(

@@ -1,6 +1,5 @@
 """Every panel of a job fitted with the sweeps that cut it."""
 
-import math
 from collections.abc import Sequence
 from functools import partial
 
@@ -13,20 +12,18 @@ from cutblock.base.units import length_text, place_text
 from cutblock.catalog.load import machine
 from cutblock.geometry.curvature import bend_of
 from cutblock.geometry.fit import SQUARENESS
-from cutblock.geometry.heights import height_field, is_domed, offset_heights
+from cutblock.geometry.heights import height_field, is_domed
 from cutblock.geometry.outline import is_inside
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.plan import Finding
-from cutblock.records.shop import Conditions, Machine
+from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Sweep
 from cutblock.records.words import Severity
+from cutblock.sweeps.aim import Aim, aim_of, lies_of
 from cutblock.sweeps.build import sweeps_of
-from cutblock.sweeps.cutting import Aim
-from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm
-from cutblock.sweeps.lie import Lie, lie_of
 from cutblock.sweeps.strips import MOST_STRIPS, NARROWEST_MM, Choice, choose_cuts
-from cutblock.sweeps.validity import STEEPEST_WIRE_DEG, Check, check_sweep, findings_of
+from cutblock.sweeps.validity import Check, check_sweep, findings_of
 
 BATCH = 32
 
@@ -56,7 +53,8 @@ def fit_panels(
         NotCuttable: No panel at all can be cut.
     """
     tool = machine(job.machine)
-    aim = _aim(job, conditions, tool, squareness)
+    aim = aim_of(job, conditions, tool, squareness)
+    _refuse_no_room(job, aim)
     alike = _alike(panels)
     firsts = list(dict.fromkeys(alike))
     choices: dict[int, Choice] = {}
@@ -64,7 +62,7 @@ def fit_panels(
         batch = firsts[start : start + BATCH]
         report = partial(_report, progress, start, len(batch), len(firsts), f"Fitting panel {panels[batch[0]].id}")
         report(0.0)
-        lies = [_lies(job, panels[number], conditions) for number in batch]
+        lies = [lies_of(job, panels[number], conditions, "yx") for number in batch]
         choices.update(zip(batch, choose_cuts(lies, aim, report), strict=True))
     sweeps: list[Sweep] = []
     findings: list[Finding] = []
@@ -99,32 +97,15 @@ def _report(progress: Progress, n_done: int, n_batch: int, n_panels: int, text: 
     progress((n_done + share * n_batch) / n_panels, text)
 
 
-def _aim(job: Job, conditions: Conditions, tool: Machine, squareness: float) -> Aim:
-    kerf = conditions.kerf_mm
-    aim = Aim(
-        tolerance_mm=job.tolerance_mm,
-        kerf_mm=kerf,
-        face_offset_mm=face_offset_mm(kerf, job.coat_mm),
-        kerf_error_mm=kerf_error_mm(job.favour, kerf, job.coat_mm),
-        stretch=min(tool.longest_wire_mm / tool.span_mm, 1.0 / math.cos(math.radians(STEEPEST_WIRE_DEG))),
-        squareness=squareness,
+def _refuse_no_room(job: Job, aim: Aim) -> None:
+    if aim.room_mm > 0.0:
+        return
+    raise NotCuttable(
+        f"a kerf of {aim.kerf_mm:.2f} mm with a coat of {job.coat_mm:.2f} mm alone leaves the mould face "
+        f"{abs(aim.kerf_error_mm):.2f} mm off the form, the whole tolerance of {job.tolerance_mm:.2f} mm",
+        f"job {job.id}, kerf",
+        f'Set favour = "lower", or a coat of {aim.kerf_mm / 2.0:.2f} mm (half the kerf), or a wider tolerance.',
     )
-    if aim.room_mm <= 0.0:
-        raise NotCuttable(
-            f"a kerf of {kerf:.2f} mm with a coat of {job.coat_mm:.2f} mm alone leaves the mould face "
-            f"{abs(aim.kerf_error_mm):.2f} mm off the form, the whole tolerance of {job.tolerance_mm:.2f} mm",
-            f"job {job.id}, kerf",
-            f'Set favour = "lower", or a coat of {kerf / 2.0:.2f} mm (half the kerf), or a wider tolerance.',
-        )
-    return aim
-
-
-def _lies(job: Job, panel: Panel, conditions: Conditions) -> tuple[Lie, Lie]:
-    offset = centreline_offset_mm(job.favour, conditions.kerf_mm, job.coat_mm)
-    heights = panel.heights_mm
-    if offset:
-        heights = offset_heights(heights, panel.length_mm, panel.width_mm, offset)
-    return lie_of(panel, heights, "y", job.margin_mm), lie_of(panel, heights, "x", job.margin_mm)
 
 
 def _alike(panels: Sequence[Panel]) -> list[int]:

@@ -8,7 +8,8 @@ import numpy as np
 
 from cutblock.geometry.fit import POLISH_REACH
 from cutblock.geometry.heights import height_field, is_domed
-from cutblock.sweeps.cutting import Aim, CutPanel, cut_panels
+from cutblock.sweeps.aim import Aim
+from cutblock.sweeps.cutting import CutPanel, cut_panels
 from cutblock.sweeps.lie import Lie
 
 MOST_STRIPS = 12
@@ -104,7 +105,7 @@ class _Search:
 
 
 def choose_cuts(
-    lies: Sequence[tuple[Lie, Lie]], aim: Aim, report: Callable[[float], None] = lambda _: None
+    lies: Sequence[Sequence[Lie]], aim: Aim, report: Callable[[float], None] = lambda _: None
 ) -> list[Choice]:
     """Return for each panel, given with the wire along its y and along its x, the best way to cut it.
 

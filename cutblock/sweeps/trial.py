@@ -11,14 +11,13 @@ from cutblock.base.arrays import Floats
 from cutblock.base.progress import Progress, silent
 from cutblock.catalog.load import machine
 from cutblock.geometry.curvature import bend_of, domed_share
-from cutblock.geometry.heights import height_field, offset_heights
+from cutblock.geometry.heights import height_field
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.shop import Conditions
-from cutblock.sweeps.cutting import Aim, CutPanel, cut_panels
-from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm
-from cutblock.sweeps.lie import Lie, lie_of
-from cutblock.sweeps.validity import STEEPEST_WIRE_DEG
+from cutblock.sweeps.aim import aim_of, lies_of
+from cutblock.sweeps.cutting import CutPanel, cut_panels
+from cutblock.sweeps.kerf_law import kerf_error_mm
 
 _N_SAMPLES = 21  # a side, of a smaller cell
 _BATCH = 32  # panels fitted together: a fraction of a second
@@ -108,13 +107,13 @@ def trial_cuts(
         wires: "x" or "y" for each panel where only that direction is to be tried; else empty.
         progress: Called every few panels.
     """
-    aim = _aim(job, conditions)
+    aim = aim_of(job, conditions, machine(job.machine))
     trials: list[Trial] = []
     for start in range(0, len(panels), _BATCH):
         progress(start / len(panels), "Trying cuts")
         batch = panels[start : start + _BATCH]
         some = wires[start : start + _BATCH] if wires else ["yx"] * len(batch)
-        lies = [_lies(job, panel, conditions, along) for panel, along in zip(batch, some, strict=True)]
+        lies = [lies_of(job, panel, conditions, along) for panel, along in zip(batch, some, strict=True)]
         cuts = iter(cut_panels([(lie, n_strips) for each in lies for lie in each], aim, is_polished=False))
         for panel, each in zip(batch, lies, strict=True):
             trials.append(_trial(panel, [next(cuts) for _ in each], job.tolerance_mm))
@@ -135,22 +134,3 @@ def _trial(panel: Panel, cuts: Sequence[CutPanel], tolerance_mm: float) -> Trial
         wire_along=best.wire_along,
         is_domed=domed_share(bend) > 0.5,
     )
-
-
-def _aim(job: Job, conditions: Conditions) -> Aim:
-    tool = machine(job.machine)
-    return Aim(
-        tolerance_mm=job.tolerance_mm,
-        kerf_mm=conditions.kerf_mm,
-        face_offset_mm=face_offset_mm(conditions.kerf_mm, job.coat_mm),
-        kerf_error_mm=kerf_error_mm(job.favour, conditions.kerf_mm, job.coat_mm),
-        stretch=min(tool.longest_wire_mm / tool.span_mm, 1.0 / math.cos(math.radians(STEEPEST_WIRE_DEG))),
-    )
-
-
-def _lies(job: Job, panel: Panel, conditions: Conditions, wires: str) -> list[Lie]:
-    offset = centreline_offset_mm(job.favour, conditions.kerf_mm, job.coat_mm)
-    heights = panel.heights_mm
-    if offset:
-        heights = offset_heights(heights, panel.length_mm, panel.width_mm, offset)
-    return [lie_of(panel, heights, along, job.margin_mm) for along in wires]

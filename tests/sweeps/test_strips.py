@@ -1,7 +1,8 @@
 import numpy as np
 from kit.shapes import dome, panel_of
 
-from cutblock.sweeps.cutting import Aim, cut_panels
+from cutblock.sweeps.aim import Aim
+from cutblock.sweeps.cutting import cut_panels
 from cutblock.sweeps.lie import lie_of
 from cutblock.sweeps.strips import balanced_joints, choose_cuts
 
