@@ -201,6 +201,20 @@ def test_a_refitted_offset_beats_the_chord_of_the_offset_a_hundredfold():
     assert fit.max_mm < 1e-3
 
 
+@pytest.mark.parametrize(("turn_deg", "radius", "most_mm"), [(60.0, 1.5, 0.005), (40.0, 30.0, 0.05)])
+def test_the_offset_of_a_hypar_by_a_kerf_or_a_slab_is_met_by_a_sweep(turn_deg, radius, most_mm):
+    """The offset of a hypar is not ruled, but stays saddle-shaped: what a refit leaves is of third order in the offset.
+
+    Elementary geometry (no source needed): the normal turns by 60 or 40 degrees along the wire.
+    """
+    slope = np.tan(np.radians(turn_deg / 2)) / (W / 2)
+    x, y = np.meshgrid(np.linspace(0.0, L, 81), np.linspace(0.0, W, 71), indexing="ij")
+    grid = slope * (x - L / 2) * (y - W / 2)
+    wanted = height_field(offset_heights(grid, L, W, radius), L, W)
+
+    assert fit_ruled(wanted.values, L, W, 0.1).max_mm < most_mm
+
+
 def test_parallel_faces_of_the_kerf_stand_the_kerf_apart():
     """A round wire of constant kerf cuts the two surfaces parallel to its centreline sheet (canal surface).
 
