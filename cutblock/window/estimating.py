@@ -105,7 +105,7 @@ class EstimatingDesk(QWidget):
             sum(finding.severity is severity for finding in findings)
             for severity in (Severity.ERROR, Severity.WARNING, Severity.INFO)
         )
-        counts = f"{counted(n_errors, 'error')}, {counted(n_warnings, 'warning')}, {counted(n_infos, 'info')}"
+        counts = f"{counted(n_errors, 'error')}, {counted(n_warnings, 'warning')}, {n_infos} info"
         self._finding_words.setText(counts)
 
     def add_pictures(self, shown: ShownPlan) -> None:
