@@ -7,11 +7,9 @@ import numpy as np
 import pytest
 import shapely
 from kit.scenario_data import SCENARIOS, files
+from kit.scenario_plans import NAMES
 
-import cutblock
 from cutblock.flow.check import check_folder
-
-NAMES = sorted(path.parent.name for path in SCENARIOS.glob("*/job.toml"))
 
 
 def panel_shapes(plan):
@@ -50,11 +48,9 @@ MEASURES = {
 
 
 @pytest.fixture(scope="module", params=NAMES)
-def made(request, tmp_path_factory):
+def made(request, scenario_folder):
     """The scenario's name, its plan folder and the plan in it."""
-    folder = tmp_path_factory.mktemp("plan") / request.param
-    plan = cutblock.make_plan(cutblock.read_job(SCENARIOS / request.param / "job.toml"))
-    cutblock.write_plan(plan, folder)
+    folder = scenario_folder(request.param)
     return request.param, folder, json.loads((folder / "plan.json").read_text())
 
 
