@@ -21,6 +21,7 @@ from cutblock.base.errors import GeometryError
 from cutblock.geometry import fit_ruled
 from cutblock.geometry.fit import FINE_CONTROLS, fit_patches
 from cutblock.geometry.fit_target import Patch
+from cutblock.geometry.rails import polyline_rails
 from cutblock.geometry.sheet import sheet_heights
 
 L, W = 1200.0, 1000.0
@@ -82,6 +83,38 @@ def test_the_curved_rails_of_a_hypar_are_exact(degrees):
 )
 def test_one_sheet_comes_as_close_as_it_should(surface, degrees, tolerance, largest):
     assert fit_ruled(over(turned(surface, degrees)), L, W, tolerance).max_mm < largest
+
+
+@pytest.mark.parametrize("n_controls", [16, FINE_CONTROLS])
+@pytest.mark.parametrize(
+    ("surface", "degrees", "largest", "rms"),
+    [
+        (scherk, 45.0, 1.53, 0.36),
+        (scherk, 30.0, 1.94, 0.37),
+        (catenoid, 0.0, 0.19, 0.05),
+        (catenoid, 40.0, 0.355, 0.07),
+        (dome, 0.0, 20.72, 9.51),
+        (monkey_saddle, 0.0, 55.6, 18.6),
+        (monkey_saddle, 30.0, 33.3, 10.0),
+    ],
+)
+def test_least_squares_alone_comes_as_close_as_it_should(surface, degrees, largest, rms, n_controls):
+    """Deviations are of first order here, the vertical ones by the cosine of the form's slope."""
+    height = over(turned(surface, degrees))
+    curves = fit_patches([patch_of(turned(surface, degrees))], 2.0, is_polished=False, n_controls=n_controls)[0]
+    near, far = polyline_rails(curves, 0.0, L, 1e-3, decimals=None)
+    x, y = np.meshgrid(np.linspace(0.0, L, 97), np.linspace(0.0, W, 81), indexing="ij")
+    step = 1e-3
+    slope_x = (height(x + step, y) - height(x - step, y)) / (2 * step)
+    slope_y = (height(x, y + step) - height(x, y - step)) / (2 * step)
+    square = (sheet_heights(near, far, W, x, y) - height(x, y)) / np.sqrt(1 + slope_x**2 + slope_y**2)
+
+    assert np.abs(square).max() < largest
+    assert np.sqrt((square**2).mean()) < rms
+
+
+def test_a_tolerance_out_of_reach_does_not_keep_the_closest_sheet_from_being_found():
+    assert fit_ruled(over(monkey_saddle), L, W, 0.01).max_mm < 39.1
 
 
 def test_the_deviation_told_is_that_of_the_rails():
