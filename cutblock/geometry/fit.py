@@ -108,8 +108,9 @@ def fit_ruled(
 def _closest(patch: Patch, tolerance_mm: float) -> Iterator[SheetFit]:
     """Yield sheets brought to the least largest deviation near by, one after the other from different starts.
 
-    First from the least-squares sheet, then from an evened one of each family of rulings: which start ends lowest cannot
-    be told before. Few control values: many would chase the nodes and stray between them, as programmes do a little.
+    First from the least-squares sheet, then from an evened one of each family of rulings: which start ends lowest
+    cannot be told before. Few control values: many would chase the nodes and stray between them, as programmes do a
+    little.
     """
     starts: list[Sequence[SheetFit] | None] = [None]
     target = make_target([patch])
