@@ -1,7 +1,7 @@
-"""Run as a script: hands one program to the interpreter of a CNC controller and prints what it would do, as JSON.
+"""Run as a script: hands programs to the interpreter of a CNC controller and prints what it would do, a JSON for each.
 
-Arguments: the folder the controller's packages are unpacked in, the program, a parameter file that exists.
-The interpreter works in inches; the lines printed are in mm and mm/min.
+Arguments: the folder the controller's packages are unpacked in, a parameter file that exists, the letters of the axes,
+the programs. The interpreter works in inches; the lines printed are in mm and mm/min.
 """
 
 import json
@@ -9,21 +9,21 @@ import sys
 from pathlib import Path
 
 INCH_MM = 25.4
-XYUV = 0b011000011  # of X Y Z A B C U V W, X lowest
-PLACES = (0, 1, 6, 7)
+LETTERS = "XYZABCUVW"
 
 
 class Canon:
     """Takes the interpreter's canonical calls; whatever is not a move is kept by name."""
 
-    def __init__(self, parameters):
+    def __init__(self, parameters, axes):
         self.parameter_file = parameters
+        self.places = [LETTERS.index(axis) for axis in axes]
         self.calls = []
         self.feed = 0.0
         self.state = None
 
     def get_axis_mask(self):
-        return XYUV
+        return sum(1 << place for place in self.places)  # X lowest
 
     def get_external_length_units(self):
         return 1.0
@@ -57,9 +57,9 @@ class Canon:
 
     def _move(self, kind, position):
         values = [value * INCH_MM for value in position]
-        others = [value for index, value in enumerate(values) if index not in PLACES]
+        others = [value for index, value in enumerate(values) if index not in self.places]
         modes = [self.state.spindle, self.state.feed_mode, self.state.path_mode, self.state.units]
-        self.calls.append([kind, [values[index] for index in PLACES], others, self.feed, modes])
+        self.calls.append([kind, [values[index] for index in self.places], others, self.feed, modes])
 
     def __getattr__(self, name):
         if name.startswith("__"):
@@ -68,15 +68,17 @@ class Canon:
 
 
 def main():
-    folder, program, parameters = sys.argv[1:]
+    folder, parameters, axes, *programs = sys.argv[1:]
     sys.path.insert(0, str(Path(folder) / "usr/lib/python3/dist-packages"))
     import gcode  # type: ignore[import-not-found]
 
-    canon = Canon(parameters)
-    result, line = gcode.parse(program, canon, "G21", "")
-    error = gcode.strerror(result) if result > gcode.MIN_ERROR else ""
-    told = {"error": error, "has_ended": result == 1, "line": line, "calls": canon.calls}  # 1: left by an end word
-    sys.stdout.write(json.dumps(told))
+    for program in programs:
+        canon = Canon(parameters, axes)
+        result, line = gcode.parse(program, canon, "G21", "")
+        error = gcode.strerror(result) if result > gcode.MIN_ERROR else ""
+        has_ended = result == 1  # left by an end word
+        told = {"error": error, "has_ended": has_ended, "line": line, "calls": canon.calls}
+        sys.stdout.write(json.dumps(told) + "\n")
 
 
 if __name__ == "__main__":

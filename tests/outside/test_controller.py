@@ -14,6 +14,8 @@ import numpy as np
 import pytest
 from kit.machining import billet_plan, cut, cuts_plan, roomy_machine, roomy_plan, skew_sweep, timing_of
 from kit.sample import sample_sweep
+from kit.scenario_plans import NAMES
+from kit.standing import Stand, set_ups
 
 from cutblock.machinecode.programs import write_programs
 
@@ -29,25 +31,33 @@ if sys.version_info[:2] != (3, 11):
 
 
 @pytest.fixture
-def judge(tmp_path):
+def judge_files(tmp_path):
     root = Path(CONTROLLER).resolve()
     libraries = os.pathsep.join(str(root / part) for part in ("usr/lib", "usr/lib/x86_64-linux-gnu"))
     parameters = tmp_path / "empty.var"
     parameters.touch()
 
-    def run(text):
-        program = tmp_path / "program.ngc"
-        program.write_text(text)
+    def run(*programs, axes="XYUV"):
         runner = Path(__file__).parents[1] / "kit" / "controller.py"
         done = subprocess.run(
-            [sys.executable, str(runner), str(root), str(program), str(parameters)],
+            [sys.executable, str(runner), str(root), str(parameters), axes, *map(str, programs)],
             env=os.environ | {"LD_LIBRARY_PATH": libraries},
             capture_output=True,
             text=True,
             check=True,
             timeout=60,
         )
-        return json.loads(done.stdout)
+        return [json.loads(line) for line in done.stdout.splitlines()]
+
+    return run
+
+
+@pytest.fixture
+def judge(judge_files, tmp_path):
+    def run(text, axes="XYUV"):
+        program = tmp_path / "program.ngc"
+        program.write_text(text)
+        return judge_files(program, axes=axes)[0]
 
     return run
 
@@ -149,3 +159,35 @@ def test_the_judge_does_miss_an_end_word(judge):
 def test_the_judge_does_refuse_what_is_wrong(judge, wrong):
     text = write_programs(roomy_plan())[0].text
     assert judge(text.replace("M2\n", f"{wrong}\nM2\n"))["error"]
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_the_controller_runs_every_file_of_every_scenario_as_the_plan_has_it(judge_files, scenario_folder, name):
+    """Order, positions, times and heat of every move, every pause and the end, worked out from plan.json alone."""
+    folder = scenario_folder(name)
+    plan = json.loads((folder / "plan.json").read_text())
+    half_digit_mm = 0.5 * 10.0 ** -plan["machine"]["decimals"]
+    wanted_files = set_ups(plan)
+    files = sorted((folder / "cuts").iterdir())
+    assert [path.name for path in files] == sorted(set_up.name for set_up in wanted_files)
+
+    told = dict(zip([path.name for path in files], judge_files(*files), strict=True))
+
+    for set_up in wanted_files:
+        judged = told[set_up.name]
+        rows = moves(judged)
+        assert judged["has_ended"], set_up.name
+        wanted = Stand(plan, set_up, (folder / "cuts" / set_up.name).read_text()).moves()
+        assert [row[0] for row in rows] == ["rapid"] + ["feed"] * (len(wanted) - 1), set_up.name
+        positions = np.array([row[1] for row in rows])
+        np.testing.assert_allclose(
+            positions, [move.position for move in wanted], rtol=0.0, atol=half_digit_mm + 1e-9, err_msg=set_up.name
+        )
+        _, seconds = timed(rows)
+        plan_seconds = np.array([move.seconds for move in wanted[1:]])
+        np.testing.assert_allclose(seconds, plan_seconds, rtol=1e-5, err_msg=set_up.name)
+        assert seconds.sum() == pytest.approx(plan_seconds.sum(), rel=1e-6)
+        assert [row[4][0] == 3 for row in rows] == [move.is_hot for move in wanted], set_up.name
+        assert {tuple(row[4][1:]) for row in rows} == {(930, 610, 210)}  # inverse time, exact path, millimetres
+        assert {call[1] for call in judged["calls"] if call[0] == "pause"} <= {5}  # every pause with a cold wire
+        assert not [call for call in judged["calls"] if call[0] == "dwell"]
