@@ -15,7 +15,7 @@ from cutblock.flow import plan_schema as schema
 from cutblock.records.account import Hours, Ledger
 from cutblock.records.block import Block
 from cutblock.records.deviation import PanelDeviation
-from cutblock.records.panel import Panel
+from cutblock.records.panel import Panel, PanelEdge
 from cutblock.records.plan import Plan
 from cutblock.records.record import Record
 from cutblock.records.sweep import Serving, Sweep, SweepTiming, SweepVolumes
@@ -182,6 +182,17 @@ def _panel(
         worst_mm=None if deviation is None else _digits(deviation.worst_mm),
         worst_at_mm=None if deviation is None else _vector(deviation.worst_at_mm),
         samples_per_m2=None if deviation is None else _digits(deviation.samples_per_m2, 3),
+        edges=[_edge(edge) for edge in panel.edges],
+    )
+
+
+def _edge(edge: PanelEdge) -> schema.EdgeEntry:
+    return schema.EdgeEntry(
+        name=edge.name,
+        start_mm=_vector(edge.start_mm),
+        end_mm=_vector(edge.end_mm),
+        normal=_vector(edge.normal, _DIRECTION_DIGITS),
+        bow_mm=_digits(edge.bow_mm),
     )
 
 

@@ -15,7 +15,7 @@ from cutblock.records.account import Cost, Hours, Ledger
 from cutblock.records.block import Block, Cut, Offcut, PlacedBillet
 from cutblock.records.deviation import FaceBend, PanelDeviation
 from cutblock.records.job import Job
-from cutblock.records.panel import Panel
+from cutblock.records.panel import Panel, PanelEdge
 from cutblock.records.piece import Piece
 from cutblock.records.plan import Finding, Plan, Settings
 from cutblock.records.shop import Conditions, Machine, Wire
@@ -137,6 +137,16 @@ def _panel(entry: schema.PanelEntry) -> Panel:
         normals=np.zeros((0, 3)),
         areas_mm2=np.array([entry.area_mm2]),
         neighbours=tuple(entry.neighbours),
+        edges=tuple(
+            PanelEdge(
+                name=edge.name,
+                start_mm=np.array(edge.start_mm),
+                end_mm=np.array(edge.end_mm),
+                normal=np.array(edge.normal),
+                bow_mm=edge.bow_mm,
+            )
+            for edge in entry.edges
+        ),
     )
 
 

@@ -49,6 +49,16 @@ class SettingsEntry(_Entry, frozen=True):
     moves: int | None
 
 
+class EdgeEntry(_Entry, frozen=True):
+    """One side of a panel, in form coordinates, counter-clockwise seen out of the mould."""
+
+    name: str
+    start_mm: Vector
+    end_mm: Vector
+    normal: Vector  # mean of the form's along it
+    bow_mm: float  # outwards of the plane through its ends and that normal
+
+
 class PanelEntry(_Entry, frozen=True):
     """One panel; its frame is `origin_mm` and `axes` (rows x, y, z) in form coordinates."""
 
@@ -73,6 +83,7 @@ class PanelEntry(_Entry, frozen=True):
     worst_mm: float | None = None  # signed: over 0 where foam stands above the form; kerf as the speeds leave it
     worst_at_mm: Vector | None = None  # where, in form coordinates
     samples_per_m2: float | None = None  # that it was measured at
+    edges: list[EdgeEntry] = []
 
 
 class FaceEntry(_Entry, frozen=True):

@@ -12,6 +12,7 @@ from cutblock.base.tolerances import WELD_MM
 from cutblock.geometry.outline import box
 from cutblock.geometry.patch import surface_grid, surface_tangents
 from cutblock.panels.cells import Cell, cells_of
+from cutblock.panels.edges import edges_of
 from cutblock.panels.measure import measured_panel
 from cutblock.records.form import Face
 from cutblock.records.job import FaceSpec, Job
@@ -53,7 +54,9 @@ def divide_faces(
                 "Give larger panels or fewer copies.",
             )
         originals = _face_panels(job, face, cells, part_of(report, 0.2, 1.0))
-        beside = _neighbours(face, spec, cells, originals)
+        names = [_edge_names(face, cell, panel) for cell, panel in zip(cells, originals, strict=True)]
+        beside = _neighbours(face, spec, cells, names)
+        edges = [edges_of(face, *parts) for parts in zip(cells, originals, names, strict=True)]
         for copy in range(1, spec.count + 1):
             stem = _stem(face.name) + (str(copy) if spec.count > 1 else "")
             if stem in taken:
@@ -68,9 +71,10 @@ def divide_faces(
                     panel,
                     id=f"{stem}-{cell.name}",
                     copy=copy,
-                    neighbours=tuple((edge, f"{stem}-{cells[other].name}") for edge, other in edges),
+                    neighbours=tuple((edge, f"{stem}-{cells[other].name}") for edge, other in others),
+                    edges=around,
                 )
-                for panel, cell, edges in zip(originals, cells, beside, strict=True)
+                for panel, cell, others, around in zip(originals, cells, beside, edges, strict=True)
             )
     return tuple(panels), tuple(findings)
 
@@ -105,7 +109,7 @@ def _face_panels(job: Job, face: Face, cells: tuple[Cell, ...], progress: Progre
 
 
 def _neighbours(
-    face: Face, spec: FaceSpec, cells: tuple[Cell, ...], panels: list[Panel]
+    face: Face, spec: FaceSpec, cells: tuple[Cell, ...], names: list[dict[str, str]]
 ) -> list[list[tuple[str, int]]]:
     """Return for each panel its edges and the index of the panel behind each."""
     index_at = {(cell.row, cell.column): index for index, cell in enumerate(cells)}
@@ -113,8 +117,7 @@ def _neighbours(
     is_closed = n_columns > 2 and not spec.is_grid_set and _is_closed(face)
     steps = {"u_high": (0, 1), "u_low": (0, -1), "v_high": (1, 0), "v_low": (-1, 0)}
     result = []
-    for cell, panel in zip(cells, panels, strict=True):
-        edges = _edge_names(face, cell, panel)
+    for cell, edges in zip(cells, names, strict=True):
         found = []
         for side, (down, across) in steps.items():
             column = cell.column + across

@@ -7,6 +7,21 @@ from cutblock.records.record import Record
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class PanelEdge(Record):
+    """One side of a panel's outer ring, all of it in form coordinates, counter-clockwise seen out of the mould."""
+
+    name: str  # "west", "east", "south" or "north", numbered from the second on; "free 1" where the face is trimmed
+    start_mm: Floats  # (3,)
+    end_mm: Floats  # (3,)
+    normal: Floats  # (3,) unit mean of the form's normals along it, out of the mould
+    bow_mm: float  # how far the edge reaches outwards of the plane through its chord and that normal
+
+    def __post_init__(self) -> None:
+        for name in ("start_mm", "end_mm", "normal"):
+            object.__setattr__(self, name, frozen_floats(getattr(self, name), (3,), name))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Panel(Record):
     """One cell of a face's division; needs one mould.
 
@@ -35,6 +50,7 @@ class Panel(Record):
     normals: Floats  # (m, 3)
     areas_mm2: Floats  # (m,)
     neighbours: tuple[tuple[str, str], ...] = ()  # (edge "west" x=0 | "east" | "south" y=0 | "north", panel id)
+    edges: tuple[PanelEdge, ...] = ()  # round the outer ring
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "origin_mm", frozen_floats(self.origin_mm, (3,), "origin_mm"))

@@ -11,6 +11,7 @@ from cutblock.base.errors import InputError
 from cutblock.flow.plan_json import plan_text
 from cutblock.flow.plan_read import read_plan_text
 from cutblock.records.deviation import FaceBend, PanelDeviation
+from cutblock.records.panel import PanelEdge
 
 
 def test_a_plan_comes_back_from_its_file_as_it_went_in():
@@ -116,3 +117,26 @@ def test_where_the_worst_point_lies_and_how_domed_each_face_is_come_back():
     assert plan_text(read) == text
     assert len(read.deviations[0].points_mm) == 0
     assert read.bends[0].domed_percent == 25.0
+
+
+def test_the_sides_of_a_panel_come_back_and_an_older_plan_has_none():
+    edge = PanelEdge(
+        name="west",
+        start_mm=np.array([0.0, 1000.0, 90.0]),
+        end_mm=np.array([0.0, 0.0, 210.0]),
+        normal=np.array([0.6, 0.0, 0.8]),
+        bow_mm=0.25,
+    )
+    plan = sample_plan()
+    plan = replace(plan, panels=(replace(plan.panels[0], edges=(edge,)), *plan.panels[1:]))
+    text = plan_text(plan)
+
+    (read,) = read_plan_text(text.encode(), "plan.json").panels[0].edges
+    assert (read.name, read.bow_mm) == ("west", 0.25)
+    for name in ("start_mm", "end_mm", "normal"):
+        np.testing.assert_array_equal(getattr(read, name), getattr(edge, name))
+    assert plan_text(read_plan_text(text.encode(), "plan.json")) == text
+    values = json.loads(text)
+    for panel in values["panels"]:
+        del panel["edges"]
+    assert read_plan_text(json.dumps(values).encode(), "plan.json").panels[0].edges == ()
