@@ -1,4 +1,4 @@
-"""Looks things up in the catalogue: grades, wires, machines, label sheets and block sizes.
+"""Looks things up in the catalogue: grades, wires, machines, label sheets, block sizes and calibrations.
 
 The shipped files lie in the assets folder; files of the same names in the user's own folder add entries, or replace
 those of the same name. Every call reads the files anew, so that a change counts at once.
@@ -18,6 +18,7 @@ from cutblock.catalog.read import TomlFile
 from cutblock.catalog.schema import (
     BlocksFile,
     BlockTable,
+    CalibrationTable,
     GradesFile,
     GradeTable,
     LabelsFile,
@@ -26,7 +27,7 @@ from cutblock.catalog.schema import (
     WiresFile,
     WireTable,
 )
-from cutblock.records.shop import BlockSize, Grade, LabelSheet, Machine, Wire
+from cutblock.records.shop import BlockSize, Calibration, Grade, LabelSheet, Machine, Wire
 
 _Table = TypeVar("_Table", bound=GradeTable | WireTable | BlockTable | SheetTable)
 _Found = TypeVar("_Found")
@@ -57,6 +58,25 @@ def machine(name_or_path: str) -> Machine:
     if name_or_path.endswith(".toml"):
         return _read_machine(Path(name_or_path))
     return _read_machine(_pick(_machine_paths(), name_or_path, "machine", "machines/"))
+
+
+def calibration(name_or_path: str) -> Calibration:
+    """Return the calibration called `name_or_path`, or of the TOML file where it ends in .toml; raises like `grade`."""
+    if name_or_path.endswith(".toml"):
+        return _read_calibration(Path(name_or_path))
+    known = {path.stem: path for path in sorted(calibrations_folder().glob("*.toml"))}
+    if not known:
+        raise InputError(
+            f'there is no calibration called "{name_or_path}"; none is stored yet.',
+            "",
+            "Cut test coupons and store one with `cutblock coupons fit FILE --name NAME`.",
+        )
+    return _read_calibration(_pick(known, name_or_path, "calibration", "calibrations/"))
+
+
+def calibrations_folder() -> Path:
+    """Return the folder of the user's calibrations; it need not exist."""
+    return user_folder() / "calibrations"
 
 
 def grades() -> tuple[Grade, ...]:
@@ -130,6 +150,14 @@ def _read_machine(path: Path) -> Machine:
     for field, text, remedy in table.complaints():
         raise file.refusal((field,), text, remedy)
     return Machine(name=path.stem, **msgspec.structs.asdict(table))
+
+
+def _read_calibration(path: Path) -> Calibration:
+    file = TomlFile(path)
+    table = file.shaped(CalibrationTable)
+    for field, text, remedy in table.complaints():
+        raise file.refusal((field,), text, remedy)
+    return Calibration(name=path.stem, **msgspec.structs.asdict(table))
 
 
 def _pick(known: Mapping[str, _Found], name: str, what: str, where: str) -> _Found:

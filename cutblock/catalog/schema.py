@@ -1,9 +1,13 @@
 """The shape of the catalogue's TOML files: every key, its type and the range it must lie in."""
 
 from collections.abc import Iterator
+from datetime import date
 from typing import Annotated
 
 import msgspec
+import numpy as np
+
+from cutblock.wire.foam import LARGEST_HEAT_J_KG, LEAST_HEAT_J_KG
 
 Name = Annotated[str, msgspec.Meta(min_length=1, max_length=60)]
 Positive = Annotated[float, msgspec.Meta(gt=0.0, lt=1e7)]
@@ -16,6 +20,7 @@ Words = Annotated[str, msgspec.Meta(pattern="^[ -~]+$")]  # printable ASCII, as 
 # What is wrong with a table that its types allow: (key, what, remedy).
 Complaint = tuple[str, str, str]
 
+_Row = tuple[float, float, float]
 _NEEDED_WORDS = ("G21", "G90", "G61")
 
 
@@ -151,6 +156,42 @@ class MachineTable(_Table):
             yield "heater_on", "has a brace that is not {power}", 'Write it like "M3 S{power}".'
 
 
+class CalibrationTable(_Table):
+    """A file in calibrations/; the keys are the fields of `records.shop.Calibration` but the name, the file's own."""
+
+    wire: Name
+    alloy: Name
+    diameter_mm: Annotated[float, msgspec.Meta(ge=0.05, le=5.0)]
+    machine: Name
+    date: Annotated[str, msgspec.Meta(pattern=r"^\d{4}-\d{2}-\d{2}$")]
+    least_kerf_mm: Annotated[float, msgspec.Meta(ge=-5.0, le=5.0)]
+    heat_kj_kg: Annotated[float, msgspec.Meta(ge=LEAST_HEAT_J_KG * 1e-3, le=LARGEST_HEAT_J_KG * 1e-3)]
+    threshold_w_m: Annotated[float, msgspec.Meta(gt=-500.0, lt=500.0)]
+    covariance: tuple[_Row, _Row, _Row]
+    degrees_of_freedom: Annotated[int, msgspec.Meta(ge=1)]
+    n_coupons: Annotated[int, msgspec.Meta(ge=3)]
+    chi_square: NotNegative
+    density_kg_m3: tuple[Density, Density]
+    power_w_m: tuple[Positive, Positive]
+    speed_mm_s: tuple[Positive, Positive]
+    grade: Annotated[str, msgspec.Meta(max_length=60)] = ""
+    clearance_mm: Annotated[float, msgspec.Meta(ge=0.0, le=2.0)] | None = None
+    doubts: tuple[str, ...] = ()
+
+    def complaints(self) -> Iterator[Complaint]:
+        """Yield a covariance that is none, ranges the wrong way round, and a date that is no day."""
+        for key in ("density_kg_m3", "power_w_m", "speed_mm_s"):
+            low, high = getattr(self, key)
+            if low > high:
+                yield key, f"{low:g} is above {high:g}", "Give the least and then the most of the test cuts."
+        try:
+            date.fromisoformat(self.date)
+        except ValueError:
+            yield "date", f"{self.date} is no day of the calendar", "Write year-month-day, such as 2026-03-02."
+        if not _is_covariance(self.covariance):
+            yield "covariance", "is not the covariance of three numbers", "Fit the coupons again."
+
+
 class GradesFile(_Table):
     """grades.toml."""
 
@@ -173,3 +214,13 @@ class LabelsFile(_Table):
     """labels.toml."""
 
     sheet: tuple[SheetTable, ...] = ()
+
+
+def _is_covariance(rows: tuple[_Row, _Row, _Row]) -> bool:
+    """Return whether a matrix is symmetric and, to rounding, has no negative direction once scaled to its diagonal."""
+    matrix = np.array(rows)
+    sizes = np.sqrt(np.maximum(np.diag(matrix), 0.0))
+    if not (sizes > 0.0).all():
+        return False
+    scaled = matrix / np.outer(sizes, sizes)
+    return bool(np.allclose(scaled, scaled.T, atol=1e-6) and np.linalg.eigvalsh(scaled).min() > -1e-6)

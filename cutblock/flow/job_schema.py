@@ -105,6 +105,7 @@ class CuttingTable(_Table, frozen=True):
     power: Positive
     wall: Positive
     kerf: Positive | None = None
+    calibration: str | None = None
     favour: Literal["lower", "upper", "share"] = "share"
 
 

@@ -85,6 +85,7 @@ class _Reader:
         scale = self._mm
         grade, density = self._foam(file.foam)
         machine = self._machine(file.cutting.machine)
+        calibration = self._calibration(file.cutting.calibration)
         faces = tuple(self._face(index, face) for index, face in enumerate(file.form.face))
         self._refuse_repeated_names(faces)
         layup = Layup(file.form.layup)
@@ -120,6 +121,7 @@ class _Reader:
             thickness_mm=duties.thickness * scale,
             currency=file.job.currency,
             hour_rate=file.cost.machine_hour,
+            calibration=calibration,
             inputs=self._inputs(),
         )
 
@@ -207,6 +209,17 @@ class _Reader:
             catalog.machine(name)
         except InputError as error:
             self._refuse(("cutting", "machine"), str(error).rstrip("."), "")
+        return name
+
+    def _calibration(self, name: str | None) -> str:
+        if name is None:
+            return ""
+        if name.endswith(".toml"):
+            name = self._file(name, ("cutting", "calibration"))
+        try:
+            catalog.calibration(name)
+        except InputError as error:
+            self._refuse(("cutting", "calibration"), str(error).rstrip("."), "")
         return name
 
     def _wire(self, name: str) -> str:

@@ -18,6 +18,7 @@ from cutblock.records.deviation import PanelDeviation
 from cutblock.records.panel import Panel, PanelEdge
 from cutblock.records.plan import Plan
 from cutblock.records.record import Record
+from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Serving, Sweep, SweepTiming, SweepVolumes
 
 _LENGTH_DIGITS = 6
@@ -54,7 +55,7 @@ def plan_file(plan: Plan) -> schema.PlanFile:
         job=_job(plan),
         inputs=[schema.InputEntry(path=path, sha256=digest) for path, digest in plan.job.inputs],
         settings=schema.SettingsEntry(**_values(plan.settings)),
-        conditions=schema.ConditionsEntry(**_values(plan.conditions)),
+        conditions=_conditions(plan.conditions),
         wire=schema.WireEntry(**_values(plan.wire)),
         machine=schema.MachineEntry(**_values(plan.machine)),
         panels=_panels(plan),
@@ -93,6 +94,14 @@ def _compact(value: object) -> str:
 def _values(record: Record) -> dict[str, Any]:
     values = {field.name: getattr(record, field.name) for field in fields(record)}  # type: ignore[arg-type]
     return {name: float(f"{value:.10g}") if isinstance(value, float) else value for name, value in values.items()}
+
+
+def _conditions(conditions: Conditions) -> schema.ConditionsEntry:
+    values, calibration = _values(conditions), conditions.calibration
+    if calibration is not None:
+        covariance = tuple(tuple(row) for row in calibration.covariance.tolist())
+        values["calibration"] = schema.CalibrationEntry(**(_values(calibration) | {"covariance": covariance}))
+    return schema.ConditionsEntry(**values)
 
 
 def _digits(value: float, digits: int = _LENGTH_DIGITS) -> float:

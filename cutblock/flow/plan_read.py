@@ -18,7 +18,7 @@ from cutblock.records.job import Job
 from cutblock.records.panel import Panel, PanelEdge
 from cutblock.records.piece import Piece
 from cutblock.records.plan import Finding, Plan, Settings
-from cutblock.records.shop import Conditions, Machine, Wire
+from cutblock.records.shop import Calibration, Conditions, Machine, Wire
 from cutblock.records.sweep import Serving, Sweep, SweepTiming, SweepVolumes
 from cutblock.records.words import CutKind, Duty, Favour, Half, Layup, Severity
 
@@ -49,7 +49,7 @@ def _plan(file: schema.PlanFile) -> Plan:
         settings=Settings(**_values(file.settings)),
         wire=Wire(**_values(file.wire)),
         machine=Machine(**_values(file.machine)),
-        conditions=Conditions(**_values(file.conditions)),
+        conditions=_conditions(file.conditions),
         panels=tuple(_panel(entry) for entry in file.panels),
         sweeps=tuple(_sweep(entry) for entry in file.sweeps),
         pieces=tuple(_piece(entry) for entry in file.pieces),
@@ -87,6 +87,11 @@ def _values(entry: msgspec.Struct) -> dict[str, Any]:
     return {name: getattr(entry, name) for name in entry.__struct_fields__}
 
 
+def _conditions(entry: schema.ConditionsEntry) -> Conditions:
+    calibration = None if entry.calibration is None else Calibration(**_values(entry.calibration))
+    return Conditions(**(_values(entry) | {"calibration": calibration}))
+
+
 def _job(file: schema.PlanFile) -> Job:
     job = file.job
     return Job(
@@ -114,6 +119,7 @@ def _job(file: schema.PlanFile) -> Job:
         thickness_mm=job.thickness_mm,
         currency=job.currency,
         hour_rate=job.hour_rate,
+        calibration=file.conditions.calibration.name if file.conditions.calibration is not None else "",
         inputs=tuple((entry.path, entry.sha256) for entry in file.inputs),
     )
 

@@ -256,6 +256,30 @@ class FindingEntry(_Entry, frozen=True):
     text: str
 
 
+class CalibrationEntry(_Entry, frozen=True):
+    """The test cuts that the conditions rest on; `covariance` is of (least_kerf_mm, heat_kj_kg, threshold_w_m)."""
+
+    name: str
+    wire: str
+    alloy: str
+    diameter_mm: float
+    machine: str
+    grade: str
+    date: str
+    least_kerf_mm: float
+    heat_kj_kg: float
+    threshold_w_m: float
+    covariance: tuple[Vector, Vector, Vector]
+    degrees_of_freedom: int
+    n_coupons: int
+    chi_square: float
+    density_kg_m3: Pair
+    power_w_m: Pair
+    speed_mm_s: Pair
+    clearance_mm: float | None
+    doubts: tuple[str, ...]
+
+
 class ConditionsEntry(_Entry, frozen=True):
     """What the wire does in this foam at this power."""
 
@@ -269,6 +293,7 @@ class ConditionsEntry(_Entry, frozen=True):
     kerf_mm: float
     widest_kerf_mm: float
     is_calibrated: bool
+    calibration: CalibrationEntry | None = None
 
 
 class WireEntry(_Entry, frozen=True):

@@ -43,17 +43,18 @@ def tags_pdf(plan: Plan, sheet_name: str = LABEL_SHEET, start: int = 1) -> bytes
 
 def speed_chart(plan: Plan) -> SpeedChart:
     """Return the speed window for densities around those of EPS, at the plan's wire and power."""
-    from cutblock.wire.speed import speed_window
+    from cutblock.schedule.window import contact_kerf_mm, speed_limits
 
     densities = np.linspace(_LIGHTEST_KG_M3, _HEAVIEST_KG_M3, 61)
-    contact_kerf_mm = plan.wire.diameter_mm + 2.0 * plan.wire.clearance_mm
-    low, high = speed_window(
-        plan.conditions.power_w_m, densities, contact_kerf_mm * 1e-3, plan.conditions.widest_kerf_mm * 1e-3
+    conditions = plan.conditions
+    contact_mm = contact_kerf_mm(plan.wire, conditions.calibration)
+    low, high = speed_limits(
+        conditions.power_w_m, densities, contact_mm, conditions.widest_kerf_mm, conditions.calibration
     )
     return SpeedChart(
         densities_kg_m3=densities,
-        low_mm_s=np.asarray(low) * 1e3,
-        high_mm_s=np.asarray(high) * 1e3,
+        low_mm_s=low,
+        high_mm_s=high,
         density_kg_m3=plan.conditions.density_kg_m3,
         planned_mm_s=plan.conditions.planned_mm_s,
         is_calibrated=plan.conditions.is_calibrated,

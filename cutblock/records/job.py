@@ -124,4 +124,5 @@ class Job(Record):
     thickness_mm: float  # of the concrete between mould and counter-mould
     currency: str = ""
     hour_rate: float | None = None  # money per machine hour
+    calibration: str = ""  # name of the user's own, or the absolute path of a TOML file; "": none
     inputs: tuple[tuple[str, str], ...] = ()  # (path as written in the job, sha256) of the job and every file it names

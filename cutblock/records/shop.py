@@ -2,6 +2,7 @@
 
 from dataclasses import dataclass
 
+from cutblock.base.arrays import Floats, frozen_floats
 from cutblock.records.record import Record
 
 
@@ -88,6 +89,34 @@ class LabelSheet(Record):
     pitch_y_mm: float
 
 
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Calibration(Record):
+    """The straight-line kerf law w0 + (q' - q0) / (rho H v), fitted to test cuts of one wire on one machine."""
+
+    name: str
+    wire: str
+    alloy: str
+    diameter_mm: float
+    machine: str
+    grade: str  # of the foam; "" where it was not told
+    date: str  # year-month-day of the last cut
+    least_kerf_mm: float  # w0
+    heat_kj_kg: float  # H
+    threshold_w_m: float  # q0
+    covariance: Floats  # (3, 3) of (w0 mm, H kJ/kg, q0 W/m)
+    degrees_of_freedom: int
+    n_coupons: int
+    chi_square: float  # reduced
+    density_kg_m3: tuple[float, float]  # least and most of the cuts
+    power_w_m: tuple[float, float]
+    speed_mm_s: tuple[float, float]
+    clearance_mm: float | None = None  # on each side where the wire began to touch; None: not tried
+    doubts: tuple[str, ...] = ()  # what spoke against the fit
+
+    def __post_init__(self) -> None:
+        object.__setattr__(self, "covariance", frozen_floats(self.covariance, (3, 3), "covariance"))
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Conditions(Record):
     """The cutting conditions of a job: what the wire does in this foam at this power."""
@@ -102,3 +131,4 @@ class Conditions(Record):
     kerf_mm: float  # at the planned speed
     widest_kerf_mm: float  # the kerf at the over-melt limit
     is_calibrated: bool = False
+    calibration: Calibration | None = None  # by whose test cuts; the limits then hold with 95 % confidence each

@@ -7,6 +7,7 @@ from cutblock.wire.kerf import DENSITY_RANGE_KG_M3, POWER_RANGE_W_M, UNCALIBRATE
 HOT_IN_AIR_C = 400.0  # vapours of polystyrene catch fire from 350 to 490 degC
 IGNITION_C = 450.0
 GLOWING_C = 550.0
+LARGEST_SAG_M = 1e-3  # mid-wire, under its own weight
 EXTRA_LOW_VOLTAGE_V = 50.0  # alternating; the usual limit below which a touch is taken to be harmless in dry rooms
 
 
@@ -50,12 +51,15 @@ def voltage_cautions(voltage_v: float) -> tuple[Caution, ...]:
     return (Caution("warning", text),)
 
 
-def law_cautions(power_w_m: float, density_kg_m3: float, *, is_outside: bool) -> tuple[Caution, ...]:
+def law_cautions(
+    power_w_m: float, density_kg_m3: float, *, is_outside: bool, is_calibrated: bool = False
+) -> tuple[Caution, ...]:
     """Return what to say of how sure the numbers are."""
     percent = 100.0 * UNCALIBRATED_SPREAD
-    cautions = [
-        Caution("info", f"Uncalibrated: kerf and speeds are good to +-{percent:.0f} %. Cut test coupons first.")
-    ]
+    cautions = []
+    if not is_calibrated:
+        text = f"Uncalibrated: kerf and speeds are good to +-{percent:.0f} %. Cut test coupons first."
+        cautions.append(Caution("info", text))
     if is_outside:
         text = (
             f"{power_w_m:g} W/m in {density_kg_m3:g} kg/m3 with this wire and kerf lies outside what the kerf law"
@@ -64,6 +68,50 @@ def law_cautions(power_w_m: float, density_kg_m3: float, *, is_outside: bool) ->
         )
         cautions.append(Caution("warning", text))
     return tuple(cautions)
+
+
+def tension_cautions(
+    tension_n: float, limit_n: float, length_m: float, sag_m: float, slack_sag_m: float
+) -> tuple[Caution, ...]:
+    """Return what to say of the wire's tension, its sag, and what it would do between fixed ends.
+
+    Args:
+        tension_n: As the springs or weights give it.
+        limit_n: What the hot wire bears for long.
+        length_m: Between the wire's ends.
+        sag_m: Under its own weight at that tension.
+        slack_sag_m: What the warm wire would sag between fixed ends.
+    """
+    cautions = []
+    if tension_n > limit_n * (1.0 + 1e-9):
+        text = (
+            f"{tension_n:.1f} N is more than the {limit_n:.1f} N the hot wire bears for long: it creeps and breaks."
+            " Take a thicker wire, less power or less tension."
+        )
+        cautions.append(Caution("error", text))
+    if sag_m > LARGEST_SAG_M:
+        text = (
+            f"{length_m:g} m of wire is too long for its tension: at {tension_n:.1f} N it sags {sag_m * 1e3:.1f} mm,"
+            f" which goes into the cut. Tighten it up to {limit_n:.1f} N, shorten it, or take less power: a cooler wire"
+            " bears more."
+        )
+        cautions.append(Caution("warning", text))
+    text = (
+        f"Keep the tension with a weight or a long spring: between fixed ends the hot wire would sag"
+        f" {slack_sag_m * 1e3:.0f} mm."
+    )
+    return (*cautions, Caution("info", text))
+
+
+def melting_cautions(power_w_m: float, needed_w_m: float, collapse_temperature_c: float) -> tuple[Caution, ...]:
+    """Return what to say of a power too small to bring foam to collapse at any speed of use."""
+    if power_w_m >= needed_w_m:
+        return ()
+    text = (
+        f"{power_w_m:g} W/m does not bring the foam to its collapse at {collapse_temperature_c:.0f} degC at any speed"
+        f" of use: give at least {needed_w_m:.0f} W/m."
+    )
+    return (Caution("error", text),)
 
 
 def usual_cautions() -> tuple[Caution, ...]:
@@ -88,6 +136,7 @@ def wire_cautions(
     air_power_w_m: float,
     voltage_v: float,
     is_outside: bool,
+    is_calibrated: bool = False,
 ) -> tuple[Caution, ...]:
     """Return every caution for a wire at work, the gravest first.
 
@@ -98,11 +147,12 @@ def wire_cautions(
         air_power_w_m: Power that keeps it cool enough in air.
         voltage_v: Over the whole wire.
         is_outside: The kerf law is used outside what it was made for.
+        is_calibrated: The numbers come from test cuts.
     """
     cautions = (
         *air_cautions(free_air_c, air_power_w_m, power_w_m),
         *voltage_cautions(voltage_v),
-        *law_cautions(power_w_m, density_kg_m3, is_outside=is_outside),
+        *law_cautions(power_w_m, density_kg_m3, is_outside=is_outside, is_calibrated=is_calibrated),
         *usual_cautions(),
     )
     order = ("error", "warning", "info")
