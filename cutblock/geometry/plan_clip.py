@@ -1,4 +1,4 @@
-"""Cutting a triangle mesh that is a height field with vertical planes, and closing it to a solid."""
+"""Cutting a triangle mesh with planes, and closing one that is a height field to a solid."""
 
 import numpy as np
 
@@ -7,26 +7,27 @@ from cutblock.base.tolerances import PLAN_MM
 
 
 def clip(vertices: Floats, triangles: Ints, normal: Floats, distance_mm: float) -> tuple[Floats, Ints]:
-    """Return the part of a mesh on the inner side of a vertical plane.
+    """Return the part of a mesh on the inner side of a plane, without the facets that lie in the plane.
 
     Triangles that share an edge share the new vertex on it, so a mesh without gaps stays one.
 
     Args:
-        vertices: (n, k) with plan x and y in the first two columns; the others are interpolated.
+        vertices: (n, k) with x, y (and z) in the first columns; the others are interpolated.
         triangles: (m, 3) rows of `vertices`.
-        normal: (2,) unit vector in the plan, pointing inwards.
-        distance_mm: Inside is where plan @ normal >= this.
+        normal: (3,) unit vector pointing inwards, or (2,) in the plan for an upright plane.
+        distance_mm: Inside is where point @ normal >= this.
 
     Returns:
         Vertices (the given ones, moved onto the plane where they lie within 1e-6 mm of it, then the new ones) and
         triangles; vertices no triangle uses are left in.
     """
-    heights = vertices[:, :2] @ normal - distance_mm
+    n_axes = len(normal)
+    heights = vertices[:, :n_axes] @ normal - distance_mm
     if heights.min(initial=np.inf) >= PLAN_MM:
         return vertices, triangles
     is_on = np.abs(heights) < PLAN_MM
     vertices = vertices.copy()
-    vertices[is_on, :2] -= np.outer(heights[is_on], normal)
+    vertices[is_on, :n_axes] -= np.outer(heights[is_on], normal)
     heights = np.where(is_on, 0.0, heights)
     is_in = heights[triangles] >= 0.0
     n_in = is_in.sum(axis=1)
