@@ -81,6 +81,8 @@ def _cases(plan: Plan) -> list[_Case]:
     wires: dict[str, str] = {}
     for sweep in plan.sweeps:
         for serving in sweep.serving:
+            if not serving.is_mould:
+                continue
             strips[serving.panel] = serving.n_strips
             if serving is sweep.serving[0]:
                 wires[serving.panel] = sweep.wire_along

@@ -114,6 +114,7 @@ class DutiesTable(_Table, frozen=True):
 
     unpaired: Literal["counter-mould", "cradle", "filler", "surplus"] = "surplus"
     thickness: NotNegative = 0.0
+    counter: Literal["best", "lift", "offset"] = "best"
 
 
 class CostTable(_Table, frozen=True):

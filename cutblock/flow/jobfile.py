@@ -28,7 +28,7 @@ from cutblock.records.job import (
     StockSpec,
     WavesSource,
 )
-from cutblock.records.words import Duty, Favour, Layup
+from cutblock.records.words import Closing, Duty, Favour, Layup
 
 _LARGEST_FILE_BYTES = 4_000_000
 _BENCH_MARGIN_MM = 30.0
@@ -119,6 +119,7 @@ class _Reader:
             favour=Favour(file.cutting.favour),
             unpaired=Duty(duties.unpaired),
             thickness_mm=duties.thickness * scale,
+            closing=Closing(duties.counter),
             currency=file.job.currency,
             hour_rate=file.cost.machine_hour,
             calibration=calibration,

@@ -143,6 +143,7 @@ def _job(plan: Plan) -> schema.JobEntry:
         favour=job.favour.value,
         unpaired=job.unpaired.value,
         thickness_mm=job.thickness_mm,
+        counter=job.closing.value,
         least_offcut_mm=job.least_offcut_mm,
         currency=job.currency,
         hour_rate=job.hour_rate,
@@ -154,7 +155,8 @@ def _panels(plan: Plan) -> list[schema.PanelEntry]:
     partner: dict[str, str] = {}
     for sweep in plan.sweeps:
         for serving in sweep.serving:
-            served[serving.panel].append(serving)
+            if serving.is_mould:
+                served[serving.panel].append(serving)
         if len(set(sweep.serves)) > 1:
             lower, upper = sweep.serves
             partner.setdefault(lower, upper)
@@ -248,6 +250,7 @@ def _serving(serving: Serving) -> schema.ServingEntry:
         fit_rms_mm=_digits(serving.fit_rms_mm),
         strip=serving.strip,
         n_strips=serving.n_strips,
+        offset_mm=_digits(serving.offset_mm),
     )
 
 

@@ -20,7 +20,7 @@ from cutblock.records.piece import Piece
 from cutblock.records.plan import Finding, Plan, Settings
 from cutblock.records.shop import Calibration, Conditions, Machine, Wire
 from cutblock.records.sweep import Serving, Sweep, SweepTiming, SweepVolumes
-from cutblock.records.words import CutKind, Duty, Favour, Half, Layup, Severity
+from cutblock.records.words import Closing, CutKind, Duty, Favour, Half, Layup, Severity
 
 
 def read_plan_text(raw: bytes, name: str) -> Plan:
@@ -117,6 +117,7 @@ def _job(file: schema.PlanFile) -> Job:
         favour=Favour(job.favour),
         unpaired=Duty(job.unpaired),
         thickness_mm=job.thickness_mm,
+        closing=Closing(job.counter),
         currency=job.currency,
         hour_rate=job.hour_rate,
         calibration=file.conditions.calibration.name if file.conditions.calibration is not None else "",
@@ -189,6 +190,7 @@ def _serving(entry: schema.ServingEntry) -> Serving:
         fit_rms_mm=entry.fit_rms_mm,
         strip=entry.strip,
         n_strips=entry.n_strips,
+        offset_mm=entry.offset_mm,
     )
 
 

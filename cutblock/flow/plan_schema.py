@@ -32,6 +32,7 @@ class JobEntry(_Entry, frozen=True):
     least_offcut_mm: Vector
     currency: str
     hour_rate: float | None
+    counter: Literal["best", "lift", "offset"] = "best"
 
 
 class InputEntry(_Entry, frozen=True):
@@ -95,7 +96,7 @@ class FaceEntry(_Entry, frozen=True):
 
 
 class ServingEntry(_Entry, frozen=True):
-    """A half as the mould of a panel: billet point p lies at rotation p + shift in the panel frame."""
+    """A half as the mould or the counter-mould of a panel: billet point p lies at rotation p + shift in its frame."""
 
     panel: str
     half: Literal["lower", "upper"]
@@ -108,6 +109,7 @@ class ServingEntry(_Entry, frozen=True):
     fit_rms_mm: float
     strip: int
     n_strips: int
+    offset_mm: float = 0.0  # of the wanted face above the panel's; 0 for a mould
 
 
 class SpeedEntry(_Entry, frozen=True):

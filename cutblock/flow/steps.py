@@ -40,15 +40,22 @@ def fit(plan: Plan, progress: Progress) -> Plan:
 
 
 def pair(plan: Plan, progress: Progress) -> Plan:
-    """Give both halves of every sweep a duty."""
+    """Give both halves of every sweep a duty, and counter-moulds that lifting would leave too thin their own sweeps."""
+    from cutblock.pairing.duties import duty_findings, make_pieces
     from cutblock.pairing.match import pair_sweeps
-    from cutblock.sweeps.counter import counter_mould_findings
+    from cutblock.sweeps.counter import cut_counter_moulds
 
     sweeps, pieces, findings = pair_sweeps(
         plan.job, plan.panels, plan.sweeps, plan.conditions, part_of(progress, 0.0, 0.9)
     )
-    notes = counter_mould_findings(plan.job, plan.panels, sweeps, pieces, plan.conditions, part_of(progress, 0.9, 1.0))
-    return _with(plan, findings + notes, sweeps=sweeps, pieces=pieces)
+    more, notes = cut_counter_moulds(
+        plan.job, plan.panels, sweeps, pieces, plan.conditions, part_of(progress, 0.9, 1.0)
+    )
+    if more:
+        places = {panel.id: number for number, panel in enumerate(plan.panels)}
+        sweeps = tuple(sorted((*sweeps, *more), key=lambda sweep: places[sweep.serving[0].panel]))
+        pieces = make_pieces(plan.job, sweeps)
+    return _with(plan, findings + notes + duty_findings(plan.job, pieces), sweeps=sweeps, pieces=pieces)
 
 
 def set_speeds(plan: Plan, progress: Progress) -> Plan:
@@ -67,7 +74,7 @@ def compare(plan: Plan, progress: Progress) -> Plan:
     """Hold every finished face against the form, as the settled speeds leave it."""
     from cutblock.sweeps.maps import face_bends, findings_of, settle
 
-    deviations, sweeps = settle(plan.job, plan.panels, plan.sweeps, progress)
+    deviations, sweeps = settle(plan.job, plan.panels, plan.sweeps, plan.conditions, progress)
     findings = findings_of(plan.job, deviations, plan.sweeps)
     return _with(plan, findings, sweeps=sweeps, deviations=deviations, bends=face_bends(plan.panels))
 

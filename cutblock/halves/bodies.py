@@ -78,7 +78,7 @@ def form_bodies(panels: Sequence[Panel], sweeps: Sequence[Sweep], coat_mm: float
     Raises:
         GeometryError: See `finished_face`.
     """
-    serving = [(serving, sweep) for sweep in sweeps for serving in sweep.serving]
+    serving = [(serving, sweep) for sweep in sweeps for serving in sweep.serving if serving.is_mould]
     for panel in panels:
         if panel.copy == 1:
             faces = [finished_face(sweep, one, panel, coat_mm) for one, sweep in serving if one.panel == panel.id]

@@ -85,7 +85,7 @@ def pack_sweeps(
 
 def _task(job: Job, stock: tuple[StockSpec, ...], sweeps: tuple[Sweep, ...], conditions: Conditions) -> Task:
     machine = catalog.machine(job.machine)
-    names = tuple(f"panel {' and '.join(sweep.serves)}, sweep {sweep.id}" for sweep in sweeps)
+    names = tuple(f"panel {' and '.join(sweep.panels)}, sweep {sweep.id}" for sweep in sweeps)
     return make_task(
         [(sweep.length_mm, sweep.width_mm, sweep.height_mm) for sweep in sweeps],
         [(spec.length_mm, spec.width_mm, spec.height_mm, spec.count, spec.price) for spec in stock],

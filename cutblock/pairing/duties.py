@@ -1,7 +1,7 @@
 """Pieces: the two halves of each sweep with their duties, ids and codes, and what must be said about them."""
 
 import binascii
-from collections.abc import Sequence
+from collections.abc import Collection, Sequence
 
 from cutblock.records.job import Job
 from cutblock.records.piece import Piece
@@ -27,17 +27,28 @@ def make_pieces(job: Job, sweeps: Sequence[Sweep]) -> tuple[Piece, ...]:
     """Return the lower and upper half of every sweep; volume and mass are not known yet.
 
     An upper half that moulds no panel takes the job's duty for unpaired halves. A counter-mould and a cradle belong
-    to the panel of the lower half, a filler and a surplus half to none.
+    to the panel of the lower half, a filler and a surplus half to none. Where a panel's counter-mould has a sweep of
+    its own, the upper half over its mould is the panel's cradle, and what that sweep leaves below is surplus.
     """
-    return tuple(_piece(job, sweep, half) for sweep in sweeps for half in Half)
+    closed = {serving.panel for sweep in sweeps for serving in sweep.serving if not serving.is_mould}
+    return tuple(_piece(job, sweep, half, closed) for sweep in sweeps for half in Half)
 
 
-def _piece(job: Job, sweep: Sweep, half: Half) -> Piece:
-    moulds = {serving.half: serving.panel for serving in sweep.serving}
-    duty, panel = Duty.MOULD, moulds.get(half)
-    if panel is None:
-        duty = job.unpaired
-        panel = moulds[Half.LOWER] if duty in {Duty.COUNTER_MOULD, Duty.CRADLE} else None
+def _duty_of(job: Job, sweep: Sweep, half: Half, closed: Collection[str]) -> tuple[Duty, str | None]:
+    """Return what a half is for, and the panel it belongs to."""
+    own = next((serving for serving in sweep.serving if serving.half is half), None)
+    if own is not None:
+        return Duty.MOULD if own.is_mould else Duty.COUNTER_MOULD, own.panel
+    below = sweep.serving[0]
+    if not below.is_mould:
+        return Duty.SURPLUS, None
+    if job.unpaired not in {Duty.COUNTER_MOULD, Duty.CRADLE}:
+        return job.unpaired, None
+    return Duty.CRADLE if below.panel in closed else job.unpaired, below.panel
+
+
+def _piece(job: Job, sweep: Sweep, half: Half, closed: Collection[str]) -> Piece:
+    duty, panel = _duty_of(job, sweep, half, closed)
     piece_id = f"{sweep.id}-{_ENDINGS[half]}"
     other = Half.UPPER if half is Half.LOWER else Half.LOWER
     return Piece(
@@ -56,6 +67,6 @@ def duty_findings(job: Job, pieces: Sequence[Piece]) -> tuple[Finding, ...]:
     n_surplus = sum(piece.duty is Duty.SURPLUS for piece in pieces)
     if not n_surplus:
         return ()
-    halves = "1 upper half has" if n_surplus == 1 else f"{n_surplus} upper halves have"
+    halves = "1 half has" if n_surplus == 1 else f"{n_surplus} halves have"
     text = f"{halves} no use yet. Give them a duty in the job, or choose panels that pair up."
     return (Finding(severity=Severity.WARNING, code="surplus", subject=job.id, text=text),)

@@ -4,7 +4,7 @@ from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass, field, replace
 
 from cutblock.base.progress import Progress, part_of, silent
-from cutblock.pairing.duties import duty_findings, make_pieces
+from cutblock.pairing.duties import make_pieces
 from cutblock.pairing.matching import match_shapes
 from cutblock.pairing.partners import Partnership, check_partner
 from cutblock.pairing.shapes import Shapes, describe_shapes, find_candidates, group_alike
@@ -53,7 +53,7 @@ def pair_sweeps(
     )
     pieces = make_pieces(job, kept)
     packed = _packing_finding(job, (part.packing_mm for part in search.found.values()))
-    return kept, pieces, (*packed, *duty_findings(job, pieces))
+    return kept, pieces, packed
 
 
 @dataclass

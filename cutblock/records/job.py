@@ -6,7 +6,7 @@ import numpy as np
 
 from cutblock.base.arrays import Floats, frozen_floats
 from cutblock.records.record import Record
-from cutblock.records.words import Duty, Favour, Layup
+from cutblock.records.words import Closing, Duty, Favour, Layup
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -122,6 +122,7 @@ class Job(Record):
     favour: Favour
     unpaired: Duty
     thickness_mm: float  # of the concrete between mould and counter-mould
+    closing: Closing = Closing.BEST
     currency: str = ""
     hour_rate: float | None = None  # money per machine hour
     calibration: str = ""  # name of the user's own, or the absolute path of a TOML file; "": none

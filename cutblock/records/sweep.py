@@ -9,11 +9,11 @@ from cutblock.records.words import Half
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Serving(Record):
-    """One half of a sweep as the mould of a panel, or of one strip of it.
+    """One half of a sweep as the mould of a panel, or of one strip of it, or as the counter-mould that closes it.
 
-    A point p of the billet frame lies at `p @ rotation.T + shift_mm` in the panel frame; for an upper half the
-    rotation turns it over. Deviations are of the finished mould face (kerf and coat taken into account) from the
-    form, along the form's normal, over the panel's samples that the strip covers.
+    A point p of the billet frame lies at `p @ rotation.T + shift_mm` in the panel frame; for an upper half that is a
+    mould the rotation turns it over, as a counter-mould it stays face down. Deviations are of the finished face (kerf
+    and coat taken into account) from the wanted one, along its normal, over the panel's samples that the strip covers.
     """
 
     panel: str
@@ -27,6 +27,12 @@ class Serving(Record):
     fit_rms_mm: float = 0.0
     strip: int = 1  # from 1
     n_strips: int = 1
+    offset_mm: float = 0.0  # of the wanted face above the panel's: 0 for a mould, the concrete's thickness to close it
+
+    @property
+    def is_mould(self) -> bool:
+        """Whether the half moulds its panel; else it is cut by a sweep of its own to close the panel's mould."""
+        return self.offset_mm == 0.0
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "rotation", frozen_floats(self.rotation, (3, 3), "rotation"))
@@ -60,6 +66,11 @@ class Sweep(Record):
     @property
     def serves(self) -> tuple[str, ...]:
         """The panels its halves are moulds of, lower half first."""
+        return tuple(serving.panel for serving in self.serving if serving.is_mould)
+
+    @property
+    def panels(self) -> tuple[str, ...]:
+        """The panels its halves are moulds or counter-moulds of, lower half first."""
         return tuple(serving.panel for serving in self.serving)
 
 

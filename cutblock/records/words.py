@@ -35,6 +35,14 @@ class Duty(StrEnum):
     SURPLUS = "surplus"
 
 
+class Closing(StrEnum):
+    """How a panel's counter-mould is cut: its mould's upper half lifted, or a sweep of its own at even thickness."""
+
+    BEST = "best"
+    LIFT = "lift"
+    OFFSET = "offset"
+
+
 class Severity(StrEnum):
     """How much a finding matters; an error makes the command end with 1."""
 

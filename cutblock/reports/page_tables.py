@@ -14,7 +14,8 @@ def panels_body(plan: Plan) -> str:
     partners: dict[str, str] = {}
     for sweep in plan.sweeps:
         for serving in sweep.serving:
-            servings.setdefault(serving.panel, []).append(serving)
+            if serving.is_mould:
+                servings.setdefault(serving.panel, []).append(serving)
         others = sweep.serves
         if len(set(others)) > 1:
             partners |= {others[0]: others[1], others[1]: others[0]}

@@ -28,7 +28,12 @@ def summary_lines(plan: Plan) -> tuple[tuple[str, str], ...]:
 
 def worst_serving(plan: Plan) -> tuple[float, str]:
     """Return the largest deviation of a finished mould face, mm, and its panel; (0, "") without sweeps."""
-    servings = [(round(serving.max_mm, _DIGITS), serving.panel) for sweep in plan.sweeps for serving in sweep.serving]
+    servings = [
+        (round(serving.max_mm, _DIGITS), serving.panel)
+        for sweep in plan.sweeps
+        for serving in sweep.serving
+        if serving.is_mould
+    ]
     return max(servings, key=lambda entry: entry[0], default=(0.0, ""))
 
 
@@ -78,7 +83,7 @@ def _panels(plan: Plan) -> str:
 
 def _strips(plan: Plan) -> tuple[tuple[str, str], ...]:
     """Return how many panels need strips and how much of their faces is domed; nothing where none does."""
-    in_strips = {v.panel for sweep in plan.sweeps for v in sweep.serving if v.n_strips > 1}
+    in_strips = {v.panel for sweep in plan.sweeps for v in sweep.serving if v.is_mould and v.n_strips > 1}
     if not in_strips:
         return ()
     faces = {panel.face for panel in plan.panels if panel.id in in_strips}

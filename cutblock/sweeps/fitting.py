@@ -55,7 +55,7 @@ def fit_panels(
     tool = machine(job.machine)
     aim = aim_of(job, conditions, tool, squareness)
     _refuse_no_room(job, aim)
-    alike = _alike(panels)
+    alike = alike_panels(panels)
     firsts = list(dict.fromkeys(alike))
     choices: dict[int, Choice] = {}
     for start in range(0, len(firsts), BATCH):
@@ -108,7 +108,7 @@ def _refuse_no_room(job: Job, aim: Aim) -> None:
     )
 
 
-def _alike(panels: Sequence[Panel]) -> list[int]:
+def alike_panels(panels: Sequence[Panel]) -> list[int]:
     """Return for each panel the index of the first one of the same shape (to 1e-9 mm), itself if there is none."""
     known: dict[bytes, int] = {}
     return [known.setdefault(_shape_key(panel), number) for number, panel in enumerate(panels)]

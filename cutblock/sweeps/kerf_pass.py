@@ -13,7 +13,7 @@ import numpy as np
 from cutblock.base.arrays import Floats
 from cutblock.base.progress import Progress, silent
 from cutblock.base.units import length_text
-from cutblock.geometry.deviation import deviation_measures, face_deviation
+from cutblock.geometry.deviation import deviation_measures
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.plan import Finding
@@ -21,6 +21,7 @@ from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Serving, Sweep
 from cutblock.records.words import Favour, Half, Severity
 from cutblock.sweeps.kerf_law import kerf_along
+from cutblock.sweeps.wanted import finished_deviation, moved_panel, view_of
 
 LEAST_CHANGE_MM = 0.02  # a kerf nearer to the planned one changes nothing
 _N_PLACES = 9  # along the wire
@@ -53,7 +54,7 @@ def refit_for_kerf(
     Returns:
         The sweeps in their order, and a finding where a finished face is out of the tolerance now.
     """
-    if job.favour is Favour.SHARE:
+    if all(_favour(job, sweep) is Favour.SHARE for sweep in sweeps):
         return tuple(sweeps), ()
     by_id = {panel.id: panel for panel in panels}
     known: dict[bytes, Sweep] = {}
@@ -62,7 +63,8 @@ def refit_for_kerf(
     for number, sweep in enumerate(sweeps):
         if number % _OFTEN == 0:
             progress(number / len(sweeps), "Fitting for the kerf")
-        if max(abs(kerf - conditions.kerf_mm) for kerf in sweep.kerf_mm) <= LEAST_CHANGE_MM:
+        is_near = max(abs(kerf - conditions.kerf_mm) for kerf in sweep.kerf_mm) <= LEAST_CHANGE_MM
+        if is_near or _favour(job, sweep) is Favour.SHARE:
             moved.append(sweep)
             continue
         key = _key(sweep, by_id)
@@ -73,12 +75,26 @@ def refit_for_kerf(
     return tuple(moved), tuple(findings)
 
 
+def _favour(job: Job, sweep: Sweep) -> Favour:
+    """Return whose face the kerf is kept off: a counter-mould with a sweep of its own has no partner to share with."""
+    return job.favour if any(serving.is_mould for serving in sweep.serving) else Favour.UPPER
+
+
 def _key(sweep: Sweep, panels: Mapping[str, Panel]) -> bytes:
     """Return the same bytes for sweeps that are cut alike and serve panels alike."""
     values = [sweep.near, sweep.far, np.array([sweep.width_mm, *sweep.kerf_mm])]
     for serving in sweep.serving:
         panel = panels[serving.panel]
-        values += [serving.rotation, serving.shift_mm, panel.samples_mm, panel.normals, panel.areas_mm2]
+        offset = np.array([serving.offset_mm])
+        values += [
+            offset,
+            serving.rotation,
+            serving.shift_mm,
+            panel.heights_mm,
+            panel.samples_mm,
+            panel.normals,
+            panel.areas_mm2,
+        ]
     return b"".join(value.tobytes() for value in values)
 
 
@@ -101,11 +117,12 @@ def _like(sweep: Sweep, other: Sweep) -> Sweep:
 def _refitted(job: Job, panels: Mapping[str, Panel], sweep: Sweep, conditions: Conditions) -> Sweep:
     places = np.linspace(0.0, 1.0, _N_PLACES)
     change = (kerf_along(sweep.kerf_mm, conditions.least_kerf_mm, places) - conditions.kerf_mm) / 2.0
-    near, far = offset_rails(sweep, change if job.favour is Favour.LOWER else -change)
+    near, far = offset_rails(sweep, change if _favour(job, sweep) is Favour.LOWER else -change)
     sweep = replace(sweep, near=near, far=far)
     serving = []
     for half in sweep.serving:
-        face, rms, p95, fit, fit_rms = _measured(job, panels[half.panel], sweep, half, conditions)
+        wanted = moved_panel(panels[half.panel], half.offset_mm)
+        face, rms, p95, fit, fit_rms = _measured(job, wanted, sweep, half, conditions)
         serving.append(
             replace(half, max_mm=face, rms_mm=rms, p95_mm=p95, fit_max_mm=fit, fit_rms_mm=fit_rms),
         )
@@ -140,21 +157,16 @@ def offset_rails(sweep: Sweep, offsets_mm: Floats) -> tuple[Floats, Floats]:
 
 def _measured(job: Job, panel: Panel, sweep: Sweep, serving: Serving, conditions: Conditions) -> _Measures:
     """Return how far one finished face lies from the form with the kerf along the wire."""
-    upwards = 1.0 if serving.half is Half.LOWER else -1.0
-    points = (panel.samples_mm - serving.shift_mm) @ serving.rotation
-    is_in = np.ones(len(points), dtype=np.bool_)
+    view, areas = view_of(panel, sweep, serving), panel.areas_mm2
     if serving.n_strips > 1:
-        is_in = (points[:, 1] >= -_EDGE_MM) & (points[:, 1] <= sweep.width_mm + _EDGE_MM)
-    points, normals, areas = points[is_in], upwards * (panel.normals[is_in] @ serving.rotation), panel.areas_mm2[is_in]
+        is_in = view.outside_mm <= _EDGE_MM
+        view, areas = view.part(is_in), areas[is_in]
     if not float(areas.sum()) > 0.0:
         return 0.0, 0.0, 0.0, 0.0, 0.0
-    share = np.clip(points[:, 1] / sweep.width_mm, 0.0, 1.0)
-    offsets = upwards * (job.coat_mm - kerf_along(sweep.kerf_mm, conditions.least_kerf_mm, share) / 2.0)
-    mean = float(offsets.mean())
-    # The kerf changes by so little along the wire that the tilt it gives the face does not count.
-    face = face_deviation(sweep.near, sweep.far, sweep.width_mm, points, normals, mean) + (offsets - mean)
-    is_favoured = (job.favour is Favour.LOWER) == (serving.half is Half.LOWER)
-    fit = face if is_favoured else face - 2.0 * offsets
+    kerfs = kerf_along(sweep.kerf_mm, conditions.least_kerf_mm, view.share)
+    face = finished_deviation(sweep, serving, view, job.coat_mm, kerfs)
+    is_favoured = (_favour(job, sweep) is Favour.LOWER) == (serving.half is Half.LOWER)
+    fit = face if is_favoured else face - 2.0 * (job.coat_mm - kerfs / 2.0)
     return *deviation_measures(face, areas), *deviation_measures(fit, areas)[:2]
 
 

@@ -90,8 +90,8 @@ class DetailingDesk(QWidget):
             return False
         panel = next((panel.id for panel in plan.panels if subject in (panel.id, panel.face)), "")
         sweep = next((sweep for sweep in plan.sweeps if sweep.id == subject), None)
-        if sweep is not None and sweep.serves:
-            panel = sweep.serves[0]
+        if sweep is not None:
+            panel = sweep.panels[0]
         if panel:
             self._pick_panel(panel)
         return bool(panel)

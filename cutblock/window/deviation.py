@@ -44,12 +44,13 @@ def legend_text(step: Step, tolerance_mm: float) -> str:
     return f"{(step.share - 0.25) * tolerance_mm:.2f} to {step.share * tolerance_mm:.2f} mm"
 
 
-def servings_by_panel(sweeps: tuple[Sweep, ...]) -> dict[str, list[tuple[Sweep, Serving]]]:
-    """Return for every panel the halves that mould it, strip by strip."""
+def servings_by_panel(sweeps: tuple[Sweep, ...], is_mould: bool = True) -> dict[str, list[tuple[Sweep, Serving]]]:
+    """Return for every panel the halves that mould it, or that close it by a sweep of their own, strip by strip."""
     found: dict[str, list[tuple[Sweep, Serving]]] = {}
     for sweep in sweeps:
         for serving in sweep.serving:
-            found.setdefault(serving.panel, []).append((sweep, serving))
+            if serving.is_mould == is_mould:
+                found.setdefault(serving.panel, []).append((sweep, serving))
     for halves in found.values():
         halves.sort(key=lambda half: half[1].strip)
     return found

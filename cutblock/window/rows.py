@@ -75,10 +75,10 @@ _SEVERITIES = {
 
 def panel_rows(plan: Plan) -> Iterator[Row]:
     """Give a row for every panel, or every strip of one; its key is "panel sweep"."""
-    halves = servings_by_panel(plan.sweeps)
+    halves, closing = (servings_by_panel(plan.sweeps, is_mould) for is_mould in (True, False))
     duties = {(piece.sweep, piece.half): piece for piece in plan.pieces}
     for panel in plan.panels:
-        for sweep, serving in halves.get(panel.id, []):
+        for sweep, serving in halves.get(panel.id, []) + closing.get(panel.id, []):
             yield _panel_row(panel, sweep, serving, duties, plan.job.tolerance_mm)
         if panel.id not in halves:
             yield _uncut_row(panel)
@@ -184,7 +184,9 @@ def _panel_row(
 ) -> Row:
     step = step_of(serving.max_mm, tolerance_mm)
     word = "within" if step.is_within else "over"
-    name = panel.id if serving.n_strips == 1 else f"{panel.id}, strip {serving.strip} of {serving.n_strips}"
+    name = panel.id if serving.is_mould else f"{panel.id}, counter-mould"
+    if serving.n_strips > 1:
+        name += f", strip {serving.strip} of {serving.n_strips}"
     others = [other for other in sweep.serves if other != panel.id]
     return Row(
         panel_key(panel.id, sweep.id),

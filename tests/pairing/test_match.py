@@ -8,6 +8,7 @@ from kit.sample import sample_conditions, sample_job, sample_panel, sample_sweep
 
 from cutblock.base.errors import Cancelled
 from cutblock.geometry.deviation import face_deviation
+from cutblock.pairing.duties import duty_findings, make_pieces
 from cutblock.pairing.match import pair_sweeps
 from cutblock.records.words import Duty, Favour, Half, Severity
 
@@ -264,19 +265,35 @@ def test_strips_of_equal_size_pair():
     [(Duty.COUNTER_MOULD, "A"), (Duty.CRADLE, "A"), (Duty.FILLER, None), (Duty.SURPLUS, None)],
 )
 def test_an_upper_half_without_a_partner_takes_the_duty_of_the_job(duty, panel):
-    _, pieces, findings = pair([conoid("A", 40.0)], unpaired=duty)
+    _, pieces, _ = pair([conoid("A", 40.0)], unpaired=duty)
 
     assert (pieces[1].duty, pieces[1].panel) == (duty, panel)
     assert (pieces[0].duty, pieces[0].panel) == (Duty.MOULD, "A")
-    assert [f.code for f in findings] == (["surplus"] if duty is Duty.SURPLUS else [])
+    assert bool(duty_findings(sample_job(), pieces)) == (duty is Duty.SURPLUS)
 
 
 def test_surplus_halves_are_counted_in_a_warning():
-    _, _, (finding,) = pair([conoid("A", 40.0), conoid("B", 60.0)], unpaired=Duty.SURPLUS)
+    _, pieces, _ = pair([conoid("A", 40.0), conoid("B", 60.0)], unpaired=Duty.SURPLUS)
+    (finding,) = duty_findings(sample_job(), pieces)
 
     assert finding.severity is Severity.WARNING
     assert finding.subject == "SM"
-    assert finding.text.startswith("2 upper halves")
+    assert finding.text.startswith("2 halves have no use")
+
+
+def test_a_panel_with_a_counter_mould_of_its_own_sweep_has_its_upper_half_as_a_cradle():
+    _, (sweep,) = zip(conoid("A", 40.0), strict=True)
+    closing = replace(sweep.serving[0], half=Half.UPPER, offset_mm=30.0)
+    own = replace(sweep, id=f"{sweep.id}.C", serving=(closing,))
+
+    pieces = make_pieces(sample_job(unpaired=Duty.COUNTER_MOULD), (sweep, own))
+
+    assert [(piece.id, piece.duty, piece.panel) for piece in pieces] == [
+        (f"{sweep.id}-L", Duty.MOULD, "A"),
+        (f"{sweep.id}-U", Duty.CRADLE, "A"),
+        (f"{sweep.id}.C-L", Duty.SURPLUS, None),
+        (f"{sweep.id}.C-U", Duty.COUNTER_MOULD, "A"),
+    ]
 
 
 def test_the_same_panels_give_the_same_pairs_in_the_same_order():

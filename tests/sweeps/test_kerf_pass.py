@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+from kit.finished import maps_of
 from kit.sample import LENGTH, WIDTH, sample_conditions, sample_job, sample_panel, sample_sweep
 from kit.shapes import helicoid, hypar, panel_of, turned
 
@@ -11,7 +12,6 @@ from cutblock.records.words import Favour
 from cutblock.sweeps.fitting import fit_panels
 from cutblock.sweeps.kerf_law import kerf_along
 from cutblock.sweeps.kerf_pass import offset_rails, refit_for_kerf
-from cutblock.sweeps.maps import deviation_maps
 
 CONDITIONS = sample_conditions()  # kerf 1.2 mm, least 0.1 mm
 
@@ -48,11 +48,11 @@ def test_an_even_kerf_moves_the_centreline_by_half_of_what_it_is_over_the_planne
 def test_a_favoured_half_meets_the_form_again_when_the_kerf_turns_out_uneven(favour):
     job, panel, (sweep,) = fitted(turned(helicoid, 8.0), favour)
     uneven = replace(sweep, kerf_mm=(1.0, 1.5))
-    (before,) = deviation_maps(job, [panel], [uneven])
+    (before,) = maps_of(job, [panel], [uneven])
     (moved,), _ = refit_for_kerf(job, [panel], [uneven], CONDITIONS)
-    (after,) = deviation_maps(job, [panel], [moved])
+    (after,) = maps_of(job, [panel], [moved])
     # The lower half misses the form by the whole kerf where the upper one is favoured.
-    aimed = 0.0 if favour is Favour.LOWER else -(1.0 + 0.5 * panel.samples_mm[:, 1] / WIDTH)
+    aimed = 0.0 if favour is Favour.LOWER else -kerf_along((1.0, 1.5), 0.1, panel.samples_mm[:, 1] / WIDTH)
     if favour is Favour.LOWER:
         assert np.abs(before.deviation_mm).max() > 0.14
     # 1.4 mm over the least kerf and 0.9: the half kerf bows by 1.4 / 2 (1 - sqrt(0.9 / 1.4))^2 = 0.028 mm.

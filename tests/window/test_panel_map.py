@@ -1,11 +1,11 @@
 import numpy as np
 import pytest
+from kit.finished import maps_of
 from kit.sample import sample_job, sample_panel, sample_sweep
 from kit.shown import sample_shown
 from PySide6.QtGui import QColor
 
 from cutblock.records.deviation import PanelDeviation
-from cutblock.sweeps.maps import deviation_maps
 from cutblock.window.detailing import DetailingDesk
 from cutblock.window.deviation import SIGNED_STEPS, signed_steps_of, signed_text
 from cutblock.window.panel_map import PanelMap
@@ -107,7 +107,7 @@ def test_a_plan_from_its_folder_has_the_worst_point_but_no_colours(shown_map):
 def test_the_desk_shows_the_map_of_the_panel_that_is_picked(qtbot):
     desk = DetailingDesk()
     qtbot.addWidget(desk)
-    deviations = deviation_maps(sample_job(), PANELS, (sample_sweep(),))
+    deviations = maps_of(sample_job(), PANELS, (sample_sweep(),))
     for _ in desk.showing(sample_shown(deviations=deviations)):
         pass
     desk._pick_panel("S2-A01")
