@@ -1,30 +1,47 @@
 """What the wanted surfaces look like in their billets, and which halves could serve which panels.
 
 The upper half of a sweep, turned over by a half turn about its billet's x or y, shows the sheet z = f(x, y) as
--f(x, -y) or -f(-x, y), measured from the billet's middle. Partners are found by comparing those with the wanted
-surfaces of the other panels. Mirror images (f(-x, y), -f(x, y)) cannot be reached by a turn and are never compared.
+-f(x, -y) or -f(-x, y), measured from the billet's middle; turned over about a diagonal, x = y or x = -y, which is the
+same with a quarter turn about the vertical on top, as -f(y, x) or -f(-y, -x). The latter two lay its length along the
+other panel's width: they serve square panels, and panels whose own sweeps run the other way. Partners are found by
+comparing those with the wanted surfaces of the other panels. Mirror images (f(-x, y), -f(x, y)) cannot be reached by a
+turn and are never compared.
 """
 
 from collections.abc import Mapping, Sequence
-from typing import NamedTuple
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 
-from cutblock.base.arrays import Floats, Ints
+from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.base.progress import Progress, silent
 from cutblock.geometry.heights import height_field
 from cutblock.geometry.sheet import sheet_heights
 from cutblock.records.panel import Panel
 from cutblock.records.sweep import Sweep
 
-TURNS = (np.diag([1.0, -1.0, -1.0]), np.diag([-1.0, 1.0, -1.0]))  # half turns about the billet's x and y
+if TYPE_CHECKING:
+    from scipy.spatial import cKDTree
+
+# Half turns about the billet's x, its y, and the diagonals x = y and x = -y; each is symmetric and its own inverse.
+TURNS = (
+    np.diag([1.0, -1.0, -1.0]),
+    np.diag([-1.0, 1.0, -1.0]),
+    np.array([[0.0, 1.0, 0.0], [1.0, 0.0, 0.0], [0.0, 0.0, -1.0]]),
+    np.array([[0.0, -1.0, 0.0], [-1.0, 0.0, 0.0], [0.0, 0.0, -1.0]]),
+)
+_ACROSS = 2  # from this turn on length and width change places
 SIZE_MM = 0.5  # largest difference of two billets' sides
 OUTLINE_MM = 1.0  # largest distance of two outlines
 N_GRID = 15
 _N_KEPT = 6  # rows and columns of the cosine transform in a descriptor
-_CORE = 0.5  # part of the plan compared where the panel is no rectangle
+_WHOLE = (N_GRID - 1) / N_GRID + 1e-6  # part of the plan the grid's points reach over
+_CORE = 0.5  # part of the plan compared where they reach beyond the panel's outline
+_NOTHING = 2  # the domain where not even the core lies within the outline
 _SAME_MM = 0.02  # panels this much alike count as one shape
-_N_NEAREST = 24  # candidates looked at for each shape and turn
+_N_SEARCHED = 10  # coefficients of a descriptor that are searched by
+_RADIUS = np.sqrt(2.0) * (1.0 + 1e-9)
+_N_NEAREST = 32  # candidates looked at for each shape and turn
 _HEADINGS = np.linspace(0.0, 2.0 * np.pi, 8, endpoint=False)
 _HEADING_VECTORS = np.stack([np.cos(_HEADINGS), np.sin(_HEADINGS)])  # (2, 8)
 
@@ -65,7 +82,7 @@ def describe_shapes(
             progress(index / len(sweeps), "Describing the panels")
         panel = panels[sweep.serving[0].panel]
         ring = _outline(panel, sweep, margin_mm)
-        domain = _domain(panel, ring, sweep)
+        domain = _domain(panel, ring, sweep, margin_mm)
         scale = _CORE if domain == 1 else 1.0
         steps = (np.arange(N_GRID) + 0.5) / N_GRID * 2.0 - 1.0
         along, aside = sweep.length_mm / 2.0, sweep.width_mm / 2.0
@@ -115,13 +132,17 @@ def _outline(panel: Panel, sweep: Sweep, margin_mm: float) -> Floats:
     return coordinates if len(coordinates) else ring
 
 
-def _domain(panel: Panel, ring: Floats, sweep: Sweep) -> int:
+def _domain(panel: Panel, ring: Floats, sweep: Sweep, margin_mm: float) -> int:
     if panel.is_rectangle:
         return 0
     import shapely
 
-    core = np.array([sweep.length_mm, sweep.width_mm]) / 2.0 * _CORE
-    return 1 if shapely.Polygon(ring).buffer(0.1).contains(shapely.box(*-core, *core)) else 2
+    outline = shapely.Polygon(ring).buffer(0.1)
+    reach = np.array([sweep.length_mm, sweep.width_mm]) / 2.0 - margin_mm
+    for domain, share in ((0, _WHOLE), (1, _CORE)):
+        if outline.contains(shapely.box(*-share * reach, *share * reach)):
+            return domain
+    return _NOTHING
 
 
 def group_alike(shapes: Shapes) -> list[list[int]]:
@@ -134,7 +155,9 @@ def group_alike(shapes: Shapes) -> list[list[int]]:
     if not len(shapes.sizes):
         return []
     # Billets and outlines must be alike as closely as the heights.
-    vectors = np.hstack([shapes.sizes, 1e3 * shapes.domains[:, None], _supports(shapes), _cosines(shapes.wanted)])
+    vectors = np.hstack(
+        [shapes.sizes, 1e3 * shapes.domains[:, None], _supports(shapes.corners), _cosines(shapes.wanted)]
+    )
     tree = cKDTree(vectors)
     group_of = np.full(len(vectors), -1)
     groups: list[list[int]] = []
@@ -148,17 +171,27 @@ def group_alike(shapes: Shapes) -> list[list[int]]:
     return groups
 
 
-def find_candidates(shapes: Shapes, tolerance_mm: float, n_nearest: int = _N_NEAREST) -> list[Candidate]:
+def find_candidates(
+    shapes: Shapes,
+    tolerance_mm: float,
+    n_nearest: int = _N_NEAREST,
+    *,
+    size_mm: float = SIZE_MM,
+    outline_mm: float = OUTLINE_MM,
+) -> list[Candidate]:
     """Return which upper halves could mould which panels, by their heights on the grid.
 
-    Each of three blocks (billet size, outline, heights) of a true partner's descriptor lies within 1 of it, so a
-    search in a radius of sqrt(3) misses none: the cosine transform keeps distances, leaving coefficients out only
-    shortens them, and the root mean square is at most the largest difference.
+    Billet sizes and heights of a true partner's descriptor each lie within 1 of the half's, so a search in a radius of
+    sqrt(2) misses none: the cosine transform keeps distances, leaving coefficients out only shortens them, and the root
+    mean square is at most the largest difference. Only the coefficients that vary most are searched by; what is found
+    is held against the grids and the outlines.
 
     Args:
         shapes: Of n sweeps, best one of each group.
         tolerance_mm: Largest height difference after the best vertical shift.
         n_nearest: At most so many panels are looked at for each half and turn, the nearest first.
+        size_mm: Largest difference of two billets' sides.
+        outline_mm: Largest distance of two outlines.
 
     Returns:
         Candidates in order of lower, upper, turn; a half with its own panel included.
@@ -168,33 +201,64 @@ def find_candidates(shapes: Shapes, tolerance_mm: float, n_nearest: int = _N_NEA
     n = len(shapes.sizes)
     if not n:
         return []
-    blocks = shapes.sizes / (SIZE_MM * np.sqrt(2.0)), _supports(shapes) / OUTLINE_MM
-    height_scale = np.where(shapes.domains == 2, 0.0, 1.0 / tolerance_mm)[:, None]
-    kinds = 1e3 * shapes.domains[:, None]
-    tree = cKDTree(np.hstack([kinds, *blocks, _cosines(shapes.wanted) * height_scale]))
+    height_scale = np.where(shapes.domains == _NOTHING, 0.0, 1.0 / tolerance_mm)[:, None]
+    frames = np.hstack([1e3 * shapes.domains[:, None], shapes.sizes / (size_mm * np.sqrt(2.0))])
+    heights = _cosines(shapes.wanted) * height_scale
+    telling = np.sort(np.argsort(-heights.var(axis=0), kind="stable")[:_N_SEARCHED])
+    tree = cKDTree(np.hstack([frames, heights[:, telling]]))
     found: list[Candidate] = []
     for turn, matrix in enumerate(TURNS):
-        turned = _turned(shapes.cut, turn)
-        supports = _supports(shapes, matrix[:2, :2]) / OUTLINE_MM
-        queries = np.hstack([kinds, blocks[0], supports, _cosines(turned) * height_scale])
-        _, nearest = tree.query(queries, k=min(n_nearest, n), distance_upper_bound=np.sqrt(3.0) * (1.0 + 1e-9))
-        lower, place = np.nonzero(np.reshape(nearest, (n, -1)) < n)
-        upper = np.reshape(nearest, (n, -1))[lower, place]
-        differences = turned[lower] - shapes.wanted[upper]
-        misfits = (differences.max(axis=(1, 2)) - differences.min(axis=(1, 2))) / 2.0
-        misfits = np.where(shapes.domains[lower] == 2, 0.0, misfits)
-        fits = (misfits <= tolerance_mm) & (np.abs(shapes.sizes[lower] - shapes.sizes[upper]) <= SIZE_MM).all(axis=1)
-        found += [
-            Candidate(int(lower[k]), int(upper[k]), turn, float(misfits[k]))
-            for k in np.flatnonzero(fits)
-            if _agree(shapes.corners[lower[k]] @ matrix[:2, :2], shapes.corners[upper[k]], OUTLINE_MM)
-        ]
+        own = frames if turn < _ACROSS else frames[:, [0, 2, 1]]
+        asking = np.flatnonzero(_has_like(own, frames))
+        if not len(asking):
+            continue
+        turned = turned_over(shapes.cut[asking], turn)
+        faces = _cosines(turned) * height_scale[asking]
+        lower, upper = _near(tree, np.hstack([own[asking], faces[:, telling]]), min(n_nearest, n))
+        # A few points of the grids already tell most that do not fit.
+        few = _misfits(turned[lower, ::3, ::3], shapes.wanted[upper, ::3, ::3]) <= tolerance_mm
+        few |= shapes.domains[upper] == _NOTHING
+        few &= np.abs(own[asking[lower], 1:] - frames[upper, 1:]).max(axis=1, initial=0.0) * np.sqrt(2.0) <= 1.0 + 1e-9
+        lower, upper = lower[few], upper[few]
+        misfits = np.where(shapes.domains[upper] == _NOTHING, 0.0, _misfits(turned[lower], shapes.wanted[upper]))
+        fits = misfits <= tolerance_mm
+        first, second, misfits = asking[lower[fits]], upper[fits], misfits[fits]
+        agree = _agreeing(shapes.corners, matrix[:2, :2], first, second, outline_mm)
+        rows = (first[agree].tolist(), second[agree].tolist(), misfits[agree].tolist())
+        found += [Candidate(lower, upper, turn, misfit) for lower, upper, misfit in zip(*rows, strict=True)]
     return sorted(found)
 
 
-def _turned(cut: Floats, turn: int) -> Floats:
-    """Return the faces the upper halves show after a half turn."""
-    return -cut[:, :, ::-1] if turn == 0 else -cut[:, ::-1, :]
+def _has_like(frames: Floats, others: Floats) -> Bools:
+    """Return which rows (kind, two sides) have a like among the others, in a search radius."""
+    from scipy.spatial import cKDTree
+
+    distances, _ = cKDTree(np.unique(others, axis=0)).query(frames, distance_upper_bound=_RADIUS)
+    is_like: Bools = np.isfinite(distances)
+    return is_like
+
+
+def _near(tree: "cKDTree", queries: Floats, n_nearest: int) -> tuple[Ints, Ints]:
+    """Return the rows of the queries and of the tree that lie within the radius of each other, the nearest ones."""
+    _, nearest = tree.query(queries, k=n_nearest, distance_upper_bound=_RADIUS)
+    nearest = np.reshape(nearest, (len(queries), -1))
+    row, place = np.nonzero(nearest < tree.n)
+    return row, nearest[row, place]
+
+
+def _misfits(faces: Floats, wanted: Floats) -> Floats:
+    """Return half the ranges of the height differences of grids (k, m, m): what the best vertical shifts leave."""
+    differences = faces - wanted
+    halves: Floats = (differences.max(axis=(1, 2)) - differences.min(axis=(1, 2))) / 2.0
+    return halves
+
+
+def turned_over(grids: Floats, turn: int) -> Floats:
+    """Return the faces (n, 15, 15) that upper halves show after `TURNS[turn]`; twice gives the grids again."""
+    if turn >= _ACROSS:
+        across = -grids.transpose(0, 2, 1)
+        return across if turn == 2 else across[:, ::-1, ::-1]
+    return -grids[:, :, ::-1] if turn == 0 else -grids[:, ::-1, :]
 
 
 def _cosines(grids: Floats) -> Floats:
@@ -206,23 +270,33 @@ def _cosines(grids: Floats) -> Floats:
     return result
 
 
-def _supports(shapes: Shapes, turn: Floats | None = None) -> Floats:
+def _supports(rings: Sequence[Floats]) -> Floats:
     """Return how far each outline reaches in eight directions, scaled so that rows differ by at most their distance."""
-    rings = [ring if turn is None else ring @ turn for ring in shapes.corners]
     reaches: Floats = np.array([(ring @ _HEADING_VECTORS).max(axis=0) for ring in rings]).reshape(-1, 8)
     reaches /= np.sqrt(8.0)
     return reaches
 
 
+def _agreeing(corners: Sequence[Floats], turn: Floats, lower: Ints, upper: Ints, within_mm: float) -> Bools:
+    """Return which pairs of outlines, the first ones turned, lie within a distance of each other."""
+    four = [ring if ring.shape == (4, 2) else np.full((4, 2), np.nan) for ring in corners]
+    own = np.array(four).reshape(-1, 4, 2)
+    # Outlines with the same four corners need no dear way; the turns keep every digit.
+    agree: Bools = (_in_order(own @ turn)[lower] == _in_order(own)[upper]).all(axis=(1, 2))
+    for k in np.flatnonzero(~agree):
+        agree[k] = _agree(corners[lower[k]] @ turn, corners[upper[k]], within_mm)
+    return agree
+
+
+def _in_order(rings: Floats) -> Floats:
+    """Return the corners (n, 4, 2) of each ring in order of x, then y."""
+    order = np.lexsort((rings[..., 1], rings[..., 0]), axis=1)
+    ordered: Floats = np.take_along_axis(rings, order[..., None], axis=1)
+    return ordered
+
+
 def _agree(first: Floats, second: Floats, within_mm: float) -> bool:
     """Return whether two rings lie within a distance of each other."""
-    if first.shape == second.shape == (4, 2) and np.array_equal(_rows_sorted(first), _rows_sorted(second)):
-        return True  # as rectangles do, without the dear way
     import shapely
 
     return bool(shapely.hausdorff_distance(shapely.LinearRing(first), shapely.LinearRing(second)) <= within_mm)
-
-
-def _rows_sorted(ring: Floats) -> Floats:
-    rows: Floats = ring[np.lexsort(ring.T)]
-    return rows
