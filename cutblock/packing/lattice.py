@@ -40,6 +40,7 @@ class Task:
         stock_names: What messages call each stock row.
         unit: Unit of lengths in messages.
         unit_mm: One of it in mm.
+        pools: (m,) the kind that keeps the count of each kind, see `pool_of`; None where every kind has its own.
     """
 
     cells: Ints
@@ -57,6 +58,12 @@ class Task:
     unit: str = "mm"
     unit_mm: float = 1.0
     reach: int = ANY_REACH
+    pools: Ints | None = None
+
+    @property
+    def pool_of(self) -> Ints:
+        """(m,) the kind that keeps the count of each kind: ways to stand one block share one."""
+        return np.arange(len(self.kinds)) if self.pools is None else self.pools
 
     @property
     def weights(self) -> Floats:

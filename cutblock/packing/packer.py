@@ -178,14 +178,15 @@ def shortage(task: Task) -> StockError:
     """Return the error that says how many more blocks of which kind would do."""
     more = []
     for row in np.flatnonzero(task.is_finite & task.fits.all(axis=0)).tolist():
+        pool = int(task.pool_of[row])
         counts = task.counts.copy()
-        counts[row] = len(task.cells)
+        counts[pool] = len(task.cells)
         # Only the blocks of this row cost anything, so that those there are of the others are used first.
         prices = np.zeros(len(counts))
-        prices[row] = 1.0
+        prices[task.pool_of == pool] = 1.0
         plan = construct(replace(task, counts=counts, prices=prices), plain(), (0.0, 0), silent)
         if not plan.n_missing:
-            more.append((int((plan.kinds == row).sum() - task.counts[row]), row))
+            more.append((int((task.pool_of[plan.kinds] == pool).sum() - task.counts[pool]), pool))
     if not more:
         short = ", ".join(name for name, count in zip(task.stock_names, task.is_finite, strict=True) if count)
         return StockError(

@@ -42,12 +42,16 @@ class Cells(NamedTuple):
 
 
 class Kinds(NamedTuple):
-    """The kinds of block: usable sizes with one kerf added, and the longest part that can be cut along (see `Task`)."""
+    """The kinds of block: usable sizes with one kerf added, the longest part that can be cut along, see `Task`.
+
+    Kinds of one pool are the same blocks standing on other faces, so they share one count: that of the pool's number.
+    """
 
     x: Integers
     y: Integers
     z: Integers
     reach: Integers
+    pool: Integers
 
 
 class Layout(NamedTuple):
@@ -81,7 +85,7 @@ class State(NamedTuple):
     kind: Integers  # of each block number
     filled: Reals  # volume of the billets in each block
     alive: Integers  # all block numbers, those in use first
-    spare: Integers  # blocks left of each kind
+    spare: Integers  # blocks left of each pool of kinds
     counts: Integers  # (4,) blocks in use, billets without a place, next random number, moves since the list began
     score: Reals  # (3,) squared fill of all blocks, volume without a place, money
 
@@ -119,7 +123,7 @@ def cells_of(task: Task, make: Make) -> Cells:
 def kinds_of(task: Task, make: Make) -> Kinds:
     """Return the kinds of block of a task."""
     x, y, z = (make.integers(task.kinds[:, axis]) for axis in range(3))
-    return Kinds(x, y, z, make.integers(np.full(len(task.kinds), task.reach)))
+    return Kinds(x, y, z, make.integers(np.full(len(task.kinds), task.reach)), make.integers(task.pool_of))
 
 
 def new_layout(n_cells: int, make: Make) -> Layout:
