@@ -5,6 +5,7 @@ the hours come after the packing, because the set-ups do.
 """
 
 from dataclasses import replace
+from functools import partial
 
 from cutblock.base.errors import NotCuttable
 from cutblock.base.progress import Progress, part_of
@@ -44,10 +45,17 @@ def pair(plan: Plan, progress: Progress) -> Plan:
     from cutblock.pairing.duties import duty_findings, make_pieces
     from cutblock.pairing.match import pair_sweeps
     from cutblock.sweeps.counter import cut_counter_moulds
+    from cutblock.sweeps.shared import fit_shared, shared_findings
 
     sweeps, pieces, findings = pair_sweeps(
-        plan.job, plan.panels, plan.sweeps, plan.conditions, part_of(progress, 0.0, 0.9)
+        plan.job,
+        plan.panels,
+        plan.sweeps,
+        plan.conditions,
+        part_of(progress, 0.0, 0.9),
+        fit_shared=partial(fit_shared, plan.job, plan.panels, plan.conditions),
     )
+    findings += shared_findings(plan.job, plan.panels, plan.sweeps, sweeps)
     more, notes = cut_counter_moulds(
         plan.job, plan.panels, sweeps, pieces, plan.conditions, part_of(progress, 0.9, 1.0)
     )

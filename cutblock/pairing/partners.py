@@ -6,7 +6,6 @@ import numpy as np
 
 from cutblock.base.arrays import Floats
 from cutblock.geometry.deviation import deviation_measures, face_deviation
-from cutblock.pairing.shapes import TURNS
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.shop import Conditions
@@ -26,7 +25,13 @@ class Partnership:
 
 
 def check_partner(
-    job: Job, conditions: Conditions, lower: Sweep, partner: Sweep, panel: Panel, turn: int
+    job: Job,
+    conditions: Conditions,
+    lower: Sweep,
+    partner: Sweep,
+    panel: Panel,
+    turn: Floats,
+    tolerance_mm: float,
 ) -> Partnership | None:
     """Return how the upper half of a sweep serves the panel of another one, or None where it misses the tolerance.
 
@@ -36,12 +41,13 @@ def check_partner(
     tolerance is the kerf taken up by packing.
 
     Args:
-        job: Tolerance, coat and favour.
+        job: Coat and favour.
         conditions: The kerf.
         lower: The sweep that is cut.
         partner: The sweep of `panel` that is then not needed; tells how the panel lies in its billet.
         panel: The panel to be served.
-        turn: Index into `TURNS`.
+        turn: One of `TURNS`.
+        tolerance_mm: Largest deviation of its finished face.
     """
     serving = partner.serving[0]
     samples, normals, areas = _turned_samples(lower, partner, panel, turn)
@@ -59,15 +65,15 @@ def check_partner(
     deviations = off(lift, raised)
     # What the half was meant to leave at each point of its face is the same everywhere, along the normal.
     fitted = deviations - (raised - aimed)
-    if np.abs(deviations).max() > job.tolerance_mm:
+    if np.abs(deviations).max() > tolerance_mm:
         packing = best_lift(deviations, normals[:, 2])
         deviations = off(lift + packing, raised)
-        if np.abs(deviations).max() > job.tolerance_mm:
+        if np.abs(deviations).max() > tolerance_mm:
             return None
     max_mm, rms_mm, p95_mm = deviation_measures(deviations, areas)
     fit_max_mm, fit_rms_mm, _ = deviation_measures(fitted, areas)
-    rotation = serving.rotation @ TURNS[turn]
-    shift = serving.rotation @ (_middle(partner) - TURNS[turn] @ _middle(lower) + [0.0, 0.0, lift + packing])
+    rotation = serving.rotation @ turn
+    shift = serving.rotation @ (_middle(partner) - turn @ _middle(lower) + [0.0, 0.0, lift + packing])
     return Partnership(
         Serving(
             panel=panel.id,
@@ -90,7 +96,7 @@ def _middle(sweep: Sweep) -> Floats:
     return np.array([sweep.length_mm, sweep.width_mm, sweep.height_mm]) / 2.0
 
 
-def _turned_samples(lower: Sweep, partner: Sweep, panel: Panel, turn: int) -> tuple[Floats, Floats, Floats]:
+def _turned_samples(lower: Sweep, partner: Sweep, panel: Panel, turn: Floats) -> tuple[Floats, Floats, Floats]:
     """Return the partner panel's samples, upward normals and areas in the billet of the sweep that is cut."""
     serving = partner.serving[0]
     points = (panel.samples_mm - serving.shift_mm) @ serving.rotation
@@ -101,7 +107,7 @@ def _turned_samples(lower: Sweep, partner: Sweep, panel: Panel, turn: int) -> tu
         is_in = ((points[:, :2] >= -_EDGE_MM) & (points[:, :2] <= size + _EDGE_MM)).all(axis=1)
         points, normals, areas = points[is_in], normals[is_in], areas[is_in]
     # A half turn is its own inverse; turned over, the mould's face looks down.
-    return (points - _middle(partner)) @ TURNS[turn] + _middle(lower), -normals @ TURNS[turn], areas
+    return (points - _middle(partner)) @ turn + _middle(lower), -normals @ turn, areas
 
 
 def best_lift(deviations: Floats, steepness: Floats) -> float:

@@ -35,8 +35,8 @@ SIZE_MM = 0.5  # largest difference of two billets' sides
 OUTLINE_MM = 1.0  # largest distance of two outlines
 N_GRID = 15
 _N_KEPT = 6  # rows and columns of the cosine transform in a descriptor
-_WHOLE = (N_GRID - 1) / N_GRID + 1e-6  # part of the plan the grid's points reach over
-_CORE = 0.5  # part of the plan compared where they reach beyond the panel's outline
+_WHOLE = 0.985  # part of the plan compared: nearly all, as bench panels are not quite rectangles
+_CORE = 0.5  # part of the plan compared where that reaches beyond the panel's outline
 _NOTHING = 2  # the domain where not even the core lies within the outline
 _SAME_MM = 0.02  # panels this much alike count as one shape
 _N_SEARCHED = 10  # coefficients of a descriptor that are searched by
@@ -47,11 +47,11 @@ _HEADING_VECTORS = np.stack([np.cos(_HEADINGS), np.sin(_HEADINGS)])  # (2, 8)
 
 
 class Shapes(NamedTuple):
-    """The surfaces of n sweeps in frames about the middle of their billets; grids (n, 15, 15), cell-centred, mm."""
+    """The surfaces of n sweeps in frames about the middle of their billets; grids (n, 15, 15), mm."""
 
     sizes: Floats  # (n, 2) length and width of the billet
     corners: tuple[Floats, ...]  # (k, 2) the panel's outline over the billet
-    domains: Ints  # (n,) compared over 0 the whole panel, 1 its core, 2 nothing
+    domains: Ints  # (n,) compared over 0 nearly the whole panel, 1 its core, 2 nothing
     wanted: Floats  # heights of the panel's surface, their mean taken off
     cut: Floats  # heights of the sheet, their mean taken off
 
@@ -83,8 +83,8 @@ def describe_shapes(
         panel = panels[sweep.serving[0].panel]
         ring = _outline(panel, sweep, margin_mm)
         domain = _domain(panel, ring, sweep, margin_mm)
-        scale = _CORE if domain == 1 else 1.0
-        steps = (np.arange(N_GRID) + 0.5) / N_GRID * 2.0 - 1.0
+        scale = _CORE if domain == 1 else _WHOLE
+        steps = np.linspace(-1.0, 1.0, N_GRID)
         along, aside = sweep.length_mm / 2.0, sweep.width_mm / 2.0
         x = along + steps * scale * (along - margin_mm)
         y = aside + steps * scale * (aside - margin_mm)
