@@ -7,6 +7,7 @@ from collections.abc import Sequence
 
 import cutblock
 from cutblock.base.errors import Cancelled, CutblockError
+from cutblock.cli.wire_words import add_coupon_words, add_wire_words
 
 EXIT_CLEAN, EXIT_FINDINGS, EXIT_INPUT, EXIT_BUG, EXIT_CANCELLED = 0, 1, 2, 3, 130
 
@@ -63,6 +64,10 @@ def _run(chosen: argparse.Namespace) -> int:
             from cutblock.cli.grid import run_grid
 
             return run_grid(chosen)
+        case "coupons":
+            from cutblock.cli.coupons import run_coupons
+
+            return run_coupons(chosen)
         case "wire":
             from cutblock.cli.wire import run_wire
 
@@ -145,13 +150,8 @@ def _parser() -> argparse.ArgumentParser:
         help="kerf, speed window and currents of a wire",
         description="What a hot wire does in foam of a given density.",
     )
-    wire.add_argument("--density", type=float, required=True, metavar="KG_M3", help="density of the foam, kg/m3")
-    wire.add_argument("--power", type=float, required=True, metavar="W_M", help="electric power, W per metre of wire")
-    wire.add_argument("--diameter", type=float, required=True, metavar="MM", help="diameter of the wire, mm")
-    wire.add_argument(
-        "--speed", type=float, metavar="MM_S", help="wire-normal speed, mm/s; without it the planned speed"
-    )
-    wire.add_argument("--json", action="store_true", help="print the numbers as JSON")
+    add_wire_words(wire)
+    add_coupon_words(commands.add_parser("coupons", help="plan test cuts and fit the kerf law to them"))
     return parser
 
 

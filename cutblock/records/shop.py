@@ -5,6 +5,8 @@ from dataclasses import dataclass
 from cutblock.base.arrays import Floats, frozen_floats
 from cutblock.records.record import Record
 
+EPS_DENSITY_KG_M3 = (8.0, 60.0)  # lighter or heavier is no expanded polystyrene
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Grade(Record):
@@ -16,6 +18,7 @@ class Grade(Record):
     density_high_kg_m3: float
     strength_kpa: float  # compressive stress at 10 % strain, EN 826
     bending_kpa: float
+    stand: bool = False  # whether blocks of it may be stood on any of their faces
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -6,23 +6,24 @@ from cutblock.base.errors import InputError
 from cutblock.catalog import load as catalog
 from cutblock.records.job import Job
 from cutblock.records.plan import Finding
-from cutblock.records.shop import Calibration, Conditions, Wire
+from cutblock.records.shop import EPS_DENSITY_KG_M3, Calibration, Conditions, Wire
 from cutblock.records.words import Severity
 from cutblock.schedule.trust import calibration_findings
 from cutblock.schedule.window import CONTACT_SHARE, contact_kerf_mm, law_at, needed_power, speed_limits
 from cutblock.wire.air import air_power, free_air_temperature
 from cutblock.wire.electrics import wire_resistance, wire_voltage
 from cutblock.wire.kerf import LARGEST_KERF_M, LEAST_KERF_M, is_extrapolated
+from cutblock.wire.mechanics import mass_per_metre, tension_limit, wire_sag
 from cutblock.wire.speed import WIDEST_KERF_M
 from cutblock.wire.warnings import air_cautions, law_cautions, voltage_cautions
 
 AIR_MOVE_C = 300.0  # what the wire may be in air: hot enough to enter foam, far below ignition
-DENSITY_RANGE_KG_M3 = (8.0, 60.0)
 LEAST_SPEED_MM_S = 0.1  # a contact limit below this is no cutting
 
 # The widest kerf is moved out so far beyond a wanted or a narrowest kerf, in kerf beyond w0.
 _BEYOND_WANTED = 1.25
 _BEYOND_CONTACT = 1.5
+_SAG_SHARE = 0.5  # of the tolerance that the wire's own sag may take before it is told
 _MM = 1e3
 
 
@@ -59,7 +60,7 @@ def cutting_conditions(job: Job, wire: Wire) -> tuple[Conditions, tuple[Finding,
     limits = speed_limits(job.power_w_m, job.density_kg_m3, contact_mm, widest_mm, calibration)
     low, high = float(limits[0]), float(limits[1])
     if calibration is not None:
-        _check_window(calibration, low, high)
+        check_window(calibration, low, high)
     wanted = float(np.sqrt(low * high)) if job.kerf_mm is None else rate / (job.kerf_mm - least_mm)
     planned = min(max(wanted, low), high)
     conditions = Conditions(
@@ -90,7 +91,7 @@ def cutting_conditions(job: Job, wire: Wire) -> tuple[Conditions, tuple[Finding,
 
 
 def _check(job: Job, wire: Wire, calibration: Calibration | None) -> None:
-    low, high = DENSITY_RANGE_KG_M3
+    low, high = EPS_DENSITY_KG_M3
     if not low <= job.density_kg_m3 <= high:
         raise InputError(
             f"density {job.density_kg_m3:g} kg/m3 is outside {low:g} to {high:g} kg/m3, the range of EPS.",
@@ -124,7 +125,7 @@ def _check_melting(job: Job, rate: float, contact_excess_mm: float, calibration:
     )
 
 
-def _check_window(calibration: Calibration, low: float, high: float) -> None:
+def check_window(calibration: Calibration, low: float, high: float) -> None:
     """Refuse a calibration whose test cuts leave no speed that surely keeps both limits."""
     if high > low:
         return
@@ -180,6 +181,21 @@ def _window_findings(job: Job, conditions: Conditions, wanted: float, contact_mm
     return (Finding(severity=Severity.WARNING, code="kerf-outside-window", subject=job.id, text=text),)
 
 
+def _sag_findings(job: Job, wire: Wire, hottest_c: float) -> tuple[Finding, ...]:
+    """Return what to say of a wire that sags over the machine's span, at the most tension it bears hot."""
+    length_m, diameter_m = catalog.machine(job.machine).span_mm / _MM, wire.diameter_mm / _MM
+    tension = float(tension_limit(diameter_m, hottest_c))
+    sag_mm = float(wire_sag(mass_per_metre(diameter_m, wire.density_kg_m3), length_m, tension)) * _MM
+    if sag_mm <= _SAG_SHARE * job.tolerance_mm:
+        return ()
+    text = (
+        f"{length_m:g} m of wire is long for its tension: even at the {tension:.0f} N it bears at {hottest_c:.0f} degC"
+        f" it sags {sag_mm:.2f} mm. Level faces come out lower by that, of a tolerance of {job.tolerance_mm:g} mm, and"
+        " the plan does not count it. Take a machine with less span, or less power: a cooler wire bears more."
+    )
+    return (Finding(severity=Severity.WARNING, code="wire-sag", subject=job.id, text=text),)
+
+
 def _cautions(job: Job, wire: Wire, conditions: Conditions, contact_mm: float) -> tuple[Finding, ...]:
     diameter_m = wire.diameter_mm / _MM
     is_outside = bool(
@@ -195,8 +211,11 @@ def _cautions(job: Job, wire: Wire, conditions: Conditions, contact_mm: float) -
         (("hot-in-air",), air_cautions(free_air_c, float(air_power(AIR_MOVE_C, diameter_m)), job.power_w_m)),
         (("high-voltage",), voltage_cautions(voltage)),
     )
-    return tuple(
-        Finding(severity=Severity(caution.severity), code=code, subject=job.id, text=caution.text)
-        for codes, cautions in groups
-        for code, caution in zip(codes, cautions, strict=False)
+    return (
+        *(
+            Finding(severity=Severity(caution.severity), code=code, subject=job.id, text=caution.text)
+            for codes, cautions in groups
+            for code, caution in zip(codes, cautions, strict=False)
+        ),
+        *_sag_findings(job, wire, free_air_c),
     )

@@ -64,13 +64,6 @@ def weighed_kerf(mass_loss_kg: ArrayLike, density_kg_m3: ArrayLike, area_m2: Arr
     return result
 
 
-def weighed_density(mass_kg: ArrayLike, length_m: ArrayLike, width_m: ArrayLike, height_m: ArrayLike) -> Floats:
-    """Return the density in kg/m3 of a block by its mass and its sides."""
-    volume = positive(length_m, "length") * positive(width_m, "width") * positive(height_m, "height")
-    result: Floats = positive(mass_kg, "mass") / volume
-    return result
-
-
 def fit_coupons(
     power_w_m: ArrayLike,
     speed_m_s: ArrayLike,

@@ -106,5 +106,5 @@ def test_findings_tell_what_is_not_sure_and_what_is_dangerous():
     assert codes(usual) == ["uncalibrated"]
     assert usual[0].severity == "info"
     _, strong = cutting_conditions(sample_job(power_w_m=160.0), WIRE)
-    assert codes(strong) == ["uncalibrated", "extrapolated", "hot-in-air", "high-voltage"]
+    assert codes(strong) == ["uncalibrated", "extrapolated", "hot-in-air", "high-voltage", "wire-sag"]
     assert {finding.subject for finding in strong} == {"SM"}

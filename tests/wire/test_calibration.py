@@ -12,7 +12,6 @@ from cutblock.wire.calibration import (
     limit_quantile,
     limit_speeds,
     linear_coefficients,
-    weighed_density,
     weighed_kerf,
 )
 from cutblock.wire.kerf import LEAST_KERF_M, LINEAR_POWER_W_M
@@ -138,8 +137,7 @@ def test_more_scatter_widens_the_limits():
     assert wild.law.covariance[0, 0] > 2.0 * calm.law.covariance[0, 0]
 
 
-def test_a_weighed_coupon_gives_its_mean_kerf_and_a_weighed_block_its_density():
+def test_a_weighed_coupon_gives_its_mean_kerf():
     assert weighed_kerf(2.16e-3, 20.0, 0.09) == pytest.approx(1.2e-3)
-    assert weighed_density(12.5, 2.0, 1.25, 0.25) == pytest.approx(20.0)
-    with pytest.raises(InputError, match="mass 0"):
-        weighed_density(0.0, 1.0, 1.0, 1.0)
+    with pytest.raises(InputError, match="mass loss 0"):
+        weighed_kerf(0.0, 20.0, 0.09)
