@@ -161,8 +161,9 @@ def _programme(target: Target, fit: Fits, points: _Points, reach_mm: float) -> t
     steepest = 2.0 * (1.0 - float(target.advance[0, 0, 0])) * float(fit.end[0] - fit.start[0])
     skews = fit.controls[0, 0]
     slope = basis.hull @ skews
-    matrix = np.concatenate([np.hstack([rows, -ones]), np.hstack([-rows, -ones]), hull, -hull])
-    bound = np.concatenate([-residuals, residuals, steepest - slope, steepest + slope])
+    wires, room = _spreads(target, fit)
+    matrix = np.concatenate([np.hstack([rows, -ones]), np.hstack([-rows, -ones]), hull, -hull, wires])
+    bound = np.concatenate([-residuals, residuals, steepest - slope, steepest + slope, room])
     limit = float(target.limit[0, 0, 0])
     lows = np.minimum(np.maximum(-reach_mm, -limit - skews), 0.0)
     highs = np.maximum(np.minimum(reach_mm, limit - skews), 0.0)
@@ -175,3 +176,22 @@ def _programme(target: Target, fit: Fits, points: _Points, reach_mm: float) -> t
     if answer.status != 0 or answer.x is None:
         return None
     return answer.x[:-1].reshape(1, 3, n_c), float(answer.x[-1])
+
+
+def _spreads(target: Target, fit: Fits) -> tuple[Floats, Floats]:
+    """Return rows (m, 3 c + 1) and their bounds that keep the ends of every ruling as near as they must be, in x and z.
+
+    The distance of a ruling's ends is convex in the control values, so its tangent never says too much; a ruling
+    that is too long already must not become longer.
+    """
+    n_c = fit.controls.shape[2]
+    if not np.isfinite(target.spread[0]):
+        return np.empty((0, 3 * n_c + 1)), np.empty(0)
+    basis = spline_stations(n_c)
+    skews, near, far = fit.controls[0] @ basis.values.T
+    slope_x, rise = float(target.planes[0, 1]), float(target.planes[0, 2] * target.width[0, 0, 0])
+    whole = far - near + slope_x * skews + rise
+    spreads = np.maximum(np.hypot(skews, whole), 1e-12)
+    rates = ((skews + whole * slope_x) / spreads, -whole / spreads, whole / spreads)
+    rows = np.concatenate([rate[:, None] * basis.values for rate in rates] + [np.zeros((len(skews), 1))], axis=1)
+    return rows, np.maximum(float(target.spread[0]) - spreads, 0.0)

@@ -13,7 +13,7 @@ import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.geometry.fit_start import Paths
-from cutblock.geometry.fit_target import Target
+from cutblock.geometry.fit_target import SPREAD_WEIGHT, Target
 
 if TYPE_CHECKING:
     from scipy.interpolate import BSpline
@@ -202,6 +202,7 @@ class State:
     slopes: Floats  # (p, s, q) rate of the residual by the skew at the node
     cosines: Floats  # (p, s, q)
     counts: Bools  # (p, s, q) nodes over the wanted area
+    excess: Floats  # (p, 3, s) of the distance of a ruling's ends, by its rates by skew and by rise
     cost: Floats  # (p,)
 
     def take(self, index: Ints) -> "State":
@@ -239,7 +240,11 @@ def evaluate(target: Target, fits: Fits, basis: Basis, emphasis: Floats | None =
     if emphasis is not None:
         weights *= emphasis
     cost = np.einsum("psq,psq,psq->p", weights, residuals, residuals)
-    return State(residuals, weights, slope_x, cosines, counts, cost)
+    excess = np.zeros(values.shape)
+    if np.isfinite(target.spread).any():
+        excess = np.stack(target.excess(values[:, 0], values[:, 2] - values[:, 1]), axis=1)
+        cost += SPREAD_WEIGHT * (excess[:, 0] ** 2 @ STATION_WEIGHTS)
+    return State(residuals, weights, slope_x, cosines, counts, excess, cost)
 
 
 def _normal_equations(target: Target, state: State, basis: Basis) -> tuple[Floats, Floats]:
@@ -256,6 +261,14 @@ def _normal_equations(target: Target, state: State, basis: Basis) -> tuple[Float
             block = (moment @ basis.products).reshape(n_p, n_c, n_c)
             matrix[:, a, :, b, :] = block
             matrix[:, b, :, a, :] = block
+    index = np.flatnonzero(state.excess[:, 0].any(axis=1))
+    if len(index):
+        excess, by_skew, by_rise = np.moveaxis(state.excess[index], 1, 0)
+        rates = np.stack([by_skew, -by_rise, by_rise], axis=1)[..., None] * basis.values
+        rates = rates.transpose(0, 2, 1, 3).reshape(len(index), N_STATIONS, -1)
+        weighed = SPREAD_WEIGHT * STATION_WEIGHTS[:, None] * rates
+        matrix[index] += (weighed.transpose(0, 2, 1) @ rates).reshape(-1, 3, n_c, 3, n_c)
+        gradient[index] += np.einsum("ps,psn->pn", excess, weighed).reshape(-1, 3, n_c)
     return matrix.reshape(n_p, 3 * n_c, 3 * n_c), gradient.reshape(n_p, 3 * n_c)
 
 

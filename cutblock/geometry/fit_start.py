@@ -12,7 +12,7 @@ import numpy as np
 from numpy.lib.stride_tricks import sliding_window_view
 
 from cutblock.base.arrays import Floats, Ints
-from cutblock.geometry.fit_target import Target
+from cutblock.geometry.fit_target import SPREAD_WEIGHT, Target
 
 N_STATIONS = 49
 N_SKEWS = 49
@@ -89,7 +89,10 @@ def _table(target: Target) -> tuple[Floats, Floats, Floats, Floats]:
         nearest = np.floor(shift + 0.5).astype(np.int64)
         w = weights[node, patches, nearest % N_FINE, nearest // N_FINE]
         _add_moments(sums, f, w, places[:, None, None])
-    residuals, total = _line_residuals(sums)
+    residuals, rises, total = _line_residuals(sums)
+    if np.isfinite(target.spread).any():
+        askew = np.broadcast_to(skews[:, None], residuals.shape)
+        residuals += SPREAD_WEIGHT * target.excess(askew, rises)[0] ** 2
     return stations, skews, residuals, np.maximum(total, 1e-12)
 
 
@@ -115,16 +118,17 @@ def _add_moments(sums: Floats, f: Floats, w: Floats, place: Floats) -> None:
     sums[4] += weighted
 
 
-def _line_residuals(sums: Floats) -> tuple[Floats, Floats]:
-    """Return the weighted squared residual of the best straight line through each ruling, and a mean whole weight."""
+def _line_residuals(sums: Floats) -> tuple[Floats, Floats, Floats]:
+    """Return the squared residual of the best straight line through each ruling, its rise, and a mean whole weight."""
     m0, m1, m2, b0, b1, squares = sums
     scale = m0 + 1e-30
     middle = m1 / scale
     spread = m2 - m1 * middle
     slope_sum = b1 - b0 * middle
-    explained = b0 * b0 / scale + np.where(spread > 1e-6 * scale, slope_sum**2 / (spread + 1e-30), 0.0)
-    residuals = np.maximum(squares - explained, 0.0).transpose(0, 2, 1)
-    return np.ascontiguousarray(residuals), m0[:, N_SKEWS // 2].sum(axis=1)
+    rises = np.where(spread > 1e-6 * scale, slope_sum / (spread + 1e-30), 0.0)
+    explained = b0 * b0 / scale + rises * slope_sum
+    residuals = np.ascontiguousarray(np.maximum(squares - explained, 0.0).transpose(0, 2, 1))
+    return residuals, rises.transpose(0, 2, 1), m0[:, N_SKEWS // 2].sum(axis=1)
 
 
 def _step_cost(spacing: Floats, gap: Floats, residuals: Floats, advance: Floats) -> Floats:

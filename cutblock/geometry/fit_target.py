@@ -19,6 +19,7 @@ OVERRUN_REACH = 0.03  # of the width
 BEYOND_WEIGHT = 1e-7
 LEAST_ADVANCE = 0.1
 SKEW_CAP = 1.2  # largest |skew| / width: a strip of an isotropic saddle turned half a right angle needs 1.0
+SPREAD_WEIGHT = 10.0  # of what a ruling's ends are too far apart, against the residuals along the whole ruling
 MASKED_WEIGHT = 1e-6  # of points inside the rectangle that were masked out
 
 
@@ -54,6 +55,7 @@ class Patch:
     strip_high_y_mm: float
     weights: Floats | None = None
     skew_limit_mm: float = np.inf  # no ruling may be more askew in plan
+    spread_limit_mm: float = np.inf  # nor its ends farther apart in x and z together: the wire would be too long
     least_advance: float = (
         LEAST_ADVANCE  # of either rail for each unit of station; 2 / (1 + r) keeps end speeds within r
     )
@@ -77,6 +79,7 @@ class Target:
     node_weights: Floats  # (p, 1, q) of the quadrature along the wire
     weights: Floats  # (p, q, m) over equal steps from low to high
     limit: Floats  # (p, 1, 1) largest size of the skew
+    spread: Floats  # (p,) largest distance of a ruling's ends in x and z
     advance: Floats  # (p, 1, 1) least advance of either rail for each unit of station
 
     @property
@@ -118,6 +121,25 @@ class Target:
         change *= fraction
         change += before
         return value, rate, change
+
+    def excess(self, skews: Floats, rises: Floats) -> tuple[Floats, Floats, Floats]:
+        """Return by how much the ends of rulings are too far apart in x and z, and its rates by skew and by rise.
+
+        Args:
+            skews: (p, ...) x of the far end less that of the near one.
+            rises: (p, ...) z likewise, the plane taken off.
+        """
+        slope_x, rise, limit = (
+            values.reshape(-1, *(1,) * (skews.ndim - 1))
+            for values in (self.planes[:, 1], self.planes[:, 2] * self.width[:, 0, 0], self.spread)
+        )
+        whole = rises + slope_x * skews + rise
+        spreads = np.maximum(np.hypot(skews, whole), 1e-12)
+        over = spreads > limit
+        excess: Floats = np.where(over, spreads - limit, 0.0)
+        by_rise: Floats = np.where(over, whole / spreads, 0.0)
+        by_skew: Floats = np.where(over, (skews + whole * slope_x) / spreads, 0.0)
+        return excess, by_skew, by_rise
 
     def _cells(self, x: Floats) -> tuple[Ints, Floats, int]:
         """Return where the first coefficients at x lie, the place in the piece, and the way to the next coefficient."""
@@ -180,6 +202,7 @@ def make_target(patches: list[Patch], n_nodes: int = N_NODES) -> Target:
         places=(low_y + (high_y - low_y) * nodes) / width,
         node_weights=np.tile(node_weights, (len(patches), 1, 1)),
         limit=column([min(patch.skew_limit_mm, SKEW_CAP * patch.width_mm) for patch in patches]),
+        spread=np.array([patch.spread_limit_mm for patch in patches], dtype=np.float64),
         advance=column([patch.least_advance for patch in patches]),
         weights=np.stack([_mask(patch, nodes) for patch in patches]),
     )

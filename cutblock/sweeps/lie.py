@@ -12,7 +12,7 @@ from cutblock.records.panel import Panel
 # A quarter turn about z: the billet's x lies along the panel's +y, its y along the panel's -x.
 QUARTER = np.array([[0.0, -1.0, 0.0], [1.0, 0.0, 0.0], [0.0, 0.0, 1.0]])
 N_MASK = 65
-SPARE = 0.96  # share of the wire's stretch that is used
+SPARE = 0.995  # share of the wire's stretch that is used
 END_SPEED_RATIO = 1.9  # in plan, of one end of the wire to the other; over 2 along the sheet the kerf differs visibly
 LEAST_LEAN = 0.05  # skew by width that is tried whatever the machine
 
@@ -125,6 +125,7 @@ class Strip:
         """
         lie, start = self.lie, self.billet_span_mm[0]
         low, high = self.panel_span_mm
+        spread_limit = self._spread_limit_mm(stretch)
         patch = Patch(
             heights_mm=lie.heights_mm,
             low_x_mm=lie.corner_mm[0],
@@ -134,19 +135,15 @@ class Strip:
             width_mm=self.width_mm,
             strip_low_y_mm=low - start,
             strip_high_y_mm=high - start,
-            skew_limit_mm=self._skew_limit_mm(stretch),
+            skew_limit_mm=spread_limit,
+            spread_limit_mm=spread_limit,
             least_advance=2.0 / (1.0 + END_SPEED_RATIO),
         )
         return patch if lie.outline is None else _masked(patch, lie.outline, start)
 
-    def _skew_limit_mm(self, stretch: float) -> float:
-        """Return how far askew a ruling may lie before the springs run out, given how far its ends differ in height."""
-        n_y = self.lie.heights_mm.shape[1]
-        steps = (np.array(self.panel_span_mm) - self.lie.corner_mm[1]) * ((n_y - 1) / self.lie.extent_mm[1])
-        first, last = int(np.floor(steps[0] + 1e-2)), int(np.ceil(steps[1] - 1e-2))
-        fall = float(np.abs(self.lie.heights_mm[:, last] - self.lie.heights_mm[:, first]).max())
-        rise = fall / (self.lie.extent_mm[1] * (last - first) / (n_y - 1))
-        return SPARE * self.width_mm * float(np.sqrt(max(stretch**2 - 1.0 - rise**2, LEAST_LEAN**2)))
+    def _spread_limit_mm(self, stretch: float) -> float:
+        """Return how far apart the ends of a ruling may lie in x and z together before the springs run out."""
+        return SPARE * self.width_mm * float(np.sqrt(max(stretch**2 - 1.0, LEAST_LEAN**2)))
 
     def samples(self) -> tuple[Floats, Floats, Floats]:
         """Return the panel's samples, normals and areas within it, in the frame of its billet."""

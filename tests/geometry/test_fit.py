@@ -200,6 +200,24 @@ def test_no_ruling_is_more_askew_than_allowed():
     assert held.max_mm > free.max_mm
 
 
+@pytest.mark.parametrize("is_polished", [False, True])
+@pytest.mark.parametrize("tilt", [0.0, 0.3])
+def test_no_ruling_is_longer_than_allowed(is_polished, tilt):
+    def tilted(x, y):
+        return scherk(x, y) + tilt * y
+
+    free = fit_patches([patch_of(tilted)], 0.5, is_polished=False)[0]
+    held = fit_patches([patch_of(tilted, spread_limit_mm=900.0)], 0.5, polish_until=0.0, is_polished=is_polished)[0]
+
+    def spread(sheet):
+        stations = np.linspace(sheet.start_mm, sheet.end_mm, 200)
+        near, far = sheet.rails_at(stations)
+        return np.hypot(*(far - near).T).max()
+
+    assert spread(free) > 1100.0
+    assert spread(held) < 1.005 * 900.0
+
+
 def test_what_lies_outside_the_mask_does_not_count():
     x, y = np.linspace(0.0, L, 61), np.linspace(0.0, W, 51)
     heights = over(hypar)(x[:, None], y)

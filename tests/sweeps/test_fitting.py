@@ -138,6 +138,17 @@ def test_a_dome_is_cut_in_as_few_strips_as_theory_allows(tolerance, count):
     assert "100 % of face S is domed" in finding.text
 
 
+@pytest.mark.parametrize(("tolerance", "most"), [(2.0, 2), (1.0, 3), (0.5, 5)])
+def test_a_saddle_whose_best_rulings_are_longer_than_the_wire_is_cut_with_shorter_ones(tolerance, most):
+    """Both families of rulings lie at 45 degrees in plan and climb towards the corners."""
+    sweeps, findings = fitted(panel_of(scherk), tolerance_mm=tolerance)
+
+    assert {finding.severity for finding in findings} <= {Severity.INFO, Severity.WARNING}
+    assert "leaning-wire" not in {finding.code for finding in findings}
+    assert 1 <= len(sweeps) <= most
+    assert max(sweep.serving[0].max_mm for sweep in sweeps) <= tolerance
+
+
 @pytest.mark.parametrize("changes", [{}, bench()])
 def test_strips_lie_side_by_side_and_cover_the_panel(changes):
     sweeps, _ = fitted(panel_of(dome), **changes)

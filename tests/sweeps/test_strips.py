@@ -1,6 +1,8 @@
 import numpy as np
+import pytest
 from kit.shapes import dome, panel_of
 
+from cutblock.sweeps import strips
 from cutblock.sweeps.aim import Aim
 from cutblock.sweeps.cutting import cut_panels
 from cutblock.sweeps.lie import lie_of
@@ -33,6 +35,25 @@ def test_the_strips_needed_are_told_where_the_limit_was_met():
     # kappa w^2 / (16 m^2) = 0.05 mm of room beside the kerf, at the gentler curvature of 1 / 1500 mm or 1 / 1000 mm.
     assert 30 < choice.n_needed < 60
     assert len(choice.panel.strips) == 12
+
+
+@pytest.mark.parametrize(("tolerance", "count"), [(1.0, 4), (2.0, 3), (5.0, 2)])
+def test_a_dome_is_divided_at_once_into_the_strips_that_theory_asks_for(monkeypatch, tolerance, count):
+    """kappa w^2 / (16 m^2) within the tolerance, and one fewer tried in the end to be sure."""
+    tried = []
+    known = strips.cut_panels
+
+    def told(lies, *arguments, **options):
+        tried.extend(number for _, number in lies)
+        return known(lies, *arguments, **options)
+
+    monkeypatch.setattr(strips, "cut_panels", told)
+    aim = Aim(tolerance_mm=tolerance, kerf_mm=0.0, face_offset_mm=0.0, kerf_error_mm=0.0, stretch=1.4)
+    (choice,) = choose_cuts([lies_of(dome)], aim)
+
+    assert len(choice.panel.strips) == count
+    assert next(number for number in dict.fromkeys(tried) if number > 1) == count
+    assert set(tried) <= {1, count, count - 1}
 
 
 def steeper(x, y):
