@@ -130,6 +130,18 @@ def _parser() -> argparse.ArgumentParser:
     export.add_argument("--what", required=True, metavar="WHAT", help="halves, form, billets or kerf")
     export.add_argument("--as", required=True, dest="file_format", metavar="FORMAT", help="stl, obj, ply, 3mf or glb")
     export.add_argument(
+        "--edges",
+        default="square",
+        metavar="EDGES",
+        help="sides of halves: square, or mitred with the joints of the form (bench lay-up)",
+    )
+    export.add_argument(
+        "--place",
+        default="billet",
+        metavar="PLACE",
+        help="where halves and kerf lie: billet (each in its own frame), form or block",
+    )
+    export.add_argument(
         "--out", metavar="PATH", help="file to write, for stl and ply a folder; without it in DIR/solids"
     )
 

@@ -11,7 +11,7 @@ import pytest
 import trimesh
 
 import cutblock
-from cutblock.flow.export import ExportFormat, export_plan
+from cutblock.flow.export import ExportFormat, export_choice, export_plan
 from cutblock.flow.folder import read_plan
 
 JOB = """\
@@ -63,7 +63,7 @@ def exported(plan, tmp_path):
 
     def export(what, file_format):
         target = tmp_path / (what if ExportFormat(file_format).is_one_body else f"{what}.{file_format}")
-        count = export_plan(plan, what, file_format, target)
+        count = export_plan(plan, export_choice(what, file_format), target).n_bodies
         bodies = read_again(target, file_format)
         assert len(bodies) == count
         return bodies
@@ -185,7 +185,7 @@ def test_billets_come_back_as_boxes_where_they_lie_in_their_blocks(plan, exporte
 
 def test_a_3mf_says_millimetre_and_its_names(plan, tmp_path):
     """3MF core specification 1.2: unit="millimeter", one build item an object, an open mesh of type "surface"."""
-    export_plan(plan, "form", "3mf", tmp_path / "form.3mf")
+    export_plan(plan, export_choice("form", "3mf"), tmp_path / "form.3mf")
 
     with zipfile.ZipFile(tmp_path / "form.3mf") as package:
         assert package.testzip() is None
@@ -197,7 +197,7 @@ def test_a_3mf_says_millimetre_and_its_names(plan, tmp_path):
 
 def test_a_glb_is_whole_and_says_the_range_of_its_points(plan, tmp_path):
     """glTF 2.0 specification: 12-byte header, JSON then BIN chunk of whole words, metres, min and max of positions."""
-    export_plan(plan, "halves", "glb", tmp_path / "halves.glb")
+    export_plan(plan, export_choice("halves", "glb"), tmp_path / "halves.glb")
 
     raw = (tmp_path / "halves.glb").read_bytes()
     magic, version, length = struct.unpack("<4sII", raw[:12])
@@ -219,8 +219,8 @@ def test_a_glb_is_whole_and_says_the_range_of_its_points(plan, tmp_path):
 
 def test_an_stl_far_from_the_origin_keeps_a_thousandth_of_a_mm_and_says_the_shift(plan, tmp_path):
     """Binary STL holds 32-bit floats: at 90 m they are 0.008 mm apart."""
-    export_plan(plan, "form", "stl", tmp_path / "form")
-    export_plan(plan, "form", "ply", tmp_path / "exact")
+    export_plan(plan, export_choice("form", "stl"), tmp_path / "form")
+    export_plan(plan, export_choice("form", "ply"), tmp_path / "exact")
 
     row = next(line for line in (tmp_path / "form/parts.csv").read_text().splitlines() if line.startswith("S-A01,"))
     shift = [float(value) for value in row.split(",")[-3:]]
@@ -232,6 +232,6 @@ def test_an_stl_far_from_the_origin_keeps_a_thousandth_of_a_mm_and_says_the_shif
 
 def test_the_same_plan_gives_the_same_files(plan, tmp_path):
     for file_format in ("3mf", "glb", "obj"):
-        export_plan(plan, "halves", file_format, tmp_path / f"first.{file_format}")
-        export_plan(plan, "halves", file_format, tmp_path / f"second.{file_format}")
+        export_plan(plan, export_choice("halves", file_format), tmp_path / f"first.{file_format}")
+        export_plan(plan, export_choice("halves", file_format), tmp_path / f"second.{file_format}")
         assert (tmp_path / f"first.{file_format}").read_bytes() == (tmp_path / f"second.{file_format}").read_bytes()
