@@ -41,6 +41,7 @@ class GradeTable(_Table):
     density_high_kg_m3: Density
     strength_kpa: Positive
     bending_kpa: Positive
+    stand: bool = False
 
     def complaints(self) -> Iterator[Complaint]:
         """Yield a density outside its own range."""

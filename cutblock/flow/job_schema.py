@@ -86,6 +86,20 @@ class BlockTable(_Table, frozen=True):
     price: NotNegative | None = None
     skin: NotNegative = 0.0
     grade: str | None = None
+    stand: bool | None = None
+    substitute: bool = False
+
+
+class OffcutTable(_Table, frozen=True):
+    """`[[foam.offcuts]]`: a leftover kept from an earlier job; `value` is the money it counts for."""
+
+    length: Positive
+    width: Positive
+    height: Positive
+    count: Annotated[int, msgspec.Meta(ge=1)] = 1
+    value: NotNegative = 0.0
+    grade: str | None = None
+    stand: bool | None = None
 
 
 class FoamTable(_Table, frozen=True):
@@ -95,6 +109,8 @@ class FoamTable(_Table, frozen=True):
     grade: str | None = None
     density: Positive | None = None
     offcut: tuple[Positive, Positive, Positive] | None = None
+    offcuts: str | list[str | OffcutTable] = []
+    slack: Literal["scrap", "backs"] = "scrap"
 
 
 class CuttingTable(_Table, frozen=True):
@@ -107,6 +123,34 @@ class CuttingTable(_Table, frozen=True):
     kerf: Positive | None = None
     calibration: str | None = None
     favour: Literal["lower", "upper", "share"] = "share"
+    setups: Annotated[int, msgspec.Meta(ge=1)] | None = None
+    no_turn: list[str] = []
+
+
+class PinTable(_Table, frozen=True):
+    """`[[pin]]`: one block of the plan and the sweeps whose billets, and no others, are cut from it."""
+
+    block: str
+    sweeps: Annotated[list[str], msgspec.Meta(min_length=1)]
+
+
+class SetTable(_Table, frozen=True):
+    """`[[duties.set]]`: a piece with its duty, or two panels that share a cut, or panels that share none."""
+
+    piece: str | None = None
+    duty: Literal["counter-mould", "cradle", "filler", "surplus"] | None = None
+    pair: tuple[str, str] | None = None
+    single: Annotated[list[str], msgspec.Meta(min_length=1)] | None = None
+
+
+class FillerTable(_Table, frozen=True):
+    """`[[filler]]`: boxes of foam needed for something else."""
+
+    name: Annotated[str, msgspec.Meta(pattern="^[^\\x00-\\x1f]{1,40}$")]
+    length: Positive
+    width: Positive
+    height: Positive
+    count: Annotated[int, msgspec.Meta(ge=1, le=100_000)] = 1
 
 
 class DutiesTable(_Table, frozen=True):
@@ -115,6 +159,7 @@ class DutiesTable(_Table, frozen=True):
     unpaired: Literal["counter-mould", "cradle", "filler", "surplus"] = "surplus"
     thickness: NotNegative = 0.0
     counter: Literal["best", "lift", "offset"] = "best"
+    set: list[SetTable] = []
 
 
 class CostTable(_Table, frozen=True):
@@ -132,4 +177,6 @@ class JobFile(_Table, frozen=True):
     foam: FoamTable
     cutting: CuttingTable
     duties: DutiesTable = DutiesTable()
+    filler: list[FillerTable] = []
     cost: CostTable = CostTable()
+    pin: list[PinTable] = []

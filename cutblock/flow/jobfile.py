@@ -14,7 +14,9 @@ import numpy as np
 from cutblock.base.errors import InputError
 from cutblock.base.units import mm_per
 from cutblock.catalog import load as catalog
-from cutblock.flow.job_schema import BlockTable, FaceTable, FoamTable, JobFile
+from cutblock.flow.job_duties import read_fillers, read_locks
+from cutblock.flow.job_schema import FaceTable, FoamTable, JobFile
+from cutblock.flow.job_stock import read_pins, read_stock
 from cutblock.flow.toml_lines import Path as KeyPath
 from cutblock.flow.toml_lines import key_lines, line_of
 from cutblock.records.job import (
@@ -25,7 +27,6 @@ from cutblock.records.job import (
     MeshSource,
     RailsSource,
     Source,
-    StockSpec,
     WavesSource,
 )
 from cutblock.records.words import Closing, Duty, Favour, Layup
@@ -109,7 +110,7 @@ class _Reader:
             faces=faces,
             grade=grade,
             density_kg_m3=density,
-            stock=tuple(self._stock(index, block, grade) for index, block in enumerate(file.foam.block)),
+            stock=read_stock(file.foam, grade, scale, self._file, self._place, self._refuse),
             least_offcut_mm=_largest_first(offcut),
             machine=machine,
             wire=self._wire(file.cutting.wire),
@@ -119,10 +120,16 @@ class _Reader:
             favour=Favour(file.cutting.favour),
             unpaired=Duty(duties.unpaired),
             thickness_mm=duties.thickness * scale,
+            locks=read_locks(duties.set, file.job.id, duties.thickness, self._place, self._refuse),
+            fillers=read_fillers(file.filler, scale, self._place, self._refuse),
             closing=Closing(duties.counter),
             currency=file.job.currency,
             hour_rate=file.cost.machine_hour,
             calibration=calibration,
+            takes_up_slack=file.foam.slack == "backs",
+            most_setups=file.cutting.setups,
+            no_turn=tuple(file.cutting.no_turn),
+            pins=read_pins(file.pin, file.job.id, self._place, self._refuse),
             inputs=self._inputs(),
         )
 
@@ -156,6 +163,9 @@ class _Reader:
     def _refuse(self, path: KeyPath, message: str, remedy: str) -> NoReturn:
         key = "".join(f"[{part + 1}]" if isinstance(part, int) else f".{part}" for part in path).lstrip(".")
         raise InputError(f"{key}: {message}.", f"{self._path.name}:{line_of(self._lines, path)}", remedy)
+
+    def _place(self, path: KeyPath) -> str:
+        return f"{self._path.name}:{line_of(self._lines, path)}"
 
     def _refuse_schema(self, text: str) -> NoReturn:
         found = re.search(r" - at `\$([^`]*)`$", text)
@@ -321,29 +331,6 @@ class _Reader:
         if name not in self._named:
             self._named.append(name)
         return str(file.resolve())
-
-    def _stock(self, index: int, block: BlockTable, grade: str) -> StockSpec:
-        scale = self._mm
-        path: KeyPath = ("foam", "block", index)
-        if 2.0 * block.skin >= min(block.length, block.width, block.height):
-            self._refuse(
-                (*path, "skin"), "the skin on both sides leaves nothing of the block", "Give the trim of one face."
-            )
-        if block.grade is not None:
-            try:
-                catalog.grade(block.grade)
-            except InputError as error:
-                self._refuse((*path, "grade"), error.message, error.remedy)
-        return StockSpec(
-            length_mm=block.length * scale,
-            width_mm=block.width * scale,
-            height_mm=block.height * scale,
-            skin_mm=block.skin * scale,
-            grade=block.grade if block.grade is not None else grade,
-            place=f"{self._path.name}:{line_of(self._lines, path)}",
-            count=block.count,
-            price=block.price,
-        )
 
     def _refuse_repeated_names(self, faces: tuple[FaceSpec, ...]) -> None:
         seen: set[str] = set()

@@ -4,7 +4,7 @@ from cutblock.base.progress import Progress, part_of, silent
 from cutblock.catalog import load as catalog
 from cutblock.flow.plan_json import plan_text
 from cutblock.flow.plan_read import read_plan_text
-from cutblock.ledger.account import account_block
+from cutblock.ledger.account import block_accounts
 from cutblock.machinecode.programs import write_programs
 from cutblock.records.account import Ledger
 from cutblock.records.drawing import Drawing
@@ -55,7 +55,7 @@ def table_outputs(plan: Plan, progress: Progress = silent) -> dict[str, bytes]:
 
 def block_ledgers(plan: Plan) -> dict[str, Ledger]:
     """Return the volume account of each block."""
-    return {block.id: account_block(block, plan.volumes, plan.pieces) for block in plan.blocks}
+    return block_accounts(plan.blocks, plan.volumes, plan.pieces)
 
 
 def tag_drawings(plan: Plan, sheet_name: str = LABEL_SHEET) -> tuple[Drawing, ...]:

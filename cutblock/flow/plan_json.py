@@ -12,6 +12,8 @@ import cutblock
 from cutblock.base.errors import CutblockError
 from cutblock.base.units import MM3_PER_LITRE, hours
 from cutblock.flow import plan_schema as schema
+from cutblock.flow import seals
+from cutblock.ledger.shares import Account, accounts_of
 from cutblock.records.account import Hours, Ledger
 from cutblock.records.block import Block
 from cutblock.records.deviation import PanelDeviation
@@ -33,6 +35,7 @@ def plan_text(plan: Plan) -> str:
         CutblockError: The plan is not complete.
     """
     values = msgspec.to_builtins(plan_file(plan))
+    values[seals.KEY] = seals.seals_of(values)
     lines = []
     for key, value in values.items():
         if isinstance(value, list) and value:
@@ -84,6 +87,8 @@ def plan_file(plan: Plan) -> schema.PlanFile:
             )
             for bend in plan.bends
         ],
+        stock=[schema.StockEntry(**_values(row)) for row in plan.job.stock],
+        ledger_parts=_accounts(plan),
     )
 
 
@@ -147,6 +152,10 @@ def _job(plan: Plan) -> schema.JobEntry:
         least_offcut_mm=job.least_offcut_mm,
         currency=job.currency,
         hour_rate=job.hour_rate,
+        slack="backs" if job.takes_up_slack else "scrap",
+        setups=job.most_setups,
+        no_turn=list(job.no_turn),
+        pins=[schema.PinEntry(block=pin.block, sweeps=list(pin.sweeps)) for pin in job.pins],
     )
 
 
@@ -221,6 +230,8 @@ def _sweep(sweep: Sweep, volumes: SweepVolumes, timing: SweepTiming) -> schema.S
         upper_litres=_litres(volumes.upper_mm3),
         kerf_litres=_litres(volumes.kerf_mm3),
         trimmed_litres=_litres(volumes.trimmed_mm3),
+        thickened_mm=_digits(sweep.thickened_mm),
+        thickened_litres=_litres(volumes.thickened_mm3),
         kerf_mm=(_digits(sweep.kerf_mm[0]), _digits(sweep.kerf_mm[1])),
         speed_mm_s=schema.SpeedEntry(
             low=_digits(timing.low_mm_s), high=_digits(timing.high_mm_s), planned=_digits(timing.planned_mm_s)
@@ -304,12 +315,20 @@ def _block(block: Block) -> schema.BlockEntry:
                 position_mm=_digits(cut.at_mm),
                 sweep=cut.sweep,
                 turn=cut.turn,
+                frees=[
+                    schema.FreedEntry(side=part.side, at_mm=_vector(part.at_mm), size_mm=_vector(part.size_mm))  # type: ignore[arg-type]
+                    for part in cut.frees
+                ],
             )
             for cut in block.cuts
         ],
         offcuts=[
             schema.OffcutEntry(size_mm=_vector(offcut.size_mm), at_mm=_vector(offcut.at_mm)) for offcut in block.offcuts
         ],
+        bought_mm=None if block.bought_mm is None else _vector(block.bought_mm),
+        stock=block.stock,
+        density_kg_m3=block.density_kg_m3,
+        source=block.source,
     )
 
 
@@ -320,6 +339,32 @@ def _time(spent: Hours) -> schema.TimeEntry:
         setup_h=setup_h,
         total_h=_digits(cutting_h + setup_h),  # of the digits written, so that the three add up
         blocks_h={block: _digits(hours(seconds)) for block, seconds in spent.by_block_s},
+    )
+
+
+def _accounts(plan: Plan) -> schema.AccountsEntry:
+    accounts = accounts_of(
+        plan.blocks, plan.volumes, plan.pieces, plan.conditions.density_kg_m3, is_coated=plan.job.coat_mm > 0.0
+    )
+    return schema.AccountsEntry(
+        blocks=[_account(account) for account in accounts.blocks],
+        grades=[_account(account) for account in accounts.grades],
+        job=_account(accounts.job),
+    )
+
+
+def _account(account: Account) -> schema.AccountEntry:
+    return schema.AccountEntry(
+        name=account.name,
+        grade=account.grade,
+        blocks=account.n_blocks,
+        bought=account.bought_ml,
+        **account.parts_ml,
+        scrap_clean=account.clean_scrap_ml,
+        scrap_coated=account.coated_scrap_ml,
+        coated_later=account.coated_later_ml,
+        bought_kg=_digits(account.bought_kg),
+        scrap_kg=_digits(account.scrap_kg),
     )
 
 

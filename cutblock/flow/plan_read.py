@@ -12,9 +12,9 @@ from cutblock.base.errors import InputError
 from cutblock.base.units import MM3_PER_LITRE, SECONDS_PER_HOUR
 from cutblock.flow import plan_schema as schema
 from cutblock.records.account import Cost, Hours, Ledger
-from cutblock.records.block import Block, Cut, Offcut, PlacedBillet
+from cutblock.records.block import Block, Cut, Freed, Offcut, PlacedBillet
 from cutblock.records.deviation import FaceBend, PanelDeviation
-from cutblock.records.job import Job
+from cutblock.records.job import Job, Pin, StockSpec
 from cutblock.records.panel import Panel, PanelEdge
 from cutblock.records.piece import Piece
 from cutblock.records.plan import Finding, Plan, Settings
@@ -40,7 +40,10 @@ def read_plan_text(raw: bytes, name: str) -> Plan:
         raise InputError(f"is not a plan this program reads: {text}.", name, "Make the plan again.") from error
     except (msgspec.DecodeError, RecursionError) as error:
         raise InputError(f"is damaged or cut short: {error}.", name, "Make the plan again.") from error
-    return _plan(file)
+    try:
+        return _plan(file)
+    except ValueError as error:
+        raise InputError(f"is not a plan this program reads: {error}.", name, "Make the plan again.") from error
 
 
 def _plan(file: schema.PlanFile) -> Plan:
@@ -107,7 +110,7 @@ def _job(file: schema.PlanFile) -> Job:
         faces=(),
         grade=job.grade,
         density_kg_m3=file.conditions.density_kg_m3,
-        stock=(),
+        stock=tuple(StockSpec(**_values(entry)) for entry in file.stock),
         least_offcut_mm=job.least_offcut_mm,
         machine=file.machine.name,
         wire=file.wire.name,
@@ -120,6 +123,10 @@ def _job(file: schema.PlanFile) -> Job:
         closing=Closing(job.counter),
         currency=job.currency,
         hour_rate=job.hour_rate,
+        takes_up_slack=job.slack == "backs",
+        most_setups=job.setups,
+        no_turn=tuple(job.no_turn),
+        pins=tuple(Pin(block=pin.block, sweeps=tuple(pin.sweeps)) for pin in job.pins),
         calibration=file.conditions.calibration.name if file.conditions.calibration is not None else "",
         inputs=tuple((entry.path, entry.sha256) for entry in file.inputs),
     )
@@ -208,6 +215,7 @@ def _sweep(entry: schema.SweepEntry) -> Sweep:
         fit_max_mm=entry.fit_max_mm,
         fit_rms_mm=entry.fit_rms_mm,
         skew_mm=entry.skew_mm,
+        thickened_mm=entry.thickened_mm,
     )
 
 
@@ -221,6 +229,7 @@ def _volumes(file: schema.PlanFile) -> tuple[SweepVolumes, ...]:
             kerf_mm3=entry.kerf_litres * MM3_PER_LITRE,
             face_mm2=entry.face_mm2,
             trimmed_mm3=entry.trimmed_litres * MM3_PER_LITRE,
+            thickened_mm3=entry.thickened_litres * MM3_PER_LITRE,
             lower_centre_mm=centres.get((entry.id, "lower")),
             upper_centre_mm=centres.get((entry.id, "upper")),
         )
@@ -282,12 +291,17 @@ def _block(entry: schema.BlockEntry) -> Block:
                 at_mm=cut.position_mm,
                 sweep=cut.sweep,
                 turn=cut.turn,
+                frees=tuple(Freed(side=part.side, at_mm=part.at_mm, size_mm=part.size_mm) for part in cut.frees),
             )
             for cut in entry.cuts
         ),
         offcuts=tuple(Offcut(size_mm=offcut.size_mm, at_mm=offcut.at_mm) for offcut in entry.offcuts),
         from_offcut=entry.from_offcut,
         price=entry.price,
+        bought_mm=entry.bought_mm,
+        stock=entry.stock,
+        density_kg_m3=entry.density_kg_m3,
+        source=entry.source,
     )
 
 

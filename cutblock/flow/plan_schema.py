@@ -13,6 +13,13 @@ class _Entry(msgspec.Struct, frozen=True, kw_only=True):
     """An object of plan.json; keys of later programs are passed over."""
 
 
+class PinEntry(_Entry, frozen=True):
+    """A block that keeps the billets of these sweeps and no others."""
+
+    block: str
+    sweeps: list[str]
+
+
 class JobEntry(_Entry, frozen=True):
     """What the job was, lengths in mm."""
 
@@ -33,6 +40,10 @@ class JobEntry(_Entry, frozen=True):
     currency: str
     hour_rate: float | None
     counter: Literal["best", "lift", "offset"] = "best"
+    slack: Literal["scrap", "backs"] = "scrap"
+    setups: int | None = None  # most that a block may need
+    no_turn: list[str] = []  # faces, panels or sweeps whose billets keep their length along the block
+    pins: list[PinEntry] = []
 
 
 class InputEntry(_Entry, frozen=True):
@@ -146,6 +157,8 @@ class SweepEntry(_Entry, frozen=True):
     face_mm2: float
     step_seconds: list[float]
     serving: list[ServingEntry]
+    thickened_mm: float = 0.0  # of the height: added to the upper half's back to take up slack in the block
+    thickened_litres: float = 0.0  # of upper_litres
 
 
 class PieceEntry(_Entry, frozen=True):
@@ -173,6 +186,14 @@ class BilletEntry(_Entry, frozen=True):
     turned: bool
 
 
+class FreedEntry(_Entry, frozen=True):
+    """A part that comes free and must be supported before the wire is through; `side` as the part is clamped."""
+
+    side: Literal["start", "end", "top", "bottom"]
+    at_mm: Vector
+    size_mm: Vector
+
+
 class CutEntry(_Entry, frozen=True):
     """One pass of the wire, in order; a trim or through cut melts `position_mm` to `position_mm` + the block's kerf."""
 
@@ -185,6 +206,7 @@ class CutEntry(_Entry, frozen=True):
     position_mm: float
     sweep: str | None
     turn: bool
+    frees: list[FreedEntry] = []
 
 
 class OffcutEntry(_Entry, frozen=True):
@@ -209,6 +231,28 @@ class BlockEntry(_Entry, frozen=True):
     billets: list[BilletEntry]
     cuts: list[CutEntry]
     offcuts: list[OffcutEntry]
+    bought_mm: Vector | None = None  # as the stock lists it, where it stands on another face
+    stock: int | None = None  # place in the list `stock`, from 0
+    density_kg_m3: float | None = None  # of a better grade; null: the job's
+    source: str = ""  # of an offcut: where it was kept
+
+
+class StockEntry(_Entry, frozen=True):
+    """A row of the job's stock: blocks to buy, or an offcut kept from an earlier job."""
+
+    length_mm: float
+    width_mm: float
+    height_mm: float
+    skin_mm: float
+    grade: str
+    place: str
+    count: int | None
+    price: float | None
+    stands: bool
+    substitutes: bool
+    density_kg_m3: float | None
+    is_offcut: bool
+    source: str
 
 
 class LedgerEntry(_Entry, frozen=True):
@@ -228,6 +272,39 @@ class LedgerEntry(_Entry, frozen=True):
     waste_percent: float
     blocks: int
     blocks_lower_bound: int
+    thickened_litres: float = 0.0  # backs thicker than needed, which took up slack; counts as waste
+
+
+class AccountEntry(_Entry, frozen=True):
+    """The account of a block, a grade or the job in whole thousandths of a litre; the parts sum to `bought`."""
+
+    name: str
+    grade: str
+    blocks: int
+    bought: int
+    trim: int
+    kerf: int
+    mould: int
+    counter_mould: int
+    cradle: int
+    filler: int
+    surplus: int
+    thickened: int
+    offcut: int
+    scrap: int
+    scrap_clean: int  # of scrap
+    scrap_coated: int  # of scrap: cut off a piece that already had its coat
+    coated_later: int  # of the halves: coated, so no clean waste once they are used up
+    bought_kg: float
+    scrap_kg: float
+
+
+class AccountsEntry(_Entry, frozen=True):
+    """The account block by block, grade by grade and of the job; each line is the sum of those before it."""
+
+    blocks: list[AccountEntry]
+    grades: list[AccountEntry]
+    job: AccountEntry
 
 
 class TimeEntry(_Entry, frozen=True):
@@ -355,3 +432,6 @@ class PlanFile(_Entry, frozen=True):
     cost: CostEntry
     findings: list[FindingEntry]
     faces: list[FaceEntry] = []
+    stock: list[StockEntry] = []
+    ledger_parts: AccountsEntry | None = None
+    seals: dict[str, str | list[str]] = {}  # a checksum of every value, by section and entry, see `seals`

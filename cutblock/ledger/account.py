@@ -9,7 +9,7 @@ from cutblock.records.account import Ledger
 from cutblock.records.block import Block, Cut
 from cutblock.records.piece import Piece
 from cutblock.records.sweep import SweepVolumes
-from cutblock.records.words import CutKind, Duty
+from cutblock.records.words import CutKind, Duty, Half
 
 _OVERDRAWN_RELATIVE = 1e-6  # more than this part of a block handed out twice is an error, less is rounding
 _AXES = ("x", "y", "z")
@@ -23,6 +23,7 @@ _PARTS = (
     "cradle_mm3",
     "filler_mm3",
     "surplus_mm3",
+    "thickened_mm3",
     "offcut_mm3",
 )
 
@@ -30,8 +31,9 @@ _PARTS = (
 def account_block(block: Block, volumes: Iterable[SweepVolumes], pieces: Iterable[Piece]) -> Ledger:
     """Return where the foam of one block goes.
 
-    Trim is the skin on all six faces; kerf what the sweeps and the through cuts melt; then the halves by their duty
-    and the offcuts. The rest is scrap: what is cut away outside the panels' outlines, and leftovers too small to keep.
+    Trim is the skin on all six faces; kerf what the sweeps and the through cuts melt; then the halves by their duty,
+    without what only took up slack in their backs, that, and the offcuts. The rest is scrap: what is cut away outside
+    the panels' outlines, and leftovers too small to keep.
 
     Args:
         block: With its billets, cuts and offcuts.
@@ -42,13 +44,22 @@ def account_block(block: Block, volumes: Iterable[SweepVolumes], pieces: Iterabl
         CheckFailed: A billet's sweep has no volumes or not two halves, or more foam is handed out than was bought.
     """
     held = {billet.sweep for billet in block.billets}
-    melted = {volume.sweep: volume.kerf_mm3 for volume in volumes if volume.sweep in held}
+    of_sweeps = {volume.sweep: volume for volume in volumes if volume.sweep in held}
+    melted = {sweep: volume.kerf_mm3 for sweep, volume in of_sweeps.items()}
     halves = [piece for piece in pieces if piece.sweep in held]
     _check_complete(block, melted, halves)
     bought = block.volume_mm3
     usable = math.prod(side - 2.0 * block.skin_mm for side in (block.length_mm, block.width_mm, block.height_mm))
     through = [slab_mm3(cut, block) for cut in block.cuts if cut.kind is CutKind.THROUGH]
-    by_duty = {duty: math.fsum(piece.volume_mm3 for piece in halves if piece.duty is duty) for duty in Duty}
+    thick = {sweep: volume.thickened_mm3 for sweep, volume in of_sweeps.items()}
+    by_duty = {
+        duty: math.fsum(
+            piece.volume_mm3 - (thick[piece.sweep] if piece.half is Half.UPPER else 0.0)
+            for piece in halves
+            if piece.duty is duty
+        )
+        for duty in Duty
+    }
     parts = {
         "trim_mm3": bought - usable,
         "kerf_mm3": math.fsum([*melted.values(), *through]),
@@ -57,6 +68,7 @@ def account_block(block: Block, volumes: Iterable[SweepVolumes], pieces: Iterabl
         "cradle_mm3": by_duty[Duty.CRADLE],
         "filler_mm3": by_duty[Duty.FILLER],
         "surplus_mm3": by_duty[Duty.SURPLUS],
+        "thickened_mm3": math.fsum(thick.values()),
         "offcut_mm3": math.fsum(math.prod(offcut.size_mm) for offcut in block.offcuts),
     }
     scrap = math.fsum([bought, *(-part for part in parts.values())])
@@ -103,10 +115,28 @@ def account_job(
         CheckFailed: See `account_block`, or a sweep lies in no block or in two.
     """
     _check_each_once(blocks, volumes)
-    ledgers = [account_block(block, volumes, pieces) for block in blocks]
+    ledgers = list(block_accounts(blocks, volumes, pieces).values())
     parts = {name: math.fsum(getattr(ledger, name) for ledger in ledgers) for name in (*_PARTS, "scrap_mm3")}
     bought = math.fsum(ledger.bought_mm3 for ledger in ledgers)
     return Ledger(bought_mm3=bought, n_blocks=len(blocks), n_blocks_bound=n_blocks_bound, **parts)
+
+
+def block_accounts(
+    blocks: Sequence[Block], volumes: Sequence[SweepVolumes], pieces: Sequence[Piece]
+) -> dict[str, Ledger]:
+    """Return the account of each block by its id; raises like `account_block`."""
+    of_sweep = {volume.sweep: volume for volume in volumes}
+    halves: dict[str, list[Piece]] = {}
+    for piece in pieces:
+        halves.setdefault(piece.sweep, []).append(piece)
+    return {
+        block.id: account_block(
+            block,
+            [of_sweep[billet.sweep] for billet in block.billets if billet.sweep in of_sweep],
+            [piece for billet in block.billets for piece in halves.get(billet.sweep, [])],
+        )
+        for block in blocks
+    }
 
 
 def _check_complete(block: Block, melted: dict[str, float], halves: Sequence[Piece]) -> None:

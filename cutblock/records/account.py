@@ -1,8 +1,14 @@
 """What a plan costs in foam, time and money."""
 
+import math
 from dataclasses import dataclass
 
 from cutblock.records.record import Record
+
+_MM3_PER_ML = 1000.0
+LEDGER_PARTS = (
+    "trim", "kerf", "mould", "counter_mould", "cradle", "filler", "surplus", "thickened", "offcut", "scrap",
+)  # fmt: skip
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -21,6 +27,7 @@ class Ledger(Record):
     scrap_mm3: float
     n_blocks: int
     n_blocks_bound: int  # no packing can need fewer
+    thickened_mm3: float = 0.0  # backs of halves thicker than needed, which took up slack
 
     @property
     def used_mm3(self) -> float:
@@ -29,8 +36,8 @@ class Ledger(Record):
 
     @property
     def waste_mm3(self) -> float:
-        """Skin trim, kerf, surplus and scrap."""
-        return self.trim_mm3 + self.kerf_mm3 + self.surplus_mm3 + self.scrap_mm3
+        """Skin trim, kerf, surplus, scrap and thickened backs: foam in a back that needs none is no saving."""
+        return self.trim_mm3 + self.kerf_mm3 + self.surplus_mm3 + self.scrap_mm3 + self.thickened_mm3
 
     @property
     def used_percent(self) -> float:
@@ -41,6 +48,42 @@ class Ledger(Record):
     def waste_percent(self) -> float:
         """Wasted foam of the foam bought."""
         return 100.0 * self.waste_mm3 / self.bought_mm3 if self.bought_mm3 else 0.0
+
+    @property
+    def bought_ml(self) -> int:
+        """What was bought in whole thousandths of a litre."""
+        return round(self.bought_mm3 / _MM3_PER_ML)
+
+    @property
+    def parts_ml(self) -> dict[str, int]:
+        """The parts in whole thousandths of a litre, by name, summing to `bought_ml` (largest remainders)."""
+        exact = {name: getattr(self, f"{name}_mm3") / _MM3_PER_ML for name in LEDGER_PARTS}
+        parts = {name: math.floor(value) for name, value in exact.items()}
+        missing = self.bought_ml - sum(parts.values())
+        largest_first = sorted(LEDGER_PARTS, key=lambda name: parts[name] - exact[name])
+        for name in largest_first[: max(0, missing)]:
+            parts[name] += 1
+        if missing < 0:
+            parts[max(parts, key=lambda name: parts[name])] += missing
+        return parts
+
+    @property
+    def waste_words(self) -> str:
+        """The waste figure in one sentence: what it is made of and what it leaves out."""
+        named = (
+            ("skin trim", self.trim_mm3),
+            ("kerf", self.kerf_mm3),
+            ("halves without a use", self.surplus_mm3),
+            ("scrap", self.scrap_mm3),
+            ("backs thicker than needed", self.thickened_mm3),
+        )
+        share = 100.0 / self.bought_mm3 if self.bought_mm3 else 0.0
+        parts = [f"{name} {volume * share:.1f} %" for name, volume in named if volume > 0.0]
+        made_of = f": {', '.join(parts)}" if parts else ""
+        return (
+            f"Waste is the {self.waste_percent:.1f} % of the foam bought that goes into no half with a duty{made_of};"
+            f" the {self.offcut_mm3 * share:.1f} % kept as offcuts is not in it."
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

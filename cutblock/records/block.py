@@ -19,6 +19,18 @@ class PlacedBillet(Record):
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Freed(Record):
+    """A part that a cut frees: it is not held by the clamps any more and must be supported before the wire is through.
+
+    Nothing is freed by a sweep but its upper half, which lies on the lower one; the box is then the billet.
+    """
+
+    side: str  # "start", "end", "top", "bottom" of the part, along the travel of the clamping or up
+    at_mm: Size
+    size_mm: Size
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Cut(Record):
     """One pass of the wire, in the order it is made.
 
@@ -35,6 +47,7 @@ class Cut(Record):
     at_mm: float = 0.0
     sweep: str | None = None
     turn: bool = False  # the part is clamped turned a quarter about the vertical (its block y along the travel)
+    frees: tuple[Freed, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -47,7 +60,7 @@ class Offcut(Record):
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Block(Record):
-    """One stock block with everything that is cut from it."""
+    """One stock block with everything that is cut from it; length, width and height are as it stands."""
 
     id: str
     length_mm: float
@@ -61,8 +74,17 @@ class Block(Record):
     offcuts: tuple[Offcut, ...]
     from_offcut: bool = False
     price: float | None = None
+    bought_mm: Size | None = None  # as the stock lists it, where it stands on another face
+    stock: int | None = None  # row of the job's stock, from 0
+    density_kg_m3: float | None = None  # of a better grade; None: the job's
+    source: str = ""  # of an offcut: where it was kept
 
     @property
     def volume_mm3(self) -> float:
         """Volume as bought."""
         return self.length_mm * self.width_mm * self.height_mm
+
+    @property
+    def n_setups(self) -> int:
+        """Clampings it takes."""
+        return max((cut.setup for cut in self.cuts), default=0)

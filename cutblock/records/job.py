@@ -5,6 +5,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from cutblock.base.arrays import Floats, frozen_floats
+from cutblock.records.duties import Filler, Lock
 from cutblock.records.record import Record
 from cutblock.records.words import Closing, Duty, Favour, Layup
 
@@ -84,7 +85,7 @@ class FaceSpec(Record):
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class StockSpec(Record):
-    """One `[[foam.block]]`."""
+    """One `[[foam.block]]`, or an offcut kept from an earlier job."""
 
     length_mm: float
     width_mm: float
@@ -94,6 +95,20 @@ class StockSpec(Record):
     place: str
     count: int | None = None  # None: as many as needed
     price: float | None = None
+    stands: bool = False  # whether it may be stood on any of its faces
+    substitutes: bool = False  # whether it may take billets of the job's grade though its own is a better one
+    density_kg_m3: float | None = None  # None: the job's
+    is_offcut: bool = False
+    source: str = ""  # of an offcut: the block and plan it was kept from
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Pin(Record):
+    """One `[[pin]]`: the sweeps whose billets, and no others, are cut from one block."""
+
+    block: str
+    sweeps: tuple[str, ...]
+    place: str = ""  # file and line, for messages
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
@@ -123,7 +138,13 @@ class Job(Record):
     unpaired: Duty
     thickness_mm: float  # of the concrete between mould and counter-mould
     closing: Closing = Closing.BEST
+    locks: tuple[Lock, ...] = ()  # what is set by hand
+    fillers: tuple[Filler, ...] = ()
     currency: str = ""
     hour_rate: float | None = None  # money per machine hour
     calibration: str = ""  # name of the user's own, or the absolute path of a TOML file; "": none
+    takes_up_slack: bool = False  # leftover height below the least useful offcut thickens backs
+    most_setups: int | None = None  # that a block may need
+    no_turn: tuple[str, ...] = ()  # faces, panels or sweeps whose billets keep their length along the block
+    pins: tuple[Pin, ...] = ()
     inputs: tuple[tuple[str, str], ...] = ()  # (path as written in the job, sha256) of the job and every file it names

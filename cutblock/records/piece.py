@@ -20,4 +20,6 @@ class Piece(Record):
     block: str | None = None
     volume_mm3: float = 0.0
     mass_kg: float = 0.0
+    filler: str = ""  # the name of the boxes that come out of it, with their number
+    is_set: bool = False  # its duty was set by hand
     centre_mm: tuple[float, float, float] | None = None  # centre of mass, billet frame

@@ -58,6 +58,7 @@ class Sweep(Record):
     fit_max_mm: float  # residual of the ruled fit to the surface it was fitted to
     fit_rms_mm: float
     skew_mm: float = 0.0  # largest |x far - x near|
+    thickened_mm: float = 0.0  # of the height: added to the back of the upper half to take up slack in the block
 
     def __post_init__(self) -> None:
         object.__setattr__(self, "near", frozen_floats(self.near, (None, 2), "near"))
@@ -84,6 +85,7 @@ class SweepVolumes(Record):
     kerf_mm3: float
     face_mm2: float  # area of the cut surface
     trimmed_mm3: float = 0.0  # cut away outside the outline of the panel (bed lay-up)
+    thickened_mm3: float = 0.0  # of the upper half: what took up slack in the block
     lower_centre_mm: tuple[float, float, float] | None = None  # centre of mass, billet frame
     upper_centre_mm: tuple[float, float, float] | None = None
 
