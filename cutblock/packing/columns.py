@@ -11,7 +11,7 @@ import numpy as np
 
 from cutblock.base.arrays import Ints
 from cutblock.base.progress import silent
-from cutblock.packing.compiled import Inner
+from cutblock.packing.compiled import Gear
 from cutblock.packing.construct import Solution, construct, evaluate
 from cutblock.packing.lattice import Task
 from cutblock.packing.tree import Part, all_parts, cut_off, cut_out
@@ -34,7 +34,7 @@ class _Choice:
     at: int = 0
 
 
-def stack_columns(task: Task, inner: Inner, kind: int) -> Solution | None:
+def stack_columns(task: Task, gear: Gear, kind: int) -> Solution | None:
     """Return a plan in columns in blocks of one kind; None where the billets do not repeat enough."""
     rows = np.column_stack([task.cells[:, :2], task.may_turn])
     footprints, group = np.unique(rows, axis=0, return_inverse=True)
@@ -47,12 +47,12 @@ def stack_columns(task: Task, inner: Inner, kind: int) -> Solution | None:
     room = int(task.kinds[kind, 2])
     columns = [_columns(task.cells[:, 2], np.flatnonzero((group == g) & fits), room) for g in range(len(footprints))]
     trees: list[Part] = []
-    while len(trees) < int(task.counts[task.pool_of[kind]]):
+    while len(trees) < int(task.counts[kind]):
         tree = _next_block(task, kind, floor, columns)
         if tree is None:
             break
         trees.append(tree)
-    return _with_rest(task, inner, kind, tuple(trees)) if trees else None
+    return _with_rest(task, gear, kind, tuple(trees)) if trees else None
 
 
 def _columns(heights: Ints, members: Ints, room: int) -> Columns:
@@ -188,7 +188,7 @@ def _cut_column(task: Task, part: Part, members: list[int], is_turned: bool) -> 
         top = rests[2]
 
 
-def _with_rest(task: Task, inner: Inner, kind: int, trees: tuple[Part, ...]) -> Solution:
+def _with_rest(task: Task, gear: Gear, kind: int, trees: tuple[Part, ...]) -> Solution:
     """Return the trees as a plan, with the billets that are in none of them packed by the quick rules."""
     layout = np.full((5, len(task.cells)), -1, dtype=np.int64)
     for number, tree in enumerate(trees):
@@ -196,7 +196,7 @@ def _with_rest(task: Task, inner: Inner, kind: int, trees: tuple[Part, ...]) -> 
         layout[0, members] = layout[1, members] = number
     rest = np.flatnonzero(layout[0] < 0)
     counts = task.counts.copy()
-    counts[task.pool_of[kind]] -= len(trees)
+    counts[kind] -= len(trees)
     small = replace(
         task,
         cells=task.cells[rest],
@@ -204,7 +204,7 @@ def _with_rest(task: Task, inner: Inner, kind: int, trees: tuple[Part, ...]) -> 
         may_turn=task.may_turn[rest],
         counts=np.minimum(counts, len(rest)),
     )
-    other = construct(small, inner, (0.0, 0), silent)
+    other = construct(small, gear, (0.0, 0), silent)
     layout[:, rest] = other.layout
     layout[0, rest] = np.where(other.layout[0] >= 0, other.layout[0] + len(trees), -1)
     kinds = np.concatenate([np.full(len(trees), kind, dtype=np.int64), other.kinds])

@@ -1,66 +1,143 @@
-"""The inner loops compiled by numba, where it is installed and the work is long enough to pay for its start."""
+"""The inner loops compiled by numba, where it is installed and the work is long enough to pay for their start.
+
+They are compiled in a thread while the work goes on with the loops as they stand; both give the same numbers, so it
+does not matter when the one takes over from the other.
+"""
 
 import importlib.util
 import sys
-from functools import cache
+import threading
+from collections.abc import Callable
 from types import ModuleType
 from typing import Any
 
-from cutblock.packing import kernels
+from cutblock.packing import kernels, moves
 from cutblock.packing.sequences import Make
 
 # In the order they call each other; numba looks a called function up by its name when the caller is compiled.
-_COMPILED = (
-    "find_place",
-    "choose_order",
-    "set_rests",
-    "set_least",
-    "open_block",
-    "put",
-    "fill",
-    "draw",
-    "choose_blocks",
-    "take_out",
-    "disturb",
-    "offer_kinds",
-    "weigh",
-    "keep",
-    "is_kept",
-    "one",
-    "search",
-)
-_COPY = "cutblock.packing.kernels_compiled"
+_COMPILED = {
+    kernels: ("find_place", "choose_order", "set_rests", "set_least", "open_block", "put", "begin", "prune", "fill"),
+    moves: (
+        "draw", "choose_blocks", "take_out", "disturb", "offer_kinds", "weigh", "keep", "is_kept", "one", "search",
+    ),
+}  # fmt: skip
+_WAIT = 0.02  # s between two looks at the compiling thread
 
 
 class Inner(Make):
     """The inner loops with the kind of sequence they take.
 
     Attributes:
-        loops: The module of `kernels`, or its compiled copy.
+        fill: `kernels.fill`, or its compiled copy.
+        begin: `kernels.begin` likewise.
+        search: `moves.search` likewise.
     """
 
-    def __init__(self, loops: ModuleType, is_compiled: bool) -> None:
+    def __init__(self, filling: ModuleType, moving: ModuleType, is_compiled: bool) -> None:
         super().__init__(is_compiled)
-        self.loops: Any = loops
+        self.fill: Any = filling.fill
+        self.begin: Any = filling.begin
+        self.search: Any = moving.search
+
+
+class Gear:
+    """Which inner loops are at work: given ones, or the best there are at the time.
+
+    Args:
+        fixed: The loops to use throughout, or None.
+    """
+
+    def __init__(self, fixed: Inner | None = None) -> None:
+        self.fixed = fixed
+
+    def inner(self) -> Inner:
+        """Return the loops to go on with."""
+        return self.fixed or _WORKSHOP.ready or _PLAIN
+
+    def ask_for(self) -> None:
+        """Begin to compile the loops in a thread, where numba is installed and that was not begun before."""
+        if self.fixed is None:
+            _WORKSHOP.start()
+
+    def wait_for(self, tell: Callable[[], None]) -> None:
+        """Wait for the compiled loops, telling now and then."""
+        self.ask_for()
+        if self.fixed is None:
+            _WORKSHOP.wait(tell)
+
+
+class _Workshop:
+    """Where the compiled loops are made, once in a process."""
+
+    def __init__(self) -> None:
+        self.lock = threading.Lock()
+        self.thread: threading.Thread | None = None
+        self.ready: Inner | None = None
+
+    def start(self) -> None:
+        """Begin to compile in a thread, if that was not done before."""
+        with self.lock:
+            if self.thread is None and importlib.util.find_spec("numba") is not None:
+                self.thread = threading.Thread(target=self.make, name="compile the packing")
+                self.thread.start()
+
+    def make(self) -> None:
+        """Compile every function by running a small task."""
+        from cutblock.packing.rehearsal import rehearse
+
+        inner = _copies(is_cached=True)
+        try:
+            rehearse(inner)
+        except RuntimeError:  # numba finds no folder to keep the compiled code in
+            inner = _copies(is_cached=False)
+            rehearse(inner)
+        self.ready = inner
+
+    def wait(self, tell: Callable[[], None]) -> None:
+        """Wait until they are ready, telling now and then."""
+        while self.thread is not None and self.thread.is_alive():
+            self.thread.join(_WAIT)
+            tell()
+
+
+_PLAIN = Inner(kernels, moves, is_compiled=False)
+_WORKSHOP = _Workshop()
 
 
 def plain() -> Inner:
     """Return the inner loops as they stand."""
-    return Inner(kernels, is_compiled=False)
+    return _PLAIN
 
 
-@cache
 def compiled() -> Inner | None:
-    """Return the inner loops compiled by numba; None where it is not installed."""
-    if importlib.util.find_spec("numba") is None:
-        return None
+    """Return the compiled loops when they are ready; None where numba is not installed."""
+    _WORKSHOP.start()
+    _WORKSHOP.wait(lambda: None)
+    return _WORKSHOP.ready
+
+
+def _copies(is_cached: bool) -> Inner:
+    """Return copies of the modules, each function of which is compiled at its first call."""
     numba: Any = importlib.import_module("numba")
-    spec = importlib.util.spec_from_file_location(_COPY, kernels.__file__)
+    made: dict[str, Any] = {}
+    copies: list[ModuleType] = []
+    for module, names in _COMPILED.items():
+        copy = _copy(module)
+        vars(copy).update({name: function for name, function in made.items() if hasattr(copy, name)})
+        for name in names:
+            made[name] = numba.njit(cache=is_cached, nogil=True)(getattr(copy, name))
+            setattr(copy, name, made[name])
+        copies.append(copy)
+    filling, moving = copies
+    return Inner(filling, moving, is_compiled=True)
+
+
+def _copy(module: ModuleType) -> ModuleType:
+    name = f"{module.__name__}_compiled"
+    spec = importlib.util.spec_from_file_location(name, module.__file__)
     if spec is None or spec.loader is None:
-        return None
+        raise ImportError(f"{module.__name__} has no file")
     copy = importlib.util.module_from_spec(spec)
-    sys.modules[_COPY] = copy
+    sys.modules[name] = copy
     spec.loader.exec_module(copy)
-    for name in _COMPILED:
-        setattr(copy, name, numba.njit(cache=True, nogil=True)(getattr(copy, name)))
-    return Inner(copy, is_compiled=True)
+    return copy

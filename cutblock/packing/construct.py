@@ -1,25 +1,50 @@
 """First plans: many quick rules, of which the best is kept, because no rule is best everywhere."""
 
-from collections.abc import Iterator
 from dataclasses import dataclass
+from functools import partial
+from typing import NamedTuple
 
 import numpy as np
 
 from cutblock.base.arrays import Ints
-from cutblock.base.progress import Progress
-from cutblock.packing.compiled import Inner
+from cutblock.base.progress import Progress, part_of
+from cutblock.packing.compiled import Gear, Inner
 from cutblock.packing.lattice import Task
-from cutblock.packing.sequences import cells_of, kinds_of, new_desk, new_layout
+from cutblock.packing.sequences import (
+    MOST_FREE,
+    Cells,
+    Desk,
+    Integers,
+    Kinds,
+    Layout,
+    cells_of,
+    kinds_of,
+    new_desk,
+    new_layout,
+)
 from cutblock.packing.tree import Part
 
-_PLACINGS = 12_000  # billets placed by all rules together; about half a second without a compiler
-_LEAST_RULES = 3
+_PLACINGS = 3_000  # billets placed by all rules together; about a tenth of a second without a compiler
+_LEAST_RULES = 2
+_MANY, _VERY_MANY = 1000, 20_000  # billets from which other rules are best, and from which one has to do
+_CHUNK = {False: 50, True: 2000}  # billets placed between two reports, plain and compiled
+_PLAIN_WORK = 6_000_000  # free boxes looked at, about a second and a half, that are worth waiting for the compiler
 # Rule, mode and sort key. Of all 72, these twelve are enough to reach the best of them on 54 tasks of the box classes
 # of Martello, Pisinger and Vigo, 60 made-up jobs and 100 rectangle tasks of Berkey and Wang.
 _RECIPES = (
     (0, 1, 0), (0, 2, 2), (0, 0, 5), (0, 2, 4), (1, 1, 0), (2, 0, 1),
     (2, 2, 5), (0, 0, 0), (3, 0, 4), (3, 2, 2), (2, 1, 0), (0, 0, 1),
 )  # fmt: skip
+_MANY_RECIPES = ((2, 1, 0), (3, 2, 2))
+
+
+class Recipe(NamedTuple):
+    """A quick rule: billets in the order they are placed, kinds of block as preferred, rule and mode of `kernels`."""
+
+    sequence: Ints
+    prefer: Ints
+    rule: int
+    mode: int
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -57,41 +82,75 @@ def evaluate(task: Task, layout: Ints, kinds: Ints, trees: tuple[Part, ...] = ()
     return Solution(layout, kinds, value, trees)
 
 
-def construct(task: Task, inner: Inner, target: tuple[float, int], progress: Progress) -> Solution:
+def construct(task: Task, gear: Gear, target: tuple[float, int], progress: Progress) -> Solution:
     """Return the best plan of the quick rules; stops early when one costs no more than the bounds in `target`."""
     n = len(task.cells)
-    cells = cells_of(task, inner)
-    kinds = kinds_of(task, inner)
-    desk = new_desk(n, inner)
-    unforced = inner.integers(np.full(n, -1))
     best: Solution | None = None
-    recipes = list(_recipes(task))
-    n_recipes = max(_LEAST_RULES, min(len(recipes), _PLACINGS // max(n, 1)))
-    for i, (sequence, prefer, rule, mode) in enumerate(recipes[:n_recipes]):
-        progress(i / n_recipes, "Trying rules for the blocks")
-        layout = new_layout(n, inner)
-        counts = inner.integers(task.counts)
-        n_blocks = inner.loops.fill(
-            inner.integers(sequence),
-            n,
-            unforced,
-            rule,
-            mode,
-            cells,
-            kinds,
-            inner.integers(prefer),
-            counts,
-            layout,
-            desk,
-        )
-        plan = evaluate(task, np.array(layout, dtype=np.int64), np.array(desk.kind[:n_blocks], dtype=np.int64))
+    recipes = _recipes(task)
+    is_long = len(recipes) * n * min(n, MOST_FREE) > _PLAIN_WORK
+    if is_long:
+        gear.ask_for()
+    for i, recipe in enumerate(recipes):
+        share = part_of(progress, i / len(recipes), (i + 1) / len(recipes))
+        plan = _fill(task, recipe, gear, share, "the first plan" if best is None else f"{len(best.kinds)} so far")
         if best is None or plan.value < best.value:
             best = plan
         if best.value[0] <= target[0] and best.value[1] <= target[1]:
             break
+        if i == 0 and is_long:
+            gear.wait_for(partial(share, 1.0, f"{len(best.kinds)} blocks so far; preparing the fast rules"))
     if best is None:
         return evaluate(task, np.zeros((5, 0), dtype=np.int64), np.zeros(0, dtype=np.int64))
     return best
+
+
+def _fill(task: Task, recipe: Recipe, gear: Gear, progress: Progress, so_far: str) -> Solution:
+    """Return the plan of one quick rule; goes over to the compiled loops as soon as they are ready."""
+    n = len(task.cells)
+    inner = gear.inner()
+    room = _room(task, recipe, inner)
+    inner.begin(room.sequence, n, room.cells, room.desk)
+    done = 0
+    while done < n:
+        progress(done / n, f"Trying rules for the blocks: {so_far}")
+        if gear.inner() is not inner:
+            inner = gear.inner()
+            room = inner.take(room)
+        stop = min(n, done + _CHUNK[inner.is_compiled])
+        inner.fill(
+            room.sequence, done, stop, room.forced, recipe.rule, recipe.mode, room.cells, room.kinds, room.prefer,
+            room.counts, room.layout, room.desk,
+        )  # fmt: skip
+        done = stop
+    kinds = np.array(room.desk.kind[: room.desk.n_open[1]], dtype=np.int64)
+    return evaluate(task, np.array([list(row) for row in room.layout], dtype=np.int64), kinds)
+
+
+class _Room(NamedTuple):
+    """What one quick rule reads and writes."""
+
+    sequence: Integers
+    forced: Integers
+    prefer: Integers
+    counts: Integers
+    cells: Cells
+    kinds: Kinds
+    layout: Layout
+    desk: Desk
+
+
+def _room(task: Task, recipe: Recipe, inner: Inner) -> _Room:
+    n = len(task.cells)
+    return _Room(
+        inner.integers(recipe.sequence),
+        inner.integers(np.full(n, -1)),
+        inner.integers(recipe.prefer),
+        inner.integers(task.counts),
+        cells_of(task, inner),
+        kinds_of(task, inner),
+        new_layout(n, inner),
+        new_desk(n, inner),
+    )
 
 
 def sort_keys(task: Task) -> list[Ints]:
@@ -125,9 +184,11 @@ def preferences(task: Task) -> list[Ints]:
     return unique
 
 
-def _recipes(task: Task) -> Iterator[tuple[Ints, Ints, int, int]]:
-    """Yield sequences, preferred kinds, rules and modes; what is best most often comes first."""
+def _recipes(task: Task) -> list[Recipe]:
+    """Return the quick rules that are tried; what is best most often comes first."""
     sequences, prefers = sort_keys(task), preferences(task)
-    for rule, mode, key in _RECIPES:
-        for prefer in prefers:
-            yield sequences[key], prefer, rule, mode
+    n = len(task.cells)
+    ways = _RECIPES if n < _MANY else _MANY_RECIPES
+    recipes = [Recipe(sequences[key], prefer, rule, mode) for rule, mode, key in ways for prefer in prefers]
+    least = len(prefers) * (1 if n >= _VERY_MANY else _LEAST_RULES)
+    return recipes[: max(least, min(len(recipes), _PLACINGS // max(n, 1)))] if n else []

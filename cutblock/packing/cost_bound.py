@@ -2,6 +2,8 @@
 
 A linear programme shares the billets among the kinds: for each kind and each product of dual feasible functions the
 billets given to it weigh no more than its number of blocks. Any packing obeys it, so its optimum bounds every packing.
+What is returned is worked out from the prices of the programme's rows alone, billet by billet: by weak duality any such
+prices prove a bound, so those found on a sample of the billets prove one for all of them.
 """
 
 from dataclasses import dataclass, field
@@ -10,14 +12,15 @@ from math import gcd
 import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
-from cutblock.packing.bound import Bound, best_product, distinct_cells, whole
+from cutblock.packing.bound import Bound, Product, Products, distinct_cells, fitting, sample_of, whole
 from cutblock.packing.lattice import Task
 
-_ROUNDS = 12
+_ROUNDS, _MORE_ROUNDS = 12, 3
 _VIOLATED = 1e-6
 _RELATIVE = 1e-9  # taken off a price, so that rounding in the solver cannot lift it above a packing's
 _PER_CENT = 100
-_PROOF = "dual feasible functions, shared among the kinds of block by a linear programme"
+_MOST_SHARED = 240  # distinct billets in the linear programme, over the number of kinds
+PROOF = "dual feasible functions, shared among the kinds of block by a linear programme"
 
 
 @dataclass(slots=True, eq=False)
@@ -30,87 +33,132 @@ class _Programme:
     fits: Bools
     upper: list[float | None]
     rows: list[Floats] = field(default_factory=list)
+    products: list[tuple[int, Product]] = field(default_factory=list)  # kind and product of each row
+    known: dict[int, tuple[Ints, Products]] = field(default_factory=dict)  # billets that fit a kind, their products
 
-    def add(self, kind: int, counted: Floats) -> None:
-        """Add the row of one product on one kind: what its billets count is at most its number of blocks."""
+    def add_best(self, kind: int, shares: Floats, blocks: float) -> bool:
+        """Add the product that counts most for the billets given to a kind, if it is over the kind's blocks."""
+        if kind not in self.known:
+            chosen = np.flatnonzero(self.fits[:, kind])
+            self.known[kind] = chosen, Products(self.cells[chosen], self.kinds[kind])
+        chosen, products = self.known[kind]
+        most, product = products.best(shares[chosen])
+        if most <= blocks + _VIOLATED:
+            return False
         n_cells, n_kinds = self.fits.shape
         row = np.zeros(n_cells * n_kinds + n_kinds)
-        row[: n_cells * n_kinds].reshape(n_cells, n_kinds)[:, kind] = counted
+        row[chosen * n_kinds + kind] = product.at(self.cells[chosen], self.kinds[kind])
         row[n_cells * n_kinds + kind] = -1.0
         self.rows.append(row)
+        self.products.append((kind, product))
+        return True
 
-    def solve(self, weights: Floats) -> tuple[float, Floats, Floats] | None:
-        """Return the least weight, the shares and the numbers of blocks; None if the counts cannot suffice."""
+    def solve(self, weights: Floats) -> "_Answer | None":
+        """Return the optimum; None if the counts cannot suffice."""
         from scipy.optimize import linprog
 
         n_cells, n_kinds = self.fits.shape
         shared = np.zeros((n_cells, n_cells * n_kinds + n_kinds))
         for cell in range(n_cells):
             shared[cell, cell * n_kinds : (cell + 1) * n_kinds] = 1.0
-        most = np.where(self.fits, self.copies[:, None], 0.0).ravel().tolist()
+        limits = [(0.0, None if fits else 0.0) for fits in self.fits.ravel().tolist()]
         found = linprog(
             np.concatenate([np.zeros(n_cells * n_kinds), weights]),
             A_ub=np.array(self.rows),
             b_ub=np.zeros(len(self.rows)),
             A_eq=shared,
             b_eq=self.copies,
-            bounds=[(0.0, limit) for limit in most + self.upper],
+            bounds=limits + [(0.0, limit) for limit in self.upper],
             method="highs",
         )
         if found.status != 0 or found.x is None or found.fun is None:
             return None
-        shares = np.asarray(found.x[: n_cells * n_kinds]).reshape(n_cells, n_kinds)
-        return float(found.fun), shares, np.asarray(found.x[n_cells * n_kinds :])
+        return _Answer(
+            np.asarray(found.x[: n_cells * n_kinds]).reshape(n_cells, n_kinds),
+            np.asarray(found.x[n_cells * n_kinds :]),
+            np.maximum(0.0, -np.asarray(found.ineqlin.marginals)),
+            np.maximum(0.0, -np.asarray(found.upper.marginals[n_cells * n_kinds :])),
+        )
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Answer:
+    """Shares and numbers of blocks, and the prices of the rows and of the counts."""
+
+    shares: Floats
+    blocks: Floats
+    row_prices: Floats
+    count_prices: Floats
 
 
 def mixed_bound(task: Task) -> Bound:
     """Return the bound for a task with several kinds of block."""
-    blocks = whole(_least(task, np.ones(len(task.kinds))))
-    if task.prices is None:
-        return Bound(max(1, blocks), None, _PROOF)
-    cost = _least(task, task.prices)
-    return Bound(max(1, blocks), _next_price(task.prices, cost), _PROOF)
-
-
-def _least(task: Task, weights: Floats) -> float:
-    """Return the least weight of blocks; where the counts given cannot suffice, that of unlimited ones."""
     cells, copies = distinct_cells(task)
-    stands = (cells[:, None, :3] <= task.kinds[None]).all(axis=2)
-    lies = (cells[:, None, [1, 0, 2]] <= task.kinds[None]).all(axis=2) & (cells[:, None, 3] > 0)
+    fits = np.column_stack([_fits(cells, kind) for kind in task.kinds])
+    everything = _Everything(task.kinds, cells, copies, fits)
+    chosen = sample_of(len(cells), max(1, _MOST_SHARED // len(task.kinds)))
+    scaled = copies[chosen] * (copies.sum() / copies[chosen].sum())
     upper = [float(count) if finite else None for count, finite in zip(task.counts, task.is_finite, strict=True)]
-    programme = _Programme(cells, copies.astype(np.float64), task.kinds, stands | lies, upper)
-    for kind in range(len(task.kinds)):
-        _add_best(programme, kind, programme.copies)
-    least = 0.0
-    for _ in range(_ROUNDS):
-        solved = programme.solve(weights)
-        if solved is None:
-            programme.upper = [None] * len(upper)
-            solved = programme.solve(weights)
-            if solved is None:
-                return least
-        least, shares, blocks = solved
-        added = [_add_best(programme, kind, shares[:, kind], blocks[kind]) for kind in range(len(task.kinds))]
+    programme = _Programme(cells[chosen], scaled, task.kinds, fits[chosen], upper)
+    useful = np.flatnonzero(programme.fits.any(axis=0)).tolist()
+    for kind in useful:
+        programme.add_best(kind, programme.copies, 0.0)
+    cost = None if task.prices is None else next_price(task.prices, _least(everything, programme, task.prices, _ROUNDS))
+    # With prices the products that bound the money bound the number of blocks nearly as well.
+    blocks = _least(everything, programme, np.ones(len(task.kinds)), _ROUNDS if cost is None else _MORE_ROUNDS)
+    return Bound(max(1, whole(blocks)), cost, PROOF)
+
+
+def _least(everything: "_Everything", programme: _Programme, weights: Floats, n_rounds: int) -> float:
+    """Return the least weight of blocks; where the counts given cannot suffice, that of unlimited ones."""
+    best = 0.0
+    for _ in range(n_rounds):
+        answer = programme.solve(weights)
+        if answer is None:
+            programme.upper = [None] * len(programme.upper)
+            answer = programme.solve(weights)
+            if answer is None:
+                break
+        best = max(best, _proven(everything, programme, answer, weights))
+        kinds = np.flatnonzero(programme.fits.any(axis=0)).tolist()
+        added = [programme.add_best(kind, answer.shares[:, kind], answer.blocks[kind]) for kind in kinds]
         if not any(added):
             break
-    return least
+    return best
 
 
-def _add_best(programme: _Programme, kind: int, shares: Floats, blocks: float = 0.0) -> bool:
-    """Add the product that counts most for the billets given to a kind, if it is over the kind's blocks."""
-    chosen = np.flatnonzero(programme.fits[:, kind])
-    if len(chosen) == 0:
-        return False
-    most, counted = best_product(programme.cells[chosen], shares[chosen], programme.kinds[kind])
-    if most <= blocks + _VIOLATED:
-        return False
-    row = np.zeros(len(programme.cells))
-    row[chosen] = counted
-    programme.add(kind, row)
-    return True
+@dataclass(frozen=True, slots=True, eq=False)
+class _Everything:
+    """All distinct billets, how many of each, and which kinds they fit; the programme may know a sample only."""
+
+    kinds: Ints
+    cells: Ints
+    copies: Ints
+    fits: Bools
 
 
-def _next_price(prices: Floats, cost: float) -> float:
+def _fits(cells: Ints, kind: Ints) -> Bools:
+    stands, lies = fitting(cells, kind)
+    result: Bools = (stands | lies) & (cells[:, 2] <= kind[2])
+    return result
+
+
+def _proven(everything: _Everything, programme: _Programme, answer: _Answer, weights: Floats) -> float:
+    """Return what the prices of the rows prove: each billet counts what it counts in its cheapest kind."""
+    counts = np.array([0.0 if limit is None else limit for limit in programme.upper])
+    kinds = [kind for kind, _ in programme.products]
+    total = np.bincount(kinds, weights=answer.row_prices, minlength=len(weights))
+    # Rounding in the solver must not give a kind more than a block of it costs.
+    ratios = np.minimum(1.0, (weights + answer.count_prices) / np.maximum(total, 1e-300))
+    counted = np.where(everything.fits, 0.0, np.inf)
+    for (kind, product), price in zip(programme.products, answer.row_prices.tolist(), strict=True):
+        if price > 0.0:
+            held = np.flatnonzero(everything.fits[:, kind])
+            counted[held, kind] += price * ratios[kind] * product.at(everything.cells[held], everything.kinds[kind])
+    return float(everything.copies @ counted.min(axis=1) - counts @ answer.count_prices)
+
+
+def next_price(prices: Floats, cost: float) -> float:
     """Return the least sum of prices that is not under `cost`, where the prices are whole hundredths."""
     lowered = cost * (1.0 - _RELATIVE)
     cents = np.round(prices * _PER_CENT)

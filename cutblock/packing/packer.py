@@ -11,18 +11,18 @@ from cutblock.base.errors import InputError, StockError
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.packing.bound import Bound, lower_bound
 from cutblock.packing.columns import stack_columns
-from cutblock.packing.compiled import Inner, compiled, plain
+from cutblock.packing.compiled import Gear
 from cutblock.packing.construct import Solution, construct
+from cutblock.packing.effort import Effort
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task
 from cutblock.packing.replay import block_trees
-from cutblock.packing.search import Effort, improve
+from cutblock.packing.search import improve, is_at, told
 from cutblock.packing.tree import Part, all_parts
 
 _AXIS_NAMES = "xyz"
 _USUAL_MOVES = 2000
-_USUAL_PLACINGS = 25_000
-_LONG_PLACINGS = 2_000_000  # half a minute as it stands; compiling takes ten seconds once
-_LONG_SECONDS = 20.0
+_USUAL_PLACINGS = 6_000
+_LONG_PLACINGS = 200_000  # several seconds as the loops stand; worth compiling them
 
 
 class Placement(NamedTuple):
@@ -74,8 +74,6 @@ class Packing:
         bound_proof: What proves the bound.
         placements: One row for each billet, in the order given.
         stock_rows: The stock row of each block.
-        cuts: For each block its through cuts, in an order that can be made, after the skin trims.
-        leftovers: Boxes left over, block by block.
         moves: Search moves made; the same number with the same seed gives the same packing.
         trees: For each block the tree of its cuts.
     """
@@ -87,10 +85,23 @@ class Packing:
     bound_proof: str
     placements: tuple[Placement, ...]
     stock_rows: tuple[int, ...]
-    cuts: tuple[tuple[ThroughCut, ...], ...]
-    leftovers: tuple[Leftover, ...]
     moves: int
     trees: tuple[Part, ...]
+
+    @property
+    def cuts(self) -> tuple[tuple[ThroughCut, ...], ...]:
+        """For each block its through cuts, in an order that can be made, after the skin trims."""
+        return tuple(tuple(_through_cut(part) for part in all_parts(root) if part.axis >= 0) for root in self.trees)
+
+    @property
+    def leftovers(self) -> tuple[Leftover, ...]:
+        """Boxes left over, block by block."""
+        return tuple(
+            Leftover(block, *_mm(part.at), *_mm(part.size))
+            for block, root in enumerate(self.trees)
+            for part in all_parts(root)
+            if part.billet < 0 and part.axis < 0
+        )
 
 
 def pack(
@@ -137,56 +148,53 @@ def pack(
 def pack_task(task: Task, seed: int, moves: int | None, seconds: float | None, progress: Progress) -> Packing:
     """Pack a checked task; arguments and errors as `pack`."""
     _check_effort(moves, seconds)
+    effort = Effort(moves, seconds)
     progress(0.0, "Finding what no packing can undercut")
     bound = lower_bound(task)
-    solution, n_moves = _solve(task, bound, seed, moves, seconds, part_of(progress, 0.1, 1.0))
-    return _packing(task, solution, bound, n_moves)
+    solution = _solve(task, bound, seed, effort, part_of(progress, 0.1, 1.0))
+    return _packing(task, solution, bound, effort.n_moves)
 
 
-def _solve(
-    task: Task, bound: Bound, seed: int, moves: int | None, seconds: float | None, progress: Progress
-) -> tuple[Solution, int]:
+def _solve(task: Task, bound: Bound, seed: int, effort: Effort, progress: Progress) -> Solution:
     target = (float(bound.blocks) if bound.cost is None else bound.cost, bound.blocks)
-    start = construct(task, plain(), target, part_of(progress, 0.0, 0.4))
+    gear = Gear()
+    start = construct(task, gear, target, part_of(progress, 0.0, 0.4))
     for kind in range(len(task.kinds)):
-        stacked = None if start.value[:2] <= target else stack_columns(task, plain(), kind)
+        stacked = None if is_at(start, target) else stack_columns(task, gear, kind)
         if stacked is not None and stacked.value < start.value:
             start = stacked
-    if moves is None and seconds is None:
-        moves = usual_moves(start)
-    effort = Effort(moves, seconds)
-    solution, n_moves = improve(task, _inner(start, effort), start, target, seed, effort, part_of(progress, 0.4, 1.0))
+    if effort.moves is None and effort.seconds is None:
+        effort.moves = usual_moves(start)
+    progress(0.4, told(task, start, target))
+    if effort.left * _billets_a_move(start) > _LONG_PLACINGS:
+        gear.ask_for()
+    solution = improve(task, gear, start, target, seed, effort, part_of(progress, 0.4, 1.0))
     if solution.n_missing:
         raise shortage(task)
-    return solution, n_moves
+    return solution
 
 
 def usual_moves(start: Solution) -> int:
-    """Return the moves made where none are asked for: about half a second without a compiler."""
-    billets_a_move = 3 * start.layout.shape[1] // max(1, len(start.kinds)) + 1
-    return min(_USUAL_MOVES, _USUAL_PLACINGS // int(billets_a_move))
+    """Return the moves made where none are asked for: about a tenth of a second without a compiler."""
+    return min(_USUAL_MOVES, _USUAL_PLACINGS // _billets_a_move(start))
 
 
-def _inner(start: Solution, effort: Effort) -> Inner:
-    """Return the compiled loops where they are there and the search is long enough to pay for their start."""
-    billets_a_move = 3 * start.layout.shape[1] // max(1, len(start.kinds)) + 1
-    is_long = (effort.moves or 0) * billets_a_move > _LONG_PLACINGS or (effort.seconds or 0.0) >= _LONG_SECONDS
-    return (compiled() if is_long else None) or plain()
+def _billets_a_move(start: Solution) -> int:
+    return 3 * int(start.layout.shape[1]) // max(1, len(start.kinds)) + 1
 
 
 def shortage(task: Task) -> StockError:
     """Return the error that says how many more blocks of which kind would do."""
     more = []
     for row in np.flatnonzero(task.is_finite & task.fits.all(axis=0)).tolist():
-        pool = int(task.pool_of[row])
         counts = task.counts.copy()
-        counts[pool] = len(task.cells)
+        counts[row] = len(task.cells)
         # Only the blocks of this row cost anything, so that those there are of the others are used first.
         prices = np.zeros(len(counts))
-        prices[task.pool_of == pool] = 1.0
-        plan = construct(replace(task, counts=counts, prices=prices), plain(), (0.0, 0), silent)
+        prices[row] = 1.0
+        plan = construct(replace(task, counts=counts, prices=prices), Gear(), (0.0, 0), silent)
         if not plan.n_missing:
-            more.append((int((task.pool_of[plan.kinds] == pool).sum() - task.counts[pool]), pool))
+            more.append((int((plan.kinds == row).sum() - task.counts[row]), row))
     if not more:
         short = ", ".join(name for name, count in zip(task.stock_names, task.is_finite, strict=True) if count)
         return StockError(
@@ -216,17 +224,12 @@ def _stock_row(row: Iterable[float | None]) -> tuple[float, float, float, int | 
 
 def _packing(task: Task, solution: Solution, bound: Bound, n_moves: int) -> Packing:
     trees = block_trees(task, solution)
-    placements: list[Placement] = []
-    cuts: list[tuple[ThroughCut, ...]] = []
-    leftovers: list[Leftover] = []
-    for block, (row, root) in enumerate(zip(solution.kinds.tolist(), trees, strict=True)):
-        parts = all_parts(root)
-        for part in parts:
-            if part.billet >= 0:
-                placements.append(Placement(part.billet, block, row, *_mm(part.at), part.is_turned))
-            elif part.axis < 0:
-                leftovers.append(Leftover(block, *_mm(part.at), *_mm(part.size)))
-        cuts.append(tuple(_through_cut(part) for part in parts if part.axis >= 0))
+    placements = [
+        Placement(part.billet, block, row, *_mm(part.at), part.is_turned)
+        for block, (row, root) in enumerate(zip(solution.kinds.tolist(), trees, strict=True))
+        for part in all_parts(root)
+        if part.billet >= 0
+    ]
     return Packing(
         n_blocks=len(trees),
         cost=None if task.prices is None else float(task.prices[solution.kinds].sum()),
@@ -235,8 +238,6 @@ def _packing(task: Task, solution: Solution, bound: Bound, n_moves: int) -> Pack
         bound_proof=bound.proof,
         placements=tuple(sorted(placements)),
         stock_rows=tuple(solution.kinds.tolist()),
-        cuts=tuple(cuts),
-        leftovers=tuple(leftovers),
         moves=n_moves,
         trees=tuple(trees),
     )

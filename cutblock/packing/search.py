@@ -6,67 +6,90 @@ goal-driven ruin and recreate of Gardeyn and Wauters, European Journal of Operat
 move by late acceptance. Random numbers come from the seed alone, so the same number of moves gives the same plan.
 """
 
-import time
-from dataclasses import dataclass
-from typing import Any
+from typing import NamedTuple
 
 import numpy as np
 
 from cutblock.base.progress import Progress
-from cutblock.packing.compiled import Inner
+from cutblock.packing.compiled import Gear, Inner
 from cutblock.packing.construct import Solution, evaluate, sort_keys
+from cutblock.packing.effort import Effort
 from cutblock.packing.lattice import Task
-from cutblock.packing.sequences import Goods, State, cells_of, kinds_of, new_layout, new_trial
+from cutblock.packing.sequences import (
+    Goods,
+    Integers,
+    Reals,
+    State,
+    Trial,
+    cells_of,
+    kinds_of,
+    new_layout,
+    new_trial,
+)
 from cutblock.packing.tree import Part
 
 _MOVES_A_TURN = 2000
 _LATE_FILL = 50
 _LATE_EMPTYING = 100
 _DICE = 1 << 16
-_SLICE = {False: 50, True: 1000}  # moves between two looks at the clock, plain and compiled
+_FIRST_SLICE = 8  # moves before the first look at the clock
+_SLICE_TIME = 0.03  # s between two looks
 
 
-@dataclass(frozen=True, slots=True)
-class Effort:
-    """How long to search.
+class _Fixed(NamedTuple):
+    """What a search reads, and room for its moves."""
 
-    Attributes:
-        moves: So many moves, or None for no such limit.
-        seconds: So long, or None for no such limit.
+    goods: Goods
+    trial: Trial
+    bases: Integers
+    change: Reals
+    target: Reals
+
+
+class Search:
+    """Searches of one task: the sequences they need, and their random numbers.
+
+    Args:
+        task: What is packed.
+        gear: The inner loops.
+        seed: Of the random numbers.
+        effort: What may be spent.
+        target: Money (or blocks) and blocks that cannot be undercut: a search ends there.
     """
 
-    moves: int | None
-    seconds: float | None
-
-
-class _Search:
-    """The sequences of one search and the moves made so far."""
-
-    def __init__(
-        self, task: Task, inner: Inner, seed: int, effort: Effort, target: tuple[float, int], trees: tuple[Part, ...]
-    ) -> None:
+    def __init__(self, task: Task, gear: Gear, seed: int, effort: Effort, target: tuple[float, int]) -> None:
         n, n_kinds = len(task.cells), len(task.kinds)
-        self.task, self.inner, self.effort = task, inner, effort
-        self.trees = trees
+        self.task, self.gear, self.effort = task, gear, effort
+        self.inner = inner = gear.inner()
         self.generator = np.random.Generator(np.random.PCG64(seed))
         volumes = task.cells.astype(np.float64).prod(axis=1)
         kind_volumes = task.kinds.astype(np.float64).prod(axis=1)
-        reals, integers = inner.reals, inner.integers
-        self.goods = Goods(
-            cells_of(task, inner), kinds_of(task, inner), reals(volumes), reals(kind_volumes), reals(task.weights)
+        reals = inner.reals
+        self.fixed = _Fixed(
+            Goods(
+                cells_of(task, inner), kinds_of(task, inner), reals(volumes), reals(kind_volumes), reals(task.weights)
+            ),
+            new_trial(n, n_kinds, inner),
+            inner.integers(np.concatenate(sort_keys(task))),
+            reals(np.zeros(5)),
+            reals([target[0], float(target[1])]),
         )
-        self.trial = new_trial(n, n_kinds, inner)
-        self.bases = integers(np.concatenate(sort_keys(task)))
-        self.change = reals(np.zeros(5))
-        self.target = reals([target[0], float(target[1])])
-        self.n_moves = 0
-        self.began = time.monotonic()
-        self.dice: Any = None
-        self.roll()
+        self.n_slice = _FIRST_SLICE
+        self.dice = self.roll()
 
-    def roll(self) -> None:
-        """Draw new random numbers."""
-        self.dice = self.inner.reals(self.generator.random(max(_DICE, 64 * len(self.task.cells))))
+    def roll(self) -> Reals:
+        """Return new random numbers."""
+        dice: Reals = self.inner.reals(self.generator.random(max(_DICE, 64 * len(self.task.cells))))
+        return dice
+
+    def shift(self, state: State, late: Reals) -> tuple[State, Reals]:
+        """Go over to the compiled loops, if they are ready and not yet in use."""
+        inner: Inner = self.gear.inner()
+        if inner is self.inner:
+            return state, late
+        self.inner = inner
+        self.fixed, self.dice, self.n_slice = inner.take(self.fixed), inner.take(self.dice), _FIRST_SLICE
+        return inner.take(state), inner.take(late)
 
     def state_of(self, solution: Solution) -> State:
         """Return a plan as the moves take it."""
@@ -74,15 +97,15 @@ class _Search:
         layout = new_layout(n, self.inner)
         for to, source in zip(layout, solution.layout.tolist(), strict=True):
             to[:] = integers(source)
-        volumes = np.asarray(self.goods.volumes)
+        volumes = np.asarray(self.fixed.goods.volumes)
         is_placed = solution.layout[0] >= 0
         blocks = solution.layout[0][is_placed]
         n_blocks = len(solution.kinds)
         filled, kind = np.zeros(n + 8), np.zeros(n + 8, dtype=np.int64)
         filled[:n_blocks] = np.bincount(blocks, weights=volumes[is_placed], minlength=n_blocks)
         kind[:n_blocks] = solution.kinds
-        fill = filled[:n_blocks] / np.asarray(self.goods.kind_volumes)[solution.kinds]
-        spare = self.task.counts - np.bincount(self.task.pool_of[solution.kinds], minlength=len(self.task.kinds))
+        fill = filled[:n_blocks] / np.asarray(self.fixed.goods.kind_volumes)[solution.kinds]
+        spare = self.task.counts - np.bincount(solution.kinds, minlength=len(self.task.kinds))
         missing = float(volumes[~is_placed].sum())
         return State(
             layout,
@@ -94,7 +117,7 @@ class _Search:
             reals([float((fill**2).sum()), missing, float(self.task.weights[solution.kinds].sum())]),
         )
 
-    def solution_of(self, state: State) -> Solution:
+    def solution_of(self, state: State, trees: tuple[Part, ...]) -> Solution:
         """Return the plan a state holds, its blocks in the order of their first billet."""
         layout = np.array([list(row) for row in state.layout], dtype=np.int64)
         used, first = np.unique(layout[0][layout[0] >= 0], return_index=True)
@@ -102,102 +125,98 @@ class _Search:
         number = np.full(len(state.kind), -1, dtype=np.int64)
         number[used] = np.arange(len(used))
         layout[0] = np.where(layout[0] >= 0, number[layout[0]], -1)
-        return evaluate(self.task, layout, np.asarray(state.kind, dtype=np.int64)[used], self.trees)
+        return evaluate(self.task, layout, np.asarray(state.kind, dtype=np.int64)[used], trees)
 
-    def run(self, state: State, is_emptying: bool, n_moves: int, progress: Progress) -> None:
-        """Make up to so many moves; ends early when the goal is reached or the effort is spent."""
+    def run(self, state: State, is_emptying: bool, n_moves: int, progress: Progress, text: str) -> State:
+        """Make up to so many moves; ends early when the goal is reached or the effort is spent.
+
+        Returns:
+            The state, as the loops now in use take it.
+        """
         length = _LATE_EMPTYING if is_emptying else _LATE_FILL
         late = self.inner.reals(np.full(length, state.score[1 if is_emptying else 0]))
         state.counts[3] = 0
-        state.counts[2] = len(self.dice) if self.n_moves else 0
+        state.counts[2] = len(self.dice) if self.effort.n_moves else 0
         done = 0
-        while done < n_moves and not self.is_spent():
-            progress(self.fraction(), "Searching for fewer blocks")
-            wanted = min(_SLICE[self.inner.is_compiled], n_moves - done, self.moves_left())
-            made = self.inner.loops.search(
-                is_emptying,
-                wanted,
-                self.target,
-                self.bases,
-                state,
-                self.trial,
-                self.goods,
-                late,
-                self.change,
-                self.dice,
-            )
+        while done < n_moves and not self.effort.is_spent:
+            progress(self.effort.fraction, text)
+            state, late = self.shift(state, late)
+            wanted = min(self.n_slice, n_moves - done, self.effort.left)
+            goods, trial, bases, change, target = self.fixed
+            before = self.effort.elapsed
+            made = self.inner.search(is_emptying, wanted, target, bases, state, trial, goods, late, change, self.dice)
+            # How many moves are made at once changes nothing but how often the clock is looked at.
+            if self.effort.elapsed - before < _SLICE_TIME and made == wanted:
+                self.n_slice *= 2
+            elif self.effort.elapsed - before > 2.0 * _SLICE_TIME:
+                self.n_slice = max(1, self.n_slice // 2)
             done += made
-            self.n_moves += made
+            self.effort.spend(made)
             if made < wanted:
                 if state.counts[2] + 4 * len(self.task.cells) + 64 <= len(self.dice):
-                    return
-                self.roll()
+                    break
+                self.dice = self.roll()
                 state.counts[2] = 0
-
-    def moves_left(self) -> int:
-        """Return how many moves may still be made."""
-        return _MOVES_A_TURN if self.effort.moves is None else self.effort.moves - self.n_moves
-
-    def is_spent(self) -> bool:
-        """Return whether the effort is spent."""
-        if self.effort.moves is not None and self.n_moves >= self.effort.moves:
-            return True
-        return self.effort.seconds is not None and time.monotonic() - self.began >= self.effort.seconds
-
-    def fraction(self) -> float:
-        """Return how much of the effort is spent."""
-        shares = [0.0]
-        if self.effort.moves:
-            shares.append(self.n_moves / self.effort.moves)
-        if self.effort.seconds:
-            shares.append((time.monotonic() - self.began) / self.effort.seconds)
-        return min(1.0, max(shares))
+        return state
 
 
 def improve(
     task: Task,
-    inner: Inner,
+    gear: Gear,
     start: Solution,
     target: tuple[float, int],
     seed: int,
     effort: Effort,
     progress: Progress,
-) -> tuple[Solution, int]:
+) -> Solution:
     """Search for a cheaper plan.
 
     Args:
         task: What is packed.
-        inner: The inner loops.
+        gear: The inner loops.
         start: A plan; billets without a place are given one first, if that can be.
         target: Money (or blocks) and blocks that cannot be undercut: the search ends there.
         seed: Of the random numbers.
-        effort: Moves, or seconds.
-        progress: Told how far it is; may raise Cancelled.
+        effort: Moves, or seconds; what is made is counted in it.
+        progress: Told how far it is and what the best plan is; may raise Cancelled.
 
     Returns:
-        The best plan found, never worse than `start`, and the number of moves made.
+        The best plan found, never worse than `start`.
     """
-    hunt = _Search(task, inner, seed, effort, target, start.trees)
+    search = Search(task, gear, seed, effort, target)
     best = start
-    while not hunt.is_spent() and not _is_at(best, target):
+    while not effort.is_spent and not is_at(best, target):
+        text = told(task, best, target)
         if best.n_missing:
-            state = hunt.state_of(best)
-            hunt.run(state, True, _MOVES_A_TURN, progress)
-            best = min(best, hunt.solution_of(state), key=lambda plan: plan.value)
+            state = search.run(search.state_of(best), True, _MOVES_A_TURN, progress, text)
+            best = _better(best, search.solution_of(state, best.trees))
             continue
-        state = hunt.state_of(best)
-        hunt.run(state, False, _MOVES_A_TURN, progress)
-        best = min(best, hunt.solution_of(state), key=lambda plan: plan.value)
-        if not _is_at(best, target):
-            state = hunt.state_of(_emptied(task, best, hunt.generator))
-            hunt.run(state, True, _MOVES_A_TURN, progress)
+        state = search.run(search.state_of(best), False, _MOVES_A_TURN, progress, text)
+        best = _better(best, search.solution_of(state, best.trees))
+        if not is_at(best, target):
+            state = search.state_of(_emptied(task, best, search.generator))
+            state = search.run(state, True, _MOVES_A_TURN, progress, told(task, best, target))
             if state.counts[1] == 0:
-                best = min(best, hunt.solution_of(state), key=lambda plan: plan.value)
-    return best, hunt.n_moves
+                best = _better(best, search.solution_of(state, best.trees))
+    return best
 
 
-def _is_at(plan: Solution, target: tuple[float, int]) -> bool:
+def told(task: Task, plan: Solution, target: tuple[float, int]) -> str:
+    """Return a plan and its bound in words."""
+    if plan.n_missing:
+        return f"Searching for room for {plan.n_missing} billets"
+    if task.prices is None:
+        return f"{len(plan.kinds)} blocks so far, at least {target[1]} needed"
+    return f"{len(plan.kinds)} blocks for {plan.value[0]:,.2f} so far, at least {target[0]:,.2f} needed"
+
+
+def is_at(plan: Solution, target: tuple[float, int]) -> bool:
+    """Return whether a plan costs no more than what cannot be undercut."""
     return plan.n_missing == 0 and plan.value[0] <= target[0] and plan.value[1] <= target[1]
+
+
+def _better(one: Solution, other: Solution) -> Solution:
+    return other if other.value < one.value else one
 
 
 def _emptied(task: Task, plan: Solution, generator: np.random.Generator) -> Solution:
@@ -206,9 +225,8 @@ def _emptied(task: Task, plan: Solution, generator: np.random.Generator) -> Solu
     filled = np.bincount(plan.layout[0], weights=volumes, minlength=len(plan.kinds))
     order = np.argsort(filled / task.kinds[plan.kinds].astype(np.float64).prod(axis=1), kind="stable")
     gone = int(order[int(generator.random() ** 2 * min(8, len(order)))])
-    used = np.bincount(task.pool_of[plan.kinds], minlength=len(task.kinds))
-    is_there = (used < task.counts)[task.pool_of]
-    cheaper = (task.weights < task.weights[plan.kinds[gone]]) & is_there
+    used = np.bincount(plan.kinds, minlength=len(task.kinds))
+    cheaper = (task.weights < task.weights[plan.kinds[gone]]) & (used < task.counts)
     options = [-1, *np.flatnonzero(cheaper).tolist()]
     kind = options[int(generator.random() * len(options))]
     layout = plan.layout.copy()

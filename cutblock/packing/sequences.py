@@ -7,6 +7,8 @@ import numpy as np
 
 from cutblock.packing.lattice import Task
 
+MOST_FREE = 1000  # free boxes remembered; the smallest are forgotten
+
 Integers = MutableSequence[int]
 Reals = MutableSequence[float]
 
@@ -26,6 +28,13 @@ class Make:
         array = np.array(values, dtype=np.int64)
         return array if self.is_compiled else array.tolist()
 
+    def take(self, value: Any) -> Any:  # noqa: ANN401 - a sequence, or a tuple of them
+        """Return sequences of any kind, in tuples or not, as sequences of this kind."""
+        if isinstance(value, tuple):
+            return type(value)(*map(self.take, value))
+        array = np.asarray(value)
+        return array if self.is_compiled else array.tolist()
+
     def reals(self, values: Any) -> Any:  # noqa: ANN401 - a list or an array
         """Return numbers as a sequence of this kind."""
         array = np.array(values, dtype=np.float64)
@@ -42,16 +51,12 @@ class Cells(NamedTuple):
 
 
 class Kinds(NamedTuple):
-    """The kinds of block: usable sizes with one kerf added, the longest part that can be cut along, see `Task`.
-
-    Kinds of one pool are the same blocks standing on other faces, so they share one count: that of the pool's number.
-    """
+    """The kinds of block: usable sizes with one kerf added, and the longest part that can be cut along (see `Task`)."""
 
     x: Integers
     y: Integers
     z: Integers
     reach: Integers
-    pool: Integers
 
 
 class Layout(NamedTuple):
@@ -74,6 +79,9 @@ class Desk(NamedTuple):
     slot: Integers
     kind: Integers
     n_placed: Integers
+    n_open: Integers  # (2,) free boxes, opened blocks
+    volumes: Reals  # of the free boxes, when there are too many
+    ranked: list[float]  # the same from the smallest up; a list or an array, both can be sorted
     rest: Integers  # (9,) sizes of the three rests of the last placing
     least: Integers  # (3,) shorter side, longer side and height that a rest must have to be of use
 
@@ -85,7 +93,7 @@ class State(NamedTuple):
     kind: Integers  # of each block number
     filled: Reals  # volume of the billets in each block
     alive: Integers  # all block numbers, those in use first
-    spare: Integers  # blocks left of each pool of kinds
+    spare: Integers  # blocks left of each kind
     counts: Integers  # (4,) blocks in use, billets without a place, next random number, moves since the list began
     score: Reals  # (3,) squared fill of all blocks, volume without a place, money
 
@@ -123,7 +131,7 @@ def cells_of(task: Task, make: Make) -> Cells:
 def kinds_of(task: Task, make: Make) -> Kinds:
     """Return the kinds of block of a task."""
     x, y, z = (make.integers(task.kinds[:, axis]) for axis in range(3))
-    return Kinds(x, y, z, make.integers(np.full(len(task.kinds), task.reach)), make.integers(task.pool_of))
+    return Kinds(x, y, z, make.integers(np.full(len(task.kinds), task.reach)))
 
 
 def new_layout(n_cells: int, make: Make) -> Layout:
@@ -134,9 +142,12 @@ def new_layout(n_cells: int, make: Make) -> Layout:
 
 def new_desk(n_cells: int, make: Make) -> Desk:
     """Return room to work in for so many billets."""
-    x, y, z, block, slot = (make.integers(np.zeros(3 * n_cells + 4)) for _ in range(5))
+    most = min(3 * n_cells, MOST_FREE) + 8
+    x, y, z, block, slot = (make.integers(np.zeros(most)) for _ in range(5))
     kind, n_placed = (make.integers(np.zeros(n_cells + 1)) for _ in range(2))
-    return Desk(x, y, z, block, slot, kind, n_placed, make.integers(np.zeros(9)), make.integers(np.zeros(3)))
+    n_open, rest, least = (make.integers(np.zeros(size)) for size in (2, 9, 3))
+    volumes, ranked = (make.reals(np.zeros(most)) for _ in range(2))
+    return Desk(x, y, z, block, slot, kind, n_placed, n_open, volumes, ranked, rest, least)
 
 
 def new_trial(n_cells: int, n_kinds: int, make: Make) -> Trial:

@@ -62,9 +62,10 @@ def cut_off(part: Part, axis: int, size: int, kerf: int) -> Part | None:
 
 
 def _with(values: Steps3, axis: int, value: int) -> Steps3:
-    changed = list(values)
-    changed[axis] = value
-    return changed[0], changed[1], changed[2]
+    x, y, z = values
+    if axis == 0:
+        return value, y, z
+    return (x, value, z) if axis == 1 else (x, y, value)
 
 
 def all_parts(root: Part) -> list[Part]:
@@ -73,5 +74,8 @@ def all_parts(root: Part) -> list[Part]:
     while waiting:
         part = waiting.pop()
         found.append(part)
-        waiting.extend(reversed(part.children))
+        if part.high is not None:
+            waiting.append(part.high)
+        if part.low is not None:
+            waiting.append(part.low)
     return found

@@ -1,10 +1,12 @@
 import numpy as np
 import pytest
 
-from cutblock.packing.compiled import compiled, plain
+from cutblock.base.progress import silent
+from cutblock.packing.compiled import Gear, compiled, plain
 from cutblock.packing.construct import construct
+from cutblock.packing.effort import Effort
 from cutblock.packing.lattice import make_task
-from cutblock.packing.search import Effort, improve
+from cutblock.packing.search import improve
 
 
 @pytest.mark.slow
@@ -16,8 +18,9 @@ def test_compiled_loops_give_the_same_plan():
 
     plans = []
     for inner in (plain(), compiled()):
-        start = construct(task, inner, (0.0, 0), lambda fraction, text: None)
-        plans.append(improve(task, inner, start, (0.0, 0), 1, Effort(600, None), lambda fraction, text: None))
+        effort = Effort(600, None)
+        start = construct(task, Gear(inner), (0.0, 0), silent)
+        plans.append((improve(task, Gear(inner), start, (0.0, 0), 1, effort, silent), effort.n_moves))
 
     (one, n_one), (other, n_other) = plans
     assert n_one == n_other == 600
