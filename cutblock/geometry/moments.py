@@ -12,7 +12,7 @@ from typing import NamedTuple
 import numpy as np
 
 from cutblock.base.arrays import Floats, floats
-from cutblock.geometry.volume import check_rails, integrate_over, ruling_points, strips_at
+from cutblock.geometry.volume import area_elements, check_rails, integrate_over, strips_at
 
 
 class SheetMoments(NamedTuple):
@@ -58,8 +58,6 @@ def sheet_moments(
         GeometryError: See `check_rails`, or the sheet does not cover the billet.
     """
     near, far = check_rails(near, far, width_mm)
-    nodes, weights = ruling_points(len(near))
-    skews, rises = (far - near).T[..., None]
 
     def integrals(across: Floats, x: Floats) -> Floats:
         begins, steps = strips_at(near, far, across)
@@ -68,18 +66,13 @@ def sheet_moments(
         total = np.zeros((8, *run.shape))
         _add_below(total, begins, steps, fractions)
         half_kerf = (kerf_mm[0] + across * (kerf_mm[1] - kerf_mm[0])) / 2.0
-        for node, weight in zip(nodes, weights, strict=True):  # a handful of Gauss points
-            at = fractions * node
-            skew, rise = skews[:-1] + at * np.diff(skews, axis=0), rises[:-1] + at * np.diff(rises, axis=0)
-            # The element of area |P_s x d| / W, see `kerf_volume`; over the run it is the sheet's steepness.
-            element = np.sqrt(run**2 + climb**2 + ((climb * skew - run * rise) / width_mm) ** 2)
-            area = weight * fractions * element
+        for at, area, steepness in area_elements(near, far, width_mm, steps, fractions):  # a handful of Gauss points
             layer = half_kerf * area
             total[3] += area
             total[4] += layer
             total[5] += layer * (begins[..., 0] + at * run)
             total[6] += layer * (begins[..., 1] + at * climb)
-            total[7] += layer * half_kerf * element / run / 2.0
+            total[7] += layer * half_kerf * steepness / 2.0
         y = across * width_mm
         return np.concatenate([total, y * total[[0, 4]]])
 

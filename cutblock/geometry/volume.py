@@ -6,7 +6,8 @@ the strips from ruling to ruling; each strip's part is split where the edge pass
 piece is smooth and Gauss points integrate it to rounding.
 """
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable, Iterator, Sequence
+from typing import NamedTuple
 
 import numpy as np
 
@@ -171,24 +172,51 @@ def kerf_volume(
         GeometryError: See `volume_below_within`.
     """
     near, far = check_rails(near, far, width_mm)
-    nodes, weights = ruling_points(len(near))
-    # The ruling's vector d = (skew, W, rise) runs linearly from ruling to ruling.
-    skews, rises = (far - near).T[..., None]
 
     def melted(across: Floats, x: Floats) -> Floats:
         begins, steps = strips_at(near, far, across)
-        run, climb = steps[..., 0], steps[..., 1]
-        fractions = np.clip((x - begins[..., 0]) / run, 0.0, 1.0)
-        areas = np.zeros_like(run)
-        for node, weight in zip(nodes, weights, strict=True):  # a handful of Gauss points
-            at = fractions * node
-            skew, rise = skews[:-1] + at * np.diff(skews, axis=0), rises[:-1] + at * np.diff(rises, axis=0)
-            # |P_s x d| with P_s = (run, 0, climb), d = (skew, W, rise); per unit of y, hence / W.
-            areas += weight * np.sqrt(run**2 + climb**2 + ((climb * skew - run * rise) / width_mm) ** 2)
-        integral: Floats = (kerf_mm[0] + across * (kerf_mm[1] - kerf_mm[0])) * fractions * areas
+        fractions = np.clip((x - begins[..., 0]) / steps[..., 0], 0.0, 1.0)
+        areas = sum(
+            (element.areas for element in area_elements(near, far, width_mm, steps, fractions)),
+            start=np.zeros_like(fractions),
+        )
+        integral: Floats = (kerf_mm[0] + across * (kerf_mm[1] - kerf_mm[0])) * areas
         return integral
 
     return float(integrate_over(near, far, length_mm, width_mm, outline, melted))
+
+
+class AreaElement(NamedTuple):
+    """One Gauss point of every strip from ruling to ruling, at places across the wire."""
+
+    at: Floats  # fraction of the way from the first ruling to the second
+    areas: Floats  # of the sheet it stands for, by unit of y
+    steepness: Floats  # area of the sheet by that of its plan
+
+
+def area_elements(
+    near: Floats, far: Floats, width_mm: float, steps: Floats, fractions: Floats
+) -> Iterator[AreaElement]:
+    """Yield the Gauss points of the sheet's area from each strip's first ruling to a fraction of the way to its second.
+
+    The element of area is |P_s x d| with P_s = (run, 0, climb) the step from ruling to ruling and d = (skew, W, rise)
+    the ruling's vector, which runs linearly from ruling to ruling; by unit of y it is that over W.
+
+    Args:
+        near: (n, 2) x and z of the rail at y = 0.
+        far: (n, 2) likewise at y = `width_mm`.
+        width_mm: Distance of the rails.
+        steps: (n - 1, m, 2) in x and z, see `strips_at`.
+        fractions: (n - 1, m) in [0, 1].
+    """
+    nodes, weights = gauss_points(_RULING_POINTS if len(near) <= _FINE_RULINGS else _FINE_RULING_POINTS)
+    skews, rises = (far - near).T[..., None]
+    run, climb = steps[..., 0], steps[..., 1]
+    for node, weight in zip(nodes, weights, strict=True):  # a handful
+        at = fractions * node
+        skew, rise = skews[:-1] + at * np.diff(skews, axis=0), rises[:-1] + at * np.diff(rises, axis=0)
+        element = np.sqrt(run**2 + climb**2 + ((climb * skew - run * rise) / width_mm) ** 2)
+        yield AreaElement(at, weight * fractions * element, element / run)
 
 
 def integrate_over(
@@ -270,11 +298,6 @@ def check_cover(near: Floats, far: Floats, length_mm: float) -> None:
                 "rails",
                 "Let both rails begin before the billet and end behind it.",
             )
-
-
-def ruling_points(n_rulings: int) -> tuple[Floats, Floats]:
-    """Return the nodes and weights on [0, 1] from ruling to ruling that integrate the sheet's area."""
-    return gauss_points(_RULING_POINTS if n_rulings <= _FINE_RULINGS else _FINE_RULING_POINTS)
 
 
 def gauss_points(n_points: int) -> tuple[Floats, Floats]:
