@@ -101,9 +101,7 @@ class _Locks:
         if piece in self._pieces:
             self._refuse((*path, "piece"), f'"{piece}" is set at {self._pieces[piece]} too', "Take one of them out.")
         if duty is Duty.COUNTER_MOULD and self._thickness_mm == 0.0:
-            self._refuse(
-                (*path, "duty"), "a counter-mould needs the concrete's thickness", "Give duties.thickness."
-            )
+            self._refuse((*path, "duty"), "a counter-mould needs the concrete's thickness", "Give duties.thickness.")
         if not is_counter and found["panel"] in self._paired:
             self._refuse(
                 (*path, "piece"),

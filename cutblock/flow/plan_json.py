@@ -279,6 +279,8 @@ def _pieces(plan: Plan) -> list[schema.PieceEntry]:
             mass_kg=_digits(piece.mass_kg),
             code=piece.code,
             centre_mm=None if piece.centre_mm is None else _vector(piece.centre_mm),
+            filler=piece.filler,
+            set_by_hand=piece.is_set,
         )
         for piece in plan.pieces
     ]

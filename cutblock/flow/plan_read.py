@@ -264,6 +264,8 @@ def _piece(entry: schema.PieceEntry) -> Piece:
         volume_mm3=entry.litres * MM3_PER_LITRE,
         mass_kg=entry.mass_kg,
         centre_mm=entry.centre_mm,
+        filler=entry.filler,
+        is_set=entry.set_by_hand,
     )
 
 

@@ -175,6 +175,8 @@ class PieceEntry(_Entry, frozen=True):
     mass_kg: float
     code: str
     centre_mm: Vector | None = None  # of mass, billet frame
+    filler: str = ""  # which boxes come out of it, and how many
+    set_by_hand: bool = False  # its duty
 
 
 class BilletEntry(_Entry, frozen=True):

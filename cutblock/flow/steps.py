@@ -62,7 +62,7 @@ def pair(plan: Plan, progress: Progress) -> Plan:
     if more:
         places = {panel.id: number for number, panel in enumerate(plan.panels)}
         sweeps = tuple(sorted((*sweeps, *more), key=lambda sweep: places[sweep.serving[0].panel]))
-        pieces = make_pieces(plan.job, sweeps)
+        pieces = make_pieces(plan.job, sweeps, plan.panels)
     return _with(plan, findings + notes + duty_findings(plan.job, pieces), sweeps=sweeps, pieces=pieces)
 
 

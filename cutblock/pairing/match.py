@@ -2,11 +2,13 @@
 
 from collections.abc import Iterable, Sequence
 from dataclasses import replace
+from functools import partial
 
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.base.units import length_text
 from cutblock.pairing.duties import make_pieces
 from cutblock.pairing.edges import reach_of
+from cutblock.pairing.locks import bind_locks, prove_pairs
 from cutblock.pairing.search import Match, Search
 from cutblock.pairing.shapes import describe_shapes
 from cutblock.records.couple import SharedFit
@@ -34,7 +36,7 @@ def pair_sweeps(
 
     A sweep whose upper half, turned over, is within tolerance the mould of another panel serves both; where that just
     misses, one sweep is fitted to both panels. The other panel's own sweep is dropped. As many sweeps as possible are
-    shared; among equals those that save more litres, then those that fit more closely.
+    shared; among equals those that save more litres, then those that fit more closely. What is set by hand goes first.
 
     Args:
         job: Tolerance, coat, favour, margin, and the duty of upper halves that mould nothing.
@@ -53,10 +55,14 @@ def pair_sweeps(
     kerf_part = abs(conditions.kerf_mm / 2.0 - job.coat_mm)
     reach = reach_of(job.tolerance_mm, kerf_part, steepest, job.margin_mm)
     search = Search(job, by_id, sweeps, conditions, shapes, reach, fit_shared)
-    search.run(set(), part_of(progress, 0.2, 1.0))
-    kept = _kept(sweeps, search.matches)
-    findings = (*_packing_finding(job, search.matches), *_shared_finding(job, search.matches))
-    return kept, make_pieces(job, kept), findings
+    bound = bind_locks(job, by_id, sweeps)
+    locked = prove_pairs(job, search, bound, partial(progress, 0.2, "Pairing halves"))
+    taken = bound.alone | {index for first, second, _ in bound.pairs for index in (first, second)}
+    search.run(taken, part_of(progress, 0.2, 1.0))
+    matches = [*locked, *search.matches]
+    kept = _kept(sweeps, matches)
+    findings = (*bound.findings, *_packing_finding(job, matches), *_shared_finding(job, matches))
+    return kept, make_pieces(job, kept, panels), findings
 
 
 def _kept(sweeps: Sequence[Sweep], matches: Iterable[Match]) -> tuple[Sweep, ...]:
