@@ -1,6 +1,8 @@
 import pytest
 
+from cutblock.cli.export import _side_lines
 from cutblock.cli.main import main
+from cutblock.halves.mitres import Side
 
 JOB = """\
 format = 1
@@ -69,13 +71,86 @@ def test_the_table_of_parts_says_litres_mass_and_centre(made, tmp_path):
 
 
 @pytest.mark.parametrize(
-    ("what", "file_format", "known"),
-    [("moulds", "stl", "halves, form, billets, kerf"), ("halves", "step", "stl, obj, ply, 3mf, glb")],
+    ("what", "file_format", "more", "known"),
+    [
+        ("moulds", "stl", (), "halves, form, billets, kerf"),
+        ("halves", "step", (), "stl, obj, ply, 3mf, glb"),
+        ("halves", "stl", ("--edges", "bevel"), "square, mitred"),
+        ("halves", "stl", ("--place", "site"), "billet, form, block"),
+        ("kerf", "stl", ("--edges", "mitred"), "only halves have sides to mitre"),
+        ("form", "stl", ("--place", "block"), "always lies in the form"),
+        ("billets", "stl", ("--place", "form"), "always lies in their blocks"),
+    ],
 )
-def test_a_word_that_is_not_known_is_answered_with_those_that_are(made, capsys, what, file_format, known):
-    assert export(made, what, file_format) == 2
+def test_a_word_that_is_not_known_is_answered_with_those_that_are(made, capsys, what, file_format, more, known):
+    assert export(made, what, file_format, *more) == 2
 
     assert known in capsys.readouterr().err
+
+
+def test_mitred_sides_are_told_on_the_terminal_and_in_a_table(made, capsys):
+    assert export(made, "halves", "ply", "--edges", "mitred") == 0
+    assert export(made, "halves", "glb", "--edges", "mitred", "--place", "form") == 0
+
+    said = capsys.readouterr().out
+    assert "SB-S1-A01-L: " in said
+    assert "degrees off square" in said
+    folder = made / "solids/halves-mitred-ply"
+    assert {"SB-S1-A01-L.ply", "mitres.csv", "parts.csv"} <= {path.name for path in folder.iterdir()}
+    table = (folder / "mitres.csv").read_text()
+    assert table == (made / "solids/halves-mitred-form-mitres.csv").read_text()
+    head, *rows = [line.split(",") for line in table.splitlines()]
+    assert head[:5] == ["piece", "panel", "edge", "joins", "degrees_off_square"]
+    assert [row[2] for row in rows[:4]] == ["south", "east", "north", "west"]
+    assert all(len(row) == len(head) for row in rows)
+    assert len(rows) == 8
+    # A saddle's sides stand square at the middle of each edge; the chord and the mean normal say so.
+    assert all(abs(float(row[4])) < 0.05 for row in rows)
+    assert main(["check", str(made)]) == 0
+
+
+def test_a_square_export_takes_the_table_of_the_mitred_one_it_replaces_away_and_no_other(made, tmp_path):
+    target, table = tmp_path / "out.glb", tmp_path / "out-mitres.csv"
+    assert export(made, "halves", "glb", "--edges", "mitred", "--out", str(target)) == 0
+    assert table.is_file()
+    assert export(made, "halves", "glb", "--out", str(target)) == 0
+    assert not table.exists()
+
+    table.write_text("mine")
+    assert export(made, "halves", "glb", "--out", str(target)) == 0
+    assert table.read_text() == "mine"
+
+
+def test_sides_that_run_out_of_their_billet_are_named_with_what_to_do(capsys):
+    side = Side(
+        piece="SB-S1-A01-L",
+        panel="S1-A01",
+        edge="west",
+        joins="",
+        mitre_deg=-0.01,
+        length_mm=500.0,
+        back_mm=(0.0, 0.0, 0.0, 500.0),
+        is_whole=False,
+    )
+    sides = [side, side._replace(edge="east", mitre_deg=12.34, is_whole=True)]
+
+    first, last = _side_lines(sides)
+
+    assert first == "  SB-S1-A01-L: west +0.0, east +12.3"
+    assert last.startswith("1 of 2 sides run out of their billet before they reach its back (SB-S1-A01-L west); ")
+    assert "(SB-S1-A01-L west, SB-S1-A01-L west, " in _side_lines([side] * 9)[-1]
+    assert ", ...)" in _side_lines([side] * 9)[-1]
+
+
+def test_a_bed_has_no_sides_to_mitre(made, tmp_path, capsys):
+    text = (made / "plan.json").read_text().replace('"layup":"bench"', '"layup":"bed"')
+    (tmp_path / "plan").mkdir()
+    (tmp_path / "plan/plan.json").write_text(text)
+
+    assert export(tmp_path / "plan", "halves", "stl", "--edges", "mitred", "--out", str(tmp_path / "out")) == 2
+
+    assert "upright joints" in capsys.readouterr().err
+    assert not (tmp_path / "out").exists()
 
 
 def test_a_second_export_replaces_the_first_and_other_folders_are_left_alone(made, tmp_path, capsys):

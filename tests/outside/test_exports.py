@@ -3,12 +3,12 @@
 import json
 import struct
 import zipfile
-from itertools import pairwise
 
 import manifold3d
 import numpy as np
 import pytest
 import trimesh
+from kit.mesh_reading import read_again
 
 import cutblock
 from cutblock.flow.export import ExportFormat, export_choice, export_plan
@@ -24,14 +24,7 @@ units = "mm"
 layup = "{layup}"
 tolerance = 2.0
 coat = 0.6
-[[form.face]]
-name = "S"
-corners = [[90000, 7000, 340], [90700, 7000, 260], [90600, 7500, 340], [90000, 7400, 260]]
-panels = {{ length = 360, width = 600 }}
-[[form.face]]
-name = "T"
-corners = [[0, 0, 340], [700, 0, 260], [700, 500, 340], [0, 500, 260]]
-count = 2
+{faces}
 [foam]
 density = 20
 [[foam.block]]
@@ -46,12 +39,35 @@ power = 60
 kerf = 1.2
 wall = 50
 """
+FACES = {
+    # On the bed halves are trimmed to their panels; a face of slanted sides, far from the origin.
+    "bed": """\
+[[form.face]]
+name = "S"
+corners = [[90000, 7000, 340], [90700, 7000, 260], [90600, 7500, 340], [90000, 7400, 260]]
+panels = { length = 360, width = 600 }
+""",
+    "bench": """\
+[[form.face]]
+name = "T"
+corners = [[0, 0, 340], [700, 0, 260], [700, 500, 340], [0, 500, 260]]
+count = 2
+""",
+}
 
 
-@pytest.fixture(scope="module", params=["bed", "bench"])
-def plan(request, tmp_path_factory):
-    folder = tmp_path_factory.mktemp("plan")
-    (folder / "job.toml").write_text(JOB.format(layup=request.param))
+@pytest.fixture(scope="module")
+def plans(tmp_path_factory):
+    return {layup: made(tmp_path_factory.mktemp("plan"), layup) for layup in FACES}
+
+
+@pytest.fixture(params=FACES)
+def plan(request, plans):
+    return plans[request.param]
+
+
+def made(folder, layup):
+    (folder / "job.toml").write_text(JOB.format(layup=layup, faces=FACES[layup]))
     made = cutblock.make_plan(cutblock.read_job(folder / "job.toml"))
     cutblock.write_plan(made, folder / "plan")
     return read_plan(folder / "plan")
@@ -69,44 +85,6 @@ def exported(plan, tmp_path):
         return bodies
 
     return export
-
-
-def read_again(target, file_format):
-    if target.is_dir():
-        bodies = {path.stem: trimesh.load_mesh(path) for path in sorted(target.glob(f"*.{file_format}"))}
-        lines = (target / "parts.csv").read_text().splitlines()[1:]
-        assert sorted(line.split(",")[0] for line in lines) == sorted(bodies)
-        for line in lines:
-            bodies[line.split(",")[0]].apply_translation([float(value) for value in line.split(",")[-3:]])
-        return bodies
-    if file_format == "obj":
-        return read_obj(target)
-    scene = trimesh.load_scene(target)
-    bodies = {}
-    for node in scene.graph.nodes_geometry:
-        matrix, geometry = scene.graph[node]
-        mesh = scene.geometry[geometry].copy()
-        mesh.apply_transform(matrix)
-        if file_format == "glb":
-            mesh.apply_transform(trimesh.transformations.rotation_matrix(np.pi / 2, [1, 0, 0]))
-            mesh.apply_scale(1000.0)
-        bodies[geometry] = mesh
-    return bodies
-
-
-def read_obj(target):
-    """One object after another; the reader names none of them."""
-    lines = target.read_text().splitlines()
-    assert "# unit mm" in lines[:3]
-    names = [line[2:] for line in lines if line.startswith("o ")]
-    starts = [row for row, line in enumerate(lines) if line.startswith("o ")] + [len(lines)]
-    vertices = [line for line in lines if line.startswith("v ")]
-    bodies = {}
-    for name, (start, end) in zip(names, pairwise(starts), strict=True):
-        faces = [line for line in lines[start:end] if line.startswith("f ")]
-        text = "\n".join([*vertices, *faces])
-        bodies[name] = trimesh.load_mesh(trimesh.util.wrap_as_stream(text), file_type="obj")
-    return bodies
 
 
 FORMATS = [file_format.value for file_format in ExportFormat]
@@ -183,9 +161,9 @@ def test_billets_come_back_as_boxes_where_they_lie_in_their_blocks(plan, exporte
         aside += block.width_mm + 200.0
 
 
-def test_a_3mf_says_millimetre_and_its_names(plan, tmp_path):
+def test_a_3mf_says_millimetre_and_its_names(plans, tmp_path):
     """3MF core specification 1.2: unit="millimeter", one build item an object, an open mesh of type "surface"."""
-    export_plan(plan, export_choice("form", "3mf"), tmp_path / "form.3mf")
+    export_plan(plans["bed"], export_choice("form", "3mf"), tmp_path / "form.3mf")
 
     with zipfile.ZipFile(tmp_path / "form.3mf") as package:
         assert package.testzip() is None
@@ -217,10 +195,10 @@ def test_a_glb_is_whole_and_says_the_range_of_its_points(plan, tmp_path):
     assert all("name" in node for node in head["nodes"])
 
 
-def test_an_stl_far_from_the_origin_keeps_a_thousandth_of_a_mm_and_says_the_shift(plan, tmp_path):
+def test_an_stl_far_from_the_origin_keeps_a_thousandth_of_a_mm_and_says_the_shift(plans, tmp_path):
     """Binary STL holds 32-bit floats: at 90 m they are 0.008 mm apart."""
-    export_plan(plan, export_choice("form", "stl"), tmp_path / "form")
-    export_plan(plan, export_choice("form", "ply"), tmp_path / "exact")
+    export_plan(plans["bed"], export_choice("form", "stl"), tmp_path / "form")
+    export_plan(plans["bed"], export_choice("form", "ply"), tmp_path / "exact")
 
     row = next(line for line in (tmp_path / "form/parts.csv").read_text().splitlines() if line.startswith("S-A01,"))
     shift = [float(value) for value in row.split(",")[-3:]]
@@ -230,7 +208,8 @@ def test_an_stl_far_from_the_origin_keeps_a_thousandth_of_a_mm_and_says_the_shif
     np.testing.assert_allclose(near, trimesh.load_mesh(tmp_path / "exact/S-A01.ply").bounds, atol=3e-3)
 
 
-def test_the_same_plan_gives_the_same_files(plan, tmp_path):
+def test_the_same_plan_gives_the_same_files(plans, tmp_path):
+    plan = plans["bench"]
     for file_format in ("3mf", "glb", "obj"):
         export_plan(plan, export_choice("halves", file_format), tmp_path / f"first.{file_format}")
         export_plan(plan, export_choice("halves", file_format), tmp_path / f"second.{file_format}")
