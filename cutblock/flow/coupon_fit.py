@@ -119,7 +119,7 @@ def fit_sheet(
     chart = coupon_chart(calibration, wire, cuts, kerfs, errors, usual)
     return FittedCoupons(
         calibration=calibration,
-        doubts=doubts + unsure,
+        doubts=tuple(sorted(doubts + unsure, key=lambda doubt: ("error", "warning", "info").index(doubt.severity))),
         standard_errors=_three(np.sqrt(np.diag(covariance))),
         condition=fit.condition,
         names=names,
@@ -152,8 +152,16 @@ def store_calibration(fitted: FittedCoupons, folder: str | Path | None = None) -
         )
     target = made_folder(catalog.calibrations_folder() if folder is None else folder)
     stored, picture = (target / f"{fitted.calibration.name}.{end}" for end in ("toml", "svg"))
+    earlier = picture.read_bytes() if picture.is_file() else None
     replace_file(picture, fitted.picture.encode())
-    replace_file(stored, calibration_toml(fitted.calibration).encode())
+    try:
+        replace_file(stored, calibration_toml(fitted.calibration).encode())
+    except InputError:
+        # Both or neither: the picture goes back to what it was.
+        picture.unlink(missing_ok=True)
+        if earlier is not None:
+            picture.write_bytes(earlier)
+        raise
     return stored, picture
 
 

@@ -5,6 +5,7 @@ from collections.abc import Mapping
 from cutblock.base.units import LengthUnit, length_text, litres, mm_per_minute
 from cutblock.records.account import Ledger
 from cutblock.records.plan import Finding, Plan
+from cutblock.records.shop import Conditions
 from cutblock.records.words import Severity
 from cutblock.reports.cards import summary_cards
 from cutblock.reports.cautions import CAUTIONS, DEFERENCE
@@ -127,9 +128,18 @@ def _conditions(plan: Plan) -> str:
         ("Density of the foam", f"{wire.density_kg_m3:g} kg/m³. Weigh a block: the speeds fall as the density rises"),
         ("Power", f"{wire.power_w_m:g} W per metre of wire"),
     ]
-    if not wire.is_calibrated:
-        rows.append(("Certainty", "not calibrated, good to ±50 %: cut test coupons in your own foam first"))
+    rows.append(("Certainty", _certainty(wire)))
     return f"{svg_text(speed_drawing(wire))}{pairs(rows)}"
+
+
+def _certainty(wire: Conditions) -> str:
+    found = wire.calibration
+    if found is None:
+        return "not calibrated, good to ±50 %: cut test coupons in your own foam first"
+    return (
+        f'calibrated by "{found.name}", {found.n_coupons} test cuts of {found.date} with {found.wire} on'
+        f" {found.machine}: slowest and fastest hold with 95 % confidence each"
+    )
 
 
 def _cautions() -> str:
