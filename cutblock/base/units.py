@@ -58,6 +58,12 @@ def length_text(length_mm: float, unit: str, extra_decimals: int = 0) -> str:
     return f"{value:.12g} {unit}"
 
 
+def length_figure(length_mm: float, unit: str, extra_decimals: int = 0) -> str:
+    """Return a length in the unit people read, without it, to as many decimals as `length_text` rounds to."""
+    decimals = _DECIMALS[LengthUnit(unit)] + extra_decimals
+    return f"{round(length_mm / mm_per(unit), decimals) + 0.0:.{decimals}f}"
+
+
 def place_text(point_mm: Iterable[float], unit: str) -> str:
     """Return a point of the form in the unit people read, such as "x 1.2 m, y 0.4 m, z 0.03 m"."""
     return ", ".join(f"{axis} {length_text(float(value), unit)}" for axis, value in zip("xyz", point_mm, strict=False))

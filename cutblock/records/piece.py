@@ -5,6 +5,14 @@ from dataclasses import dataclass
 from cutblock.records.record import Record
 from cutblock.records.words import Duty, Half
 
+_ONE_PERSON_KG = 20.0  # common practice, no source; local rules on lifting come first
+_ONE_PERSON_MM = 1500.0  # longer pieces block the view and catch the wind; common practice, no source
+
+
+def persons_to_lift(mass_kg: float, longest_mm: float) -> int:
+    """Return how many people lift a piece of some mass and longest side."""
+    return 2 if longest_mm > _ONE_PERSON_MM or mass_kg > _ONE_PERSON_KG else 1
+
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)
 class Piece(Record):

@@ -8,10 +8,10 @@ import csv
 from collections.abc import Iterable, Mapping, Sequence
 from io import StringIO
 
-from cutblock.base.units import hours, litres, mm_per_minute
+from cutblock.base.units import hours, length_figure, litres, mm_per_minute
 from cutblock.records.account import Ledger
 from cutblock.records.block import Block
-from cutblock.records.piece import Piece
+from cutblock.records.piece import Piece, persons_to_lift
 from cutblock.records.plan import Plan
 from cutblock.records.sweep import Sweep, SweepTiming
 
@@ -19,19 +19,25 @@ _FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
 LEDGER_PARTS = ("mould", "counter_mould", "cradle", "filler", "surplus", "offcut", "trim", "kerf", "scrap")
 _PIECE_HEADING = (
     "piece", "partner", "sweep", "half", "duty", "panel", "block", "litres", "mass kg", "billet length mm",
-    "billet width mm", "billet height mm", "speed mm/min", "code",
+    "billet width mm", "billet height mm", "speed mm/min", "code", "persons to lift",
 )  # fmt: skip
+_PLAN_DIGITS = 6  # of a length in plan.json, so that a plan read again gives the same table
 
 
 def pieces_csv(plan: Plan) -> str:
-    """Return one row a piece, in the order of the plan."""
+    """Return one row a piece, in the order of the plan.
+
+    The centre of mass is in the frame of the billet (x along the travel, y along the wire, z up, from a lower corner), in
+    the unit people read.
+    """
     sweeps = {sweep.id: sweep for sweep in plan.sweeps}
     timings = {timing.sweep: timing for timing in plan.timings}
-    rows = (_piece_row(piece, sweeps[piece.sweep], timings[piece.sweep]) for piece in plan.pieces)
-    return _table(_PIECE_HEADING, rows)
+    unit = plan.job.units
+    rows = (_piece_row(piece, sweeps[piece.sweep], timings[piece.sweep], unit) for piece in plan.pieces)
+    return _table((*_PIECE_HEADING, *(f"centre {axis} {unit}" for axis in "xyz")), rows)
 
 
-def _piece_row(piece: Piece, sweep: Sweep, timing: SweepTiming) -> tuple[str, ...]:
+def _piece_row(piece: Piece, sweep: Sweep, timing: SweepTiming, unit: str) -> tuple[str, ...]:
     return (
         _text(piece.id),
         _text(piece.partner),
@@ -47,7 +53,16 @@ def _piece_row(piece: Piece, sweep: Sweep, timing: SweepTiming) -> tuple[str, ..
         f"{sweep.height_mm:.1f}",
         f"{mm_per_minute(timing.planned_mm_s):.1f}",
         _text(piece.code),
+        str(persons_to_lift(piece.mass_kg, max(sweep.length_mm, sweep.width_mm))),
+        *_centre(piece, unit),
     )
+
+
+def _centre(piece: Piece, unit: str) -> tuple[str, ...]:
+    """Return the cells of a centre of mass, to a tenth of a mm or finer; empty where nothing is left of the piece."""
+    if piece.centre_mm is None:
+        return "", "", ""
+    return tuple(length_figure(round(value, _PLAN_DIGITS), unit, extra_decimals=1) for value in piece.centre_mm)
 
 
 def blocks_csv(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:

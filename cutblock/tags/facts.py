@@ -9,12 +9,10 @@ from cutblock.geometry.outline import Rings, area_of_rings, parts_of, rings_of
 from cutblock.geometry.outline import box as plan_box
 from cutblock.records.block import Block
 from cutblock.records.panel import Panel
-from cutblock.records.piece import Piece
+from cutblock.records.piece import Piece, persons_to_lift
 from cutblock.records.sweep import Serving, Sweep
 from cutblock.records.words import Duty, Half
 
-_ONE_PERSON_KG = 20.0  # common practice, no source; local rules on lifting come first
-_ONE_PERSON_MM = 1500.0  # longer pieces block the view and catch the wind; common practice, no source
 _SAME_EDGE_MM = 1.0  # an outline that passes the billet's edge by less ends there
 _LONGEST_TITLE = 64  # letters; a longer one would print too small to read
 
@@ -51,8 +49,7 @@ class TagFacts(NamedTuple):
     @property
     def n_persons(self) -> int:
         """How many people lift it."""
-        is_long = max(self.sweep.length_mm, self.sweep.width_mm) > _ONE_PERSON_MM
-        return 2 if is_long or self.piece.mass_kg > _ONE_PERSON_KG else 1
+        return persons_to_lift(self.piece.mass_kg, max(self.sweep.length_mm, self.sweep.width_mm))
 
     @property
     def use(self) -> str:

@@ -7,6 +7,8 @@ import pytest
 from kit.sample import sample_plan
 
 from cutblock.flow.outputs import block_ledgers
+from cutblock.flow.plan_json import plan_text
+from cutblock.flow.plan_read import read_plan_text
 from cutblock.reports.csv_tables import blocks_csv, pieces_csv
 
 
@@ -22,6 +24,55 @@ def test_every_piece_has_its_row_under_headings_with_units():
     assert {"litres", "mass kg", "billet length mm", "speed mm/min"} <= set(heading)
     assert [row[0] for row in body] == [piece.id for piece in plan.pieces]
     assert body[0][heading.index("litres")] == "179.278"
+
+
+@pytest.mark.parametrize(
+    ("unit", "centre", "cells"),
+    [
+        ("mm", (601.25, 500.0, 74.54), ["601.2", "500.0", "74.5"]),
+        ("in", (25.4, 254.0, 12.7), ["1.000", "10.000", "0.500"]),
+        ("m", (601.28, 500.0, -1e-9), ["0.6013", "0.5000", "0.0000"]),
+        ("mm", None, ["", "", ""]),
+    ],
+)
+def test_the_centre_of_mass_stands_in_the_unit_people_read(unit, centre, cells):
+    plan = sample_plan()
+    plan = replace(
+        plan,
+        job=replace(plan.job, units=unit),
+        pieces=(replace(plan.pieces[0], centre_mm=centre), *plan.pieces[1:]),
+    )
+
+    heading, first, *_ = rows(pieces_csv(plan))
+
+    assert heading[-3:] == [f"centre x {unit}", f"centre y {unit}", f"centre z {unit}"]
+    assert first[-3:] == cells
+
+
+def test_a_centre_on_the_edge_of_rounding_reads_the_same_from_the_plan_and_from_its_file():
+    """469.25 less a rounding error would print 469.2, and read again from six digits 469.3 or 469.2."""
+    plan = sample_plan()
+    exact, noisy = (
+        replace(plan, pieces=(replace(plan.pieces[0], centre_mm=(value, 500.0, 75.0)), *plan.pieces[1:]))
+        for value in (469.35, 469.35 - 2e-10)
+    )
+
+    assert pieces_csv(noisy) == pieces_csv(exact)
+    assert pieces_csv(read_plan_text(plan_text(noisy).encode(), "plan.json")) == pieces_csv(noisy)
+
+
+@pytest.mark.parametrize(
+    ("mass_kg", "length_mm", "persons"), [(3.0, 1200.0, "1"), (26.0, 1200.0, "2"), (3.0, 1600.0, "2")]
+)
+def test_a_piece_too_heavy_or_too_long_for_one_person_says_so(mass_kg, length_mm, persons):
+    """Common practice, no source: 20 kg, or 1.5 m of length; the tags say the same."""
+    plan = sample_plan()
+    sweeps = (replace(plan.sweeps[0], length_mm=length_mm), *plan.sweeps[1:])
+    plan = replace(plan, sweeps=sweeps, pieces=(replace(plan.pieces[0], mass_kg=mass_kg), *plan.pieces[1:]))
+
+    heading, first, *_ = rows(pieces_csv(plan))
+
+    assert first[heading.index("persons to lift")] == persons
 
 
 def test_the_litres_of_a_block_sum_to_what_was_bought():
