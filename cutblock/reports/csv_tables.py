@@ -27,8 +27,8 @@ _PLAN_DIGITS = 6  # of a length in plan.json, so that a plan read again gives th
 def pieces_csv(plan: Plan) -> str:
     """Return one row a piece, in the order of the plan.
 
-    The centre of mass is in the frame of the billet (x along the travel, y along the wire, z up, from a lower corner), in
-    the unit people read.
+    The centre of mass is in the frame of the billet (x along the travel, y along the wire, z up, from a lower corner),
+    in the unit people read.
     """
     sweeps = {sweep.id: sweep for sweep in plan.sweeps}
     timings = {timing.sweep: timing for timing in plan.timings}
