@@ -117,6 +117,31 @@ def end_speed_ratios(near: Floats, far: Floats, width_mm: float) -> Floats:
     return ratio
 
 
+def end_slowness(near: Floats, far: Floats, width_mm: float, length_mm: float) -> tuple[float, float]:
+    """Return by how much each wire end crosses a billet slower than mid-wire, on the mean over its way in the billet.
+
+    Args:
+        near: As in `twist_angles`, x rising.
+        far: Likewise.
+        width_mm: Distance of the rails.
+        length_mm: The billet lies between x = 0 and there.
+
+    Returns:
+        Way of mid-wire by the way of the near end, and of the far end, square to the wire; 1 where they are alike.
+    """
+    middle = _rulings((near[1:] + near[:-1]) / 2.0, (far[1:] + far[:-1]) / 2.0, width_mm)
+    tangents = _lifted(np.diff(near, axis=0))
+    rates = _lifted(np.diff(far, axis=0)) - tangents
+    at_middle = normal_speed(tangents, middle, rates, 0.5)
+    slowness = []
+    for rail, place in ((near, 0.0), (far, 1.0)):
+        x = np.clip(rail[:, 0], 0.0, length_mm)
+        shares = np.diff(x) / np.diff(rail[:, 0])
+        way = float(shares @ normal_speed(tangents, middle, rates, place))
+        slowness.append(float(shares @ at_middle) / way if way > 0.0 else 1.0)
+    return slowness[0], slowness[1]
+
+
 def fold_places(near: Floats, far: Floats) -> Floats:
     """Return where along the wire each step of the sweep folds in plan, v* = dx_near / (dx_near - dx_far).
 

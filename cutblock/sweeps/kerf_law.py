@@ -4,7 +4,6 @@ A round wire of kerf w leaves the lower half's face w/2 below its centreline she
 finished face to -w/2 + c. Favouring a half moves the centreline so that this half's finished face meets the form.
 """
 
-from cutblock.base.arrays import Floats
 from cutblock.records.words import Favour
 
 
@@ -22,16 +21,3 @@ def centreline_offset_mm(favour: Favour, kerf_mm: float, coat_mm: float) -> floa
 def kerf_error_mm(favour: Favour, kerf_mm: float, coat_mm: float) -> float:
     """Return how far above the form kerf and coat alone leave the lower half's finished face."""
     return centreline_offset_mm(favour, kerf_mm, coat_mm) + face_offset_mm(kerf_mm, coat_mm)
-
-
-def kerf_along(ends_mm: tuple[float, float], least_mm: float, places: Floats) -> Floats:
-    """Return the kerf along the wire: the least kerf plus what is inverse to a speed that is linear along it.
-
-    Args:
-        ends_mm: At the near and the far end, both over the least kerf.
-        least_mm: At boundless speed.
-        places: Fractions of the way from the near to the far end.
-    """
-    near, far = (max(end - least_mm, 1e-9) for end in ends_mm)
-    kerfs: Floats = least_mm + 1.0 / ((1.0 - places) / near + places / far)
-    return kerfs

@@ -20,8 +20,8 @@ from cutblock.records.plan import Finding
 from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Serving, Sweep
 from cutblock.records.words import Favour, Half, Severity
-from cutblock.sweeps.kerf_law import kerf_along
 from cutblock.sweeps.wanted import finished_deviation, moved_panel, view_of
+from cutblock.wire.motion import kerf_along
 
 LEAST_CHANGE_MM = 0.02  # a kerf nearer to the planned one changes nothing
 _N_PLACES = 9  # along the wire

@@ -17,8 +17,8 @@ from cutblock.records.plan import Finding
 from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Serving, Sweep
 from cutblock.records.words import Half, Severity
-from cutblock.sweeps.kerf_law import kerf_along
 from cutblock.sweeps.wanted import finished_deviation, moved_panel, view_of
+from cutblock.wire.motion import kerf_along
 
 _EDGE_MM = 0.01  # samples this near a joint belong to both strips
 _OFTEN = 16  # panels between two words of progress

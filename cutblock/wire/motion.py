@@ -71,15 +71,27 @@ def taper_kerf(fraction: ArrayLike, least_kerf: ArrayLike, slow_excess: ArrayLik
     """Return the kerf along a wire whose ends move the same way at unequal speeds: w0 + excess / (1 + s (R - 1)).
 
     Args:
-        fraction: s, from the slow end to the fast one.
+        fraction: s, from one end, mostly the slow one, to the other.
         least_kerf: w0.
-        slow_excess: Kerf beyond w0 at the slow end.
-        ratio: R, speed of the fast end over that of the slow one, from 1.
+        slow_excess: Kerf beyond w0 at the first end.
+        ratio: R, speed of the second end over that of the first, over 0.
     """
     result: Floats = np.asarray(least_kerf) + np.asarray(slow_excess) / (
         1.0 + np.asarray(fraction) * (np.asarray(ratio) - 1.0)
     )
     return result
+
+
+def kerf_along(ends: tuple[float, float], least_kerf: float, fractions: Floats) -> Floats:
+    """Return the kerf along a wire whose ends move the same way, given the kerf at both: see `taper_kerf`.
+
+    Args:
+        ends: At the near and the far end, both over the least kerf.
+        least_kerf: w0, at boundless speed.
+        fractions: Of the way from the near to the far end.
+    """
+    near, far = (max(end - least_kerf, 1e-9) for end in ends)
+    return taper_kerf(fractions, least_kerf, near, near / far)
 
 
 def taper_mean(ratio: ArrayLike) -> Floats:

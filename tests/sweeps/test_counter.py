@@ -9,10 +9,10 @@ from kit.shapes import helicoid, hypar, over, panel_of
 from cutblock.records.words import Closing, Duty, Favour, Half, Severity
 from cutblock.sweeps.counter import cut_counter_moulds
 from cutblock.sweeps.fitting import fit_panels
-from cutblock.sweeps.kerf_law import kerf_along
 from cutblock.sweeps.kerf_pass import refit_for_kerf
 from cutblock.sweeps.maps import settle
 from cutblock.sweeps.wanted import moved_panel
+from cutblock.wire.motion import kerf_along
 
 CONDITIONS = sample_conditions()
 THICKNESS = 30.0

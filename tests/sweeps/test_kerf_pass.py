@@ -10,8 +10,8 @@ from kit.shapes import helicoid, hypar, panel_of, turned
 
 from cutblock.records.words import Favour
 from cutblock.sweeps.fitting import fit_panels
-from cutblock.sweeps.kerf_law import kerf_along
 from cutblock.sweeps.kerf_pass import offset_rails, refit_for_kerf
+from cutblock.wire.motion import kerf_along
 
 CONDITIONS = sample_conditions()  # kerf 1.2 mm, least 0.1 mm
 
