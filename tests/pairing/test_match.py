@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from kit.conoids import LENGTH, WIDTH, conoid
 from kit.sample import sample_conditions, sample_job, sample_panel, sample_sweep
 
 from cutblock.base.errors import Cancelled
@@ -12,54 +13,7 @@ from cutblock.pairing.duties import duty_findings, make_pieces
 from cutblock.pairing.match import pair_sweeps
 from cutblock.records.words import Duty, Favour, Half, Severity
 
-LENGTH, WIDTH = 1200.0, 1000.0
 EXACT = sample_conditions(kerf_mm=0.0)
-
-
-def make(name, height, slope_x, slope_y, **changes):
-    """A panel z = height(x, y), straight along y, with the sweep that cuts it exactly."""
-    x, y = np.meshgrid(np.linspace(0.0, LENGTH, 25), np.linspace(0.0, WIDTH, 21), indexing="ij")
-    slopes_x, slopes_y = slope_x(x, y) + 0 * x, slope_y(x, y) + 0 * x
-    normals = np.stack([-slopes_x, -slopes_y, np.ones_like(x)], axis=-1)
-    normals /= np.linalg.norm(normals, axis=-1, keepdims=True)
-    z = height(x, y) + 0 * x
-    panel = sample_panel(
-        name,
-        heights_mm=z,
-        samples_mm=np.stack([x, y, z], axis=-1).reshape(-1, 3),
-        normals=normals.reshape(-1, 3),
-        areas_mm2=np.full(x.size, LENGTH * WIDTH / x.size),
-        **changes,
-    )
-    along = np.linspace(-20.0, LENGTH + 20.0, 249)
-    middle = 150.0 - (z.max() + z.min()) / 2.0
-    near = np.column_stack([along, height(along, 0.0) + middle + 0 * along])
-    far = np.column_stack([along, height(along, WIDTH) + middle + 0 * along])
-    sweep = sample_sweep(f"SM-{name}", (name,), near=near, far=far)
-    lower = replace(sweep.serving[0], shift_mm=np.array([0.0, 0.0, -middle]))
-    return panel, replace(sweep, serving=(lower,))
-
-
-def conoid(name, bulge, is_turned=False, shift_mm=0.0, is_mirrored=False):
-    """A sine arch that grows from one side to the other: turned about x it is the complement, mirrored it is not."""
-
-    def side(y):
-        grown = 1.0 + y / WIDTH
-        return (3.0 - grown if is_turned else grown) * (-1.0 if is_turned else 1.0)
-
-    rate = -1.0 if is_mirrored else 1.0
-
-    def height(x, y):
-        return shift_mm + bulge * side(y) * (np.sin(np.pi * x / LENGTH) + rate * 0.4 * np.sin(2 * np.pi * x / LENGTH))
-
-    def slope_x(x, y):
-        k = np.pi / LENGTH
-        return bulge * side(y) * (k * np.cos(k * x) + rate * 0.8 * k * np.cos(2 * k * x))
-
-    def slope_y(x, y):
-        return (height(x, WIDTH) - height(x, 0.0)) / WIDTH + 0 * y
-
-    return make(name, height, slope_x, slope_y)
 
 
 def pair(made, conditions=EXACT, **job_changes):
