@@ -47,7 +47,7 @@ def stack_columns(task: Task, gear: Gear, kind: int) -> Solution | None:
     room = int(task.kinds[kind, 2])
     columns = [_columns(task.cells[:, 2], np.flatnonzero((group == g) & fits), room) for g in range(len(footprints))]
     trees: list[Part] = []
-    while len(trees) < int(task.counts[kind]):
+    while len(trees) < int(task.counts[task.pool_of[kind]]):
         tree = _next_block(task, kind, floor, columns)
         if tree is None:
             break
@@ -196,7 +196,7 @@ def _with_rest(task: Task, gear: Gear, kind: int, trees: tuple[Part, ...]) -> So
         layout[0, members] = layout[1, members] = number
     rest = np.flatnonzero(layout[0] < 0)
     counts = task.counts.copy()
-    counts[kind] -= len(trees)
+    counts[task.pool_of[kind]] -= len(trees)
     small = replace(
         task,
         cells=task.cells[rest],

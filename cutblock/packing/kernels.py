@@ -120,12 +120,13 @@ def open_block(cell: int, cells: Cells, kinds: Kinds, prefer: Integers, remainin
     x, y, z = cells.x[cell], cells.y[cell], cells.z[cell]
     for i in range(len(prefer)):
         kind = prefer[i]
-        if remaining[kind] <= 0 or kinds.z[kind] < z:
+        pool = kinds.pool[kind]
+        if remaining[pool] <= 0 or kinds.z[kind] < z:
             continue
         stands = kinds.x[kind] >= x and kinds.y[kind] >= y
         lies = cells.may_turn[cell] > 0 and kinds.x[kind] >= y and kinds.y[kind] >= x
         if stands or lies:
-            remaining[kind] -= 1
+            remaining[pool] -= 1
             return kind
     return -1
 
@@ -217,7 +218,7 @@ def fill(
         cells: The billets.
         kinds: The kinds of block.
         prefer: Kinds in the order they are opened.
-        remaining: Blocks left of each kind; counted down.
+        remaining: Blocks left of each pool of kinds; counted down.
         layout: Written for every billet of the sequence; block -1 where nothing holds it any more.
         desk: The free boxes and open blocks so far; `desk.kind` holds the kind of each block.
     """

@@ -66,13 +66,13 @@ def disturb(n_taken: int, state: State, trial: Trial, dice: Reals) -> None:
 
 def offer_kinds(n_chosen: int, may_exchange: bool, state: State, trial: Trial, goods: Goods, dice: Reals) -> None:
     """Offer the chosen blocks for filling, and now and then one of another kind, in a random preference."""
-    remaining, prefer = trial.remaining, trial.prefer
+    remaining, prefer, pool = trial.remaining, trial.prefer, goods.kinds.pool
     n_kinds = len(goods.weights)
     for kind in range(n_kinds):
         remaining[kind] = 0
         prefer[kind] = kind
     for i in range(n_chosen):
-        remaining[state.kind[trial.chosen[i]]] += 1
+        remaining[pool[state.kind[trial.chosen[i]]]] += 1
     if n_kinds == 1:
         return
     for i in range(n_kinds - 1):
@@ -80,8 +80,8 @@ def offer_kinds(n_chosen: int, may_exchange: bool, state: State, trial: Trial, g
         prefer[i], prefer[other] = prefer[other], prefer[i]
     if may_exchange:
         kind = int(draw(state, dice) * n_kinds)
-        if state.spare[kind] > 0:
-            remaining[kind] += 1
+        if state.spare[pool[kind]] > 0:
+            remaining[pool[kind]] += 1
 
 
 def weigh(n_taken: int, n_chosen: int, n_new: int, state: State, trial: Trial, goods: Goods, change: Reals) -> None:
@@ -114,7 +114,7 @@ def weigh(n_taken: int, n_chosen: int, n_new: int, state: State, trial: Trial, g
     change[3] = float(n_new - n_chosen)
 
 
-def keep(n_taken: int, n_chosen: int, n_new: int, state: State, trial: Trial) -> None:
+def keep(n_taken: int, n_chosen: int, n_new: int, pool: Integers, state: State, trial: Trial) -> None:
     """Put the move into the packing; chosen blocks that are not needed any more go out of use."""
     alive, n_alive = state.alive, state.counts[0]
     # The chosen blocks are the first of `alive`; room for more comes from the numbers not in use.
@@ -123,12 +123,12 @@ def keep(n_taken: int, n_chosen: int, n_new: int, state: State, trial: Trial) ->
         alive[n_alive], alive[i] = alive[i], alive[n_alive]
         n_alive += 1
     for i in range(n_chosen):
-        state.spare[state.kind[trial.chosen[i]]] += 1
+        state.spare[pool[state.kind[trial.chosen[i]]]] += 1
     for i in range(n_new):
         number = trial.chosen[i]
         state.kind[number] = trial.desk.kind[i]
         state.filled[number] = trial.filled[i]
-        state.spare[state.kind[number]] -= 1
+        state.spare[pool[state.kind[number]]] -= 1
     for i in range(n_new, n_chosen):
         # From the last to the first, so that the chosen ones still to go keep their places.
         place = n_new + n_chosen - 1 - i
@@ -233,7 +233,7 @@ def one(
         trial.is_chosen[trial.chosen[i]] = 0
     place = counts[3] % len(late)
     if is_kept(is_emptying, change, late[place], state.score):
-        keep(n_taken, n_chosen, n_new, state, trial)
+        keep(n_taken, n_chosen, n_new, goods.kinds.pool, state, trial)
         counts[1] += int(change[4])
         for i in range(3):
             state.score[i] += change[i]

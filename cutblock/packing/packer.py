@@ -7,6 +7,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import ArrayLike
 
+from cutblock.base.arrays import Ints
 from cutblock.base.errors import InputError, StockError
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.packing.bound import Bound, lower_bound
@@ -20,6 +21,7 @@ from cutblock.packing.search import improve, is_at, told
 from cutblock.packing.tree import Part, all_parts
 
 _AXIS_NAMES = "xyz"
+_MOST_NAMES = 6
 _USUAL_MOVES = 2000
 _USUAL_PLACINGS = 6_000
 _LONG_PLACINGS = 200_000  # several seconds as the loops stand; worth compiling them
@@ -170,7 +172,7 @@ def _solve(task: Task, bound: Bound, seed: int, effort: Effort, progress: Progre
         gear.ask_for()
     solution = improve(task, gear, start, target, seed, effort, part_of(progress, 0.4, 1.0))
     if solution.n_missing:
-        raise shortage(task)
+        raise shortage(task, solution)
     return solution
 
 
@@ -183,29 +185,46 @@ def _billets_a_move(start: Solution) -> int:
     return 3 * int(start.layout.shape[1]) // max(1, len(start.kinds)) + 1
 
 
-def shortage(task: Task) -> StockError:
-    """Return the error that says how many more blocks of which kind would do."""
+def shortage(task: Task, plan: Solution) -> StockError:
+    """Return the error that names the billets without a place and says how many more blocks of which kind would do."""
+    pools = [pool for pool in np.unique(task.pool_of).tolist() if task.is_finite[pool]]
     more = []
-    for row in np.flatnonzero(task.is_finite & task.fits.all(axis=0)).tolist():
-        counts = task.counts.copy()
-        counts[row] = len(task.cells)
-        # Only the blocks of this row cost anything, so that those there are of the others are used first.
-        prices = np.zeros(len(counts))
-        prices[row] = 1.0
-        plan = construct(replace(task, counts=counts, prices=prices), Gear(), (0.0, 0), silent)
-        if not plan.n_missing:
-            more.append((int((plan.kinds == row).sum() - task.counts[row]), row))
-    if not more:
-        short = ", ".join(name for name, count in zip(task.stock_names, task.is_finite, strict=True) if count)
-        return StockError(
-            f"the billets do not fit into the blocks there are of {short}", "stock", "Raise the counts of the blocks."
-        )
-    number, row = min(more)
-    return StockError(
-        f"the blocks do not suffice for {len(task.cells)} billets",
-        task.stock_names[row],
-        f"Give {number} more of {task.size_text(task.raw[row])}, {task.counts[row] + number} in all.",
-    )
+    for pool in pools:
+        needed = _needed(task, [pool])
+        if needed is not None:
+            more.append((int(needed[pool] - task.counts[pool]), pool))
+    lost = [task.billet_names[cell] for cell in np.flatnonzero(plan.layout[0] < 0).tolist()]
+    shown = ", ".join(lost[:_MOST_NAMES]) + (f" and {len(lost) - _MOST_NAMES} more" if len(lost) > _MOST_NAMES else "")
+    what = f"the blocks do not suffice for {len(task.cells)} billets; without a place are {shown}"
+    if more:
+        number, pool = min(more)
+        remedy = f"Give {number} more of {task.size_text(task.raw[pool])}, {task.counts[pool] + number} in all."
+        return StockError(what, task.stock_names[pool], remedy)
+    needed = _needed(task, pools)
+    if needed is None:
+        return StockError(what, "stock", "Raise the counts of the blocks.")
+    wanted = [
+        f"{needed[pool] - task.counts[pool]} more of {task.size_text(task.raw[pool])}"
+        for pool in pools
+        if needed[pool] > task.counts[pool]
+    ]
+    return StockError(what, "stock", f"Give {' and '.join(wanted)}.")
+
+
+def _needed(task: Task, pools: list[int]) -> Ints | None:
+    """Return how many blocks of each pool a quick plan takes when there are any number of some; None if none does."""
+    is_raised = np.isin(task.pool_of, pools)
+    if not (task.fits & ((task.counts[task.pool_of] > 0) | is_raised)).any(axis=1).all():
+        return None
+    counts = task.counts.copy()
+    counts[pools] = len(task.cells)
+    # Only the blocks of these pools cost anything, so that those there are of the others are used first.
+    prices = np.where(is_raised, 1.0, 0.0)
+    plan = construct(replace(task, counts=counts, prices=prices), Gear(), (0.0, 0), silent)
+    if plan.n_missing:
+        return None
+    taken: Ints = np.bincount(task.pool_of[plan.kinds], minlength=len(task.kinds))
+    return taken
 
 
 def _check_effort(moves: int | None, seconds: float | None) -> None:

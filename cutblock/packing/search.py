@@ -105,7 +105,7 @@ class Search:
         filled[:n_blocks] = np.bincount(blocks, weights=volumes[is_placed], minlength=n_blocks)
         kind[:n_blocks] = solution.kinds
         fill = filled[:n_blocks] / np.asarray(self.fixed.goods.kind_volumes)[solution.kinds]
-        spare = self.task.counts - np.bincount(solution.kinds, minlength=len(self.task.kinds))
+        spare = self.task.counts - np.bincount(self.task.pool_of[solution.kinds], minlength=len(self.task.kinds))
         missing = float(volumes[~is_placed].sum())
         return State(
             layout,
@@ -225,8 +225,9 @@ def _emptied(task: Task, plan: Solution, generator: np.random.Generator) -> Solu
     filled = np.bincount(plan.layout[0], weights=volumes, minlength=len(plan.kinds))
     order = np.argsort(filled / task.kinds[plan.kinds].astype(np.float64).prod(axis=1), kind="stable")
     gone = int(order[int(generator.random() ** 2 * min(8, len(order)))])
-    used = np.bincount(plan.kinds, minlength=len(task.kinds))
-    cheaper = (task.weights < task.weights[plan.kinds[gone]]) & (used < task.counts)
+    used = np.bincount(task.pool_of[plan.kinds], minlength=len(task.kinds))
+    is_there = (used < task.counts)[task.pool_of]
+    cheaper = (task.weights < task.weights[plan.kinds[gone]]) & is_there
     options = [-1, *np.flatnonzero(cheaper).tolist()]
     kind = options[int(generator.random() * len(options))]
     layout = plan.layout.copy()

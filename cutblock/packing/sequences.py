@@ -51,12 +51,16 @@ class Cells(NamedTuple):
 
 
 class Kinds(NamedTuple):
-    """The kinds of block: usable sizes with one kerf added, and the longest part that can be cut along (see `Task`)."""
+    """The kinds of block: usable sizes with one kerf added, the longest part that can be cut along, see `Task`.
+
+    Kinds of one pool are the same blocks standing on other faces, so they share one count: that of the pool's number.
+    """
 
     x: Integers
     y: Integers
     z: Integers
     reach: Integers
+    pool: Integers
 
 
 class Layout(NamedTuple):
@@ -93,7 +97,7 @@ class State(NamedTuple):
     kind: Integers  # of each block number
     filled: Reals  # volume of the billets in each block
     alive: Integers  # all block numbers, those in use first
-    spare: Integers  # blocks left of each kind
+    spare: Integers  # blocks left of each pool of kinds
     counts: Integers  # (4,) blocks in use, billets without a place, next random number, moves since the list began
     score: Reals  # (3,) squared fill of all blocks, volume without a place, money
 
@@ -131,7 +135,8 @@ def cells_of(task: Task, make: Make) -> Cells:
 def kinds_of(task: Task, make: Make) -> Kinds:
     """Return the kinds of block of a task."""
     x, y, z = (make.integers(task.kinds[:, axis]) for axis in range(3))
-    return Kinds(x, y, z, make.integers(np.full(len(task.kinds), task.reach)))
+    reach = make.integers(np.full(len(task.kinds), task.reach))
+    return Kinds(x, y, z, reach, make.integers(task.pool_of))
 
 
 def new_layout(n_cells: int, make: Make) -> Layout:
