@@ -1,6 +1,6 @@
 """How fast the wire may go in foam of each density, with this job's foam marked."""
 
-from PySide6.QtCore import QEvent, QPointF, QRectF, QSize, Qt
+from PySide6.QtCore import QEvent, QPointF, QRectF, QSize, Qt, Slot
 from PySide6.QtGui import QColor, QFontMetricsF, QMouseEvent, QPainter, QPaintEvent, QPen, QPolygonF
 from PySide6.QtWidgets import QSizePolicy, QWidget
 
@@ -18,6 +18,7 @@ class SpeedChartView(QWidget):
         super().__init__(parent)
         self._chart: SpeedChart | None = None
         self._mouse_x: float | None = None
+        self._weighed_kg_m3 = 0.0  # 0: not weighed
         self.setAccessibleName("Wire speed window against foam density")
         self.setMouseTracking(True)
         self.setSizePolicy(QSizePolicy.Policy.Expanding, QSizePolicy.Policy.Expanding)
@@ -29,6 +30,12 @@ class SpeedChartView(QWidget):
         self.setAccessibleDescription(
             f"At {chart.density_kg_m3:.1f} kg/m³ the planned speed is {mm_per_minute(chart.planned_mm_s):.0f} mm/min"
         )
+        self.update()
+
+    @Slot(float)
+    def show_weighed(self, density_kg_m3: float) -> None:
+        """Mark the density of the block on the table; 0 takes the mark away."""
+        self._weighed_kg_m3 = density_kg_m3
         self.update()
 
     def sizeHint(self) -> QSize:
@@ -44,6 +51,7 @@ class SpeedChartView(QWidget):
                 self._paint_grid(painter, self._chart)
                 self._paint_window(painter, self._chart)
                 self._paint_job(painter, self._chart)
+                self._paint_weighed(painter, self._chart)
                 self._paint_mouse(painter, self._chart)
 
     def mouseMoveEvent(self, event: QMouseEvent) -> None:
@@ -156,6 +164,21 @@ class SpeedChartView(QWidget):
         painter.fillRect(box, ground)
         painter.setPen(ink.text)
         painter.drawText(box, Qt.AlignmentFlag.AlignCenter, text)
+
+    def _paint_weighed(self, painter: QPainter, chart: SpeedChart) -> None:
+        limits = chart.limits_at(self._weighed_kg_m3)
+        if limits is None:
+            return
+        ink, metrics, frame = ink_of(self.palette()), QFontMetricsF(self.font()), self._frame()
+        low, high = (self._at(chart, self._weighed_kg_m3, speed) for speed in limits)
+        painter.setPen(QPen(ink.text, 1.0, Qt.PenStyle.DashLine))
+        painter.drawLine(QPointF(low.x(), frame.bottom()), QPointF(low.x(), frame.top()))
+        painter.setPen(QPen(ink.text, 4.0))
+        painter.drawLine(low, high)
+        text = f"weighed: {self._weighed_kg_m3:.1f} kg/m³"
+        width = metrics.horizontalAdvance(text)
+        left = low.x() + 8.0 if low.x() + width + 8.0 < frame.right() else low.x() - width - 8.0
+        painter.drawText(QPointF(left, frame.bottom() - 8.0), text)
 
     def _paint_mouse(self, painter: QPainter, chart: SpeedChart) -> None:
         frame = self._frame()

@@ -20,12 +20,12 @@ from cutblock.records.block import Block
 from cutblock.records.drawing import Drawing
 from cutblock.records.piece import Piece
 from cutblock.records.plan import Plan
-from cutblock.window.cautions import CUTTING_CAUTIONS, DEFERENCE, UNCALIBRATED
+from cutblock.window.cautions import CUTTING_CAUTIONS, DEFERENCE
 from cutblock.window.desk_parts import filter_field, name_choice, titled
 from cutblock.window.drawing_view import PREPARING, DrawingView
 from cutblock.window.labels import counted, label
 from cutblock.window.rows import CUT_COLUMNS, PIECE_COLUMNS, cut_rows, piece_rows
-from cutblock.window.speed_chart import SpeedChartView
+from cutblock.window.speed_page import SpeedPage
 from cutblock.window.tables import RowsModel, RowsView
 from cutblock.worker.requests import ShownPlan
 
@@ -294,31 +294,6 @@ class TagsPage(QWidget):
             self.start.setMaximum(sheet.columns * sheet.rows)
 
 
-class SpeedPage(QWidget):
-    """The speed window against density, and this job's settings in words."""
-
-    def __init__(self, parent: QWidget | None = None) -> None:
-        super().__init__(parent)
-        self.chart = SpeedChartView()
-        self._settings = label("", "figure", wraps=True)
-        self._limits = label("", wraps=True)
-        self._basis = label("", "note", wraps=True)
-        layout = QVBoxLayout(self)
-        layout.addWidget(self._settings)
-        layout.addWidget(self._limits)
-        layout.addWidget(self.chart, 1)
-        layout.addWidget(self._basis)
-
-    def show_plan(self, shown: ShownPlan) -> None:
-        """Replace chart and words."""
-        self.chart.show_chart(shown.views.chart)
-        plan = shown.plan
-        self._settings.setText(_settings_text(plan))
-        self._limits.setText(_limits_text(plan))
-        is_calibrated = plan.conditions.is_calibrated
-        self._basis.setText("Calibrated with coupon cuts in this foam." if is_calibrated else UNCALIBRATED)
-
-
 def pieces_as_cut(plan: Plan) -> list[Piece]:
     """Return the pieces in the order they are cut, as the tags are; those not packed come last."""
     order = {
@@ -347,21 +322,3 @@ def _block_foam_text(plan: Plan, block: Block) -> str:
     grade = f"{block.grade}, " if block.grade else ""
     wire = f"wire {plan.wire.name} mm at {conditions.power_w_m:g} W/m"
     return f"{grade}{conditions.density_kg_m3:.1f} kg/m³; {wire}; {trust}."
-
-
-def _settings_text(plan: Plan) -> str:
-    conditions = plan.conditions
-    grade = f"{plan.job.grade}, " if plan.job.grade else ""
-    foam = f"{grade}{conditions.density_kg_m3:.1f} kg/m³"
-    speed = f"{mm_per_minute(conditions.planned_mm_s):.0f} mm/min ({conditions.planned_mm_s:.2f} mm/s)"
-    wire = f"wire {plan.wire.name} mm at {conditions.power_w_m:g} W/m"
-    return f"{foam}; {wire}: {speed}, kerf {conditions.kerf_mm:.2f} mm"
-
-
-def _limits_text(plan: Plan) -> str:
-    conditions = plan.conditions
-    low, high = mm_per_minute(conditions.low_mm_s), mm_per_minute(conditions.high_mm_s)
-    return (
-        f"Keep between {low:.0f} and {high:.0f} mm/min ({conditions.low_mm_s:.2f} and {conditions.high_mm_s:.2f} mm/s) "
-        f"at mid-wire. At the slowest the kerf is {conditions.widest_kerf_mm:.2f} mm."
-    )
