@@ -161,11 +161,11 @@ class _Search:
             steps = [_folded(period * n / max(n_angles, 1), period) for n in range(max(n_angles, 1))]
             wanted = _distinct([*steps, *self._straight_angles(cell, period)])
             some = self._scored(wanted, cell, part_of(report, 0.0, 0.6))
-            some.sort()
+            some.sort(key=_best_first)
             step = period / max(n_angles, 1) / 2.0
             some += self._refined(some[:_N_REFINED], step, period, part_of(report, 0.6, 1.0))
             tried += some
-        tried.sort()
+        tried.sort(key=_best_first)
         return tried
 
     def _straight_angles(self, cell: tuple[float, float], period: float) -> list[float]:
@@ -196,7 +196,7 @@ class _Search:
                 beside = [_folded(at.angle_deg + side * width, period) for side in (-1.0, 1.0)]
                 some = self._scored(beside, at.cell_mm, part_of(progress, done, done + 1.0 / len(best) / _N_ROUNDS))
                 found += some
-                at = min(at, *some)
+                at = min(at, *some, key=_best_first)
                 width /= 2.0
         return found
 
@@ -297,6 +297,11 @@ class _Search:
             worst_mm=max((sweep.serving[0].max_mm for sweep in sweeps), default=0.0),
             skew_mm=max((sweep.skew_mm for sweep in sweeps), default=0.0),
         )
+
+
+def _best_first(one: _Tried) -> tuple[_Score, tuple[float, float], float, float]:
+    """Return what tried angles are sorted by: of angles that do as well the one that turns the grid least."""
+    return one.score, one.cell_mm, abs(one.angle_deg), one.angle_deg
 
 
 def _folded(angle_deg: float, period: float) -> float:

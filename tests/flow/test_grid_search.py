@@ -1,6 +1,7 @@
 import json
 import re
-from dataclasses import replace
+from dataclasses import fields, replace
+from functools import partial
 from shutil import copytree
 
 import numpy as np
@@ -13,9 +14,9 @@ from cutblock.base.progress import silent
 from cutblock.cli.grid import panels_text
 from cutblock.cli.main import main
 from cutblock.flow.chain import start_plan
-from cutblock.flow.grid_search import _face_of, search_grid
+from cutblock.flow.grid_search import SMALLER_CELLS, _face_of, search_grid
 from cutblock.flow.jobfile import read_job
-from cutblock.flow.steps import take_form
+from cutblock.flow.steps import divide, fit, take_form
 from cutblock.records.grid import GridCandidate
 from cutblock.records.plan import Settings
 
@@ -29,7 +30,13 @@ def turned_hypar(tmp_path_factory):
 
 @pytest.fixture(scope="module")
 def found(turned_hypar):
-    return search_grid(read_job(turned_hypar), "S", n_angles=2, n_whole=2)
+    return search_grid(read_job(turned_hypar), "S", n_angles=2, n_whole=1)
+
+
+@pytest.fixture
+def few_whole(monkeypatch):
+    """The command divides and fits only the best grid whole, as `found` does: the rest is the same, but quicker."""
+    monkeypatch.setattr("cutblock.flow.grid_search.search_grid", partial(search_grid, n_whole=1))
 
 
 def test_the_rulings_of_a_turned_hypar_are_found_back(found):
@@ -45,30 +52,83 @@ def test_the_rulings_of_a_turned_hypar_are_found_back(found):
 def test_the_grid_of_the_job_is_among_the_candidates_and_the_best_is_first(found):
     assert found.present in found.candidates
     assert found.present.angle_deg is None
-    keys = [(one.n_uncut, one.n_sweeps) for one in found.candidates]
+    keys = [(one.n_uncut, one.n_sweeps, round(one.worst_mm / 0.05)) for one in found.candidates]
     assert keys == sorted(keys)
-    assert found.present.n_sweeps + 100 * found.present.n_uncut > found.candidates[0].n_sweeps
+    assert len(keys) == 2
+    assert keys[0] < keys[1]
+    assert found.candidates[1] == found.present
 
 
-def test_what_the_search_says_is_what_a_plan_with_that_grid_gives(turned_hypar, found, tmp_path, capsys):
-    code = main(["grid", str(turned_hypar), "--angles", "2", "--json"])
+def test_the_command_searches_again_and_tells_the_same(tmp_path, capsys, few_whole):
+    path = job_over(tmp_path, dome, (1200.0, 1000.0), tolerance=12.0)
+    found = search_grid(read_job(path), n_angles=2, n_whole=1)
+
+    assert main(["grid", str(path), "--angles", "2", "--json"]) == 0
     told = json.loads(capsys.readouterr().out)["candidates"]
-    assert code == 0
-    assert told[0]["angle_deg"] == found.candidates[0].angle_deg
 
-    text = re.sub(r"panels = .*", told[0]["write"], turned_hypar.read_text())
+    for entry, candidate in zip(told, found.candidates, strict=True):
+        assert entry["is_present"] == (candidate == found.present)
+        for field in fields(candidate):
+            value = getattr(candidate, field.name)
+            value = list(value) if isinstance(value, tuple) else value
+            value = round(value, 6) if field.name in {"worst_mm", "skew_mm"} else value
+            assert entry[field.name] == value, field.name
+
+
+def test_what_the_search_says_is_what_a_plan_with_that_grid_gives(turned_hypar, found, tmp_path):
+    best = found.candidates[0]
+    text = re.sub(r"panels = .*", panels_text(best, "mm"), turned_hypar.read_text())
     copytree(turned_hypar.parent, tmp_path, dirs_exist_ok=True)
     (tmp_path / "job.toml").write_text(text)
-    again = search_grid(read_job(tmp_path / "job.toml"), n_angles=1, n_whole=0).present
-    assert (again.n_panels, again.n_sweeps, again.n_uncut) == tuple(
-        told[0][key] for key in ("n_panels", "n_sweeps", "n_uncut")
-    )
+
+    plan = start_plan(read_job(tmp_path / "job.toml"), Settings())
+    for step in (take_form, divide, fit):
+        plan = step(plan, silent)
+
+    assert len(plan.panels) == best.n_panels
+    assert len(plan.sweeps) == best.n_sweeps
+    assert {sweep.serving[0].panel for sweep in plan.sweeps} == {panel.id for panel in plan.panels}
     # The job file holds the angle and the phase in digits people read.
-    assert again.worst_mm == pytest.approx(told[0]["worst_mm"], abs=0.01)
+    assert max(sweep.serving[0].max_mm for sweep in plan.sweeps) == pytest.approx(best.worst_mm, abs=0.01)
 
 
-def test_the_search_is_the_same_every_time(turned_hypar, found):
-    assert search_grid(read_job(turned_hypar), "S", n_angles=2, n_whole=2) == found
+def test_smaller_cells_are_tried_where_asked_and_taken_where_they_save_sweeps(tmp_path, capsys, monkeypatch, few_whole):
+    """A dome takes strips no wider than sqrt(16 tol R): cells a tenth smaller need one strip, the job's two."""
+    monkeypatch.setattr("cutblock.flow.grid_search.SMALLER_CELLS", (1.0, 0.9))
+    radius, tolerance, length, width = 28_000.0, 2.0, 2000.0, 1150.0
+    widest = np.sqrt(16.0 * tolerance * radius)
+    assert 0.9 * 1000.0 < widest < 1000.0
+    path = job_over(
+        tmp_path,
+        lambda x, y: -(x**2 + y**2) / (2.0 * radius),
+        (length, width),
+        step=50.0,
+        cell=(1000, 1300),
+        tolerance=tolerance,
+    )
+
+    assert main(["grid", str(path), "--angles", "1", "--smaller", "--json"]) == 0
+    told = json.loads(capsys.readouterr().out)["candidates"]
+
+    best, present = told[0], next(entry for entry in told if entry["is_present"])
+    assert (present["cell_mm"], present["n_sweeps"]) == ([1000.0, 1300.0], 4)
+    assert best["cell_mm"] == pytest.approx([900.0, 1170.0])
+    assert (best["n_panels"], best["n_sweeps"], best["n_uncut"]) == (3, 3, 0)
+    assert best["write"].startswith("panels = { length = 900, width = 1170, angle = 0")
+
+
+def test_without_being_asked_for_no_smaller_cells_are_tried(tmp_path, monkeypatch):
+    asked = []
+
+    def seen(*_, cell_shares, **__):
+        asked.append(cell_shares)
+        raise Cancelled
+
+    monkeypatch.setattr("cutblock.flow.grid_search.search_grid", seen)
+    path = job_over(tmp_path, dome, (1200.0, 1000.0))
+
+    assert main(["grid", str(path)]) == main(["grid", str(path), "--smaller"]) == 130
+    assert asked == [(1.0,), SMALLER_CELLS]
 
 
 def test_the_search_can_be_cancelled_at_every_stage(turned_hypar):
@@ -97,7 +157,7 @@ def test_a_face_that_is_not_there_or_has_no_cell_size_is_refused(turned_hypar, t
 def test_turning_does_not_help_a_round_dome_whose_strips_follow_the_law(tmp_path):
     """A sphere-like dome of 4 m: ceil(w sqrt(kappa / (16 room))) strips a panel whatever the angle."""
     path = job_over(tmp_path, lambda x, y: -(x**2 + y**2) / 8000.0, (2000.0, 2000.0), cell=(1000, 1000))
-    found = search_grid(read_job(path), n_angles=2, n_whole=1)
+    found = search_grid(read_job(path), n_angles=1, n_whole=1)
 
     law = int(np.ceil(1000.0 * np.sqrt(1.0 / 4000.0 / (16.0 * 2.0))))
     assert found.candidates[0].angle_deg in (None, 0.0)
