@@ -6,6 +6,7 @@ import numpy as np
 
 from cutblock.base.arrays import Floats, frozen_floats
 from cutblock.base.errors import InputError
+from cutblock.flow.face_speeds import block_speeds
 from cutblock.flow.outputs import LABEL_SHEET, block_drawings, tag_drawings, tag_sheets
 from cutblock.flow.weighing import block_density
 from cutblock.records.plan import Plan
@@ -17,6 +18,7 @@ __all__ = [
     "SpeedChart",
     "WeighedBlock",
     "block_drawings",
+    "block_speeds",
     "speed_chart",
     "summary",
     "tag_drawings",
@@ -81,7 +83,7 @@ def weigh_block(
         chart: Of the plan.
         mass_kg: Of the block.
         size_mm: Its sides.
-        planned_mm_s: Least and most planned speed of its cuts.
+        planned_mm_s: Least and most speed of its cuts, see `block_speeds`.
 
     Raises:
         InputError: No EPS weighs that, or it is lighter or heavier than the chart.

@@ -5,7 +5,7 @@ from PySide6.QtWidgets import QComboBox, QDoubleSpinBox, QHBoxLayout, QVBoxLayou
 
 from cutblock.base.errors import InputError
 from cutblock.base.units import mm_per_minute
-from cutblock.flow.views import SpeedChart, WeighedBlock, weigh_block
+from cutblock.flow.views import SpeedChart, WeighedBlock, block_speeds, weigh_block
 from cutblock.records.block import Block
 from cutblock.records.plan import Plan
 from cutblock.window.desk_parts import name_choice
@@ -13,6 +13,7 @@ from cutblock.window.labels import label
 
 NOT_WEIGHED = "not weighed"
 _HINT = "Weigh the block on the table and type its mass: the speed limits follow its own density."
+_NOTABLY = 1.02  # faster than as planned at mid-wire
 _MOST_KG, _MOST_MM = 2000.0, 20_000.0
 
 
@@ -85,14 +86,14 @@ class WeighingStrip(QWidget):
             self.weighed.emit(0.0)
             return
         length, width, height = (side.value() for side in self.sides)
-        planned = _planned_speeds(self._plan, block)
+        planned = block_speeds(self._plan, block)
         try:
             found = weigh_block(self._chart, self.mass.value(), (length, width, height), planned)
         except InputError as error:
             self._result.setText(str(error))
             self.weighed.emit(0.0)
             return
-        self._result.setText(_result_text(found, planned))
+        self._result.setText(_result_text(found, planned, is_calibrated=self._chart.is_calibrated))
         self.weighed.emit(found.density_kg_m3)
 
     def _block(self, number: int) -> Block | None:
@@ -100,25 +101,20 @@ class WeighingStrip(QWidget):
         return blocks[number] if 0 <= number < len(blocks) else None
 
 
-def _planned_speeds(plan: Plan, block: Block) -> tuple[float, float]:
-    """Return the least and the most planned speed of a block's cuts, mm/s."""
-    sweeps = {cut.sweep for cut in block.cuts if cut.sweep}
-    speeds = [timing.planned_mm_s for timing in plan.timings if timing.sweep in sweeps]
-    speeds.append(plan.conditions.planned_mm_s)
-    return min(speeds), max(speeds)
-
-
-def _result_text(found: WeighedBlock, planned_mm_s: tuple[float, float]) -> str:
+def _result_text(found: WeighedBlock, planned_mm_s: tuple[float, float], *, is_calibrated: bool) -> str:
     low, high = mm_per_minute(found.low_mm_s), mm_per_minute(found.high_mm_s)
     slowest, fastest = (round(mm_per_minute(speed)) for speed in planned_mm_s)
-    speed = f"{slowest}" if slowest == fastest else f"{slowest} to {fastest}"
-    text = f"{found.density_kg_m3:.1f} kg/m³: keep between {low:.0f} and {high:.0f} mm/min. "
+    trust = "" if is_calibrated else " (not calibrated, true within ±50 % only)"
+    text = f"{found.density_kg_m3:.1f} kg/m³: keep between {low:.0f} and {high:.0f} mm/min{trust}. "
     again = f"put density = {found.density_kg_m3:.1f} into the job and plan again"
+    speed = f"The planned {slowest} mm/min"
+    if fastest > _NOTABLY * slowest:
+        speed += f", up to {fastest} at the faster end of the wire,"
     if found.is_inside:
-        return f"{text}The planned {speed} mm/min is inside."
+        return f"{text}{speed} is inside."
     if found.feed_percent is None:
-        return f"{text}The planned {speed} mm/min is OUTSIDE, and less feed does not help: {again}."
-    return f"{text}The planned {speed} mm/min is TOO FAST: feed at {found.feed_percent} % or less, or {again}."
+        return f"{text}{speed} is OUTSIDE, and less feed does not help: {again}."
+    return f"{text}{speed} is TOO FAST: feed at {found.feed_percent} % or less, or {again}."
 
 
 def _number(name: str, most: float, unit: str, decimals: int) -> QDoubleSpinBox:

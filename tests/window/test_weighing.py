@@ -8,7 +8,9 @@ from kit.shown import sample_chart, sample_shown
 from PySide6.QtWidgets import QLabel
 
 from cutblock.base.errors import InputError
-from cutblock.flow.views import speed_chart, weigh_block
+from cutblock.flow.face_speeds import fastest_at_faces
+from cutblock.flow.views import block_speeds, speed_chart, weigh_block
+from cutblock.window.speed_chart import SpeedChartView
 from cutblock.window.speed_page import SpeedPage
 from cutblock.window.weighing import NOT_WEIGHED, WeighingStrip
 
@@ -43,7 +45,8 @@ def test_a_mass_gives_the_limits_in_that_foam_and_marks_the_chart(qtbot, strip):
         strip.mass.setValue(22.0 * volume_m3)
     assert told.args[0] == pytest.approx(22.0, rel=1e-3)
     # The sample chart: 30 / density and 72 / density mm/s.
-    assert "22.0 kg/m³: keep between 82 and 196 mm/min. The planned 159 mm/min is inside." in said(strip)
+    assert "22.0 kg/m³: keep between 82 and 196 mm/min (not calibrated, true within ±50 % only)." in said(strip)
+    assert "The planned 159 mm/min is inside." in said(strip)
 
 
 @pytest.mark.parametrize(
@@ -88,14 +91,53 @@ def test_without_blocks_there_is_nothing_to_weigh(qtbot):
 def test_the_page_marks_the_weighed_density_in_its_chart(qtbot):
     page = SpeedPage()
     qtbot.addWidget(page)
-    page.resize(900, 600)
     page.show_plan(sample_shown())
-    before = page.chart.grab().toImage()
     block = sample_plan().blocks[0]
     page.weighing.mass.setValue(24.0 * block.length_mm * block.width_mm * block.height_mm * 1e-9)
-    assert page.chart.grab().toImage() != before
+    assert page.chart._weighed_kg_m3 == pytest.approx(24.0, rel=1e-3)
     page.weighing.mass.setValue(0.0)
-    assert page.chart.grab().toImage() == before
+    assert page.chart._weighed_kg_m3 == 0.0
+
+
+def test_a_mark_in_the_chart_comes_and_goes(qtbot):
+    view = SpeedChartView()
+    qtbot.addWidget(view)
+    view.resize(640, 400)
+    view.show_chart(sample_chart())
+    before = view.grab().toImage()
+    view.show_weighed(24.0)
+    assert view.grab().toImage() != before
+    for density in (0.0, 45.0):
+        view.show_weighed(density)
+        assert view.grab().toImage() == before
+
+
+def test_the_faster_end_of_a_tapered_sweep_counts(qtbot):
+    """A tapered sweep is as fast as its faster end, and twice as fast in half the time."""
+    plan = sample_plan()
+    sweeps = [replace(sweep, far=np.stack([sweep.far[:, 0] * 0.5, sweep.far[:, 1]], axis=1)) for sweep in plan.sweeps]
+    slowest, fastest = block_speeds(plan, plan.blocks[0])
+    tapered = replace(plan, sweeps=tuple(sweeps))
+    assert slowest == plan.conditions.planned_mm_s
+    assert block_speeds(tapered, plan.blocks[0])[1] == pytest.approx(fastest, rel=0.02)
+    halved = [replace(timing, step_seconds=timing.step_seconds * 0.5) for timing in plan.timings]
+    assert block_speeds(replace(tapered, timings=tuple(halved)), plan.blocks[0])[1] > 1.9 * fastest
+    made = WeighingStrip()
+    qtbot.addWidget(made)
+    shown = sample_shown(timings=tuple(halved))
+    made.show_plan(shown.plan, shown.views.chart)
+    block = plan.blocks[0]
+    made.mass.setValue(20.0 * block.length_mm * block.width_mm * block.height_mm * 1e-9)
+    assert "up to 319 at the faster end of the wire, is TOO FAST" in said(made)
+
+
+def test_the_speed_at_a_face_is_square_to_the_wire():
+    """A wire leaning by a 3-4-5 triangle that moves along x: only 4/5 of the way is square to it."""
+    near, aside = np.array([[0.0, 50.0], [10.0, 50.0], [20.0, 50.0]]), np.array([750.0, 0.0])
+    sweep = replace(sample_plan().sweeps[0], near=near, far=near + aside, length_mm=900.0, width_mm=1000.0)
+    assert fastest_at_faces(sweep, np.array([2.0, 4.0])) == pytest.approx(5.0 * 0.8)
+    outside = replace(sweep, near=near - 0.04 * aside, far=near - 0.04 * aside)
+    assert fastest_at_faces(outside, np.array([2.0, 4.0])) == 0.0
 
 
 def test_the_page_of_a_calibrated_plan_names_its_test_cuts(qtbot):
