@@ -9,7 +9,9 @@ from functools import partial
 
 from cutblock.base.errors import NotCuttable
 from cutblock.base.progress import Progress, part_of
+from cutblock.records.piece import Piece
 from cutblock.records.plan import Finding, Plan
+from cutblock.records.sweep import Sweep
 from cutblock.records.words import Severity
 
 
@@ -104,18 +106,37 @@ def measure(plan: Plan, progress: Progress) -> Plan:
 
 def pack(plan: Plan, progress: Progress) -> Plan:
     """Pack the billets into blocks and settle the cut order."""
-    from cutblock.packing.blocks import pack_sweeps
+    from cutblock.packing.blocks import pack_sweeps, weigh_by_block
 
-    packed = pack_sweeps(plan.job, plan.sweeps, plan.pieces, plan.conditions, plan.settings, progress)
+    packed = pack_sweeps(
+        plan.job, plan.sweeps, plan.pieces, plan.conditions, plan.settings, part_of(progress, 0.0, 0.9)
+    )
+    thick = _measure_thickened(plan, packed.sweeps, packed.pieces, part_of(progress, 0.9, 1.0))
     return _with(
-        plan,
+        thick,
         packed.findings,
         blocks=packed.blocks,
-        pieces=packed.pieces,
+        pieces=weigh_by_block(thick.pieces, packed.blocks),
         n_blocks_bound=packed.n_blocks_bound,
         bound_proof=packed.bound_proof,
         cost_bound=packed.cost_bound,
     )
+
+
+def _measure_thickened(plan: Plan, sweeps: tuple[Sweep, ...], pieces: tuple[Piece, ...], progress: Progress) -> Plan:
+    """Return the plan with sweeps whose backs took up slack, their halves measured again."""
+    if not any(sweep.thickened_mm for sweep in sweeps):
+        return replace(plan, pieces=pieces)
+    from cutblock.halves.measure import measure_halves
+
+    before = {volume.sweep: volume.upper_mm3 for volume in plan.volumes}
+    volumes, pieces = measure_halves(plan.job, plan.panels, sweeps, pieces, plan.conditions, progress)
+    is_thick = {sweep.id for sweep in sweeps if sweep.thickened_mm}
+    volumes = tuple(
+        replace(volume, thickened_mm3=volume.upper_mm3 - before[volume.sweep]) if volume.sweep in is_thick else volume
+        for volume in volumes
+    )
+    return replace(plan, sweeps=sweeps, volumes=volumes, pieces=pieces)
 
 
 def try_machine(plan: Plan, progress: Progress) -> Plan:
