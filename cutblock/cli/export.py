@@ -13,6 +13,10 @@ if TYPE_CHECKING:
     from cutblock.halves.mitres import Side
 
 _MOST_NAMED = 6
+_CAUTION = (
+    "Hold each piece in a jig while its sides are cut, keep hands off blade or wire and extract the dust or fumes; "
+    "local rules on machines come first."
+)
 
 
 def run_export(chosen: argparse.Namespace) -> int:
@@ -34,6 +38,7 @@ def run_export(chosen: argparse.Namespace) -> int:
     if done.table is not None:
         print(f"Sides in degrees off square, + where a piece widens towards its back; also in {done.table}")
         print("\n".join(_side_lines(done.sides)))
+        print(_CAUTION)
     return 0
 
 

@@ -89,8 +89,9 @@ def find_mitres(
     served = {serving_of(by_sweep[piece.sweep], piece.half).panel for piece in wanted}
     planes = side_planes(panels)
     by_panel = {panel.id: panel for panel in panels}
-    for name in served:
-        _refuse_lean(by_panel[name], planes[name].normals, job)
+    for panel in panels:  # in their order, so that it is always the same one that is named
+        if panel.id in served:
+            _refuse_lean(panel, planes[panel.id].normals, job)
     return {piece.id: _mitre(piece, by_sweep[piece.sweep], by_panel, planes, job) for piece in wanted}
 
 

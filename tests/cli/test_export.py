@@ -95,6 +95,7 @@ def test_mitred_sides_are_told_on_the_terminal_and_in_a_table(made, capsys):
     said = capsys.readouterr().out
     assert "SB-S1-A01-L: " in said
     assert "degrees off square" in said
+    assert "local rules on machines come first" in said
     folder = made / "solids/halves-mitred-ply"
     assert {"SB-S1-A01-L.ply", "mitres.csv", "parts.csv"} <= {path.name for path in folder.iterdir()}
     table = (folder / "mitres.csv").read_text()

@@ -47,6 +47,11 @@ def modelled(mesh):
     return manifold3d.Manifold(manifold3d.Mesh64(mesh.vertices, mesh.triangles.astype(np.uint64)))
 
 
+def area(mesh):
+    a, b, c = np.moveaxis(mesh.vertices[mesh.triangles], 1, 0)
+    return np.linalg.norm(np.cross(b - a, c - a), axis=1).sum() / 2.0
+
+
 def is_sound(mesh):
     """Closed and consistently wound for trimesh, a manifold for manifold3d, and no vertex to spare."""
     solid = trimesh.Trimesh(mesh.vertices, mesh.triangles, process=False)
@@ -69,10 +74,10 @@ def test_a_flat_panel_with_leaning_sides_is_the_prismatoid_of_its_rectangles(deg
 
     south, east, north, west = np.tan(np.radians(degrees))
 
-    def area(depth):
+    def level(depth):
         return (900.0 - depth * (east + west)) * (750.0 - depth * (south + north))
 
-    wanted = thickness * (area(0.0) + 4.0 * area(thickness / 2.0) + area(thickness)) / 6.0
+    wanted = thickness * (level(0.0) + 4.0 * level(thickness / 2.0) + level(thickness)) / 6.0
     assert mesh_volume(cut) == pytest.approx(wanted, rel=1e-12)
     assert is_sound(cut)
 
@@ -117,11 +122,14 @@ def test_any_plane_leaves_a_sound_solid_of_the_modellers_volume(seed, turns, pla
 
         cut = cut_solid(half, normal, distance)
 
-        wanted = modelled(half).trim_by_plane(tuple(normal), distance).volume()
+        trimmed = modelled(half).trim_by_plane(tuple(normal), distance)
+        wanted = trimmed.volume()
         assert len(boundary_edges(cut.triangles)) == 0
         found = mesh_volume(cut) if len(cut.triangles) else 0.0
         assert found == pytest.approx(wanted, rel=1e-9, abs=1e-3)
         assert found < 1.0 or is_sound(cut)
+        # No facet of the section lies over another.
+        assert found < 1.0 or area(cut) == pytest.approx(trimmed.surface_area(), rel=1e-6)
 
 
 @given(seed=st.integers(0, 2**32 - 1), degrees=st.lists(st.floats(-35.0, 35.0), min_size=4, max_size=4))
@@ -151,8 +159,8 @@ def test_an_l_shape_with_leaning_sides_shrinks_by_its_girth_and_its_corners(degr
     cut = cut_to_sides(slab(thickness), planes, corners)
 
     t = np.tan(np.radians(degrees))
-    area, girth = 800.0 * 300.0 + 400.0 * 300.0, 2.0 * (800.0 + 600.0)
-    wanted = area * thickness - girth * t * thickness**2 / 2.0 + 4.0 * t**2 * thickness**3 / 3.0
+    plan_area, girth = 800.0 * 300.0 + 400.0 * 300.0, 2.0 * (800.0 + 600.0)
+    wanted = plan_area * thickness - girth * t * thickness**2 / 2.0 + 4.0 * t**2 * thickness**3 / 3.0
     assert mesh_volume(cut) == pytest.approx(wanted, rel=1e-9)
     assert is_sound(cut)
 
