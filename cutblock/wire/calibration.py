@@ -258,7 +258,8 @@ def _law_of(coefficients: Floats, covariance: Floats, freedom: int) -> KerfLaw:
             "Look for columns that were exchanged and for units: power in W per metre, speed in mm/s, kerf in mm.",
         )
     turn = np.array([[1.0, 0.0, 0.0], [0.0, -(slope**-2), 0.0], [0.0, -offset * slope**-2, 1.0 / slope]])
-    return KerfLaw(least, 1.0 / slope, offset / slope, turn @ covariance @ turn.T, freedom)
+    turned = turn @ covariance @ turn.T
+    return KerfLaw(least, 1.0 / slope, offset / slope, 0.5 * (turned + turned.T), freedom)
 
 
 def _rate_spread(law: KerfLaw, power_w_m: ArrayLike, density_kg_m3: ArrayLike) -> tuple[Floats, float, Floats, Floats]:
