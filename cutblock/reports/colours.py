@@ -30,6 +30,7 @@ LEDGER_LOOK = (
     ("filler", "Fillers", PINK, "x"),
     ("offcut", "Offcuts kept", PALE, "/"),
     ("surplus", "Surplus halves", YELLOW, "x"),
+    ("thickened", "Thickened backs", BLUE, "\\"),
     ("trim", "Skin trim", GREY, ""),
     ("kerf", "Kerf", VERMILION, ""),
     ("scrap", "Scrap", WHITE, "."),

@@ -16,7 +16,7 @@ from cutblock.records.plan import Plan
 from cutblock.records.sweep import Sweep, SweepTiming
 
 _FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
-LEDGER_PARTS = ("mould", "counter_mould", "cradle", "filler", "surplus", "offcut", "trim", "kerf", "scrap")
+LEDGER_PARTS = ("mould", "counter_mould", "cradle", "filler", "surplus", "thickened", "offcut", "trim", "kerf", "scrap")
 _PIECE_HEADING = (
     "piece", "partner", "sweep", "half", "duty", "panel", "block", "litres", "mass kg", "billet length mm",
     "billet width mm", "billet height mm", "speed mm/min", "code", "persons to lift",
@@ -74,7 +74,8 @@ def blocks_csv(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
     """
     block_hours = dict(plan.hours.by_block_s) if plan.hours is not None else {}
     heading = (
-        "block", "grade", "length mm", "width mm", "height mm", "from offcut", "billets", "used %", "waste %",
+        "block", "grade", "length mm", "width mm", "height mm", "from offcut", "stands on", "billets", "set-ups",
+        "used %", "waste %",
         "bought litres", *(f"{part.replace('_', '-')} litres" for part in LEDGER_PARTS), "hours",
         _text(f"price {plan.job.currency}".rstrip()),
     )  # fmt: skip
@@ -83,6 +84,7 @@ def blocks_csv(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
 
 
 def _block_row(block: Block, ledger: Ledger, seconds: float) -> tuple[str, ...]:
+    parts = ledger.parts_ml  # whole thousandths of a litre, so that the row adds up as printed
     return (
         _text(block.id),
         _text(block.grade),
@@ -90,11 +92,13 @@ def _block_row(block: Block, ledger: Ledger, seconds: float) -> tuple[str, ...]:
         f"{block.width_mm:.1f}",
         f"{block.height_mm:.1f}",
         "yes" if block.from_offcut else "no",
+        "its bottom" if block.bought_mm is None else f"its {block.length_mm:.0f} x {block.width_mm:.0f} face",
         str(len(block.billets)),
+        str(block.n_setups),
         f"{ledger.used_percent:.2f}",
         f"{ledger.waste_percent:.2f}",
-        f"{litres(ledger.bought_mm3):.3f}",
-        *(f"{litres(getattr(ledger, f'{part}_mm3')):.3f}" for part in LEDGER_PARTS),
+        f"{ledger.bought_ml / 1000:.3f}",
+        *(f"{parts[part] / 1000:.3f}" for part in LEDGER_PARTS),
         f"{hours(seconds):.3f}",
         "" if block.price is None else f"{block.price:.2f}",
     )

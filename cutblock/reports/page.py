@@ -2,17 +2,16 @@
 
 from collections.abc import Mapping
 
-from cutblock.base.units import LengthUnit, length_text, litres, mm_per_minute
+from cutblock.base.units import LengthUnit, length_text, mm_per_minute
 from cutblock.records.account import Ledger
 from cutblock.records.plan import Finding, Plan
 from cutblock.records.shop import Conditions
 from cutblock.records.words import Severity
 from cutblock.reports.cards import summary_cards
 from cutblock.reports.cautions import CAUTIONS, DEFERENCE
-from cutblock.reports.colours import LEDGER_LOOK
-from cutblock.reports.ledger_bar import ledger_drawing
 from cutblock.reports.markup import pairs, paragraph, safe, section, table
 from cutblock.reports.page_blocks import blocks_body, stock_body
+from cutblock.reports.page_foam import foam_body
 from cutblock.reports.page_tables import panels_body, sweeps_body
 from cutblock.reports.speed_bar import speed_drawing
 from cutblock.reports.style import STYLE
@@ -33,7 +32,7 @@ def report_html(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
         _title_block(plan),
         section("Summary", summary_cards(plan)),
         section("Findings", _findings(plan)),
-        section("Where the foam goes", _foam_account(plan)),
+        section("Where the foam goes", foam_body(plan, block_ledgers)),
         section("Cutting conditions", _conditions(plan), "keep"),
         section("Cautions", _cautions(), "cautions keep"),
         section("Blocks to buy", stock_body(plan, block_ledgers)),
@@ -86,32 +85,6 @@ def _findings(plan: Plan) -> str:
         if severity is wanted
     ]
     return table(("severity", "about", "what and what to do"), rows, kinds=[f"finding {row[0]}" for row in rows])
-
-
-def _foam_account(plan: Plan) -> str:
-    ledger = plan.ledger
-    if ledger is None or ledger.bought_mm3 == 0.0:
-        return paragraph("No foam is bought.")
-    rows = [
-        (label, f"{litres(volume):.1f}", f"{100.0 * volume / ledger.bought_mm3:.2f}")
-        for label, volume in ((label, getattr(ledger, f"{name}_mm3")) for name, label, _, _ in LEDGER_LOOK)
-        if volume > 0.0
-    ]
-    rows.append(("Bought, the sum of it all", f"{litres(ledger.bought_mm3):.1f}", "100.00"))
-    kinds = [""] * (len(rows) - 1) + ["sum"]
-    body = table(("part", "litres", "% of bought"), rows, numbers=(1, 2), kinds=kinds)
-    return f"{svg_text(ledger_drawing(ledger))}{paragraph(_foam_words(ledger))}{body}"
-
-
-def _foam_words(ledger: Ledger) -> str:
-    bought, used, waste, offcuts = (
-        f"{litres(volume):,.0f}" for volume in (ledger.bought_mm3, ledger.used_mm3, ledger.waste_mm3, ledger.offcut_mm3)
-    )
-    return (
-        f"Of {bought} litres bought, {used} ({ledger.used_percent:.1f} %) become halves that have a duty."
-        f" {waste} litres ({ledger.waste_percent:.1f} %) are waste: skin trimmed off, foam the wire melts, halves"
-        f" without a use, and scrap. {offcuts} litres stay as offcuts for other jobs and count as neither."
-    )
 
 
 def _conditions(plan: Plan) -> str:

@@ -1,10 +1,11 @@
 """The blocks of a plan on the page: a picture of each and its cuts in order."""
 
+import math
 from collections.abc import Mapping
 
-from cutblock.base.units import hours, length_text
+from cutblock.base.units import hours, length_text, mass_kg
 from cutblock.records.account import Ledger
-from cutblock.records.block import Block, Cut
+from cutblock.records.block import Block, Cut, Freed
 from cutblock.records.plan import Plan
 from cutblock.records.words import CutKind
 from cutblock.reports.blocks import block_drawing
@@ -25,16 +26,15 @@ def blocks_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
 
 
 def _block(block: Block, plan: Plan, ledger: Ledger, time_h: float) -> str:
-    n_setups = max((cut.setup for cut in block.cuts), default=0)
     facts = [
         count_text(len(block.billets), "billet"),
         f"used {ledger.used_percent:.1f} %",
         f"waste {ledger.waste_percent:.1f} %",
         f"{time_h:.1f} h",
-        count_text(n_setups, "set-up"),
+        count_text(block.n_setups, "set-up"),
     ]
     if block.from_offcut:
-        facts.insert(0, "from an offcut kept earlier")
+        facts.insert(0, f"from {block.source}" if block.source else "from an offcut kept earlier")
     picture = svg_text(block_drawing(block, plan.pieces, plan.job.units))
     return (
         f'<article class="block">\n<h3>{safe(block.id)}</h3>\n{paragraph(", ".join(facts))}{picture}\n'
@@ -47,14 +47,19 @@ def _cuts(block: Block, plan: Plan) -> str:
     for piece in plan.pieces:
         pieces.setdefault(piece.sweep, []).append(piece.id)
     rows: list[tuple[str, ...]] = []
+    if block.bought_mm is not None:
+        face = " × ".join(f"{side:.0f}" for side in (block.length_mm, block.width_mm))
+        rows.append((f"Before the first set-up: stand the block on its {face} mm face",))
     setup = 0
     for cut in block.cuts:
         if cut.setup != setup:
             setup = cut.setup
             lies = "turned a quarter, its y along the travel" if cut.turn else "along the block, its x along the travel"
             rows.append((f"Set-up {setup}: part clamped {lies}",))
-        rows.append(_cut_row(cut, pieces))
-    heading = ("cut", "kind", "at, mm", "part before the cut, mm", "sweep", "pieces to tag", "done")
+        rows.append(_cut_row(cut, pieces, block.density_kg_m3 or plan.conditions.density_kg_m3))
+    heading = (
+        "cut", "kind", "at, mm", "part before the cut, mm", "comes free: support it", "sweep", "pieces to tag", "done",
+    )  # fmt: skip
     note = (
         "Planes are measured in the whole block, from the corner where the arrows of the picture begin. The wire takes"
         f" the {length_text(block.kerf_mm, 'mm', extra_decimals=2)} beyond the plane, away from that corner."
@@ -62,11 +67,22 @@ def _cuts(block: Block, plan: Plan) -> str:
     return f"{table(heading, rows, numbers=(0,))}{paragraph(note, 'note')}"
 
 
-def _cut_row(cut: Cut, pieces: Mapping[str, list[str]]) -> tuple[str, ...]:
+def _cut_row(cut: Cut, pieces: Mapping[str, list[str]], density_kg_m3: float) -> tuple[str, ...]:
     at = "" if cut.kind is CutKind.SWEEP else f"{cut.axis} = {cut.at_mm:.1f}"
     part = " × ".join(f"{size:.1f}" for size in cut.part_size_mm)
     tags = " and ".join(pieces.get(cut.sweep, [])) if cut.sweep is not None else ""
-    return str(cut.order), _KIND_WORDS[cut.kind], at, part, cut.sweep or "", tags, _DONE
+    free = "; ".join(_free_words(cut, freed, density_kg_m3) for freed in cut.frees)
+    return str(cut.order), _KIND_WORDS[cut.kind], at, part, free, cut.sweep or "", tags, _DONE
+
+
+def _free_words(cut: Cut, freed: Freed, density_kg_m3: float) -> str:
+    """Return what comes free at a cut, where, how large and how heavy."""
+    if cut.kind is CutKind.SWEEP:
+        return "upper half, on top"
+    size = " × ".join(f"{side:.0f}" for side in freed.size_mm)
+    mass = mass_kg(math.prod(freed.size_mm), density_kg_m3)
+    where = "on top" if freed.side == "top" else f"at the {freed.side}"
+    return f"{where}: {size} mm, {mass:.1f} kg"
 
 
 def stock_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
@@ -77,7 +93,11 @@ def stock_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
         rows.append(
             (
                 block.id,
-                size_text((block.length_mm, block.width_mm, block.height_mm), plan.job.units, has_unit=False),
+                size_text(
+                    block.bought_mm or (block.length_mm, block.width_mm, block.height_mm),
+                    plan.job.units,
+                    has_unit=False,
+                ),
                 block.grade,
                 str(len(block.billets)),
                 f"{ledger.used_percent:.1f}",
@@ -91,5 +111,5 @@ def stock_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
 
 def _price(block: Block, currency: str) -> str:
     if block.from_offcut:
-        return "own offcut"
+        return f"own offcut, worth {block.price:.2f} {currency}".rstrip() if block.price else "own offcut"
     return "" if block.price is None else f"{block.price:.2f} {currency}".rstrip()

@@ -19,6 +19,7 @@ def summary_lines(plan: Plan) -> tuple[tuple[str, str], ...]:
         ("pieces", f"{len(plan.pieces)}: {duty_counts(plan)}"),
         ("blocks", f"{len(plan.blocks)} ({bound_words(plan)})"),
         ("foam", _foam(plan)),
+        *((("waste", plan.ledger.waste_words),) if plan.ledger is not None else ()),
         ("hours", _hours(plan)),
         ("worst fit", _worst_fit(plan)),
         ("cost", _cost(plan)),

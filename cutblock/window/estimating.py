@@ -26,10 +26,6 @@ from cutblock.window.rows import (
 from cutblock.window.tables import RowsModel, RowsView
 from cutblock.worker.requests import ShownPlan
 
-_WASTE_WORDS = (
-    "Waste is skin trim, kerf, halves without a use and scrap; offcuts worth keeping count as neither used nor waste."
-)
-
 
 class EstimatingDesk(QWidget):
     """What the job takes in foam, time and money.
@@ -47,6 +43,7 @@ class EstimatingDesk(QWidget):
         self._lines.setHorizontalSpacing(16)
         self._lines.setColumnStretch(1, 1)
         self._words = label(kind="figure", wraps=True)
+        self._waste_words = label(kind="note", wraps=True)
         self.bar = LedgerBar()
         self.ledger = RowsModel(LEDGER_COLUMNS)
         self.ledger_table = RowsView(self.ledger, "Foam account", is_sortable=False)
@@ -159,7 +156,9 @@ class EstimatingDesk(QWidget):
         self.ledger_table.fit_columns()
         if ledger is None:
             self._words.setText("Not counted yet.")
+            self._waste_words.setText("")
             return
+        self._waste_words.setText(ledger.waste_words)
         self._words.setText(
             f"Used {ledger.used_percent:.1f} %, wasted {ledger.waste_percent:.1f} % "
             f"of {litres(ledger.bought_mm3):,.0f} l bought in {counted(ledger.n_blocks, 'block')} "
@@ -182,7 +181,7 @@ class EstimatingDesk(QWidget):
         layout = QVBoxLayout(box)
         layout.setContentsMargins(0, 0, 0, 0)
         layout.addWidget(self._words)
-        layout.addWidget(label(_WASTE_WORDS, "note", wraps=True))
+        layout.addWidget(self._waste_words)
         layout.addWidget(self.bar)
         layout.addWidget(self.ledger_table, 1)
         return box

@@ -3,7 +3,7 @@
 from typing import NamedTuple
 
 from cutblock.records.account import Ledger
-from cutblock.window.theme import GREEN, ORANGE, PURPLE, SKY, VERMILLION, YELLOW
+from cutblock.window.theme import BLUE, GREEN, ORANGE, PURPLE, SKY, VERMILLION, YELLOW
 
 USED, KEPT, WASTE = "used", "kept", "waste"
 
@@ -16,6 +16,7 @@ _PARTS = (
     ("Fillers", "F", "filler_mm3", PURPLE, "x", USED),
     ("Offcuts kept", "O", "offcut_mm3", "#F4F4F4", "/", KEPT),
     ("Surplus halves", "H", "surplus_mm3", YELLOW, "x", WASTE),
+    ("Thickened backs", "B", "thickened_mm3", BLUE, "\\", WASTE),
     ("Skin trim", "T", "trim_mm3", "#BBBBBB", "", WASTE),
     ("Kerf", "W", "kerf_mm3", VERMILLION, "", WASTE),
     ("Scrap", "S", "scrap_mm3", "#FFFFFF", ".", WASTE),

@@ -127,9 +127,11 @@ def cut_rows(plan: Plan, block: Block) -> Iterator[Row]:
 def block_rows(plan: Plan) -> list[Row]:
     """Return a row for every block."""
     used: dict[str, float] = {}
+    thick = {volume.sweep: volume.thickened_mm3 for volume in plan.volumes}
     for piece in plan.pieces:
         if piece.block is not None and piece.duty is not Duty.SURPLUS:
-            used[piece.block] = used.get(piece.block, 0.0) + piece.volume_mm3
+            extra = thick.get(piece.sweep, 0.0) if piece.half is Half.UPPER else 0.0
+            used[piece.block] = used.get(piece.block, 0.0) + piece.volume_mm3 - extra
     seconds = dict(plan.hours.by_block_s) if plan.hours is not None else {}
     return [_block_row(block, used.get(block.id, 0.0), seconds.get(block.id)) for block in plan.blocks]
 

@@ -10,6 +10,7 @@ from kit.sample import sample_plan
 
 from cutblock.base.units import litres
 from cutblock.flow.outputs import block_ledgers
+from cutblock.records.block import Freed
 from cutblock.records.drawing import Polygon, Text
 from cutblock.records.plan import Finding
 from cutblock.records.words import Severity
@@ -179,7 +180,7 @@ def test_the_cut_list_names_every_cut_in_order_with_its_plane_and_the_pieces_to_
     setups = [row[0] for row in table if len(row) == 1]
     assert [row[0] for row in rows] == [str(cut.order) for cut in plan.blocks[0].cuts]
     assert rows[0][1:4] == ["trim", "x = 13.8", "2500.0 × 1250.0 × 700.0"]
-    assert rows[-2][4:6] == ["SM-S1-A01", "SM-S1-A01-L and SM-S1-A01-U"]
+    assert rows[-2][5:7] == ["SM-S1-A01", "SM-S1-A01-L and SM-S1-A01-U"]
     assert len(setups) == 7
     assert setups[1] == "Set-up 2: part clamped turned a quarter, its y along the travel"
     assert setups[2] == "Set-up 3: part clamped along the block, its x along the travel"
@@ -241,9 +242,60 @@ def test_a_block_of_ones_own_stock_is_not_bought():
     plan = sample_plan()
     block = replace(plan.blocks[0], from_offcut=True)
 
-    row = page(replace(plan, blocks=(block,))).table("block")[1]
+    free, worth = (
+        page(replace(plan, blocks=(replace(block, price=price),))).table("block")[1] for price in (0.0, 40.0)
+    )
 
-    assert row[-1] == "own offcut"
+    assert free[-1] == "own offcut"
+    assert worth[-1] == "own offcut, worth 40.00 EUR"
+
+
+def test_a_block_on_another_face_is_stood_there_before_its_first_set_up():
+    plan = sample_plan()
+    block = replace(plan.blocks[0], bought_mm=(1250.0, 2500.0, 700.0))
+
+    table = page(replace(plan, blocks=(block,))).table("cut")
+
+    assert table[1] == ["Before the first set-up: stand the block on its 2500 × 1250 mm face"]
+
+
+def test_the_cut_list_says_what_comes_free_where_and_how_heavy_it_is():
+    plan = sample_plan()
+    freed = Freed(side="end", at_mm=(1216.2, 15.0, 15.0), size_mm=(1268.8, 1220.0, 670.0))
+    cuts = tuple(replace(cut, frees=(freed,)) if cut.order == 7 else cut for cut in plan.blocks[0].cuts)
+    plan = replace(plan, blocks=(replace(plan.blocks[0], cuts=cuts),))
+
+    rows = [row for row in page(plan).table("cut")[1:] if len(row) > 1]
+
+    # 1.2688 m x 1.22 m x 0.67 m of 20 kg/m3.
+    assert rows[6][4] == "at the end: 1269 × 1220 × 670 mm, 20.7 kg"
+    assert rows[7][4] == ""
+
+
+def test_the_waste_figure_is_explained_under_it_part_by_part():
+    plan = sample_plan()
+    words = plan.ledger.waste_words
+
+    assert words in "".join(page(plan).text)
+    shares = [float(number) for number in re.findall(r"(?:trim|kerf|scrap) (\d+\.\d) %", words)]
+    assert len(shares) == 3
+    assert sum(shares) == pytest.approx(plan.ledger.waste_percent, abs=0.16)
+
+
+def test_the_litres_on_the_page_add_up_to_the_last_digit():
+    table = page(sample_plan()).table("part")
+
+    *parts, total = [round(1000 * float(row[1])) for row in table[1:]]
+    assert sum(parts) == total
+
+
+@pytest.mark.parametrize(("coat_mm", "is_coated"), [(0.0, False), (0.6, True)])
+def test_scrap_is_clean_and_coated_moulds_are_told_apart_from_it(coat_mm, is_coated):
+    plan = sample_plan()
+    text = "".join(page(replace(plan, job=replace(plan.job, coat_mm=coat_mm))).text)
+
+    assert "all clean foam" in text
+    assert ("coated moulds go into another bin" in text) == is_coated
 
 
 def test_the_same_plan_gives_the_same_page():
