@@ -34,7 +34,7 @@ class Steps:
     middle: Floats  # (m,) wire-normal way of mid-wire
     near_moves: Floats  # (m,) of the near end
     far_moves: Floats  # (m,) of the far end
-    axes: Floats  # (m, 4) way of the towers' axes
+    axes: Floats  # (m, 8) way of the towers' axes, the billet as close to the near and to the far tower as it may be
 
 
 def sweep_steps(sweeps: Sequence[Sweep], machine: Machine) -> Steps:
@@ -120,8 +120,15 @@ def _share_in_foam(x: Floats, lengths: Floats, row: Ints) -> Floats:
 
 
 def _tower_ways(near: Floats, far: Floats, widths: Floats, machine: Machine) -> Floats:
-    """Return the ways of the wire's ends in the towers' planes, the wire carried on straight beyond the billet."""
+    """Return the ways of the wire's ends in the towers' planes, the wire carried on straight beyond the billet.
+
+    The ways are linear in where the billet lies between the towers, so they are largest with it at one end of its room:
+    on the table's near edge, or with its far face in the far tower's plane.
+    """
     slope = (far - near) / widths[:, None]
-    at_near = near - slope * machine.near_gap_mm
-    at_far = near + slope * (machine.span_mm - machine.near_gap_mm)
-    return np.concatenate([at_near[:, [0, 2]], at_far[:, [0, 2]]], axis=1)
+    ways = []
+    for gaps in (np.full(len(widths), machine.near_gap_mm), np.maximum(machine.near_gap_mm, machine.span_mm - widths)):
+        at_near = near - slope * gaps[:, None]
+        at_far = near + slope * (machine.span_mm - gaps)[:, None]
+        ways += [at_near[:, [0, 2]], at_far[:, [0, 2]]]
+    return np.concatenate(ways, axis=1)

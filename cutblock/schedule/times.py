@@ -5,20 +5,22 @@ from dataclasses import replace
 
 import numpy as np
 
-from cutblock.base.arrays import Floats, Ints
+from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.base.progress import Progress, silent
 from cutblock.records.plan import Finding
 from cutblock.records.shop import Conditions, Machine
 from cutblock.records.sweep import Sweep, SweepTiming
 from cutblock.records.words import Severity
 from cutblock.schedule.passes import Steps, sweep_steps
+from cutblock.schedule.stages import Courses, fastest_times
 
 WARN_RATIO = 2.0
 LARGEST_RATIO = 4.0
 
-_BATCH = 200  # sweeps worked on together: a fraction of a second
-_N_ROUNDS = 100
+_BATCH = 100  # sweeps worked on together: a fraction of a second
+_N_ROUNDS = 4
 _ROUNDING = 1e-9  # a limit met to this part is kept
+_LEAST_SHARE = 0.05  # of the axes' way that a step counts for at least where mid-wire stands
 _MELT_SLACK = 0.01  # the ramps at the ends of a sweep take less than this part of a step
 
 
@@ -27,9 +29,10 @@ def time_sweeps(
 ) -> tuple[tuple[Sweep, ...], tuple[SweepTiming, ...], tuple[Finding, ...]]:
     """Settle the speed along every sweep and the kerf at both billet faces that follows.
 
-    Mid-wire moves across itself at the planned speed. Where an end in foam would then pass the contact limit, where a
-    tower's axis would pass its speed, or where its speed would change faster than it can, the step takes longer. The
-    normal speed is linear along the wire, so its largest value is at an end of the part in foam and is kept exactly.
+    The wire goes from rest in the air before the billet to rest in the air behind it in the shortest time that keeps
+    mid-wire to the planned speed, which the wanted kerf follows from, either end in foam within the contact limit, and
+    every axis of the towers within its speed and its acceleration. The normal speed is linear along the wire, so its
+    largest value is at an end of the part in foam and is kept exactly.
 
     Args:
         sweeps: Any number, each with its own count of rulings.
@@ -76,44 +79,57 @@ def time_sweeps(
 
 
 def step_times(steps: Steps, conditions: Conditions, machine: Machine) -> Floats:
-    """Return the seconds each step takes, (m,)."""
-    planned = steps.middle / conditions.planned_mm_s
-    contact = steps.moves.largest / conditions.high_mm_s
-    axes = np.abs(steps.axes).max(axis=1) / machine.speed_mm_s
-    seconds = _eased(steps, np.maximum(np.maximum(planned, contact), axes), machine.acceleration_mm_s2)
-    # From rest and to rest: a ramp at the largest acceleration loses half its own time.
-    ends = np.concatenate([steps.firsts[:-1], steps.firsts[1:] - 1])
-    ramps = np.abs(steps.axes[ends]).max(axis=1) / seconds[ends] / (2.0 * machine.acceleration_mm_s2)
-    np.add.at(seconds, ends, ramps)
-    return seconds
+    """Return the seconds each step takes, (m,): the shortest that keep every limit.
 
-
-def _eased(steps: Steps, seconds: Floats, acceleration: float) -> Floats:
-    """Return step times long enough that no axis changes its speed faster than it can.
-
-    The change of speed between two steps is spread over half of each. Both are stretched until it fits; stretching
-    both by a factor divides the acceleration by its square.
+    Every sweep starts and ends at rest in air. Until the last of the wire has left the foam, mid-wire keeps to the
+    planned speed and the faster end to the contact limit, also before the foam, where the wire comes up to heat; behind
+    it the towers keep to the speed of moves in air.
     """
-    joints = np.flatnonzero(steps.sweeps[:-1] == steps.sweeps[1:])
+    lengths = np.maximum(steps.middle, _LEAST_SHARE * np.abs(steps.axes).max(axis=1))
+    axes = np.abs(steps.axes).max(axis=1) / machine.speed_mm_s
+    cutting = np.maximum(steps.middle / conditions.planned_mm_s, steps.moves.largest / conditions.high_mm_s)
+    air_mm = np.linalg.norm(steps.axes.reshape(len(axes), -1, 2), axis=2).max(axis=1)
+    leaving = air_mm / min(machine.air_speed_mm_s, machine.speed_mm_s)
+    least = np.maximum(np.where(_is_behind_foam(steps), leaving, cutting), axes)
+    courses = Courses(steps.firsts, steps.sweeps, lengths, steps.axes)
+    return _driven_times(courses, lengths / least, machine.acceleration_mm_s2)
+
+
+def _is_behind_foam(steps: Steps) -> Bools:
+    """Return which steps come after the last one in foam of their sweep, (m,)."""
+    numbers = np.arange(len(steps.sweeps))
+    last = np.maximum.reduceat(np.where(steps.is_in_foam, numbers, -1), steps.firsts[:-1])
+    behind: Bools = (numbers > last[steps.sweeps]) & (last >= 0)[steps.sweeps]
+    return behind
+
+
+def _driven_times(courses: Courses, speeds: Floats, acceleration: float) -> Floats:
+    """Return the fastest times at which the polyline a program drives keeps the acceleration too, (m,).
+
+    At a ruling the change of speed between two steps is spread over half of each. It is that of the rounded path but
+    for a part that falls with the square of the step. Where that is too much, the two steps are slowed; what a few
+    rounds leave is taken up by stretching the whole sweep, which divides it by the square of the stretch.
+    """
+    joints = np.flatnonzero(courses.sweeps[:-1] == courses.sweeps[1:])
+    speeds = speeds.copy()
+    seconds = fastest_times(courses, speeds, acceleration)
     for _ in range(_N_ROUNDS):
-        excess = _excess(steps, seconds, joints, acceleration)
-        bad = excess > 1.0 + _ROUNDING
-        if not bad.any():
+        slowing = np.sqrt(np.maximum(1.0, _excess(courses, seconds, joints, acceleration)))
+        if slowing.max(initial=1.0) <= 1.0 + _ROUNDING:
             return seconds
-        factors = np.ones_like(seconds)
-        stretch = np.sqrt(excess[bad])
-        np.maximum.at(factors, joints[bad], stretch)
-        np.maximum.at(factors, joints[bad] + 1, stretch)
-        seconds = seconds * factors
-    # Slow the whole of a sweep that is still too rough.
-    worst = np.ones(len(steps.firsts) - 1)
-    np.maximum.at(worst, steps.sweeps[joints], _excess(steps, seconds, joints, acceleration))
-    return seconds * np.sqrt(worst)[steps.sweeps]
+        slowed = courses.lengths / seconds
+        for steps in (joints, joints + 1):
+            np.minimum.at(speeds, steps[slowing > 1.0], (slowed[steps] / slowing)[slowing > 1.0])
+        seconds = fastest_times(courses, speeds, acceleration)
+    worst = np.ones(len(courses.firsts) - 1)
+    np.maximum.at(worst, courses.sweeps[joints], _excess(courses, seconds, joints, acceleration))
+    result: Floats = seconds * np.sqrt(worst)[courses.sweeps]
+    return result
 
 
-def _excess(steps: Steps, seconds: Floats, joints: Ints, acceleration: float) -> Floats:
-    """Return the acceleration at each joint over the largest one."""
-    speeds = steps.axes / seconds[:, None]
+def _excess(courses: Courses, seconds: Floats, joints: Ints, acceleration: float) -> Floats:
+    """Return the acceleration of the polyline at each joint over the largest one."""
+    speeds = courses.axes / seconds[:, None]
     change = np.abs(speeds[joints + 1] - speeds[joints]).max(axis=1)
     result: Floats = change / (0.5 * (seconds[joints] + seconds[joints + 1]) * acceleration)
     return result

@@ -7,6 +7,7 @@ from hypothesis import strategies as st
 from kit.sample import sample_conditions, sample_machine, sample_sweep
 
 from cutblock.base.errors import Cancelled
+from cutblock.schedule import stages
 from cutblock.schedule.passes import sweep_steps
 from cutblock.schedule.times import step_times, time_sweeps
 
@@ -61,8 +62,12 @@ def normal_speed(sweep, timing, share):
 
 def test_a_level_cut_takes_its_length_over_the_planned_speed():
     _, (timing,), findings = time_sweeps([flat_sweep()], CONDITIONS, MACHINE)
-    # Two ramps of v / 2a each.
-    assert timing.seconds == pytest.approx(1240.0 / 2.6458 + 2.6458 / 200.0, rel=1e-9)
+    # Up to speed at 200 mm/s2 and through the foam; the last 20 mm, in air, up to 40 mm/s and down to rest.
+    cutting = 1220.0 / 2.6458 + 2.6458 / 400.0
+    air = (20.0 - (2 * 40.0**2 - 2.6458**2) / 400.0) / 40.0 + (2 * 40.0 - 2.6458) / 200.0
+    assert timing.seconds == pytest.approx(cutting + air, rel=1e-4)
+    np.testing.assert_allclose(timing.step_seconds[1:-1], 20.0 / 2.6458, rtol=1e-12)
+    assert timing.step_seconds[-1] == pytest.approx(air, rel=0.03)
     assert timing.seconds == pytest.approx(timing.step_seconds.sum(), rel=1e-12)
     assert timing.end_speed_ratio == pytest.approx(1.0)
     assert timing.twist_deg_per_m == pytest.approx(0.0, abs=1e-9)
@@ -79,36 +84,78 @@ def test_no_speed_limit_is_passed_and_midwire_keeps_the_plan_where_it_can(seed, 
     conditions = sample_conditions(planned_mm_s=planned)
     sweep = random_sweep(seed)
     _, (timing,), _ = time_sweeps([sweep], conditions, MACHINE)
-    speeds = np.array([normal_speed(sweep, timing, share) for share in (0.0, 0.25, 0.5, 0.75, 1.0)])
+    speeds = np.array([normal_speed(sweep, timing, share)[:-1] for share in (0.0, 0.25, 0.5, 0.75, 1.0)])
     assert speeds.max() <= conditions.high_mm_s * (1.0 + 1e-9)
     assert speeds[2].max() <= planned * (1.0 + 1e-9)
-    is_free = speeds.max(axis=0)[1:-1] < conditions.high_mm_s * (1.0 - 1e-6)
-    np.testing.assert_allclose(speeds[2, 1:-1][is_free], planned, rtol=1e-6)
+    is_free = speeds.max(axis=0)[1:-1] < conditions.high_mm_s * (1.0 - 1e-3)
+    np.testing.assert_allclose(speeds[2, 1:-1][is_free], planned, rtol=1e-3)
 
 
-@given(seed=st.integers(0, 2**32 - 1))
-def test_towers_keep_to_their_speed_and_acceleration(seed):
-    machine = sample_machine(speed_mm_s=2.0, acceleration_mm_s2=0.05)
-    sweep = random_sweep(seed, n=200)
-    steps = sweep_steps([sweep], machine)
-    seconds = step_times(steps, CONDITIONS, machine)
+def driven(steps, seconds):
+    """Speeds of the axes in every step and their changes over half of both steps, from rest to rest, of one sweep."""
     speeds = steps.axes / seconds[:, None]
-    assert np.abs(speeds).max() <= 2.0 * (1.0 + 1e-9)
-    # The first and last step also hold the ramp, so they are slower than the rest by more than the towers need.
-    inner = speeds[1:-1]
-    gaps = 0.5 * (seconds[1:-2] + seconds[2:-1])
-    assert (np.abs(np.diff(inner, axis=0)).max(axis=1) / gaps).max() <= 0.05 * (1.0 + 1e-6)
+    rests = np.zeros((1, speeds.shape[1]))
+    gaps = 0.5 * (np.append(seconds, 0.0) + np.append(0.0, seconds))
+    return np.abs(speeds), np.abs(np.diff(np.concatenate([rests, speeds, rests]), axis=0)) / gaps[:, None]
 
 
-def test_a_rail_too_rough_for_easing_is_slowed_as_a_whole():
+@given(
+    seed=st.integers(0, 2**32 - 1),
+    n=st.integers(3, 200),
+    speed=st.floats(0.5, 60.0),
+    acceleration=st.floats(0.02, 300.0),
+)
+def test_towers_keep_to_their_speed_and_acceleration(seed, n, speed, acceleration):
+    machine = sample_machine(speed_mm_s=speed, acceleration_mm_s2=acceleration)
+    steps = sweep_steps([random_sweep(seed, n)], machine)
+    speeds, changes = driven(steps, step_times(steps, CONDITIONS, machine))
+    assert speeds.max() <= speed * (1.0 + 1e-9)
+    assert changes.max() <= acceleration * (1.0 + 1e-6)
+
+
+def test_a_rail_too_rough_for_its_towers_is_driven_slowly():
     x = np.linspace(-20.0, 1220.0, 400)
     rough = np.stack([x, 150.0 + 3.0 * np.resize([1.0, -1.0], 400)], axis=1)
     machine = sample_machine(acceleration_mm_s2=0.01)
     steps = sweep_steps([sample_sweep(near=rough, far=rough)], machine)
-    seconds = step_times(steps, CONDITIONS, machine)
-    speeds = (steps.axes / seconds[:, None])[1:-1]
-    gaps = 0.5 * (seconds[1:-2] + seconds[2:-1])
-    assert (np.abs(np.diff(speeds, axis=0)).max(axis=1) / gaps).max() <= 0.01 * (1.0 + 1e-6)
+    speeds, changes = driven(steps, step_times(steps, CONDITIONS, machine))
+    assert changes.max() <= 0.01 * (1.0 + 1e-6)
+    # Twice the speed across at each ruling, over the time of a step: v^2 = a h / 2 with 6 mm of h across.
+    assert np.median(speeds[:, 1]) == pytest.approx(np.sqrt(0.01 * 6.0 / 2.0), rel=0.02)
+
+
+@pytest.mark.parametrize(("n", "speed", "acceleration"), [(300, 60.0, 200.0), (300, 2.0, 0.5), (150, 60.0, 5.0)])
+def test_twenty_times_finer_nodes_find_no_time_shorter_by_a_five_hundredth(monkeypatch, n, speed, acceleration):
+    machine = sample_machine(speed_mm_s=speed, acceleration_mm_s2=acceleration)
+    steps = sweep_steps([random_sweep(seed, n) for seed in range(10)], machine)
+    coarse = np.add.reduceat(step_times(steps, CONDITIONS, machine), steps.firsts[:-1])
+    kinds = [np.append(kind, 1.0) for kind in stages._KINDS]
+    finer = tuple(np.unique(kind[:-1] + np.arange(20)[:, None] / 20.0 * np.diff(kind)) for kind in kinds)
+    monkeypatch.setattr(stages, "_KINDS", finer)
+    fine = np.add.reduceat(step_times(steps, CONDITIONS, machine), steps.firsts[:-1])
+    np.testing.assert_allclose(coarse, fine, rtol=2e-3)
+    # Both are no faster than the limits of speed alone, and hardly slower where the towers are strong.
+    assert (coarse >= fine * (1.0 - 1e-9)).all()
+
+
+def test_no_sweep_can_be_cut_faster_than_its_limits_and_strong_towers_reach_them():
+    steps = sweep_steps([random_sweep(seed, 300) for seed in range(10)], MACHINE)
+    seconds = step_times(steps, CONDITIONS, MACHINE)
+    bounds = np.maximum(steps.middle / CONDITIONS.planned_mm_s, steps.moves.largest / CONDITIONS.high_mm_s)
+    last = [int(np.flatnonzero(steps.is_in_foam & (steps.sweeps == index))[-1]) for index in range(10)]
+    is_cut = np.arange(len(seconds)) <= np.array(last)[steps.sweeps]
+    assert (seconds[is_cut] >= bounds[is_cut] * (1.0 - 1e-9)).all()
+    assert seconds[is_cut].sum() == pytest.approx(bounds[is_cut].sum(), rel=1e-4)
+
+
+def test_the_wire_leaves_the_foam_at_cutting_speed_and_the_air_behind_it_fast():
+    sweep = flat_sweep(n=249)  # 5 mm a step
+    _, (timing,), _ = time_sweeps([sweep], CONDITIONS, MACHINE)
+    speeds = 5.0 / timing.step_seconds
+    np.testing.assert_allclose(speeds[1:244], 2.6458, rtol=1e-12)
+    # The last step over the billet ends at 1200 mm, the pass at 1220 mm.
+    assert (speeds[244:] > 15.0).all()
+    assert speeds.max() <= 40.0
 
 
 def test_a_kink_is_eased_where_it_is_and_the_rest_keeps_its_speed():
@@ -125,7 +172,10 @@ def test_tower_planes_lie_beyond_the_billet():
     steps = sweep_steps([fan_sweep()], MACHINE)
     slope = (1240.0 - 400.0) / 1000.0
     near, far = 400.0 - 200.0 * slope, 400.0 + 2400.0 * slope
-    np.testing.assert_allclose(steps.axes.sum(axis=0), [near, 0.0, far, 0.0], atol=1e-9)
+    # With the far face in the far tower's plane the wire reaches 1600 mm before the billet.
+    np.testing.assert_allclose(
+        steps.axes.sum(axis=0), [near, 0.0, far, 0.0, 400.0 - 1600.0 * slope, 0.0, 1240.0, 0.0], atol=1e-9
+    )
 
 
 def test_a_slow_axis_stretches_the_time():
