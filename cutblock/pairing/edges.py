@@ -7,12 +7,14 @@ import numpy as np
 
 from cutblock.base.arrays import Floats
 from cutblock.pairing.shapes import OUTLINE_MM, SIZE_MM, Shapes, find_candidates, turned_over
+from cutblock.records.couple import shared_tolerance_mm
+from cutblock.records.job import Job
+from cutblock.records.shop import Conditions
 
 # Turning half a billet over, marking it and keeping the pair together takes about the work that two litres of foam
 # cost; common practice, no source.
 HANDLING_LITRES = 2.0
 _SPARE_SHARE = 0.25  # of the margin of a bench panel that its billet or outline may differ by
-_LIKELY = 1.05  # times what is allowed: shared sheets predicted to stray more are not tried
 _CLOSENESS = 0.05  # share of the litres that the closest of pairs is worth more than the farthest
 
 
@@ -20,6 +22,7 @@ class Reach(NamedTuple):
     """How much partners may differ, mm."""
 
     heights_mm: float  # of a face and the other's wanted surface after the best vertical shift
+    mean_mm: float  # of a face fitted to both and either wanted surface
     size_mm: float
     outline_mm: float
 
@@ -33,21 +36,25 @@ class Attempt(NamedTuple):
     is_shared: bool  # a sweep fitted to both may do
 
 
-def reach_of(tolerance_mm: float, kerf_part_mm: float, steepest: float, margin_mm: float) -> Reach:
+def reach_of(job: Job, conditions: Conditions, steepest: float) -> Reach:
     """Return how much partners may differ.
 
     Round a bench panel lies a margin of foam, a quarter of which may be taken up by a partner of another size; on the
     bed the mould's sides are the joints.
 
     Args:
-        tolerance_mm: Of the finished face.
-        kerf_part_mm: What kerf and coat put the upper half's face off, made up by packing at best.
+        job: Tolerance, coat and margin.
+        conditions: The kerf; what it puts the upper half's face off is made up by packing at best.
         steepest: Least vertical part of all normals.
-        margin_mm: Foam round a panel; 0 on the bed.
     """
-    spare = _SPARE_SHARE * margin_mm
-    heights = (tolerance_mm + kerf_part_mm) / max(steepest, 0.25)
-    return Reach(heights, max(SIZE_MM, spare), max(OUTLINE_MM, spare))
+    spare, slope = _SPARE_SHARE * job.margin_mm, max(steepest, 0.25)
+    kerf_part = abs(conditions.kerf_mm / 2.0 - job.coat_mm)
+    return Reach(
+        heights_mm=(job.tolerance_mm + kerf_part) / slope,
+        mean_mm=shared_tolerance_mm(job, conditions) / slope,
+        size_mm=max(SIZE_MM, spare),
+        outline_mm=max(OUTLINE_MM, spare),
+    )
 
 
 def find_attempts(
@@ -79,7 +86,7 @@ def find_attempts(
         is_known = shapes.domains[lower] < 2
         own_may = ~is_known | (own <= reach.heights_mm)
         mean_may = may_share & np.array(is_whole)[lower] & np.array(is_whole)[upper]
-        mean_may &= ~is_known | (mean <= _LIKELY * reach.heights_mm)
+        mean_may &= ~is_known | (mean <= reach.mean_mm)
         for pair, is_own, is_shared in zip(some, own_may.tolist(), mean_may.tolist(), strict=True):
             if is_own or is_shared:
                 attempt = Attempt(pair.misfit_mm, turn, is_own, is_shared)

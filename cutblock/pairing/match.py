@@ -52,9 +52,7 @@ def pair_sweeps(
     by_id = {panel.id: panel for panel in panels}
     shapes = describe_shapes(by_id, sweeps, job.margin_mm, part_of(progress, 0.0, 0.2))
     steepest = min((float(panel.normals[:, 2].min()) for panel in panels), default=1.0)
-    kerf_part = abs(conditions.kerf_mm / 2.0 - job.coat_mm)
-    reach = reach_of(job.tolerance_mm, kerf_part, steepest, job.margin_mm)
-    search = Search(job, by_id, sweeps, conditions, shapes, reach, fit_shared)
+    search = Search(job, by_id, sweeps, conditions, shapes, reach_of(job, conditions, steepest), fit_shared)
     bound = bind_locks(job, by_id, sweeps)
     locked = prove_pairs(job, search, bound, partial(progress, 0.2, "Pairing halves"))
     taken = bound.alone | {index for first, second, _ in bound.pairs for index in (first, second)}

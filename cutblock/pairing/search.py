@@ -16,7 +16,10 @@ from cutblock.records.panel import Panel
 from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Sweep
 
-_WHOLE_ROUNDS = 6  # matched anew with all shapes; then the pairs that are proved stay
+# So often all shapes are matched anew without the pairs that failed; then the pairs that are proved stay.
+_WHOLE_ROUNDS = 6
+_ROUNDS_OF_MANY = 2
+_MANY = 1000  # possible pairs, of which a matching takes a second
 
 
 class Match(NamedTuple):
@@ -84,6 +87,7 @@ class Search:
             may_share=self.fit_shared is not None,
         )
         litres = [_litres(self.sweeps[index]) for index in firsts]
+        n_whole = _WHOLE_ROUNDS if len(attempts) <= _MANY else _ROUNDS_OF_MANY
         n_rounds = 0
         while True:
             n_rounds += 1
@@ -94,7 +98,7 @@ class Search:
             report = part_of(progress, 1.0 - 0.4 ** (n_rounds - 1), 1.0 - 0.4**n_rounds)
             proved = self._prove(pairs, [attempts[pair.edge][0] for pair in pairs], report)
             failed = {pair.edge for pair, match in zip(pairs, proved, strict=True) if match is None}
-            if not failed or n_rounds >= _WHOLE_ROUNDS:
+            if not failed or n_rounds >= n_whole:
                 done = [match for match in proved if match is not None]
                 self.matches += done
                 paired = {index for match in done for index in (match.kept, match.dropped)}

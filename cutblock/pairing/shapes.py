@@ -9,7 +9,7 @@ turn and are never compared.
 """
 
 from collections.abc import Mapping, Sequence
-from typing import TYPE_CHECKING, NamedTuple
+from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 
@@ -38,6 +38,7 @@ _N_KEPT = 6  # rows and columns of the cosine transform in a descriptor
 _WHOLE = 0.985  # part of the plan compared: nearly all, as bench panels are not quite rectangles
 _CORE = 0.5  # part of the plan compared where that reaches beyond the panel's outline
 _NOTHING = 2  # the domain where not even the core lies within the outline
+_SMOOTH = 0.05  # of the distance allowed to outlines: how far they are smoothed before
 _SAME_MM = 0.02  # panels this much alike count as one shape
 _N_SEARCHED = 10  # coefficients of a descriptor that are searched by
 _RADIUS = np.sqrt(2.0) * (1.0 + 1e-9)
@@ -283,9 +284,24 @@ def _agreeing(corners: Sequence[Floats], turn: Floats, lower: Ints, upper: Ints,
     own = np.array(four).reshape(-1, 4, 2)
     # Outlines with the same four corners need no dear way; the turns keep every digit.
     agree: Bools = (_in_order(own @ turn)[lower] == _in_order(own)[upper]).all(axis=(1, 2))
-    for k in np.flatnonzero(~agree):
-        agree[k] = _agree(corners[lower[k]] @ turn, corners[upper[k]], within_mm)
+    reaches, turned_reaches = _supports(corners), _supports([ring @ turn for ring in corners])
+    is_near = np.abs(turned_reaches[lower] - reaches[upper]).max(axis=1, initial=0.0) * np.sqrt(8.0) <= within_mm
+    rest = np.flatnonzero(~agree & is_near)
+    if len(rest):
+        rings = _simple_rings(corners, within_mm)
+        turned = _simple_rings([ring @ turn for ring in corners], within_mm)
+        import shapely
+
+        agree[rest] = shapely.hausdorff_distance(turned[lower[rest]], rings[upper[rest]]) <= within_mm
     return agree
+
+
+def _simple_rings(corners: Sequence[Floats], within_mm: float) -> Any:  # noqa: ANN401 - shapely ships no types
+    """Return outlines as rings without the points that hardly bend them: those of curved panels have hundreds."""
+    import shapely
+
+    rings = np.array([shapely.LinearRing(ring) for ring in corners], dtype=object)
+    return shapely.simplify(rings, _SMOOTH * within_mm)
 
 
 def _in_order(rings: Floats) -> Floats:
@@ -297,6 +313,8 @@ def _in_order(rings: Floats) -> Floats:
 
 def _agree(first: Floats, second: Floats, within_mm: float) -> bool:
     """Return whether two rings lie within a distance of each other."""
+    if np.array_equal(first, second):
+        return True
     import shapely
 
     return bool(shapely.hausdorff_distance(shapely.LinearRing(first), shapely.LinearRing(second)) <= within_mm)
