@@ -6,11 +6,13 @@ import numpy as np
 
 from cutblock.base.arrays import Floats
 from cutblock.geometry.deviation import deviation_measures, face_deviation
+from cutblock.geometry.ruled import end_slowness
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.shop import Conditions
 from cutblock.records.sweep import Serving, Sweep
 from cutblock.records.words import Favour, Half
+from cutblock.wire.motion import kerf_gain
 
 _N_BISECTIONS = 60
 _EDGE_MM = 0.01  # samples this far outside a strip still belong to it
@@ -60,14 +62,15 @@ def check_partner(
         lifted = samples + np.array([0.0, 0.0, lift_mm])
         return face_deviation(lower.near, lower.far, lower.width_mm, lifted, normals, offset_mm)
 
+    uneven = _unevenness(job, conditions, lower, samples[:, 1])
     lift = best_lift(off(0.0, aimed), normals[:, 2])
     packing = 0.0
-    deviations = off(lift, raised)
+    deviations = off(lift, raised) + uneven
     # What the half was meant to leave at each point of its face is the same everywhere, along the normal.
-    fitted = deviations - (raised - aimed)
+    fitted = deviations - uneven - (raised - aimed)
     if np.abs(deviations).max() > tolerance_mm:
         packing = best_lift(deviations, normals[:, 2])
-        deviations = off(lift + packing, raised)
+        deviations = off(lift + packing, raised) + uneven
         if np.abs(deviations).max() > tolerance_mm:
             return None
     max_mm, rms_mm, p95_mm = deviation_measures(deviations, areas)
@@ -90,6 +93,20 @@ def check_partner(
         ),
         packing,
     )
+
+
+def _unevenness(job: Job, conditions: Conditions, sweep: Sweep, y: Floats) -> Floats:
+    """Return how much higher the upper half's face lies for the kerfs that the wire's ends leave, (m,) mm.
+
+    Mid-wire keeps to the planned speed, so an end that goes a shorter way goes slower and melts more. The centreline is
+    fitted again for the settled kerf, so that the favoured half still meets the form; where the kerf is shared it
+    stays.
+    """
+    slowness = end_slowness(sweep.near, sweep.far, sweep.width_mm, sweep.length_mm)
+    places = np.clip(y / sweep.width_mm, 0.0, 1.0)
+    share = {Favour.LOWER: 1.0, Favour.SHARE: 0.5, Favour.UPPER: 0.0}[job.favour]
+    uneven: Floats = share * kerf_gain(conditions.kerf_mm - conditions.least_kerf_mm, slowness, places)
+    return uneven
 
 
 def _middle(sweep: Sweep) -> Floats:

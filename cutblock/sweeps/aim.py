@@ -10,7 +10,7 @@ from cutblock.geometry.heights import offset_heights
 from cutblock.records.job import Job
 from cutblock.records.panel import Panel
 from cutblock.records.shop import Conditions, Machine
-from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm
+from cutblock.sweeps.kerf_law import centreline_offset_mm, face_offset_mm, kerf_error_mm, kerf_share
 from cutblock.sweeps.lie import Lie, lie_of
 from cutblock.sweeps.validity import STEEPEST_WIRE_DEG
 
@@ -25,6 +25,8 @@ class Aim:
     kerf_error_mm: float  # what kerf and coat alone leave between finished face and form
     stretch: float  # longest wire between the machine's towers by their distance
     squareness: float = SQUARENESS  # share of the tolerance that less skew is worth
+    least_kerf_mm: float = 0.0  # at boundless speed
+    kerf_share: float = 0.0  # of what the kerf is over the planned one, how much higher the lower half's face then lies
 
     @property
     def lean_deg(self) -> float:
@@ -53,6 +55,8 @@ def aim_of(job: Job, conditions: Conditions, tool: Machine, squareness: float = 
         kerf_error_mm=kerf_error_mm(job.favour, conditions.kerf_mm, job.coat_mm),
         stretch=min(tool.longest_wire_mm / tool.span_mm, 1.0 / math.cos(math.radians(STEEPEST_WIRE_DEG))),
         squareness=squareness,
+        least_kerf_mm=conditions.least_kerf_mm,
+        kerf_share=kerf_share(job.favour),
     )
 
 

@@ -9,8 +9,10 @@ from cutblock.base.arrays import Floats
 from cutblock.geometry.deviation import deviation_measures, face_deviation
 from cutblock.geometry.fit import fit_patches
 from cutblock.geometry.rails import SheetFit, polyline_rails
+from cutblock.geometry.ruled import end_slowness
 from cutblock.sweeps.aim import Aim
 from cutblock.sweeps.lie import Lie, Strip
+from cutblock.wire.motion import kerf_gain
 
 SAG_MM = 0.002
 FAR_OFF = 1.5  # times the room of the fit: such strips are not measured, they cannot do
@@ -120,9 +122,21 @@ def _cut_strip(strip: Strip, sheet: SheetFit, aim: Aim) -> CutStrip:
     samples, normals, areas = strip.samples()
     if len(samples):
         deviations = face_deviation(near, far, strip.width_mm, samples, normals, aim.face_offset_mm)
-        face = deviation_measures(deviations, areas)
+        uneven = _unevenness(strip, near, far, samples[:, 1], aim)
+        face = deviation_measures(deviations + uneven, areas)
         # The finished face and the surface the centreline was fitted to are parallel to sheet and form.
         fit = deviation_measures(deviations - aim.kerf_error_mm, areas)
     else:
         face = fit = (0.0, 0.0, 0.0)
     return CutStrip(strip, sheet, near, far, *face, *fit[:2])
+
+
+def _unevenness(strip: Strip, near: Floats, far: Floats, y: Floats, aim: Aim) -> Floats:
+    """Return how much higher the finished face lies for the kerf that the wire's ends leave at their own speeds, mm.
+
+    Mid-wire keeps to the planned speed, so an end that goes a shorter way goes slower and melts more.
+    """
+    slowness = end_slowness(near, far, strip.width_mm, strip.lie.size_mm[0])
+    places = np.clip(y / strip.width_mm, 0.0, 1.0)
+    uneven: Floats = aim.kerf_share * kerf_gain(aim.kerf_mm - aim.least_kerf_mm, slowness, places)
+    return uneven

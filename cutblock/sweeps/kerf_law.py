@@ -21,3 +21,12 @@ def centreline_offset_mm(favour: Favour, kerf_mm: float, coat_mm: float) -> floa
 def kerf_error_mm(favour: Favour, kerf_mm: float, coat_mm: float) -> float:
     """Return how far above the form kerf and coat alone leave the lower half's finished face."""
     return centreline_offset_mm(favour, kerf_mm, coat_mm) + face_offset_mm(kerf_mm, coat_mm)
+
+
+def kerf_share(favour: Favour) -> float:
+    """Return how much higher the lower half's finished face lies by each mm that the kerf is over the planned one.
+
+    The centreline is fitted again for the settled kerf, so that the favoured half still meets the form; where the kerf
+    is shared it stays.
+    """
+    return {Favour.LOWER: 0.0, Favour.UPPER: -1.0, Favour.SHARE: -0.5}[favour]

@@ -94,6 +94,18 @@ def kerf_along(ends: tuple[float, float], least_kerf: float, fractions: Floats) 
     return taper_kerf(fractions, least_kerf, near, near / far)
 
 
+def kerf_gain(excess: float, slowness: tuple[float, float], fractions: Floats) -> Floats:
+    """Return what the kerf along a wire is over the one at mid-wire, where its ends are slower than that or faster.
+
+    Args:
+        excess: Kerf at mid-wire beyond w0; none where it is not over 0.
+        slowness: Speed of mid-wire over that of the near and of the far end, over 0.
+        fractions: Of the way from the near to the far end.
+    """
+    excess = max(excess, 0.0)
+    return taper_kerf(fractions, -excess, excess * slowness[0], slowness[0] / slowness[1])
+
+
 def taper_mean(ratio: ArrayLike) -> Floats:
     """Return the mean of the excess kerf along such a wire over that at the slow end: ln R / (R - 1)."""
     beyond = np.asarray(ratio, dtype=np.float64) - 1.0

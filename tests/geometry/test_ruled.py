@@ -4,6 +4,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from cutblock.geometry.ruled import (
+    end_slowness,
     end_speed_ratios,
     end_speeds,
     fold_places,
@@ -111,3 +112,20 @@ def test_normals_stand_square_on_the_sheet():
     np.testing.assert_allclose(-normals[:, 0] / normals[:, 2], slope_x, atol=2e-5)
     np.testing.assert_allclose(-normals[:, 1] / normals[:, 2], slope_y, atol=2e-5)
     np.testing.assert_allclose(np.linalg.norm(normals, axis=1), 1.0, rtol=1e-12)
+
+
+def test_an_end_that_goes_twice_as_far_is_three_quarters_as_slow_as_mid_wire():
+    x = np.linspace(0.0, 1000.0, 21)
+    near, far = np.stack([x, 0.0 * x], axis=1), np.stack([2.0 * x - 500.0, 0.0 * x], axis=1)
+
+    # Whatever happens beside the billet does not count, and the wire leans by less than a quarter of its length.
+    at_near, at_far = end_slowness(near, far, 1e6, 1000.0)
+
+    assert (at_near, at_far) == pytest.approx((1.5, 0.75), rel=1e-6)
+
+
+def test_only_the_way_over_the_billet_makes_an_end_slow():
+    x = np.array([-500.0, 0.0, 1000.0, 1500.0])
+    far = np.array([-100.0, 0.0, 1000.0, 2500.0])
+    slowness = end_slowness(np.stack([x, 0.0 * x], axis=1), np.stack([far, 0.0 * x], axis=1), 1e6, 1000.0)
+    assert slowness == pytest.approx((1.0, 1.0), rel=1e-6)

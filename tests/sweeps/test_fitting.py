@@ -6,21 +6,25 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from kit.sample import sample_conditions, sample_job
+from kit.sample import sample_conditions, sample_job, sample_machine
 from kit.shapes import conoid, dome, hypar, hyperboloid, panel_of, scherk, turned
 
 from cutblock.base.errors import Cancelled, NotCuttable
 from cutblock.geometry.deviation import face_deviation
 from cutblock.geometry.sheet import sheet_heights
 from cutblock.records.words import Favour, Half, Layup, Severity
+from cutblock.schedule.times import time_sweeps
 from cutblock.sweeps import cutting
 from cutblock.sweeps.fitting import fit_panels
+from cutblock.sweeps.kerf_pass import refit_for_kerf
+from cutblock.sweeps.maps import settle
 
 KERF = 1.2
+EVEN = sample_conditions(least_kerf_mm=KERF)  # whatever the speed
 
 
-def fitted(*panels, favour=Favour.LOWER, **changes):
-    return fit_panels(sample_job(favour=favour, **changes), panels, sample_conditions())
+def fitted(*panels, favour=Favour.LOWER, conditions=None, **changes):
+    return fit_panels(sample_job(favour=favour, **changes), panels, conditions or sample_conditions())
 
 
 def bench(**changes):
@@ -64,7 +68,7 @@ def test_the_wire_comes_from_the_air_and_leaves_into_it(degrees, margin):
 @pytest.mark.parametrize(("favour", "lower"), [(Favour.LOWER, 0.0), (Favour.SHARE, -0.6), (Favour.UPPER, -1.2)])
 def test_kerf_is_kept_off_the_favoured_face(favour, lower):
     panel = panel_of(hypar)
-    (sweep,), _ = fitted(panel, favour=favour)
+    (sweep,), _ = fitted(panel, favour=favour, conditions=EVEN)
     samples = (panel.samples_mm - sweep.serving[0].shift_mm) @ sweep.serving[0].rotation
 
     face = face_deviation(sweep.near, sweep.far, sweep.width_mm, samples, panel.normals, -KERF / 2)
@@ -75,8 +79,45 @@ def test_kerf_is_kept_off_the_favoured_face(favour, lower):
 
 
 def test_a_coat_of_half_the_kerf_brings_both_faces_home():
-    (sweep,), _ = fitted(panel_of(hypar), favour=Favour.SHARE, coat_mm=0.6)
+    (sweep,), _ = fitted(panel_of(hypar), favour=Favour.SHARE, coat_mm=0.6, conditions=EVEN)
     assert sweep.serving[0].max_mm < 0.004
+
+
+def fan(x, y):
+    """A conoid whose far end goes a much longer way than its near end."""
+    return (y + 500.0) / 1000.0 * 150.0 * np.sin(3.0 * np.pi * (x + 600.0) / 1200.0)
+
+
+@pytest.mark.parametrize("favour", list(Favour))
+def test_the_fit_tells_what_the_settled_speeds_leave(favour):
+    """Cut slowly on a machine that keeps up, the kerfs at both ends follow from the rails alone."""
+    panel = panel_of(fan, counts=(61, 35))
+    job, conditions = sample_job(favour=favour, coat_mm=0.6), sample_conditions()
+    fast = sample_machine(acceleration_mm_s2=1e5, speed_mm_s=1e3)
+    sweeps, _ = fit_panels(job, [panel], conditions)
+    timed, _, _ = time_sweeps(sweeps, conditions, fast)
+    moved, _ = refit_for_kerf(job, [panel], timed, conditions)
+    _, settled = settle(job, [panel], moved, conditions)
+
+    near, far = timed[0].kerf_mm
+    assert abs(near - far) > 0.1
+    for before, after in zip(sweeps, settled, strict=True):
+        assert before.serving[0].max_mm == pytest.approx(after.serving[0].max_mm, abs=0.015)
+    if favour is not Favour.LOWER:
+        assert sweeps[0].serving[0].max_mm > sweeps[0].fit_max_mm + 0.05
+
+
+def test_a_panel_that_only_an_even_kerf_would_keep_within_the_tolerance_is_cut_otherwise():
+    panel = panel_of(fan, counts=(61, 35))
+    even, _ = fitted(panel, favour=Favour.SHARE, coat_mm=0.6, conditions=EVEN)
+    uneven, _ = fitted(panel, favour=Favour.SHARE, coat_mm=0.6)
+    between = (even[0].serving[0].max_mm + uneven[0].serving[0].max_mm) / 2.0
+
+    sweeps, _ = fitted(panel, favour=Favour.SHARE, coat_mm=0.6, tolerance_mm=between)
+
+    assert len(even) == len(uneven) == 1
+    assert len(sweeps) > 1 or sweeps[0].wire_along != uneven[0].wire_along
+    assert max(sweep.serving[0].max_mm for sweep in sweeps) <= between
 
 
 @pytest.mark.parametrize("degrees", [0.0, 90.0])
@@ -256,9 +297,11 @@ def test_rails_are_rounded_to_a_millionth_of_a_mm():
 PRINT_RAILS = """
 import sys
 sys.path.insert(0, "tests")
-from kit.sample import sample_conditions, sample_job
+from kit.sample import sample_conditions, sample_job, sample_machine
 from kit.shapes import dome, panel_of, scherk, turned
 from cutblock.sweeps.fitting import fit_panels
+from cutblock.sweeps.kerf_pass import refit_for_kerf
+from cutblock.sweeps.maps import settle
 panels = [panel_of(turned(scherk, 30.0)), panel_of(dome, "S-A02"), panel_of(lambda x, y: 0.1 * x, "S-A03")]
 sweeps, _ = fit_panels(sample_job(tolerance_mm=1.3), panels, sample_conditions())
 print([(s.near.tolist(), s.far.tolist(), s.height_mm) for s in sweeps])

@@ -3,7 +3,16 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from cutblock.wire.motion import largest_ratio, normal_part, normal_speeds, taper_chord_gap, taper_kerf, taper_mean
+from cutblock.wire.motion import (
+    kerf_along,
+    kerf_gain,
+    largest_ratio,
+    normal_part,
+    normal_speeds,
+    taper_chord_gap,
+    taper_kerf,
+    taper_mean,
+)
 
 WIRE = np.array([[0.0, 1.0, 0.0]])
 
@@ -43,3 +52,16 @@ def test_largest_ratio_just_uses_up_the_error(error, excess):
         assert 0.5 * excess * taper_chord_gap(ratio) == pytest.approx(error, rel=1e-9)
     else:
         assert 0.5 * excess <= error
+
+
+@given(near=st.floats(0.5, 1.5), excess=st.floats(0.1, 2.0))
+def test_the_kerf_gains_nothing_at_mid_wire_where_the_speed_is_linear(near, excess):
+    slowness = (1.0 / near, 1.0 / (2.0 - near))
+    gains = kerf_gain(excess, slowness, np.array([0.0, 0.5, 1.0]))
+    np.testing.assert_allclose(gains, [excess * (slowness[0] - 1.0), 0.0, excess * (slowness[1] - 1.0)], atol=1e-12)
+    ends = (0.1 + excess * slowness[0], 0.1 + excess * slowness[1])
+    np.testing.assert_allclose(0.1 + excess + gains, kerf_along(ends, 0.1, np.array([0.0, 0.5, 1.0])), rtol=1e-9)
+
+
+def test_a_kerf_under_the_least_one_gains_nothing():
+    np.testing.assert_array_equal(kerf_gain(-0.1, (0.5, 3.0), np.linspace(0.0, 1.0, 3)), 0.0)
