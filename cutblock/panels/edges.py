@@ -16,7 +16,7 @@ from cutblock.records.panel import Panel, PanelEdge
 
 FREE = "free"
 _CORNER_RAD = np.radians(20.0)  # a trimmed edge that turns by more has a corner there
-_ON_LINE = 1e-7  # of the cell's size
+_ON_LINE = 1e-3  # of the cell's size; the outline of a mesh is not quite the grid's outer line
 _N_POINTS = 33
 
 

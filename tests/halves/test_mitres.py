@@ -8,7 +8,7 @@ from kit.sample import sample_job, sample_panel, sample_pieces, sample_sweep
 import cutblock
 from cutblock.base.errors import GeometryError, InputError
 from cutblock.flow.folder import read_plan
-from cutblock.geometry.solids import mesh_volume
+from cutblock.geometry.solids import mesh_volume, split_billet
 from cutblock.halves.bodies import half_bodies
 from cutblock.halves.joints import side_planes
 from cutblock.halves.mitres import find_mitres, mitred
@@ -297,6 +297,38 @@ def test_a_strip_has_the_sides_that_lie_over_it_only():
 
     assert [side.edge for side in mitres["SM-S1-A01-L"].sides] == ["east", "north", "west"]
     assert all(side.is_whole for side in mitres["SM-S1-A01-L"].sides)
+
+
+def test_a_panel_that_is_not_convex_is_cut_to_its_shape():
+    """An L of 1200 x 1000 less 600 x 500; its upright sides keep the plan, so the litres are those under its outline."""
+    ring = np.array([[0, 0], [1200, 0], [1200, 500], [600, 500], [600, 1000], [0, 1000]], dtype=float)
+    heights = 150.0 + 60.0 * (2.0 * ring[:, 0] / 1200.0 - 1.0) * (2.0 * ring[:, 1] / 1000.0 - 1.0)
+    corners = np.column_stack([ring, heights])
+    edges = tuple(
+        PanelEdge(
+            name=f"free {row + 1}",
+            start_mm=corners[row],
+            end_mm=corners[(row + 1) % 6],
+            normal=np.array([0.0, 0.0, 1.0]),
+            bow_mm=0.0,
+        )
+        for row in range(6)
+    )
+    panel = sample_panel(outline=(ring,), is_rectangle=False, edges=edges)
+    sweep = sample_sweep(panels=("S1-A01",), kerf_mm=(0.0, 0.0))
+    pieces = sample_pieces(sweep)
+
+    mitres = find_mitres(sample_job(layup=Layup.BENCH), (panel,), (sweep,), pieces)
+    lower, upper = mitred(half_bodies(Layup.BENCH, (panel,), (sweep,), pieces), mitres)
+
+    parts = [
+        split_billet(sweep.near, sweep.far, (1200.0, 1000.0, 300.0), part)
+        for part in (ring[[0, 1, 2]], ring[[0, 2, 3]], ring[[0, 3, 4]], ring[[0, 4, 5]])
+    ]
+    for half, body in enumerate((lower, upper)):
+        assert mesh_volume(body.mesh) == pytest.approx(sum(mesh_volume(part[half]) for part in parts), rel=1e-6)
+        solid = manifold3d.Manifold(manifold3d.Mesh64(body.mesh.vertices, body.mesh.triangles.astype(np.uint64)))
+        assert solid.status() == manifold3d.Error.NoError
 
 
 def test_copies_share_their_planes_and_name_their_own_neighbours(saddle):

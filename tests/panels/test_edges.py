@@ -118,6 +118,12 @@ def test_trimmed_panels_name_their_free_sides_and_share_their_joints():
     assert abs(slanted[0] / slanted[1] + 1200.0 / 1300.0) < 1e-6
 
 
+def test_an_outline_that_is_the_grids_outer_line_but_for_rounding_has_its_name():
+    outline = [[1e-4, 0], [4800, 1e-4], [4800 - 2e-4, 3000], [0, 3000 - 1e-4]]
+    for panel in divided(WAVES, [outline], layup=Layup.BENCH, cell_mm=(1200.0, 1000.0)):
+        assert {edge.name for edge in panel.edges} == {"west", "east", "south", "north"}
+
+
 def test_a_free_edge_that_turns_slowly_is_one_side_and_one_without_corners_gets_four():
     import shapely
 
