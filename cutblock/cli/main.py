@@ -98,6 +98,12 @@ def _parser() -> argparse.ArgumentParser:
     plan.add_argument("job", metavar="JOB", help="a job file, or a folder that holds job.toml")
     plan.add_argument("--out", metavar="DIR", help="write the plan folder here; without it nothing is written")
     plan.add_argument("--json", action="store_true", help="print the whole plan as JSON instead of the summary")
+    plan.add_argument(
+        "--curve",
+        action="store_true",
+        help="instead of one plan compare used and waste per cent, blocks, hours and cost over tolerances and panel"
+        " sizes; --out then takes a table and a chart",
+    )
     plan.add_argument("--seed", type=_count, default=0, metavar="N", help="seed of the packing search (0)")
     effort = plan.add_mutually_exclusive_group()
     effort.add_argument("--seconds", type=_seconds, metavar="S", help="search this long for a better packing")

@@ -22,6 +22,10 @@ def run_plan(chosen: argparse.Namespace) -> int:
     from cutblock.flow.plan_json import plan_text
 
     settings = Settings(seed=chosen.seed, seconds=chosen.seconds, moves=chosen.moves)
+    if chosen.curve:
+        from cutblock.cli.curve import run_curve
+
+        return run_curve(read_job(job_path(chosen.job)), settings, chosen)
     progress = terminal_progress()
     plan = make_plan(read_job(job_path(chosen.job)), part_of(progress, 0.0, 0.8), settings)
     if chosen.out is not None:
