@@ -300,7 +300,7 @@ def test_a_strip_has_the_sides_that_lie_over_it_only():
 
 
 def test_a_panel_that_is_not_convex_is_cut_to_its_shape():
-    """An L of 1200 x 1000 less 600 x 500; its upright sides keep the plan, so the litres are those under its outline."""
+    """An L of 1200 x 1000 less 600 x 500 with upright sides: its litres are those under the outline."""
     ring = np.array([[0, 0], [1200, 0], [1200, 500], [600, 500], [600, 1000], [0, 1000]], dtype=float)
     heights = 150.0 + 60.0 * (2.0 * ring[:, 0] / 1200.0 - 1.0) * (2.0 * ring[:, 1] / 1000.0 - 1.0)
     corners = np.column_stack([ring, heights])
