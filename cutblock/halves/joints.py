@@ -35,13 +35,10 @@ def side_planes(panels: Sequence[Panel]) -> dict[str, SidePlanes]:
     owners = [panel for panel in firsts for _ in panel.edges]
     edges = [edge for panel in firsts for edge in panel.edges]
     partners = _partners(edges)
-    planes: list[tuple[Floats, float]] = []
-    for number, (edge, partner) in enumerate(zip(edges, partners.tolist(), strict=True)):
-        if 0 <= partner < number:
-            normal, distance = planes[partner]
-            planes.append((-normal, -distance))
-        else:
-            planes.append(_plane(edge, None if partner < 0 else edges[partner]))
+    planes = [
+        _plane(edge, None if partner < 0 else edges[partner])
+        for edge, partner in zip(edges, partners.tolist(), strict=True)
+    ]
     found: dict[tuple[str, int, int], SidePlanes] = {}
     start = 0
     for panel in firsts:
@@ -66,7 +63,11 @@ def _joins(panel: Panel, planes: SidePlanes) -> tuple[str, ...]:
 
 
 def _plane(edge: PanelEdge, other: PanelEdge | None) -> tuple[Floats, float]:
-    """Return the inward unit normal and the distance of an edge's plane, the other edge running the other way."""
+    """Return the inward unit normal and the distance of an edge's plane.
+
+    For the edge that runs the other way it is the same to the last digit, with the opposite sign: no sum or product
+    here depends on which of the two comes first.
+    """
     start, end, normal = edge.start_mm, edge.end_mm, edge.normal
     if other is not None:
         start, end, normal = (start + other.end_mm) / 2.0, (end + other.start_mm) / 2.0, normal + other.normal
