@@ -6,7 +6,7 @@ from itertools import islice
 
 import numpy as np
 
-from cutblock.base.arrays import Floats
+from cutblock.base.arrays import Bools, Floats
 from cutblock.base.errors import StockError
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.base.units import mass_kg, mm_per
@@ -16,6 +16,7 @@ from cutblock.packing.assign import assign_billets
 from cutblock.packing.finish import IsOffcut, Laid, whole_cuts
 from cutblock.packing.kinds import Kind, Kinds, kinds_of_stock
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task, steps_up
+from cutblock.packing.nearest import refuse_what_only_a_flag_forbids
 from cutblock.packing.rules import wrong_by_the_job
 from cutblock.packing.setups import Pass, order_passes
 from cutblock.packing.slack import take_up_slack
@@ -76,7 +77,10 @@ def pack_sweeps(
     kinds = kinds_of_stock(job, machine, sizes_mm)
     if all(kind.spec.is_offcut for kind in kinds.kinds):
         raise StockError(f'no block is of the grade "{job.grade}"', "foam.block", "Give a block size of that grade.")
-    task = _task(job, kinds, sweeps, sizes_mm, conditions, machine.span_mm - machine.near_gap_mm)
+    names = tuple(f"panel {' and '.join(sweep.panels)}, sweep {sweep.id}" for sweep in sweeps)
+    may_turn = ~locked(job, sweeps)
+    refuse_what_only_a_flag_forbids(job, kinds, machine, names, sizes_mm, may_turn)
+    task = _task(job, kinds, names, sizes_mm, may_turn, conditions, machine.span_mm - machine.near_gap_mm)
     found = assign_billets(
         job, task, kinds, pinned(job, sweeps), _offcut_rule(job), settings, part_of(progress, 0.0, 0.9)
     )
@@ -104,10 +108,14 @@ def pack_sweeps(
 
 
 def _task(
-    job: Job, kinds: Kinds, sweeps: tuple[Sweep, ...], sizes_mm: Floats, conditions: Conditions, reach_mm: float
+    job: Job,
+    kinds: Kinds,
+    names: tuple[str, ...],
+    sizes_mm: Floats,
+    may_turn: Bools,
+    conditions: Conditions,
+    reach_mm: float,
 ) -> Task:
-    names = tuple(f"panel {' and '.join(sweep.panels)}, sweep {sweep.id}" for sweep in sweeps)
-    may_turn = ~locked(job, sweeps)
     task = make_task(
         sizes_mm,
         [(*kind.size_mm, kind.count, price) for kind, price in zip(kinds.kinds, _prices(kinds), strict=True)],
