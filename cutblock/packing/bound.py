@@ -16,7 +16,7 @@ from cutblock.packing.lattice import Task
 
 _ROUNDING = 1e-7  # of a block: sums of floats this little above a whole number count as it
 _NUMBERS_AT_ONCE = 400_000  # some MB: what the processor keeps near
-_EXACT_WORK = 4e7  # multiplications up to which all triples of functions are tried
+_EXACT_WORK = 2e7  # multiplications up to which all triples of functions are tried
 _SAMPLE = 300  # billets that the triples to begin with are chosen on
 _FIRST_FUNCTIONS = 28  # of each axis, to begin with
 _MOST_CLIMBED = 1000  # billets it climbs on

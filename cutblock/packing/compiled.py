@@ -11,7 +11,7 @@ from collections.abc import Callable
 from types import ModuleType
 from typing import Any
 
-from cutblock.packing import kernels, moves
+from cutblock.packing import kernels, moves, recursion
 from cutblock.packing.sequences import Make
 
 # In the order they call each other; numba looks a called function up by its name when the caller is compiled.
@@ -20,6 +20,7 @@ _COMPILED = {
     moves: (
         "draw", "choose_blocks", "take_out", "disturb", "offer_kinds", "weigh", "keep", "is_kept", "one", "search",
     ),
+    recursion: ("best_cut", "decide", "recur"),
 }  # fmt: skip
 _WAIT = 0.02  # s between two looks at the compiling thread
 
@@ -31,13 +32,15 @@ class Inner(Make):
         fill: `kernels.fill`, or its compiled copy.
         begin: `kernels.begin` likewise.
         search: `moves.search` likewise.
+        recur: `recursion.recur` likewise.
     """
 
-    def __init__(self, filling: ModuleType, moving: ModuleType, is_compiled: bool) -> None:
+    def __init__(self, filling: ModuleType, moving: ModuleType, laying: ModuleType, is_compiled: bool) -> None:
         super().__init__(is_compiled)
         self.fill: Any = filling.fill
         self.begin: Any = filling.begin
         self.search: Any = moving.search
+        self.recur: Any = laying.recur
 
 
 class Gear:
@@ -100,7 +103,7 @@ class _Workshop:
             tell()
 
 
-_PLAIN = Inner(kernels, moves, is_compiled=False)
+_PLAIN = Inner(kernels, moves, recursion, is_compiled=False)
 _WORKSHOP = _Workshop()
 
 
@@ -128,8 +131,8 @@ def _copies(is_cached: bool) -> Inner:
             made[name] = numba.njit(cache=is_cached, nogil=True)(getattr(copy, name))
             setattr(copy, name, made[name])
         copies.append(copy)
-    filling, moving = copies
-    return Inner(filling, moving, is_compiled=True)
+    filling, moving, laying = copies
+    return Inner(filling, moving, laying, is_compiled=True)
 
 
 def _copy(module: ModuleType) -> ModuleType:

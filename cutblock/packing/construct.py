@@ -190,5 +190,5 @@ def _recipes(task: Task) -> list[Recipe]:
     n = len(task.cells)
     ways = _RECIPES if n < _MANY else _MANY_RECIPES
     recipes = [Recipe(sequences[key], prefer, rule, mode) for rule, mode, key in ways for prefer in prefers]
-    least = len(prefers) * (1 if n >= _VERY_MANY else _LEAST_RULES)
+    least = max(len(prefers), 1 if n >= _VERY_MANY else _LEAST_RULES)
     return recipes[: max(least, min(len(recipes), _PLACINGS // max(n, 1)))] if n else []

@@ -15,6 +15,7 @@ from cutblock.packing.columns import stack_columns
 from cutblock.packing.compiled import Gear
 from cutblock.packing.construct import Solution, construct
 from cutblock.packing.effort import Effort
+from cutblock.packing.generation import GENERATION_MOVES, generate, repeats
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task
 from cutblock.packing.replay import block_trees
 from cutblock.packing.search import improve, is_at, told
@@ -71,8 +72,8 @@ class Packing:
     Attributes:
         n_blocks: Blocks used.
         cost: Their price; None where a stock row has none.
-        lower_bound: Blocks no packing can go under, whatever the way of cutting.
-        cost_lower_bound: Money no packing can go under; None without prices.
+        lower_bound: Blocks no packing by through cuts can go under.
+        cost_lower_bound: Money no such packing can go under; None without prices.
         bound_proof: What proves the bound.
         placements: One row for each billet, in the order given.
         stock_rows: The stock row of each block.
@@ -153,27 +154,35 @@ def pack_task(task: Task, seed: int, moves: int | None, seconds: float | None, p
     effort = Effort(moves, seconds)
     progress(0.0, "Finding what no packing can undercut")
     bound = lower_bound(task)
-    solution = _solve(task, bound, seed, effort, part_of(progress, 0.1, 1.0))
+    solution, bound = _solve(task, bound, seed, effort, part_of(progress, 0.1, 1.0))
     return _packing(task, solution, bound, effort.n_moves)
 
 
-def _solve(task: Task, bound: Bound, seed: int, effort: Effort, progress: Progress) -> Solution:
-    target = (float(bound.blocks) if bound.cost is None else bound.cost, bound.blocks)
+def _solve(task: Task, bound: Bound, seed: int, effort: Effort, progress: Progress) -> tuple[Solution, Bound]:
     gear = Gear()
-    start = construct(task, gear, target, part_of(progress, 0.0, 0.4))
+    target = target_of(bound)
+    start = construct(task, gear, target, part_of(progress, 0.0, 0.3))
     for kind in range(len(task.kinds)):
         stacked = None if is_at(start, target) else stack_columns(task, gear, kind)
         if stacked is not None and stacked.value < start.value:
             start = stacked
     if effort.moves is None and effort.seconds is None:
-        effort.moves = usual_moves(start)
-    progress(0.4, told(task, start, target))
+        effort.moves = usual_moves(start) + (GENERATION_MOVES if repeats(task) else 0)
+    progress(0.3, told(task, start, target))
     if effort.left * _billets_a_move(start) > _LONG_PLACINGS:
         gear.ask_for()
-    solution = improve(task, gear, start, target, seed, effort, part_of(progress, 0.4, 1.0))
+    rest = part_of(progress, 0.3, 1.0)
+    if not (effort.is_spent or start.n_missing or is_at(start, target)) and repeats(task):
+        start, bound = generate(task, gear, start, bound, seed, effort, rest)
+    solution = improve(task, gear, start, target_of(bound), seed, effort, rest)
     if solution.n_missing:
         raise shortage(task, solution)
-    return solution
+    return solution, bound
+
+
+def target_of(bound: Bound) -> tuple[float, int]:
+    """Return the money (or blocks) and the blocks at which nothing is left to be found."""
+    return float(bound.blocks) if bound.cost is None else bound.cost, bound.blocks
 
 
 def usual_moves(start: Solution) -> int:

@@ -3,10 +3,12 @@
 import numpy as np
 
 from cutblock.base.progress import silent
+from cutblock.packing.bound import distinct_cells
 from cutblock.packing.compiled import Gear, Inner
 from cutblock.packing.construct import construct
 from cutblock.packing.effort import Effort
 from cutblock.packing.lattice import make_task
+from cutblock.packing.patterns import Recursion
 from cutblock.packing.search import improve
 
 
@@ -17,3 +19,4 @@ def rehearse(inner: Inner) -> None:
     gear = Gear(inner)
     start = construct(task, gear, (0.0, 0), silent)
     improve(task, gear, start, (0.0, 0), 0, Effort(10, None), silent)
+    Recursion(distinct_cells(task)[0], task.kinds, gear).worths(np.ones(len(sizes)))

@@ -65,16 +65,24 @@ def test_boxes_of_martello_pisinger_and_vigo_stay_near_the_proven_bound():
     assert found <= 1.12 * bound
 
 
-def test_several_bin_sizes_cost_no_less_than_the_bound_and_little_more_than_the_best_known():
-    """Sizes Beasley, JORS 36 (1985); bin sizes and costs Cintra, Miyazawa, Wakabayashi and Xavier, EJOR 191 (2008)."""
-    for instance in published("gcut_1_8_several_bins")["instances"][:1]:
-        sizes = [(int(w), int(h), 1) for _, w, h, copies in instance["items"] for _ in range(int(copies))]
-        stock = [(int(b["WIDTH"]), int(b["HEIGHT"]), 1, None, float(b["COST"])) for b in instance["bins"]]
-        best = float(instance["best_known_2_stage"]["oriented"]["cost"])
-        packing = pack(sizes, stock, 0.0, may_turn=False, moves=0)
-        assert packing.cost_lower_bound <= best
-        assert packing.cost_lower_bound <= packing.cost
-        assert packing.cost <= 1.15 * best
+@pytest.mark.parametrize("may_turn", [False, True])
+@pytest.mark.parametrize("number", [0, 4, 5])
+def test_several_bin_sizes_cost_no_less_than_the_bound_and_hardly_more_than_the_best_known(number, may_turn):
+    """Sizes Beasley, JORS 36 (1985); bin sizes and costs Cintra, Miyazawa, Wakabayashi and Xavier, EJOR 191 (2008).
+
+    The best known are plans in two stages; cuts in any order are allowed here, so the bound may only lie under them.
+    """
+    instance = published("gcut_1_8_several_bins")["instances"][number]
+    sizes = [(int(w), int(h), 1) for _, w, h, copies in instance["items"] for _ in range(int(copies))]
+    stock = [(int(b["WIDTH"]), int(b["HEIGHT"]), 1, None, float(b["COST"])) for b in instance["bins"]]
+    best = float(instance["best_known_2_stage"]["rotated" if may_turn else "oriented"]["cost"])
+
+    first = pack(sizes, stock, 0.0, may_turn=may_turn, moves=0)
+    found = pack(sizes, stock, 0.0, may_turn=may_turn, moves=2000)
+
+    assert first.cost_lower_bound <= found.cost_lower_bound <= best
+    assert found.cost_lower_bound <= found.cost <= 1.002 * best
+    assert found.cost <= first.cost
 
 
 def test_perfect_sheets_are_bounded_by_one_sheet():
