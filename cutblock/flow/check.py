@@ -1,18 +1,25 @@
 """Re-reads every file of a plan folder and proves it against the plan."""
 
-import math
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from pathlib import Path
 
 import numpy as np
 
 from cutblock.base.errors import CheckFailed, CutblockError
 from cutblock.base.progress import Progress, silent
-from cutblock.base.tolerances import LEDGER_RELATIVE, MESH_VOLUME_RELATIVE
-from cutblock.flow.folder import read_plan
-from cutblock.flow.outputs import CUTS_FOLDER, LABEL_SHEET, table_outputs
+from cutblock.flow.check_plan import (
+    wrong_accounts,
+    wrong_blocks,
+    wrong_conditions,
+    wrong_pieces,
+    wrong_references,
+    wrong_sweeps,
+)
+from cutblock.flow.folder import PLAN_NAME, read_plan
+from cutblock.flow.outputs import CUTS_FOLDER, LABEL_SHEET, table_outputs, tag_sheets
+from cutblock.flow.seals import broken_seals
 from cutblock.records.plan import Finding, Plan
-from cutblock.records.words import Half, Severity
+from cutblock.records.words import Severity
 
 
 def check_folder(folder: str | Path, progress: Progress = silent) -> tuple[Finding, ...]:
@@ -27,17 +34,38 @@ def check_folder(folder: str | Path, progress: Progress = silent) -> tuple[Findi
     """
     root = Path(folder)
     plan = read_plan(root)
-    progress(0.05, "Checking volumes")
-    found = [_finding(error) for error in _wrong_volumes(plan)]
-    progress(0.2, "Checking blocks")
-    found += [_finding(error) for error in _wrong_blocks(plan)]
-    progress(0.3, "Checking tables")
-    found += [_finding(error) for error in _wrong_tables(plan, root)]
-    found += [_finding(error) for error in _wrong_tags(plan, root)]
-    progress(0.5, "Checking machine code")
-    found += [_finding(error) for error in _wrong_programs(plan, root, progress)]
+    raw = (root / PLAN_NAME).read_bytes()
+    parts: tuple[tuple[float, str, Callable[[], Iterator[CutblockError]]], ...] = (
+        (0.05, "values", lambda: _broken_values(raw)),
+        (0.1, "names", lambda: wrong_references(plan)),
+        (0.15, "volumes", lambda: wrong_sweeps(plan)),
+        (0.2, "pieces", lambda: wrong_pieces(plan)),
+        (0.25, "conditions", lambda: wrong_conditions(plan)),
+        (0.3, "blocks", lambda: wrong_blocks(plan)),
+        (0.35, "accounts", lambda: wrong_accounts(plan)),
+        (0.4, "tables", lambda: _wrong_tables(plan, root)),
+        (0.45, "tags", lambda: _wrong_tags(plan, root)),
+        (0.5, "machine code", lambda: _wrong_programs(plan, root, progress)),
+    )
+    found: list[Finding] = []
+    for fraction, what, errors in parts:
+        progress(fraction, f"Checking {what}")
+        found += [_finding(error) for error in _through(errors, what, is_edited=bool(found))]
     progress(1.0, "Checked")
     return tuple(found)
+
+
+def _through(errors: Callable[[], Iterator[CutblockError]], what: str, *, is_edited: bool) -> Iterator[CutblockError]:
+    """Yield what one part of the check finds; where an edited plan does not even hold together for it, say that."""
+    try:
+        yield from errors()
+    except CutblockError as error:
+        yield error
+    except (ArithmeticError, LookupError, RuntimeError, TypeError, ValueError) as error:
+        # A whole plan cannot come here; then it is a fault of the check, which must not be taken for one of the plan.
+        if not is_edited:
+            raise
+        yield CheckFailed(f"does not hold together, so its {what} cannot be checked ({error!r}).", PLAN_NAME)
 
 
 def _finding(error: CutblockError) -> Finding:
@@ -45,67 +73,16 @@ def _finding(error: CutblockError) -> Finding:
     return Finding(severity=Severity.ERROR, code="check-failed", subject=error.subject, text=text)
 
 
-def _wrong_volumes(plan: Plan) -> Iterator[CheckFailed]:
-    from cutblock.geometry.volume import volume_below_within
-
-    pieces = {(piece.sweep, piece.half): piece for piece in plan.pieces}
-    for sweep, volumes in zip(plan.sweeps, plan.volumes, strict=True):
-        billet = sweep.length_mm * sweep.width_mm * sweep.height_mm
-        parts = math.fsum((volumes.lower_mm3, volumes.upper_mm3, volumes.kerf_mm3, volumes.trimmed_mm3))
-        if abs(parts - billet) > LEDGER_RELATIVE * billet:
-            yield CheckFailed(f"halves and kerf make {parts / 1e6:.6f} L of a billet of {billet / 1e6:.6f} L", sweep.id)
-        below = volume_below_within(sweep.near, sweep.far, sweep.length_mm, sweep.width_mm)
-        if (
-            volumes.trimmed_mm3 == 0.0
-            and abs(below - volumes.kerf_mm3 / 2.0 - volumes.lower_mm3) > MESH_VOLUME_RELATIVE * billet
-        ):
-            yield CheckFailed(
-                f"the rails leave {(below - volumes.kerf_mm3 / 2.0) / 1e6:.6f} L below, the plan says"
-                f" {volumes.lower_mm3 / 1e6:.6f} L",
-                sweep.id,
-            )
-        for half, volume in ((Half.LOWER, volumes.lower_mm3), (Half.UPPER, volumes.upper_mm3)):
-            piece = pieces.get((sweep.id, half))
-            if piece is None or abs(piece.volume_mm3 - volume) > LEDGER_RELATIVE * billet:
-                yield CheckFailed(f"its {half} half is missing from the pieces, or has other litres there", sweep.id)
-    yield from _wrong_ledger(plan)
-
-
-def _wrong_ledger(plan: Plan) -> Iterator[CheckFailed]:
-    from cutblock.ledger.account import account_job
-
-    try:
-        counted = account_job(plan.blocks, plan.volumes, plan.pieces, plan.n_blocks_bound)
-    except CheckFailed as error:
-        yield error
-        return
-    names = [name for name in counted.__slots__ if name.endswith("_mm3")]
-    for name in names:
-        said, found = getattr(plan.ledger, name), getattr(counted, name)
-        if abs(said - found) > LEDGER_RELATIVE * counted.bought_mm3 + 1.0:
-            label = name.removesuffix("_mm3").replace("_", " ")
-            yield CheckFailed(
-                f"{label}: the plan says {said / 1e6:.6f} L, the blocks give {found / 1e6:.6f} L", "ledger"
-            )
-
-
-def _wrong_blocks(plan: Plan) -> Iterator[CheckFailed]:
-    from cutblock.packing.verify import verify_block
-
-    sizes = {sweep.id: (sweep.length_mm, sweep.width_mm, sweep.height_mm) for sweep in plan.sweeps}
-    placed = [billet.sweep for block in plan.blocks for billet in block.billets]
-    for sweep_id in sizes:
-        if placed.count(sweep_id) != 1:
-            yield CheckFailed(f"its billet stands {placed.count(sweep_id)} times in the blocks, wanted once", sweep_id)
-    for block in plan.blocks:
-        try:
-            verify_block(block, sizes)
-        except CheckFailed as error:
-            yield error
+def _broken_values(raw: bytes) -> Iterator[CheckFailed]:
+    for broken in broken_seals(raw):
+        yield CheckFailed(broken.text, f"{PLAN_NAME}:{broken.line}", "Change the job and make the plan again.")
 
 
 def _wrong_tables(plan: Plan, root: Path) -> Iterator[CheckFailed]:
-    for name, content in table_outputs(plan).items():
+    tables = table_outputs(plan)
+    if broken_seals((root / PLAN_NAME).read_bytes()):
+        del tables[PLAN_NAME]  # told already, line by line
+    for name, content in tables.items():
         try:
             found = (root / name).read_bytes()
         except OSError:
@@ -124,7 +101,7 @@ def _first_difference(found: bytes, wanted: bytes) -> int:
 
 
 def _wrong_tags(plan: Plan, root: Path) -> Iterator[CheckFailed]:
-    from cutblock.tags.pdf import codes_of_pdf
+    from cutblock.tags.pdf import codes_of_pdf, sheet_of_pdf
 
     path = root / "tags.pdf"
     try:
@@ -139,6 +116,12 @@ def _wrong_tags(plan: Plan, root: Path) -> Iterator[CheckFailed]:
         return
     if sorted(codes) != sorted(piece.code for piece in plan.pieces):
         yield CheckFailed("holds tags of other pieces than the plan's", path.name, "Print only tags of this plan.")
+        return
+    sheet = sheet_of_pdf(raw)
+    wanted = b"" if sheet is None else tag_sheets(plan, *sheet)
+    if raw != wanted:
+        place = path.name if sheet is None else f"{path.name}:{_first_difference(raw, wanted)}"
+        yield CheckFailed("differs from what the plan gives.", place, "Write it again with `cutblock tags DIR`.")
 
 
 def _wrong_programs(plan: Plan, root: Path, progress: Progress) -> Iterator[CheckFailed]:
@@ -159,4 +142,4 @@ def _wrong_programs(plan: Plan, root: Path, progress: Progress) -> Iterator[Chec
         except UnicodeDecodeError:
             yield CheckFailed("holds bytes that are no machine code", f"{CUTS_FOLDER}/{name}", "Make the plan again.")
         except CheckFailed as error:
-            yield error
+            yield CheckFailed(error.message, f"{CUTS_FOLDER}/{error.subject}", error.remedy)

@@ -33,13 +33,13 @@ def check_program(plan: Plan, name: str, text: str) -> None:
     if found is None:
         raise CheckFailed("the plan has no set-up of this name", name, "Remove the file or plan the job anew.")
     block, setup = found
-    lines = read_program(text, name, plan.machine.axes)
     try:
         clamping = next(clamping for clamping in clampings(block) if clamping.number == setup)
         place = choose_place(plan, clamping, plan_sources(plan))
     except CutblockError as error:
         raise CheckFailed(f"the plan cannot be cut: {error}", name, "Plan the job anew.") from error
     steps, boxes = expected_steps(plan, block, clamping, place)
+    lines = _read_lines(plan, name, text, steps)
     for line, step in zip(lines, steps, strict=False):
         _check_line(line, step, plan.machine, name)
     if len(lines) != len(steps):
@@ -50,6 +50,19 @@ def check_program(plan: Plan, name: str, text: str) -> None:
     moves = [(line, step) for line, step in zip(lines, steps, strict=True) if line.motion == "1"]
     _check_limits(moves, plan.machine, name)
     _check_cold_moves(lines, steps, boxes, plan, name)
+
+
+def _read_lines(plan: Plan, name: str, text: str, steps: tuple[Step, ...]) -> tuple[Line, ...]:
+    """Return the lines as read; where they cannot be read, an earlier line that is no move and differs is named."""
+    try:
+        return read_program(text, name, plan.machine.axes)
+    except CheckFailed:
+        for number, (row, step) in enumerate(zip(text.split("\n"), steps, strict=False), start=1):
+            if row.startswith(("G0 ", "G1 ")) or step.position:
+                break
+            if row != step.text:
+                raise _failure(name, number, f'the file says "{row}", the plan "{step.text}"') from None
+        raise
 
 
 def _failure(name: str, number: int, message: str) -> CheckFailed:

@@ -17,6 +17,7 @@ _CHECK_LINE_MM = 100.0
 _LEAST_MARGIN_MM = 8.0  # printers leave about 4 mm at the edge of a page blank
 _STREAM = re.compile(rb"stream\r?\n(.*?)endstream", re.DOTALL)
 _CODE = re.compile(rb"\((CB1:[^)]*)\) Tj")
+_SUBJECT = re.compile(rb"/Subject \(Label sheet ([A-Za-z0-9._-]+) from label ([0-9]{1,4})\)")
 
 
 def tags_pdf(drawings: Sequence[Drawing], sheet: LabelSheet, start: int = 1) -> bytes:
@@ -43,6 +44,7 @@ def tags_pdf(drawings: Sequence[Drawing], sheet: LabelSheet, start: int = 1) -> 
     canvas = Canvas(stream, pagesize=size, invariant=1, pageCompression=1)
     canvas.setTitle("Piece tags")
     canvas.setCreator("cutblock")
+    canvas.setSubject(f"Label sheet {sheet.name} from label {start}")
     note = "A ? on a tag stands for a letter that cannot be printed." if lost_letters(drawings) else ""
     for index, drawing in enumerate(drawings):
         place = start - 1 + index
@@ -80,6 +82,12 @@ def codes_of_pdf(raw: bytes) -> tuple[str, ...]:
             raise InputError("is damaged", "tags PDF", "Write it again with `cutblock tags DIR`.") from error
         codes += [code.decode("latin-1") for code in _CODE.findall(text)]
     return tuple(codes)
+
+
+def sheet_of_pdf(raw: bytes) -> tuple[str, int] | None:
+    """Return the name of the label sheet a PDF of `tags_pdf` is laid out for and its first label; None if not said."""
+    found = _SUBJECT.search(raw)
+    return None if found is None else (found[1].decode("ascii"), int(found[2]))
 
 
 def _paint_label(canvas: Any, drawing: Drawing, sheet: LabelSheet, place: int) -> None:  # noqa: ANN401 - reportlab has no types
