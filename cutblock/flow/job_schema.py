@@ -6,6 +6,7 @@ import msgspec
 
 Positive = Annotated[float, msgspec.Meta(gt=0.0)]
 NotNegative = Annotated[float, msgspec.Meta(ge=0.0)]
+Share = Annotated[float, msgspec.Meta(ge=0.0, le=1.0)]
 Point = tuple[float, float, float]
 
 
@@ -64,6 +65,7 @@ class FaceTable(_Table, frozen=True):
     cuts_x: list[float] | None = None
     cuts_y: list[float] | None = None
     count: Annotated[int, msgspec.Meta(ge=1, le=10_000)] = 1
+    closed: bool = False
 
 
 class FormTable(_Table, frozen=True):
@@ -123,6 +125,7 @@ class CuttingTable(_Table, frozen=True):
     kerf: Positive | None = None
     calibration: str | None = None
     favour: Literal["lower", "upper", "share"] = "share"
+    squareness: Share = 0.1
     setups: Annotated[int, msgspec.Meta(ge=1)] | None = None
     no_turn: list[str] = []
 

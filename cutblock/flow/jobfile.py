@@ -97,6 +97,13 @@ class _Reader:
             self._refuse(
                 ("duties", "thickness"), "a counter-mould needs the concrete's thickness", "Give duties.thickness."
             )
+        for index, face in enumerate(faces):
+            if face.is_closed and Duty(duties.unpaired) is not Duty.COUNTER_MOULD:
+                self._refuse(
+                    ("form", "face", index, "closed"),
+                    f'face "{face.name}" is cast closed, but halves without a panel become {duties.unpaired}',
+                    'Set duties.unpaired = "counter-mould" with the concrete\'s thickness.',
+                )
         return Job(
             id=file.job.id,
             title=file.job.title,
@@ -118,6 +125,7 @@ class _Reader:
             kerf_mm=None if file.cutting.kerf is None else file.cutting.kerf * scale,
             wall_mm=file.cutting.wall * scale,
             favour=Favour(file.cutting.favour),
+            squareness=file.cutting.squareness,
             unpaired=Duty(duties.unpaired),
             thickness_mm=duties.thickness * scale,
             locks=read_locks(duties.set, file.job.id, duties.thickness, self._place, self._refuse),
@@ -256,6 +264,7 @@ class _Reader:
             cuts_x_mm=cuts_x,
             cuts_y_mm=cuts_y,
             count=face.count,
+            is_closed=face.closed,
             angle_rad=angle,
             phase_mm=phase,
         )

@@ -146,6 +146,7 @@ def _job(plan: Plan) -> schema.JobEntry:
         wall_mm=job.wall_mm,
         grade=job.grade,
         favour=job.favour.value,
+        squareness=job.squareness,
         unpaired=job.unpaired.value,
         thickness_mm=job.thickness_mm,
         counter=job.closing.value,

@@ -118,6 +118,7 @@ def _job(file: schema.PlanFile) -> Job:
         kerf_mm=file.conditions.kerf_mm,
         wall_mm=job.wall_mm,
         favour=Favour(job.favour),
+        squareness=job.squareness,
         unpaired=Duty(job.unpaired),
         thickness_mm=job.thickness_mm,
         closing=Closing(job.counter),

@@ -41,6 +41,7 @@ class JobEntry(_Entry, frozen=True):
     hour_rate: float | None
     counter: Literal["best", "lift", "offset"] = "best"
     slack: Literal["scrap", "backs"] = "scrap"
+    squareness: float = 0.1
     setups: int | None = None  # most that a block may need
     no_turn: list[str] = []  # faces, panels or sweeps whose billets keep their length along the block
     pins: list[PinEntry] = []

@@ -10,7 +10,7 @@ from cutblock.base.errors import GeometryError
 from cutblock.geometry.deviation import deviation_measures, face_deviation
 from cutblock.geometry.fit_lawson import polish
 from cutblock.geometry.fit_minimax import DENSE_NODES, least_largest
-from cutblock.geometry.fit_refine import N_CONTROLS, N_ROUNDS, Fits, improve, knots_of, recentre, refine
+from cutblock.geometry.fit_refine import N_CONTROLS, N_ROUNDS, N_STEPS, Fits, improve, knots_of, recentre, refine
 from cutblock.geometry.fit_start import Paths, best_paths
 from cutblock.geometry.fit_target import Patch, Target, make_target
 from cutblock.geometry.heights import HeightField, height_field
@@ -236,18 +236,21 @@ def _fit_batch(target: Target, tolerance_mm: float, n_controls: int, squareness:
         give_up_mm = np.inf
     n_rounds = FINE_ROUNDS if is_fine else N_ROUNDS
 
-    def rival(best: Fits, paths: Paths, is_worth: Bools) -> Fits:
+    def rival(best: Fits, paths: Paths, is_worth: Bools, n_steps: int = N_STEPS) -> Fits:
         index = np.flatnonzero(is_worth)
         if not len(index):
             return best
-        fits = refine(target.take(index), paths.take(index), give_up_mm, n_rounds)
-        return _better(best, index, fits, squareness * tolerance_mm)
+        fits = refine(target.take(index), paths.take(index), give_up_mm, n_rounds if n_steps else 1, n_steps)
+        return _better(best, index, fits, tolerance_mm, squareness)
 
     best = refine(target, first, give_up_mm, n_rounds)
     best = rival(best, second, _is_worth(first, second, tolerance_mm) & ~_alike(first, second))
     is_worth = (constant.rms_mm <= 2.0 * first.rms_mm) & (best.max_mm > 0.5 * tolerance_mm)
     best = rival(best, constant, is_worth & ~_alike(first, constant))
     best = rival(best, straight, best.max_mm > tolerance_mm)
+    if squareness > SQUARENESS:
+        # Worth enough to hold rulings square that would turn askew by themselves.
+        best = rival(best, straight, best.skew_mm > 0.0, n_steps=0)
     # A least-squares sheet may leave a corner far off that a few turns of Lawson's weights bring in.
     spiky = np.flatnonzero((best.max_mm > tolerance_mm) & (best.max_mm > SPIKY * best.rms_mm))
     if len(spiky):
@@ -314,12 +317,16 @@ def _alike(paths: Paths, others: Paths) -> Bools:
     return result
 
 
-def _better(best: Fits, index: Ints, rivals: Fits, worth_mm: float) -> Fits:
-    """Return the fits so far, those of the given indices replaced by rivals that are better."""
+def _better(best: Fits, index: Ints, rivals: Fits, tolerance_mm: float, squareness: float) -> Fits:
+    """Return the fits so far, those of the given indices replaced by rivals that are better.
+
+    A squarer rival may be farther off by the squareness, but not leave the tolerance for it.
+    """
     old = best.take(index)
     gain = old.max_mm - rivals.max_mm
     less_skew = rivals.skew_mm < old.skew_mm - 1e-6
-    is_better = np.where(np.abs(gain) < worth_mm, less_skew, gain > 0.0)
+    less_skew &= (rivals.max_mm <= tolerance_mm) | (old.max_mm > tolerance_mm)
+    is_better = np.where(np.abs(gain) < squareness * tolerance_mm, less_skew, gain > 0.0)
     return best.put(index[is_better], rivals.take(np.flatnonzero(is_better)))
 
 

@@ -72,6 +72,7 @@ class FaceSpec(Record):
     cuts_x_mm: tuple[float, ...] | None = None
     cuts_y_mm: tuple[float, ...] | None = None
     count: int = 1
+    is_closed: bool = False  # cast between mould and counter-mould: its panels share no cut
     # Of the grid of cells, counter-clockwise from the face's x, and how far it is shifted from the face's corner along
     # its own two directions; with either, cells have their wanted size exactly and the face's edges trim them.
     angle_rad: float | None = None
@@ -147,4 +148,5 @@ class Job(Record):
     most_setups: int | None = None  # that a block may need
     no_turn: tuple[str, ...] = ()  # faces, panels or sweeps whose billets keep their length along the block
     pins: tuple[Pin, ...] = ()
+    squareness: float = 0.1  # what a squarer wire is worth in deviation, as a share of the tolerance
     inputs: tuple[tuple[str, str], ...] = ()  # (path as written in the job, sha256) of the job and every file it names

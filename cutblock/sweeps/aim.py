@@ -39,14 +39,13 @@ class Aim:
         return self.tolerance_mm - abs(self.kerf_error_mm)
 
 
-def aim_of(job: Job, conditions: Conditions, tool: Machine, squareness: float = SQUARENESS) -> Aim:
+def aim_of(job: Job, conditions: Conditions, tool: Machine) -> Aim:
     """Return what the sheets of a job are fitted for.
 
     Args:
-        job: Tolerance, coat and favour.
+        job: Tolerance, coat, favour and squareness.
         conditions: The kerf at the planned speed.
         tool: Its wire's stretch; the wire leans no further than 45 degrees on any machine.
-        squareness: Share of the tolerance that less skew is worth.
     """
     return Aim(
         tolerance_mm=job.tolerance_mm,
@@ -54,7 +53,7 @@ def aim_of(job: Job, conditions: Conditions, tool: Machine, squareness: float = 
         face_offset_mm=face_offset_mm(conditions.kerf_mm, job.coat_mm),
         kerf_error_mm=kerf_error_mm(job.favour, conditions.kerf_mm, job.coat_mm),
         stretch=min(tool.longest_wire_mm / tool.span_mm, 1.0 / math.cos(math.radians(STEEPEST_WIRE_DEG))),
-        squareness=squareness,
+        squareness=job.squareness,
         least_kerf_mm=conditions.least_kerf_mm,
         kerf_share=kerf_share(job.favour),
     )

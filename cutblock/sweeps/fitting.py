@@ -11,7 +11,6 @@ from cutblock.base.progress import Progress, silent
 from cutblock.base.units import length_text, place_text
 from cutblock.catalog.load import machine
 from cutblock.geometry.curvature import bend_of
-from cutblock.geometry.fit import SQUARENESS
 from cutblock.geometry.heights import height_field, is_domed
 from cutblock.geometry.outline import is_inside
 from cutblock.records.job import Job
@@ -33,8 +32,6 @@ def fit_panels(
     panels: Sequence[Panel],
     conditions: Conditions,
     progress: Progress = silent,
-    *,
-    squareness: float = SQUARENESS,
 ) -> tuple[tuple[Sweep, ...], tuple[Finding, ...]]:
     """Return the sweeps that cut every panel within the job's tolerance, each serving one panel with its lower half.
 
@@ -42,18 +39,16 @@ def fit_panels(
     that strips cannot cut either, or with a sweep that fails a check, gets no sweep but an error finding.
 
     Args:
-        job: Tolerance, kerf, coat, favour, wall and margin.
+        job: Tolerance, kerf, coat, favour, squareness, wall and margin.
         panels: In the order the sweeps shall have.
         conditions: The kerf at the planned speed.
         progress: Called after every few panels.
-        squareness: What a squarer wire is worth: of ways to cut a panel whose deviations differ by less than this share
-            of the tolerance, the one with the least skew is taken. 0 always takes the closest.
 
     Raises:
         NotCuttable: No panel at all can be cut.
     """
     tool = machine(job.machine)
-    aim = aim_of(job, conditions, tool, squareness)
+    aim = aim_of(job, conditions, tool)
     _refuse_no_room(job, aim)
     alike = alike_panels(panels)
     firsts = list(dict.fromkeys(alike))

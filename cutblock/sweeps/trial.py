@@ -21,7 +21,6 @@ from cutblock.sweeps.kerf_law import kerf_error_mm
 
 _N_SAMPLES = 21  # a side, of a smaller cell
 _BATCH = 32  # panels fitted together: a fraction of a second
-_SAME = 0.1  # of the tolerance: of cuts that differ by less the squarer one is taken
 # The least-squares fit of a trial strays 2/3 of a dome's sagitta, the polished one 1/2.
 _POLISHED = 0.75
 
@@ -116,15 +115,16 @@ def trial_cuts(
         lies = [lies_of(job, panel, conditions, along) for panel, along in zip(batch, some, strict=True)]
         cuts = iter(cut_panels([(lie, n_strips) for each in lies for lie in each], aim, is_polished=False))
         for panel, each in zip(batch, lies, strict=True):
-            trials.append(_trial(panel, [next(cuts) for _ in each], job.tolerance_mm))
+            trials.append(_trial(panel, [next(cuts) for _ in each], job.squareness * job.tolerance_mm))
     return tuple(trials)
 
 
-def _trial(panel: Panel, cuts: Sequence[CutPanel], tolerance_mm: float) -> Trial:
+def _trial(panel: Panel, cuts: Sequence[CutPanel], worth_mm: float) -> Trial:
+    """Return the better of the cuts: of those that differ by less than `worth_mm` the one with less skew."""
     best = cuts[0]
     for other in cuts[1:]:
         gain = best.max_mm - other.max_mm
-        is_better = other.skew_mm < best.skew_mm - 1.0 if abs(gain) < _SAME * tolerance_mm else gain > 0.0
+        is_better = other.skew_mm < best.skew_mm - 1.0 if abs(gain) < worth_mm else gain > 0.0
         best = other if is_better else best
     bend = bend_of(height_field(panel.heights_mm, panel.length_mm, panel.width_mm))
     return Trial(

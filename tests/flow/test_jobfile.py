@@ -79,8 +79,14 @@ def test_words_become_the_words_of_the_trade(tmp_path):
     job = read_job(write(tmp_path, WHOLE.format(units="mm")))
 
     assert (job.layup, job.favour, job.unpaired) == (Layup.BENCH, Favour.UPPER, Duty.COUNTER_MOULD)
+    assert job.squareness == 0.1
     assert job.faces[1].count == 3
     assert job.stock[0].count == 20
+
+
+def test_squareness_is_a_share_whatever_the_unit(tmp_path):
+    text = WHOLE.format(units="in").replace("power = 60", "power = 60\nsquareness = 0.4")
+    assert read_job(write(tmp_path, text)).squareness == 0.4
 
 
 BROKEN = [
@@ -105,6 +111,8 @@ BROKEN = [
     ('machine = "four-axis-2600"', 'machine = "mine.toml"', 36, "mine.toml"),
     ('wire = "NiCr80 0.40"', 'wire = "rope"', 37, "rope"),
     ("power = 60", "power = -60", 38, "power"),
+    ("power = 60", "power = 60\nsquareness = 1.5", 39, "squareness"),
+    ("power = 60", "power = 60\nsquareness = -0.1", 39, "squareness"),
     ("power = 60", "", 35, "power"),
     ("thickness = 30", "", 43, "thickness"),
     ('name = "Upper part"', 'name = "s"', 19, "taken"),
@@ -192,3 +200,13 @@ def test_an_angle_or_phase_without_a_cell_size_is_refused_with_its_line(tmp_path
     with pytest.raises(InputError, match=r"goes with length and width") as caught:
         read_job(write(tmp_path, text.format(units="mm")))
     assert "job.toml:16" in str(caught.value)
+
+
+def test_a_face_cast_closed_needs_counter_moulds(tmp_path):
+    text = WHOLE.replace("count = 3", "count = 3\nclosed = true", 1).format(units="mm")
+    first, second = read_job(write(tmp_path, text)).faces
+    assert (first.is_closed, second.is_closed) == (False, True)
+
+    with pytest.raises(InputError, match=r"is cast closed, but halves without a panel become cradle") as caught:
+        read_job(write(tmp_path, text.replace('unpaired = "counter-mould"', 'unpaired = "cradle"')))
+    assert "job.toml:23" in str(caught.value)

@@ -26,6 +26,12 @@ def test_a_plan_comes_back_from_its_file_as_it_went_in():
     assert back.machine == plan.machine
 
 
+def test_what_a_square_wire_is_worth_comes_back():
+    plan = sample_plan()
+    plan = replace(plan, job=replace(plan.job, squareness=0.35))
+    assert read_plan_text(plan_text(plan).encode(), "plan.json").job.squareness == 0.35
+
+
 def test_the_centres_of_the_pieces_come_back_with_the_volumes_of_their_sweep():
     plan = sample_plan()
     lower, *others = plan.pieces

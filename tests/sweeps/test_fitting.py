@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from kit.sample import sample_conditions, sample_job, sample_machine
-from kit.shapes import conoid, dome, hypar, hyperboloid, panel_of, scherk, turned
+from kit.shapes import conoid, dome, hypar, hyperboloid, monkey_saddle, panel_of, scherk, turned
 
 from cutblock.base.errors import Cancelled, NotCuttable
 from cutblock.geometry.deviation import face_deviation
@@ -230,6 +230,20 @@ def test_a_kerf_that_eats_the_tolerance_is_refused_with_its_remedy():
         fitted(panel_of(hypar), favour=Favour.SHARE, tolerance_mm=0.5)
     assert 'favour = "lower"' in caught.value.remedy
     assert "0.60 mm" in caught.value.remedy
+
+
+@pytest.mark.parametrize(
+    ("surface", "degrees", "tolerance", "squareness", "most_skew"),
+    [(scherk, 20.0, 3.0, (0.0, 0.1), 500.0), (monkey_saddle, 30.0, 6.0, (0.1, 0.5), 50.0)],
+)
+def test_what_a_square_wire_is_worth_changes_the_choice(surface, degrees, tolerance, squareness, most_skew):
+    panel = panel_of(turned(surface, degrees))
+    (closer, _), (squarer, _) = (fitted(panel, tolerance_mm=tolerance, squareness=value) for value in squareness)
+
+    assert max(sweep.skew_mm for sweep in squarer) < most_skew < max(sweep.skew_mm for sweep in closer)
+    off = [max(sweep.serving[0].max_mm for sweep in sweeps) for sweeps in (closer, squarer)]
+    assert off[0] < off[1] < min(off[0] + squareness[1] * tolerance, tolerance)
+    assert len(closer) == len(squarer)
 
 
 def test_panels_alike_are_fitted_once(monkeypatch):
