@@ -32,14 +32,15 @@ def bind_locks(job: Job, panels: Mapping[str, Panel], sweeps: Sequence[Sweep]) -
     """Return which sweeps are to be paired and which are to stay by themselves, and what cannot be.
 
     Args:
-        job: The locks.
+        job: The locks, and which faces are cast closed.
         panels: Every panel by id.
         sweeps: Each serving one panel, or strip of one.
     """
     of_panel: dict[str, list[int]] = {}
     for index, sweep in enumerate(sweeps):
         of_panel.setdefault(sweep.serving[0].panel, []).append(index)
-    bound = Bound()
+    closed = {face.name for face in job.faces if face.is_closed}
+    bound = Bound(alone={index for name, own in of_panel.items() if panels[name].face in closed for index in own})
     for lock in job.locks:
         if isinstance(lock, DutyLock):
             bound.alone |= {index for index, sweep in enumerate(sweeps) if lock.piece.startswith(f"{sweep.id}-")}
@@ -49,7 +50,11 @@ def bind_locks(job: Job, panels: Mapping[str, Panel], sweeps: Sequence[Sweep]) -
             bound.alone |= {index for panel in lock.panels for index in of_panel.get(panel, [])}
         elif all(known):
             first, second = (of_panel[panel] for panel in lock.panels)
-            if len(first) == len(second) == 1:
+            shut = next((panel for panel in lock.panels if panels[panel].face in closed), None)
+            if shut is not None:
+                text = f"Face {panels[shut].face} is cast closed, so {shut} needs both halves of its cut."
+                bound.findings.append(_refused(lock, shut, text))
+            elif len(first) == len(second) == 1:
                 low, high = sorted((first[0], second[0]))
                 bound.pairs.append((low, high, lock))
             else:

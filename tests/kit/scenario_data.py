@@ -20,6 +20,12 @@ def ring_text(rows):
     return "x,y,z\n" + "".join(f"{x:.7f},{y:.7f},{z:.7f}\n" for x, y, z in rows + 0.0)
 
 
+def ramp_helix(radius_mm):
+    """Rows x, y, z of one turn of a helix that climbs 3 m, a row a degree, mm."""
+    angles = np.radians(np.arange(361))
+    return np.column_stack([radius_mm * np.cos(angles), radius_mm * np.sin(angles), 3000.0 * angles / (2 * np.pi)])
+
+
 def reflector_triangles():
     """(n, 3, 3) triangles of twenty separate sheets, inches."""
     generator = np.random.default_rng(20)
@@ -54,6 +60,27 @@ def turn(axis, angle):
     return matrix
 
 
+def valley_roof():
+    """Rows x, y, z of a free-form roof with a valley, mm, every 250 mm over 12 m by 10 m."""
+    x, y = np.meshgrid(np.arange(0.0, 12001.0, 250.0), np.arange(0.0, 10001.0, 250.0), indexing="ij")
+    z = np.full(x.shape, 600.0)
+    # Amplitude, periods along x and y, phase in degrees.
+    for amplitude, along_x, along_y, phase in (
+        (97, -14600, -17400, 33),
+        (53, 35000, 15300, 20),
+        (79, -15600, 22200, 54),
+        (70, -52000, 20700, 228),
+        (60, 7500, 19100, 67),
+        (102, -22700, 316000, 279),
+    ):
+        z += amplitude * np.sin(2 * np.pi * (x / along_x + y / along_y) + np.radians(phase))
+    return np.column_stack([x.ravel(), y.ravel(), z.ravel()])
+
+
+def rows_text(rows):
+    return "x,y,z\n" + "".join(f"{x:.0f},{y:.0f},{z:.3f}\n" for x, y, z in rows)
+
+
 def binary_stl(triangles):
     """The bytes of a binary STL file; the normals are left to the reader."""
     record = np.zeros(len(triangles), dtype=[("normal", "<f4", 3), ("corners", "<f4", (3, 3)), ("mark", "<u2")])
@@ -67,6 +94,9 @@ def files():
     return {
         "tower-jacket/lower-ring.csv": ring_text(tower_ring(5.2, 0.0, 0.0)).encode(),
         "tower-jacket/upper-ring.csv": ring_text(tower_ring(4.4, 7.2, 40.0)).encode(),
+        "valley-roof/heights.csv": rows_text(valley_roof()).encode(),
+        "ramp-soffit/inner-helix.csv": ring_text(ramp_helix(5000.0)).encode(),
+        "ramp-soffit/outer-helix.csv": ring_text(ramp_helix(8000.0)).encode(),
         "hall-reflectors/reflectors.stl": binary_stl(reflector_triangles()),
     }
 

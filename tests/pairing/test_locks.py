@@ -146,3 +146,23 @@ def test_a_pair_with_a_panel_that_has_no_sweep_is_refused():
     _, _, findings = pair_sweeps(job, panels, [sweeps[0], *sweeps[2:]], EXACT)
 
     assert "T1 cannot be cut" in lock_findings(findings)[0].text
+
+
+def closed(name):
+    return tuple(replace(face, name=name, is_closed=True) for face in sample_job().faces[:1])
+
+
+def test_panels_of_a_face_that_is_cast_closed_share_no_cut():
+    kept, _, findings = plan(facade(), faces=closed(facade()[0][0].face))
+
+    assert couples(kept) == [("A1",), ("T1",), ("A2",), ("T2",), ("D",)]
+    assert not lock_findings(findings)
+
+
+def test_a_pair_set_on_a_face_that_is_cast_closed_is_told_and_not_made():
+    face = facade()[0][0].face
+    kept, _, findings = plan(facade(), PairLock(panels=("T2", "A1"), place="job.toml:9"), faces=closed(face))
+
+    assert len(couples(kept)) == 5
+    (finding,) = lock_findings(findings)
+    assert f"Face {face} is cast closed" in finding.text

@@ -97,6 +97,27 @@ def tower_jacket(points):
     return np.hypot(points[:, 0], points[:, 1]) - np.hypot(across, share * 4400 * np.sin(turn))
 
 
+def valley_roof(points):
+    x, y, z = points.T
+    rows = [
+        (97, -14600, -17400, 33),
+        (53, 35000, 15300, 20),
+        (79, -15600, 22200, 54),
+        (70, -52000, 20700, 228),
+        (60, 7500, 19100, 67),
+        (102, -22700, 316000, 279),
+    ]
+    return z - 600 - sum(a * np.sin(2 * np.pi * (x / p + y / q) + np.radians(phase)) for a, p, q, phase in rows)
+
+
+def ramp_soffit(points):
+    """How far points lie off the helicoid, upright distance by the cosine of the slope."""
+    x, y, z = points.T
+    climb = 3000 / (2 * np.pi)
+    upright = (z - climb * np.arctan2(y, x) + 1500) % 3000 - 1500
+    return upright * np.hypot(x, y) / np.hypot(np.hypot(x, y), climb)
+
+
 def finished_face(sweep, serving, panel):
     """Points of a finished mould face in form coordinates, from the numbers of plan.json alone."""
     near, far = np.array(sweep["near_mm"]), np.array(sweep["far_mm"])
@@ -113,11 +134,17 @@ def finished_face(sweep, serving, panel):
 
 @pytest.mark.parametrize(
     ("made", "form"),
-    [("tide-wall", tide_wall), ("weir-baffles", weir_baffle), ("tower-jacket", tower_jacket)],
+    [
+        ("tide-wall", tide_wall),
+        ("weir-baffles", weir_baffle),
+        ("tower-jacket", tower_jacket),
+        ("valley-roof", valley_roof),
+        ("ramp-soffit", ramp_soffit),
+    ],
     indirect=["made"],
 )
 def test_the_finished_faces_in_the_files_lie_on_the_form(made, form):
-    """The forms' own formulas: crossed sines, the hypar, the hyperboloid of one sheet (Hilbert and Cohn-Vossen)."""
+    """The forms' own formulas: crossed sines, the hypar, the hyperboloid of one sheet (Hilbert and Cohn-Vossen), waves."""
     _, _, plan = made
     panels = {panel["id"]: panel for panel in plan["panels"]}
     moulded = set()
