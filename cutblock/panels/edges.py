@@ -17,7 +17,8 @@ from cutblock.records.panel import Panel, PanelEdge
 FREE = "free"
 _CORNER_RAD = np.radians(20.0)  # a trimmed edge that turns by more has a corner there
 _ON_LINE = 1e-3  # of the cell's size; the outline of a mesh is not quite the grid's outer line
-_N_POINTS = 33
+_N_POINTS = 17
+_SHARES = np.linspace(0.0, 1.0, _N_POINTS)[:, None]
 
 
 class _Run(NamedTuple):
@@ -59,9 +60,8 @@ def edges_of(face: Face, cell: Cell, panel: Panel, names: dict[str, str]) -> tup
 
 def _edge(name: str, points: Floats, normals: Floats) -> PanelEdge:
     """Return an edge through (n, 3) points of the form with the normals there."""
-    steps = np.sqrt((np.diff(points, axis=0) ** 2).sum(axis=1))
-    shares = (np.append(steps, 0.0) + np.append(0.0, steps)) / 2.0
-    normal = unit(shares @ normals)
+    steps = np.sqrt(((points[1:] - points[:-1]) ** 2).sum(axis=1))
+    normal = unit(steps @ normals[1:] + steps @ normals[:-1])
     outwards = unit(np.cross(points[-1] - points[0], normal))
     bow_mm = float(((points - points[0]) @ outwards).max())
     return PanelEdge(name=name, start_mm=points[0], end_mm=points[-1], normal=normal, bow_mm=max(bow_mm, 0.0))
@@ -69,6 +69,10 @@ def _edge(name: str, points: Floats, normals: Floats) -> PanelEdge:
 
 def _dense(points: Floats) -> Floats:
     """Return a polyline with evenly spread points added."""
+    if len(points) == 2:
+        start, end = points
+        straight: Floats = start + _SHARES * (end - start)
+        return straight
     reached = np.append(0.0, np.cumsum(np.hypot(*np.diff(points, axis=0).T)))
     wanted = np.unique(np.concatenate([np.linspace(0.0, reached[-1], _N_POINTS), reached]))
     return np.column_stack([np.interp(wanted, reached, points[:, k]) for k in range(2)])
