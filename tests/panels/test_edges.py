@@ -1,5 +1,6 @@
 import numpy as np
 import pytest
+import shapely
 from kit.surfaces import job_of
 from scipy.integrate import quad_vec
 
@@ -35,6 +36,9 @@ def test_both_panels_at_a_joint_get_the_same_chord_and_normal(layup, division):
     n_joints = 0
     for panel in panels.values():
         own = {edge.name: edge for edge in panel.edges}
+        rim = shapely.LinearRing(panel.outline[0])
+        corners = (np.array([edge.start_mm for edge in panel.edges]) - panel.origin_mm) @ panel.axes.T
+        assert shapely.distance(rim, shapely.points(corners[:, :2])).max() < 1e-5
         for name, other in panel.neighbours:
             theirs = {edge.name: edge for edge in panels[other].edges}[OPPOSITE[name]]
             np.testing.assert_allclose(own[name].start_mm, theirs.end_mm, atol=1e-9)
@@ -125,8 +129,6 @@ def test_an_outline_that_is_the_grids_outer_line_but_for_rounding_has_its_name()
 
 
 def test_a_free_edge_that_turns_slowly_is_one_side_and_one_without_corners_gets_four():
-    import shapely
-
     turns = np.linspace(0.0, np.pi / 2.0, 31)
     quarter = shapely.Polygon(np.concatenate([[[0.0, 0.0]], 100.0 * np.column_stack([np.cos(turns), np.sin(turns)])]))
     disc = shapely.Point(50.0, 50.0).buffer(40.0)
