@@ -144,7 +144,7 @@ def finished_face(sweep, serving, panel):
     indirect=["made"],
 )
 def test_the_finished_faces_in_the_files_lie_on_the_form(made, form):
-    """The forms' own formulas: crossed sines, the hypar, the hyperboloid of one sheet (Hilbert and Cohn-Vossen), waves."""
+    """The forms' formulas: crossed sines, the hypar, the hyperboloid of one sheet (Hilbert and Cohn-Vossen), sines."""
     _, _, plan = made
     panels = {panel["id"]: panel for panel in plan["panels"]}
     moulded = set()
