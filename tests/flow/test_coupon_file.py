@@ -53,7 +53,7 @@ def test_what_spreadsheets_leave_behind_is_passed_over(sheet, encoding, end):
     assert rows[0].kerf_mm == rows[1].kerf_mm == 1.05
 
 
-@pytest.mark.parametrize(("mark", "first"), [(";", []), (";", ["sep=;"]), ("\t", [])])
+@pytest.mark.parametrize(("mark", "first"), [(";", []), (";", ["sep=;"]), (";", ["\ufeffsep=;"]), ("\t", [])])
 def test_semicolons_and_tabs_allow_decimal_commas(sheet, mark, first):
     lines = [HEAD.replace(",", mark), ROW.replace(",", mark).replace(".05", ",05").replace("20.1", "20,1")]
     row = only(sheet(*first, *lines))

@@ -18,7 +18,7 @@ CONTACT_M, WIDEST_M = 0.9e-3, 2.0e-3
 def test_noise_free_coupons_give_back_the_law_they_were_made_by():
     """Least squares of exact data is exact (Press et al., Numerical Recipes, section 15.4)."""
     law = fit_coupons(POWERS, SPEEDS, DENSITIES, linear_kerfs(POWERS, SPEEDS, DENSITIES)).law
-    assert law.least_kerf_m == pytest.approx(LEAST_M, rel=1e-6)
+    assert law.least_kerf_m == pytest.approx(LEAST_M, rel=1e-6, abs=0.0)
     assert law.heat_j_kg == pytest.approx(HEAT_J_KG, rel=1e-6)
     assert law.threshold_w_m == pytest.approx(THRESHOLD_W_M, rel=1e-6)
 
@@ -149,7 +149,7 @@ def line_source_width(ratio):
 def test_the_half_width_is_the_bessel_root_to_ten_digits(heat):
     """scipy.optimize.brentq on the equation itself, one number at a time."""
     ratio = 2.0 * np.pi / heat
-    assert float(universal_root(ratio)) == pytest.approx(line_source_width(ratio), rel=1e-10)
+    assert float(universal_root(ratio)) == pytest.approx(line_source_width(ratio), rel=1e-10, abs=0.0)
 
 
 def test_the_kerf_rate_is_the_root_of_the_heat_balance_to_ten_digits():
@@ -166,7 +166,7 @@ def test_the_kerf_rate_is_the_root_of_the_heat_balance_to_ten_digits():
             return g - 4.0 * a * line_source_width(2.0 * np.pi * k * theta / left)
 
         most = 0.85 * power / (density * 300e3)
-        assert rate == pytest.approx(brentq(balance, 1e-12, most * 0.999, xtol=1e-22, rtol=1e-14), rel=1e-10)
+        assert rate == pytest.approx(brentq(balance, 1e-12, most * 0.999, xtol=1e-22, rtol=1e-14), rel=1e-10, abs=0.0)
 
 
 def test_the_straight_line_of_the_prior_is_the_line_source_at_its_powers():
