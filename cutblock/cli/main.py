@@ -104,6 +104,13 @@ def _parser() -> argparse.ArgumentParser:
         help="instead of one plan compare used and waste per cent, blocks, hours and cost over tolerances and panel"
         " sizes; --out then takes a table and a chart",
     )
+    plan.add_argument(
+        "--offcuts",
+        action="append",
+        default=[],
+        metavar="DIR",
+        help="use the offcuts that the plan in this folder kept; may be given again",
+    )
     plan.add_argument("--seed", type=_count, default=0, metavar="N", help="seed of the packing search (0)")
     effort = plan.add_mutually_exclusive_group()
     effort.add_argument("--seconds", type=_seconds, metavar="S", help="search this long for a better packing")

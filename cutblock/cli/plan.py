@@ -22,12 +22,17 @@ def run_plan(chosen: argparse.Namespace) -> int:
     from cutblock.flow.plan_json import plan_text
 
     settings = Settings(seed=chosen.seed, seconds=chosen.seconds, moves=chosen.moves)
+    job = read_job(job_path(chosen.job))
+    for folder in chosen.offcuts:
+        from cutblock.flow.job_stock import with_offcuts
+
+        job = with_offcuts(job, folder)
     if chosen.curve:
         from cutblock.cli.curve import run_curve
 
-        return run_curve(read_job(job_path(chosen.job)), settings, chosen)
+        return run_curve(job, settings, chosen)
     progress = terminal_progress()
-    plan = make_plan(read_job(job_path(chosen.job)), part_of(progress, 0.0, 0.8), settings)
+    plan = make_plan(job, part_of(progress, 0.0, 0.8), settings)
     if chosen.out is not None:
         write_plan(plan, chosen.out, part_of(progress, 0.8, 1.0))
     progress(1.0, "Done")

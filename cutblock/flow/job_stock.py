@@ -1,7 +1,9 @@
 """The stock of a job: blocks to buy, offcuts kept from earlier jobs, and the blocks that are to stay as they are."""
 
+import hashlib
 import re
 from collections.abc import Callable, Iterator, Sequence
+from dataclasses import replace
 from pathlib import Path
 from typing import NoReturn, Protocol
 
@@ -9,7 +11,8 @@ from cutblock.base.errors import CutblockError, InputError
 from cutblock.catalog import load as catalog
 from cutblock.flow.job_schema import BlockTable, FoamTable, OffcutTable, PinTable
 from cutblock.flow.toml_lines import Path as KeyPath
-from cutblock.records.job import Pin, StockSpec
+from cutblock.records.job import Job, Pin, StockSpec
+from cutblock.records.plan import Plan
 from cutblock.records.shop import Grade
 
 
@@ -125,13 +128,39 @@ def _offcuts(
 
 
 def _kept_by(name: str, file: str, path: KeyPath, place_of: PlaceOf, refuse: Refuse) -> Iterator[StockSpec]:
-    """Yield the offcuts that an earlier plan lists."""
+    """Yield the offcuts that a plan named in the job lists."""
     from cutblock.flow.plan_read import read_plan_text
 
     try:
         plan = read_plan_text(Path(file).read_bytes(), name)
     except CutblockError as error:
         refuse(path, f'"{name}" {error.message}'.rstrip("."), "Name the plan.json of an earlier plan.")
+    yield from kept_offcuts(plan, place_of(path))
+
+
+def with_offcuts(job: Job, folder: str | Path) -> Job:
+    """Return the job with the offcuts of an earlier plan folder before the rest of its stock.
+
+    Raises:
+        InputError: There is no plan in the folder, or it is damaged.
+    """
+    from cutblock.flow.plan_read import read_plan_text
+
+    path = Path(folder)
+    path = path if path.is_file() else path / "plan.json"
+    name = f"{path.absolute().parent.name}/{path.name}"
+    try:
+        raw = path.read_bytes()
+    except OSError as error:
+        remedy = "Name a folder written by `cutblock plan JOB --out DIR`."
+        raise InputError(f"cannot be read ({error.strerror or type(error).__name__})", str(path), remedy) from error
+    kept = tuple(kept_offcuts(read_plan_text(raw, str(path)), name))
+    inputs = (*job.inputs, (name, hashlib.sha256(raw).hexdigest()))
+    return replace(job, stock=(*kept, *job.stock), inputs=inputs)
+
+
+def kept_offcuts(plan: Plan, place: str) -> Iterator[StockSpec]:
+    """Yield the offcuts that a plan keeps, each worth nothing more: it was paid for with its block."""
     for block in plan.blocks:
         grade = catalog.grade(block.grade) if block.grade in {known.name for known in catalog.grades()} else None
         for number, offcut in enumerate(block.offcuts, start=1):
@@ -142,7 +171,7 @@ def _kept_by(name: str, file: str, path: KeyPath, place_of: PlaceOf, refuse: Ref
                 height_mm=height,
                 skin_mm=0.0,
                 grade=block.grade,
-                place=place_of(path),
+                place=place,
                 count=1,
                 price=0.0,
                 stands=grade is not None and grade.stand,
