@@ -118,7 +118,11 @@ def _wrong_tags(plan: Plan, root: Path) -> Iterator[CheckFailed]:
         yield CheckFailed("holds tags of other pieces than the plan's", path.name, "Print only tags of this plan.")
         return
     sheet = sheet_of_pdf(raw)
-    wanted = b"" if sheet is None else tag_sheets(plan, *sheet)
+    try:
+        wanted = b"" if sheet is None else tag_sheets(plan, *sheet)
+    except CutblockError as error:
+        yield CheckFailed(f"names a place on a label sheet: {error.message}", path.name, error.remedy)
+        return
     if raw != wanted:
         place = path.name if sheet is None else f"{path.name}:{_first_difference(raw, wanted)}"
         yield CheckFailed("differs from what the plan gives.", place, "Write it again with `cutblock tags DIR`.")

@@ -277,8 +277,9 @@ def test_tags_on_another_sheet_agree_and_are_read_to_the_last_digit(written, tmp
     (copy / "tags.pdf").write_bytes(raw)
     assert check_folder(copy) == ()
 
-    (copy / "tags.pdf").write_bytes(raw.replace(b"from label 4", b"from label 5"))
-    assert [finding.subject.split(":")[0] for finding in check_folder(copy)] == ["tags.pdf"]
+    for was, becomes in ((b"from label 4", b"from label 5"), (b"a4-3x7", b"a4-3x9"), (b"/Subject", b"/Reject")):
+        (copy / "tags.pdf").write_bytes(raw.replace(was, becomes))
+        assert [finding.subject.split(":")[0] for finding in check_folder(copy)] == ["tags.pdf"]
 
 
 def test_an_old_plan_written_again_is_whole(written, tmp_path):
