@@ -147,13 +147,15 @@ def _kept(
     if sizes[is_steep].sum() > 1e-4 * sizes.sum() or sizes[is_steep].max(initial=0.0) > 400.0:
         worst = int(np.argmin(np.where(is_steep, upwards * sizes, np.inf)))
         place = place_text(vertices[triangles[worst]].mean(axis=0), units)
-        if upwards[worst] <= 0.0:
+        facing = areas.sum(axis=0)
+        is_wall = abs(float(facing @ axes[2])) < math.cos(STEEPEST_RAD) * float(np.sqrt((facing**2).sum()))
+        if upwards[worst] <= 0.0 and not is_wall:
             raise GeometryError(
                 f"the surface folds over itself at {place}",
                 f"face {face}",
                 "Export the upper side alone, or cut it up.",
             )
-        slope = math.degrees(math.acos(float(upwards[worst])))
+        slope = math.degrees(math.acos(min(abs(float(upwards[worst])), 1.0)))
         raise GeometryError(
             f"the surface is {slope:.0f} degrees steep at {place}; a mould takes at most "
             f"{math.degrees(STEEPEST_RAD):.0f} degrees",

@@ -68,12 +68,17 @@ def test_a_surface_that_folds_over_the_bed_is_refused_with_panel_and_place(tmp_p
     assert "folds over itself at x 0.6 m" in error.message
 
 
-@pytest.mark.parametrize("source", ["corners", "rails"])
+@pytest.mark.parametrize("source", ["corners", "rails", "mesh", "leaning mesh"])
 def test_a_vertical_face_is_refused_on_the_bed_and_sent_to_the_bench(tmp_path, source):
     if source == "corners":
         error = refusal(GeometryError, plan_of, tmp_path, "corners = [[0,0,0],[1.2,0,0],[1.2,0,1],[0,0,1]]")
-    else:
+    elif source == "rails":
         error = refusal(GeometryError, rails, tmp_path, (1.2 * T, ZERO, ZERO), (1.2 * T, ZERO, ONE))
+    else:
+        vertices, triangles = grid_mesh(lambda x, y: 0.0 * x, np.linspace(0, 1.2, 13), np.linspace(0, 1, 11))
+        over = 0.003 * vertices[:, 1] if source == "leaning mesh" else 0.02 * vertices[:, 0]
+        write_stl(tmp_path / "wall.stl", (np.stack([vertices[:, 0], over, vertices[:, 1]], axis=1), triangles))
+        error = refusal(GeometryError, plan_of, tmp_path, 'mesh = "wall.stl"')
     assert "90 degrees steep at x " in error.message
     assert "bench" in error.remedy
 
