@@ -49,6 +49,39 @@ def track_wire(sweep: Sweep, timing: SweepTiming, conditions: Conditions) -> Wir
     return WireTrack(seconds, sweep.near, sweep.far, speeds[0], speeds[1], kerfs[0], kerfs[1])
 
 
+class WireMoment(NamedTuple):
+    """The wire at one time of its track."""
+
+    near: tuple[float, float]  # x and z at y = 0, mm
+    far: tuple[float, float]  # x and z at y = width, mm
+    near_speed_mm_s: float
+    far_speed_mm_s: float
+    near_kerf_mm: float
+    far_kerf_mm: float
+
+
+def wire_at(track: WireTrack, seconds: float) -> WireMoment:
+    """Return the wire at a time; before the first ruling it is there, after the last ruling there.
+
+    Between two rulings the ends run straight, as the machine runs them; speeds and the inverse of the kerf, which is 0
+    where an end stands still, go evenly from one to the next.
+    """
+
+    def at(values: Floats) -> float:
+        return float(np.interp(seconds, track.seconds, values))
+
+    kerfs = [at(1.0 / kerf_mm) for kerf_mm in (track.near_kerf_mm, track.far_kerf_mm)]
+    near_kerf_mm, far_kerf_mm = (1.0 / inverse if inverse > 0.0 else float("inf") for inverse in kerfs)
+    return WireMoment(
+        near=(at(track.near[:, 0]), at(track.near[:, 1])),
+        far=(at(track.far[:, 0]), at(track.far[:, 1])),
+        near_speed_mm_s=at(track.near_speed_mm_s),
+        far_speed_mm_s=at(track.far_speed_mm_s),
+        near_kerf_mm=near_kerf_mm,
+        far_kerf_mm=far_kerf_mm,
+    )
+
+
 def _in_space(rail: Floats, y_mm: float) -> Floats:
     return np.column_stack([rail[:, 0], np.full(len(rail), y_mm), rail[:, 1]])
 

@@ -27,11 +27,12 @@ from cutblock.window.labels import counted, label
 from cutblock.window.rows import CUT_COLUMNS, PIECE_COLUMNS, cut_rows, piece_rows
 from cutblock.window.speed_page import SpeedPage
 from cutblock.window.tables import RowsModel, RowsView
+from cutblock.window.wire_page import WirePage
 from cutblock.worker.requests import ShownPlan
 
 
 class WorkshopDesk(QWidget):
-    """Cut list, tags and wire speed of a plan, with the cautions of the cutting always in sight.
+    """Cut list, tags, wire speed and wire path of a plan, with the cautions of the cutting always in sight.
 
     Signals:
         export_asked(): The tags shall be written as PDF; `sheet` and `start` say how.
@@ -46,12 +47,14 @@ class WorkshopDesk(QWidget):
         self.cuts = CutListPage()
         self.tags = TagsPage()
         self.speed = SpeedPage()
+        self.wire = WirePage()
         self.pages = QTabWidget()
         self.pages.setAccessibleName("Parts of the workshop's desk")
         self.pages.setDocumentMode(True)
         self.pages.addTab(self.cuts, "Cut &list")
         self.pages.addTab(self.tags, "Piece &tags")
         self.pages.addTab(self.speed, "Wire &speed")
+        self.pages.addTab(self.wire, "Wire &path")
         strip = QFrame()
         strip.setFrameShape(QFrame.Shape.StyledPanel)
         strip.setAccessibleName("Cautions")
@@ -82,6 +85,8 @@ class WorkshopDesk(QWidget):
         yield from self.tags.showing(shown)
         yield
         self.speed.show_plan(shown)
+        yield
+        yield from self.wire.showing(shown)
 
     def add_pictures(self, shown: ShownPlan, tags: tuple[Drawing, ...]) -> None:
         """Take more pictures of the plan shown, `tags` those of its tags that have just come."""
