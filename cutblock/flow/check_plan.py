@@ -14,6 +14,7 @@ from cutblock.records.words import CutKind, Half
 _LAST_DIGIT = 0.5e-6  # of a length, a mass or a time as plan.json has it
 _MONEY = 0.01
 _KERF_MM = 1e-5
+_SLAB_MM3 = 5.0  # of a thicker back: the digits of its height over the billet
 
 
 def wrong_references(plan: Plan) -> Iterator[CheckFailed]:
@@ -93,6 +94,12 @@ def wrong_blocks(plan: Plan) -> Iterator[CheckFailed]:
         except CheckFailed as error:
             yield error
     yield from wrong_by_the_job(plan.job, plan.blocks, plan.sweeps)
+    for sweep, volumes in zip(plan.sweeps, plan.volumes, strict=True):
+        slab = sweep.length_mm * sweep.width_mm * sweep.thickened_mm
+        is_whole = volumes.trimmed_mm3 == 0.0
+        if volumes.thickened_mm3 > slab + _SLAB_MM3 or (is_whole and volumes.thickened_mm3 < slab - _SLAB_MM3):
+            told, found = volumes.thickened_mm3 / MM3_PER_LITRE, slab / MM3_PER_LITRE
+            yield CheckFailed(f"its thicker back takes {found:.6f} L, the plan says {told:.6f} L.", sweep.id)
 
 
 def wrong_accounts(plan: Plan) -> Iterator[CheckFailed]:
@@ -115,6 +122,9 @@ def wrong_accounts(plan: Plan) -> Iterator[CheckFailed]:
     )
     if plan.ledger is not None and plan.ledger.n_blocks != len(plan.blocks):
         yield CheckFailed(f"blocks: the plan says {plan.ledger.n_blocks}, it has {len(plan.blocks)}.", "ledger")
+    if plan.n_blocks_bound > len(plan.blocks):
+        text = f"no packing should need fewer than {plan.n_blocks_bound} blocks, and the plan has {len(plan.blocks)}."
+        yield CheckFailed(text, "ledger")
     hours = count_hours(plan.blocks, plan.timings, plan.machine, plan.conditions)
     if plan.hours is not None:
         said_s, found_s = dict(plan.hours.by_block_s), dict(hours.by_block_s)

@@ -8,6 +8,7 @@ theirs and a comma (RS274/NGC as controllers extend it).
 import re
 
 from cutblock.base.tolerances import PLAN_MM
+from cutblock.base.units import mm_per_minute
 from cutblock.machinecode.clamping import Clamping, cut_subject
 from cutblock.machinecode.placing import Place
 from cutblock.machinecode.rules import BELOW_MM, LONGEST_LINE, planned_mm_min
@@ -44,19 +45,39 @@ def header_comments(plan: Plan, clamping: Clamping, place: Place) -> tuple[str, 
         f"Job {job.id} {job.title}",
         f"Revision {job.revision}",
         f"Block {block.id} set-up {clamping.number} of {n_setups}",
+        *_standing(clamping),
         f"Part {part.length_mm:.1f} mm along travel {part.width_mm:.1f} mm along wire {part.height_mm:.1f} mm up",
         f"Part lies {lying if clamping.is_turned else 'as in the block. Block x along the travel'}",
         f"Clamp the near face {_setback(place)} the near edge of the table. Start at {place.start_mm:.1f} mm of travel",
         f"The part lies {_stand(place, machine)}sacrificial slats. The wire goes {BELOW_MM:.0f} mm below it",
-        f"Foam {block.grade} {plan.conditions.density_kg_m3:.1f} kg per m3",
+        f"Foam {block.grade} {block.density_kg_m3 or plan.conditions.density_kg_m3:.1f} kg per m3",
         f"Wire {plan.wire.name} diameter {plan.wire.diameter_mm:.2f} mm",
         f"Power {job.power_w_m:.1f} W per m of wire. {total_w:.1f} W between the towers",
         f"Planned speed {planned_mm_min(plan):.1f} mm per min at mid-wire",
+        _limits(plan),
         "Before the start home the machine and park the wire at the zero of the towers clear of the part",
         "Look that the wire clears the table and the clamps over its whole way",
         *CAUTIONS,
     )
     return tuple(comment(text) for text in texts)
+
+
+def _limits(plan: Plan) -> str:
+    """Return the speed limits and how far they can be trusted."""
+    conditions = plan.conditions
+    low, high = mm_per_minute(conditions.low_mm_s), mm_per_minute(conditions.high_mm_s)
+    trust = "not calibrated and true within 50 per cent only"
+    if conditions.calibration is not None:
+        trust = f"calibrated by {conditions.calibration.name} of {conditions.calibration.date}"
+    return f"Speed limits {low:.1f} to {high:.1f} mm per min {trust}"
+
+
+def _standing(clamping: Clamping) -> tuple[str, ...]:
+    """Return how a block is stood before its first set-up, where that is not as it was bought."""
+    block = clamping.block
+    if block.bought_mm is None or clamping.number != 1:
+        return ()
+    return (f"First stand the block on its {block.length_mm:.0f} x {block.width_mm:.0f} mm face",)
 
 
 def _setback(place: Place) -> str:

@@ -11,6 +11,8 @@ from cutblock.records.job import Job, StockSpec
 from cutblock.records.sweep import Sweep
 from cutblock.records.words import CutKind
 
+_MOST_KERF_MM = 10.0  # no wire melts more
+
 
 def wrong_by_the_job(job: Job, blocks: Sequence[Block], sweeps: Sequence[Sweep]) -> Iterator[CheckFailed]:
     """Yield every block that is not as the job asks: its stock, its grades, its pins, its locks and its set-ups.
@@ -28,9 +30,11 @@ def wrong_by_the_job(job: Job, blocks: Sequence[Block], sweeps: Sequence[Sweep])
             wrong = sorted(held.symmetric_difference(pin.sweeps))
             yield CheckFailed(f"is pinned to other billets than it holds; {wrong[0]} is the first", pin.block)
     yield from _wrong_turns(job, blocks, sweeps)
+    yield from _wrong_thickness(job, sweeps)
     for block in blocks:
         if job.most_setups is not None and block.n_setups > job.most_setups:
             yield CheckFailed(f"takes {block.n_setups} set-ups, {job.most_setups} are allowed", block.id)
+        yield from _wrong_offcuts(job, block)
         if any(cut.frees for cut in block.cuts):
             yield from _wrong_supports(block)
 
@@ -85,6 +89,23 @@ def _wrong_turns(job: Job, blocks: Sequence[Block], sweeps: Sequence[Sweep]) -> 
                 yield CheckFailed(
                     f"the billet {billet.sweep} lies turned in it, which cutting.no_turn forbids", block.id
                 )
+
+
+def _wrong_thickness(job: Job, sweeps: Sequence[Sweep]) -> Iterator[CheckFailed]:
+    # A slab is taken up whole, the kerf of the cut that is saved with it.
+    most_mm = min(job.least_offcut_mm) + _MOST_KERF_MM
+    for sweep in sweeps:
+        if sweep.thickened_mm and not job.takes_up_slack:
+            yield CheckFailed("has a thicker back, though the job takes up no slack", sweep.id)
+        elif not 0.0 <= sweep.thickened_mm < most_mm:
+            yield CheckFailed(f"has a back {sweep.thickened_mm:.2f} mm thicker, which is worth an offcut", sweep.id)
+
+
+def _wrong_offcuts(job: Job, block: Block) -> Iterator[CheckFailed]:
+    least = sorted(job.least_offcut_mm)
+    for number, offcut in enumerate(block.offcuts, start=1):
+        if any(have < want - POSITION_MM for have, want in zip(sorted(offcut.size_mm), least, strict=True)):
+            yield CheckFailed(f"offcut {number} is smaller than the least worth keeping", block.id)
 
 
 def _wrong_supports(block: Block) -> Iterator[CheckFailed]:

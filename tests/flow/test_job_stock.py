@@ -225,6 +225,48 @@ def test_the_check_finds_a_block_that_is_not_as_the_job_asks(tmp_path):
 
 
 @pytest.mark.parametrize(
+    ("change", "text"),
+    [
+        (lambda plan: {"ledger": replace(plan.ledger, n_blocks_bound=9)}, "fewer than 9 blocks"),
+        (lambda plan: {"job": replace(plan.job, takes_up_slack=False)}, "takes up no slack"),
+        (lambda plan: {"job": replace(plan.job, least_offcut_mm=(20.0, 10.0, 5.0))}, "worth an offcut"),
+        (lambda plan: {"job": replace(plan.job, least_offcut_mm=(9e3, 9e3, 9e3))}, "smaller than the least"),
+        (
+            lambda plan: {"volumes": tuple(replace(volume, thickened_mm3=9e6) for volume in plan.volumes)},
+            "thicker back takes",
+        ),
+    ],
+)
+def test_the_check_finds_bounds_backs_and_offcuts_that_cannot_be(tmp_path, slack_plan, change, text):
+    cutblock.write_plan(replace(slack_plan, **change(slack_plan)), tmp_path / "plan")
+
+    assert any(text in finding.text for finding in check_folder(tmp_path / "plan"))
+
+
+@pytest.fixture(scope="module")
+def slack_plan(tmp_path_factory):
+    folder = tmp_path_factory.mktemp("slack")
+    text = with_keys(foam='slack = "backs"').replace("count = 12", "count = 18")
+    plan = cutblock.make_plan(read_job(write(folder, text)))
+    assert any(sweep.thickened_mm for sweep in plan.sweeps)
+    assert any(block.offcuts for block in plan.blocks)
+    return plan
+
+
+def test_a_block_on_another_face_is_told_to_the_hand_at_the_machine_too(tmp_path):
+    text = (
+        with_keys(block="stand = true").replace("width = 1050", "width = 480").replace("height = 600", "height = 1050")
+    )
+    plan, _ = made(tmp_path, text)
+
+    block = plan.blocks[0]
+    assert block.bought_mm == (2200.0, 480.0, 1050.0)
+    words = f"First stand the block on its {block.length_mm:.0f} x {block.width_mm:.0f} mm face"
+    programs = sorted((tmp_path / "plan" / "cuts").glob(f"{block.id}*"))
+    assert [words in program.read_text() for program in programs] == [True] + [False] * (len(programs) - 1)
+
+
+@pytest.mark.parametrize(
     ("keys", "error", "message", "remedy"),
     [
         ({"old": "length = 2200", "new": "length = 100"}, StockError, "larger than any block", "smaller panels"),
