@@ -7,6 +7,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from kit.coupons import sample_calibration
 from kit.machining import (
     billet_plan,
     block_of,
@@ -18,7 +19,7 @@ from kit.machining import (
     skew_sweep,
     timing_of,
 )
-from kit.sample import sample_job, sample_plan, sample_sweep
+from kit.sample import sample_conditions, sample_job, sample_plan, sample_sweep
 
 from cutblock.base.errors import GeometryError, InputError, NotCuttable
 from cutblock.base.progress import silent
@@ -209,6 +210,7 @@ def test_the_header_says_what_the_hand_must_know(programs):
         "60.0 W per m of wire. 180.0 W between the towers",
         "Wire NiCr80 0.40",
         "158.7 mm per min",
+        "Speed limits 91.9 to 218.3 mm per min not calibrated and true within 50 per cent only",
         "The wire goes 5 mm below it",
         "CAUTION hot wire",
         "CAUTION fumes",
@@ -216,6 +218,13 @@ def test_the_header_says_what_the_hand_must_know(programs):
         "local rules",
     ):
         assert words in text
+
+
+def test_the_header_names_the_calibration_of_the_limits():
+    conditions = sample_conditions(is_calibrated=True, calibration=sample_calibration())
+    text = write_programs(roomy_plan(conditions=conditions))[0].text
+    assert "mm per min calibrated by shop of 2026-03-02)" in text
+    assert "50 per cent" not in text
 
 
 @given(feed=st.floats(1e-4, 1e6))
