@@ -54,7 +54,7 @@ class WorkshopDesk(QWidget):
         self.pages.addTab(self.cuts, "Cut &list")
         self.pages.addTab(self.tags, "Piece &tags")
         self.pages.addTab(self.speed, "Wire &speed")
-        self.pages.addTab(self.wire, "Wire &path")
+        self.pages.addTab(self.wire, "Wi&re path")
         strip = QFrame()
         strip.setFrameShape(QFrame.Shape.StyledPanel)
         strip.setAccessibleName("Cautions")

@@ -96,5 +96,5 @@ def test_the_workshop_has_the_page(qtbot):
     qtbot.addWidget(desk)
     for _ in desk.showing(sample_shown()):
         pass
-    assert [desk.pages.tabText(n) for n in range(desk.pages.count())][-1] == "Wire &path"
+    assert [desk.pages.tabText(n) for n in range(desk.pages.count())][-1] == "Wi&re path"
     assert desk.wire.sweep.count() == 2
