@@ -6,7 +6,7 @@ from typing import Any
 import numpy as np
 
 _EXACT = 200  # members up to which a component is matched exactly whatever its form
-_WEIGHT_STEPS = 1000
+_WEIGHT_STEPS = 1_000_000
 
 # (a, b) with a <= b, a shape with itself included, to a cost in [0, 1].
 Edges = Mapping[tuple[int, int], float]
@@ -16,7 +16,7 @@ def match_shapes(counts: Sequence[int], edges: Edges) -> dict[tuple[int, int], i
     """Return how many pairs to make of each two shapes.
 
     The number of pairs is the greatest possible in every connected part of the graph that has up to 200 pieces, is a
-    single shape, or is two-sided without shapes that pair with themselves (maximum flow); in the rest, large and
+    single shape, or is two-sided without shapes that pair with themselves (flow); in the rest, large and
     odd, shapes that need another are served first and the remainder is matched exactly if it is small. Blossoms do
     not scale to large cliques, hence the shapes.
 
@@ -98,26 +98,46 @@ def _two_sides(part: Sequence[int], edges: Edges) -> dict[int, int] | None:
 
 
 def _match_by_flow(sides: Mapping[int, int], counts: Sequence[int], edges: Edges) -> dict[tuple[int, int], int]:
-    """Match a two-sided component by a maximum flow from one side to the other."""
+    """Match a two-sided component: as many pairs as flow from one side to the other, at the least cost.
+
+    A linear programme over a two-sided graph with whole capacities has whole corners, also with the number of pairs
+    given (Schrijver, Combinatorial Optimization, 2003, on network matrices; from memory).
+    """
+    from scipy.optimize import linprog
+    from scipy.sparse import coo_array
+
+    pairs = list(edges)
+    place = {shape: k for k, shape in enumerate(sorted(sides))}
+    rows = np.array([(place[a], place[b]) for a, b in pairs])
+    columns = np.arange(len(pairs))
+    shape = (len(place), len(pairs))
+    uses: Any = coo_array((np.ones(2 * len(pairs)), (rows.T.ravel(), np.tile(columns, 2))), shape=shape).tocsr()
+    found: Any = linprog(
+        np.array([edges[pair] for pair in pairs]),
+        A_ub=uses,
+        b_ub=np.array([counts[shape] for shape in sorted(sides)], dtype=np.float64),
+        A_eq=np.ones((1, len(pairs))),
+        b_eq=[_most_pairs(sides, counts, pairs)],
+        method="highs-ds",
+    )
+    return {pair: round(number) for pair, number in zip(pairs, found.x.tolist(), strict=True)}
+
+
+def _most_pairs(sides: Mapping[int, int], counts: Sequence[int], pairs: Sequence[tuple[int, int]]) -> int:
+    """Return how many pairs a two-sided component has at most: the maximum flow from one side to the other."""
     from scipy.sparse import coo_array
     from scipy.sparse.csgraph import maximum_flow
 
     shapes = sorted(sides)
     place = {shape: k + 1 for k, shape in enumerate(shapes)}  # 0 is the source, the last the sink
     sink = len(shapes) + 1
-    rows, columns, capacities = [], [], []
-    for shape in shapes:
-        rows.append(0 if sides[shape] == 0 else place[shape])
-        columns.append(place[shape] if sides[shape] == 0 else sink)
-        capacities.append(counts[shape])
-    for a, b in edges:
+    ways = [(0, place[k], counts[k]) if sides[k] == 0 else (place[k], sink, counts[k]) for k in shapes]
+    for a, b in pairs:
         start, end = (a, b) if sides[a] == 0 else (b, a)
-        rows.append(place[start])
-        columns.append(place[end])
-        capacities.append(min(counts[a], counts[b]))
-    graph = coo_array((np.array(capacities, dtype=np.int32), (rows, columns)), shape=(sink + 1, sink + 1)).tocsr()
-    flow = maximum_flow(graph, 0, sink).flow
-    return {(a, b): abs(int(flow[place[a], place[b]])) for a, b in edges}
+        ways.append((place[start], place[end], min(counts[a], counts[b])))
+    rows, columns, capacities = np.array(ways, dtype=np.int32).T
+    graph = coo_array((capacities, (rows, columns)), shape=(sink + 1, sink + 1)).tocsr()
+    return int(maximum_flow(graph, 0, sink).flow_value)
 
 
 def _match_greedily(part: Sequence[int], counts: Sequence[int], edges: Edges) -> dict[tuple[int, int], int]:

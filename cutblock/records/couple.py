@@ -28,12 +28,11 @@ class Couple(Record):
 
 
 def shared_tolerance_mm(job: Job, conditions: Conditions) -> float:
-    """Return how far the finished faces of a sweep fitted to two panels may be off at the planned kerf.
+    """Return how far the finished faces of a sweep fitted to two panels may be off at the planned speed.
 
-    A tenth of the kerf is kept for what the settled speeds change in it: at the ends of a wire that run at different
-    speeds the kerf differs from the planned one by up to a fifth, and half of that shows on each face.
+    A fiftieth of the kerf is kept: where a tower's axis is at its limit the wire goes slower than planned, and wider.
     """
-    return job.tolerance_mm - 0.1 * conditions.kerf_mm
+    return job.tolerance_mm - 0.02 * conditions.kerf_mm
 
 
 # One sweep for each couple, serving the lower one's panel with its lower half; None where no wire comes close enough

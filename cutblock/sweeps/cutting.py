@@ -119,24 +119,42 @@ def _cut_strip(strip: Strip, sheet: SheetFit, aim: Aim) -> CutStrip:
         return CutStrip(strip, sheet, ends[0], ends[1], off, sheet.rms_mm, off, sheet.max_mm, sheet.rms_mm)
     away = CLEAR_MM + aim.kerf_mm
     near, far = polyline_rails(sheet, -away, strip.lie.size_mm[0] + away, SAG_MM)
+    return measured_cut(strip, sheet, near, far, aim)
+
+
+def measured_cut(strip: Strip, sheet: SheetFit, near: Floats, far: Floats, aim: Aim) -> CutStrip:
+    """Return a strip cut along rails, with the deviations of its finished face from the panel's samples.
+
+    Args:
+        strip: The strip.
+        sheet: What the rails were taken from.
+        near: (n, 2) x and z of the rail at y = 0.
+        far: (n, 2) likewise at y = the strip's width.
+        aim: Where kerf and coat leave the face.
+    """
     samples, normals, areas = strip.samples()
-    if len(samples):
-        deviations = face_deviation(near, far, strip.width_mm, samples, normals, aim.face_offset_mm)
-        uneven = _unevenness(strip, near, far, samples[:, 1], aim)
-        face = deviation_measures(deviations + uneven, areas)
-        # The finished face and the surface the centreline was fitted to are parallel to sheet and form.
-        fit = deviation_measures(deviations - aim.kerf_error_mm, areas)
-    else:
-        face = fit = (0.0, 0.0, 0.0)
+    if not len(samples):
+        return CutStrip(strip, sheet, near, far, 0.0, 0.0, 0.0, 0.0, 0.0)
+    deviations = face_deviation(near, far, strip.width_mm, samples, normals, aim.face_offset_mm)
+    uneven = aim.kerf_share * uneven_kerf(strip, near, far, samples[:, 1], aim)
+    face = deviation_measures(deviations + uneven, areas)
+    # The finished face and the surface the centreline was fitted to are parallel to sheet and form.
+    fit = deviation_measures(deviations - aim.kerf_error_mm, areas)
     return CutStrip(strip, sheet, near, far, *face, *fit[:2])
 
 
-def _unevenness(strip: Strip, near: Floats, far: Floats, y: Floats, aim: Aim) -> Floats:
-    """Return how much higher the finished face lies for the kerf that the wire's ends leave at their own speeds, mm.
+def uneven_kerf(strip: Strip, near: Floats, far: Floats, y: Floats, aim: Aim) -> Floats:
+    """Return what the kerf at places along the wire is over the planned one, mm.
 
     Mid-wire keeps to the planned speed, so an end that goes a shorter way goes slower and melts more.
+
+    Args:
+        strip: The strip.
+        near: (n, 2) x and z of the rail at y = 0.
+        far: (n, 2) likewise at y = the strip's width.
+        y: (m,) places.
+        aim: The kerf.
     """
     slowness = end_slowness(near, far, strip.width_mm, strip.lie.size_mm[0])
     places = np.clip(y / strip.width_mm, 0.0, 1.0)
-    uneven: Floats = aim.kerf_share * kerf_gain(aim.kerf_mm - aim.least_kerf_mm, slowness, places)
-    return uneven
+    return kerf_gain(aim.kerf_mm - aim.least_kerf_mm, slowness, places)

@@ -13,7 +13,7 @@ import numpy as np
 from cutblock.base.arrays import Floats
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.catalog.load import machine
-from cutblock.geometry.deviation import deviation_measures, face_deviation
+from cutblock.geometry.deviation import face_deviation
 from cutblock.geometry.heights import height_field, offset_heights
 from cutblock.records.couple import Couple, shared_tolerance_mm
 from cutblock.records.job import Job
@@ -24,7 +24,7 @@ from cutblock.records.sweep import Sweep
 from cutblock.records.words import Favour, Severity
 from cutblock.sweeps.aim import Aim, aim_of
 from cutblock.sweeps.build import sweeps_of
-from cutblock.sweeps.cutting import CutPanel, CutStrip, cut_panels
+from cutblock.sweeps.cutting import CutPanel, CutStrip, cut_panels, measured_cut, uneven_kerf
 from cutblock.sweeps.kerf_law import centreline_offset_mm
 from cutblock.sweeps.lie import Lie, lie_of
 from cutblock.sweeps.validity import check_sweep, findings_of
@@ -191,6 +191,8 @@ class _Try:
         points, normals = (self._points - lie.shift_mm) @ lie.rotation, self._normals @ lie.rotation
         # The upper half's finished face lies as far above the sheet as the lower one's below it.
         off = face_deviation(cut.near, cut.far, cut.strip.width_mm, points, normals, -aim.face_offset_mm)
+        # So much of what the kerf is over the planned one is the upper half's.
+        off += (1.0 + aim.kerf_share) * uneven_kerf(cut.strip, cut.near, cut.far, points[:, 1], aim)
         meant = 0.0 if self._job.favour is Favour.LOWER else aim.kerf_error_mm - 2.0 * aim.face_offset_mm
         # Its height is free, but for what kerf and coat put it off on purpose.
         off -= _middle_of(off - meant) * normals[:, 2]
@@ -225,23 +227,11 @@ def _levelled(cut: CutStrip, aim: Aim) -> CutStrip:
 
     A sheet on the mean of two surfaces leans to neither; but what is left of the fit need not be even.
     """
-    lie = cut.strip.lie
-    off = face_deviation(cut.near, cut.far, cut.strip.width_mm, lie.samples, lie.normals, aim.face_offset_mm)
-    raised = round(-_middle_of(off - aim.kerf_error_mm), 6)
-    off += raised * lie.normals[:, 2]
-    up = np.array([0.0, raised])
-    max_mm, rms_mm, p95_mm = deviation_measures(off, lie.areas_mm2)
-    fit_max_mm, fit_rms_mm, _ = deviation_measures(off - aim.kerf_error_mm, lie.areas_mm2)
-    return replace(
-        cut,
-        near=cut.near + up,
-        far=cut.far + up,
-        max_mm=max_mm,
-        rms_mm=rms_mm,
-        p95_mm=p95_mm,
-        fit_max_mm=fit_max_mm,
-        fit_rms_mm=fit_rms_mm,
-    )
+    samples, normals, _ = cut.strip.samples()
+    off = face_deviation(cut.near, cut.far, cut.strip.width_mm, samples, normals, aim.face_offset_mm)
+    off += aim.kerf_share * uneven_kerf(cut.strip, cut.near, cut.far, samples[:, 1], aim)
+    up = np.array([0.0, round(-_middle_of(off - aim.kerf_error_mm), 6)])
+    return measured_cut(cut.strip, cut.sheet, cut.near + up, cut.far + up, aim)
 
 
 def _middle_of(values: Floats) -> float:

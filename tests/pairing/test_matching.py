@@ -66,6 +66,28 @@ def test_large_two_sided_graphs_get_the_maximum_flow(left, right, data):
     assert all(total <= count for total, count in zip(used(pairs, len(counts)), counts, strict=True))
 
 
+@given(
+    counts=st.lists(st.integers(40, 90), min_size=6, max_size=6),
+    costs=st.lists(st.floats(0.0, 1.0), min_size=9, max_size=9),
+)
+def test_large_two_sided_graphs_take_the_cheapest_of_the_most_pairs(counts, costs):
+    """Against the network simplex of networkx, costs in whole thousandths."""
+    edges = {(a, b): round(1000 * costs[3 * a + b - 3]) / 1000 for a in range(3) for b in range(3, 6)}
+    flow = nx.DiGraph()
+    for a in range(3):
+        flow.add_edge("source", a, capacity=counts[a])
+    for b in range(3, 6):
+        flow.add_edge(b, "sink", capacity=counts[b])
+    for (a, b), cost in edges.items():
+        flow.add_edge(a, b, weight=round(1000 * cost))
+    best = nx.cost_of_flow(flow, nx.max_flow_min_cost(flow, "source", "sink"))
+
+    pairs = match_shapes(counts, edges)
+
+    assert sum(pairs.values()) == min(sum(counts[:3]), sum(counts[3:]))
+    assert sum(round(1000 * edges[pair]) * number for pair, number in pairs.items()) == best
+
+
 @given(n=st.integers(0, 100_000))
 def test_a_shape_that_is_its_own_complement_leaves_one_at_most(n):
     assert sum(match_shapes([n], {(0, 0): 0.0}).values()) == n // 2
