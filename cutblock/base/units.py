@@ -54,8 +54,8 @@ _DECIMALS = {
 
 def length_text(length_mm: float, unit: str, extra_decimals: int = 0) -> str:
     """Return a length in the unit people read, to about a mm (or finer by `extra_decimals`), such as "1.2 m"."""
-    value = round(length_mm / mm_per(unit), _DECIMALS[LengthUnit(unit)] + extra_decimals) + 0.0
-    return f"{value:.12g} {unit}"
+    figure = length_figure(length_mm, unit, extra_decimals)
+    return f"{figure.rstrip('0').rstrip('.') if '.' in figure else figure} {unit}"
 
 
 def length_figure(length_mm: float, unit: str, extra_decimals: int = 0) -> str:

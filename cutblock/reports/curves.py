@@ -16,7 +16,7 @@ from cutblock.reports.colours import BLUE, GREY, VERMILION
 from cutblock.reports.legend import box
 
 _WIDTH_MM, _HEIGHT_MM = 90.0, 60.0  # of one chart with its words
-_LEFT_MM, _TOP_MM, _BELOW_MM, _RIGHT_MM = 12.0, 9.0, 14.0, 4.0
+_LEFT_MM, _TOP_MM, _BELOW_MM, _RIGHT_MM = 12.0, 9.0, 14.0, 6.5
 _WIDE_MM, _HIGH_MM = _WIDTH_MM - _LEFT_MM - _RIGHT_MM, _HEIGHT_MM - _TOP_MM - _BELOW_MM
 _STEPS = (0, 20, 40, 60, 80, 100)  # per cent
 _NEXT_MM = 8.0  # between two numbers under the chart, at least

@@ -21,11 +21,13 @@ class Desks(QTabWidget):
     Signals:
         export_asked(): The tags shall be written as PDF.
         sheet_chosen(str): The tags shall be laid out for another label sheet.
+        compare_asked(): The job shall be compared with other tolerances and panel sizes.
         filled(): Everything of the plan is shown, but pictures still to come.
     """
 
     export_asked = Signal()
     sheet_chosen = Signal(str)
+    compare_asked = Signal()
     filled = Signal()
     TITLES: ClassVar = ("Detailing", "Workshop", "Estimating")
 
@@ -73,10 +75,11 @@ class Desks(QTabWidget):
         self.workshop.add_pictures(shown, pictures.tags)
         self.estimating.add_pictures(shown)
 
-    def show_busy(self, is_busy: bool) -> None:
-        """Let nothing be asked for while something runs."""
+    def show_busy(self, is_busy: bool, has_job: bool) -> None:
+        """Let nothing be asked for while something runs, and no comparing without a job file."""
         if self.count() == len(self.TITLES):
             self.workshop.tags.show_busy(is_busy)
+            self.estimating.compare.setEnabled(has_job and not is_busy)
 
     @property
     def chosen_sheet(self) -> str:
@@ -123,6 +126,7 @@ class Desks(QTabWidget):
 
             self.estimating = EstimatingDesk()
             self.estimating.place_asked.connect(self.go_to)
+            self.estimating.compare_asked.connect(self.compare_asked)
             self.addTab(self.estimating, title)
 
     @Slot(int)

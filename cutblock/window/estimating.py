@@ -32,9 +32,11 @@ class EstimatingDesk(QWidget):
 
     Signals:
         place_asked(str): The user wants to see the panel, sweep, piece or block of a finding.
+        compare_asked(): The user wants options laid side by side.
     """
 
     place_asked = Signal(str)
+    compare_asked = Signal()
 
     def __init__(self, parent: QWidget | None = None) -> None:
         super().__init__(parent)
@@ -42,6 +44,10 @@ class EstimatingDesk(QWidget):
         self._lines = QGridLayout()
         self._lines.setHorizontalSpacing(16)
         self._lines.setColumnStretch(1, 1)
+        self.compare = QPushButton("Compare &options")
+        self.compare.setToolTip(
+            "Plan again with other tolerances and panel sizes, and lay the figures side by side (F6)"
+        )
         self._words = label(kind="figure", wraps=True)
         self._waste_words = label(kind="note", wraps=True)
         self.bar = LedgerBar()
@@ -62,7 +68,7 @@ class EstimatingDesk(QWidget):
         left.addWidget(titled("Summary", self._summary_area()))
         left.addWidget(titled("Blocks", self.block_table))
         left.addWidget(self.picture)
-        left.setSizes([240, 130, 370])
+        left.setSizes([300, 130, 310])
         right = QSplitter(Qt.Orientation.Vertical)
         right.addWidget(titled("Foam account", self._account()))
         right.addWidget(titled("Findings", self._finding_area()))
@@ -79,6 +85,7 @@ class EstimatingDesk(QWidget):
         self.finding_table.picked.connect(self._show_finding)
         self.finding_table.activated.connect(self._ask_place)
         self.show_place.clicked.connect(self._ask_place)
+        self.compare.clicked.connect(self.compare_asked)
 
     def showing(self, shown: ShownPlan) -> Iterator[None]:
         """Replace everything by this plan, one part in each step."""
@@ -169,6 +176,7 @@ class EstimatingDesk(QWidget):
         inside = QWidget()
         column = QVBoxLayout(inside)
         column.addLayout(self._lines)
+        column.addWidget(self.compare, 0, Qt.AlignmentFlag.AlignLeft)
         column.addStretch(1)
         area = QScrollArea()
         area.setWidgetResizable(True)

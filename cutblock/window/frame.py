@@ -8,7 +8,7 @@ from functools import partial
 from pathlib import PurePath
 from typing import TYPE_CHECKING
 
-from PySide6.QtCore import QTimer, Slot
+from PySide6.QtCore import Qt, QTimer, Slot
 from PySide6.QtGui import QAction, QCloseEvent, QDragEnterEvent, QDropEvent, QKeySequence, QUndoStack
 from PySide6.QtWidgets import QMainWindow, QStackedWidget
 
@@ -106,6 +106,13 @@ class MainWindow(QMainWindow):
                 OpenRequest(folder=folder, sheet=self.desks.chosen_sheet), "Reading the plan folder", self._take_planned
             )
 
+    def compare(self) -> None:
+        """Plan the job with other tolerances and panel sizes, and lay the options side by side."""
+        from cutblock.worker.requests import CompareRequest
+
+        if self._job_path is not None and not self._runner.is_busy:
+            self._run(CompareRequest(job_path=self._job_path), "Comparing options", self._take_compared)
+
     def save(self, folder: str) -> None:
         """Write the plan folder."""
         from cutblock.worker.requests import SaveRequest
@@ -200,11 +207,13 @@ class MainWindow(QMainWindow):
         self.start_page.job_picked.connect(self._open_picked)
         self.desks.export_asked.connect(self._ask_tags)
         self.desks.sheet_chosen.connect(self._lay_tags_out)
+        self.desks.compare_asked.connect(self.compare)
         menus.recent.triggered.connect(self._open_recent)
         pairs = (
             (menus.open, self._ask_job),
             (menus.open_folder, self._ask_folder),
             (menus.again, self._plan_again),
+            (menus.compare, self.compare),
             (menus.save, self._ask_save),
             (menus.tags, self._ask_tags),
             (menus.quit, self.close),
@@ -279,6 +288,16 @@ class MainWindow(QMainWindow):
         self._receiving = None
         self.status.rest("Tags laid out for the label sheet chosen")
 
+    def _take_compared(self, value: object) -> None:
+        from cutblock.window.options import OptionsDialog
+        from cutblock.worker.requests import Comparison
+
+        assert isinstance(value, Comparison)
+        dialog = OptionsDialog(value, self)
+        dialog.setAttribute(Qt.WidgetAttribute.WA_DeleteOnClose)
+        dialog.show()
+        self.status.rest("Options compared; nothing of the job was changed")
+
     def _take_tags(self, value: object) -> None:
         self.status.rest(f"Tags written to {value}")
 
@@ -306,9 +325,10 @@ class MainWindow(QMainWindow):
     def _show_state(self) -> None:
         is_busy = self._runner.is_busy
         has_plan = self.shown is not None
-        self.menus.show_state(has_plan=has_plan, has_job=self._job_path is not None, is_busy=is_busy)
+        has_job = self._job_path is not None
+        self.menus.show_state(has_plan=has_plan, has_job=has_job, is_busy=is_busy)
         self.start_page.show_busy(is_busy)
-        self.desks.show_busy(is_busy)
+        self.desks.show_busy(is_busy, has_job)
 
     @Slot()
     def _cancel(self) -> None:

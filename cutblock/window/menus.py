@@ -23,6 +23,7 @@ class Menus:
         self.open = self._action("&Open job…", key.Open)
         self.open_folder = self._action("Open &plan folder…", "Ctrl+Shift+O")
         self.again = self._action("Plan &again", "F5")
+        self.compare = self._action("&Compare options", "F6")
         self.save = self._action("&Save plan folder…", key.Save)
         self.tags = self._action("&Export tags…", "Ctrl+P")
         self.quit = self._action("&Quit", "Ctrl+Q")
@@ -43,7 +44,8 @@ class Menus:
         for action in (self.open, self.open_folder):
             action.setEnabled(not is_busy)
         self.recent.setEnabled(not is_busy and not self.recent.isEmpty())
-        self.again.setEnabled(has_job and not is_busy)
+        for action in (self.again, self.compare):
+            action.setEnabled(has_job and not is_busy)
         for action in (self.save, self.tags):
             action.setEnabled(has_plan and not is_busy)
         for action in self.desks:
@@ -82,7 +84,7 @@ class Menus:
         file.addMenu(self.recent)
         file.addAction(self.open_folder)
         file.addSeparator()
-        file.addActions([self.again, self.cancel])
+        file.addActions([self.again, self.compare, self.cancel])
         file.addSeparator()
         file.addActions([self.save, self.tags])
         file.addSeparator()

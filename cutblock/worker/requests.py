@@ -6,6 +6,7 @@ from pathlib import Path
 
 from cutblock.base.progress import Progress, part_of
 from cutblock.flow.views import SpeedChart
+from cutblock.records.curve import WasteCurves
 from cutblock.records.drawing import Drawing
 from cutblock.records.plan import Plan, Settings
 from cutblock.records.record import Record
@@ -87,6 +88,35 @@ class OpenRequest(Record):
         progress(0.0, "Reading the plan folder")
         plan = read_plan(self.folder)
         yield from _show(plan, self.sheet, part_of(progress, 0.5, 1.0))
+
+
+@dataclass(frozen=True, slots=True, eq=False, kw_only=True)
+class Comparison(Record):
+    """What the tolerance and the panel size of a job are worth, with its picture."""
+
+    title: str
+    unit: str
+    curves: WasteCurves
+    drawing: Drawing
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class CompareRequest(Record):
+    """Make the plan of a job file again with other tolerances and other panel sizes; gives a `Comparison`."""
+
+    job_path: str
+    settings: Settings = field(default_factory=Settings)
+
+    def run(self, progress: Progress) -> Comparison:
+        """Do it; raises CutblockError as `read_job` and `waste_curves` do."""
+        from cutblock.flow.curve import waste_curves
+        from cutblock.flow.jobfile import read_job
+        from cutblock.reports.curves import curves_drawing
+
+        progress(0.0, "Reading the job file")
+        job = read_job(self.job_path)
+        curves = waste_curves(job, self.settings, progress)
+        return Comparison(title=job.title, unit=job.units, curves=curves, drawing=curves_drawing(curves, job.units))
 
 
 @dataclass(frozen=True, slots=True, eq=False, kw_only=True)

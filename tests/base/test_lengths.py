@@ -13,6 +13,7 @@ def test_a_length_is_told_to_about_a_mm_in_the_unit_people_read(unit, text):
 def test_a_length_can_be_told_more_finely_and_never_as_minus_nothing():
     assert length_text(0.25, "mm", 2) == "0.25 mm"
     assert length_text(-0.2, "mm") == "0 mm"
+    assert length_text(0.01, "m", 2) == "0.00001 m"  # not 1e-05
 
 
 def test_a_place_names_its_axes():
