@@ -17,7 +17,7 @@ from scipy.special import stdtrit
 from cutblock.base.arrays import Floats
 from cutblock.base.errors import InputError
 from cutblock.wire.foam import not_negative, positive
-from cutblock.wire.kerf import LEAST_KERF_M, LINEAR_POWER_W_M
+from cutblock.wire.kerf import LEAST_KERF_M, LINEAR_POWER_W_M, energy_bound
 
 CONFIDENCE = 0.95  # one-sided
 KERF_ERROR_M = 0.06e-3  # of a measured kerf, one standard deviation: five readings with a plug or feeler gauge
@@ -41,9 +41,10 @@ class KerfLaw(NamedTuple):
     degrees_of_freedom: int
 
     def rate(self, power_w_m: ArrayLike, density_kg_m3: ArrayLike) -> Floats:
-        """Return the kerf rate G in m2/s; 0 at powers under the threshold."""
+        """Return the kerf rate G in m2/s; 0 at powers under the threshold, and never more than all heat can melt."""
         melting = np.maximum(not_negative(power_w_m, "power") - self.threshold_w_m, 0.0)
-        result: Floats = melting / (positive(density_kg_m3, "density") * self.heat_j_kg)
+        rate = melting / (positive(density_kg_m3, "density") * self.heat_j_kg)
+        result: Floats = np.minimum(rate, energy_bound(power_w_m, density_kg_m3))
         return result
 
 

@@ -152,6 +152,12 @@ def _number_doubts(fit: CouponFit) -> list[Doubt]:
             " are measured too small, or are too few."
         )
         doubts.append(Doubt("warning", "negative-kerf", text))
+    if fit.law.threshold_w_m < 0.0:
+        text = (
+            f"The power that melts nothing comes out below 0 ({fit.law.threshold_w_m:.1f} W/m): the kerfs at little"
+            " power are measured too wide, or the power too small."
+        )
+        doubts.append(Doubt("warning", "negative-threshold", text))
     return doubts
 
 

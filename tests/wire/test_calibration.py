@@ -14,7 +14,7 @@ from cutblock.wire.calibration import (
     linear_coefficients,
     weighed_kerf,
 )
-from cutblock.wire.kerf import LEAST_KERF_M, LINEAR_POWER_W_M
+from cutblock.wire.kerf import LEAST_KERF_M, LINEAR_POWER_W_M, energy_bound
 
 POWERS, SPEEDS, DENSITIES = design()
 KERFS = linear_kerfs(POWERS, SPEEDS, DENSITIES)
@@ -141,3 +141,14 @@ def test_a_weighed_coupon_gives_its_mean_kerf():
     assert weighed_kerf(2.16e-3, 20.0, 0.09) == pytest.approx(1.2e-3)
     with pytest.raises(InputError, match="mass loss 0"):
         weighed_kerf(0.0, 20.0, 0.09)
+
+
+@given(
+    heat=st.floats(0.2e6, 1.6e6),
+    threshold=st.floats(-60.0, 60.0),
+    power=st.floats(0.0, 300.0),
+    density=st.floats(8.0, 60.0),
+)
+def test_no_fitted_rate_passes_the_energy_bound(heat, threshold, power, density):
+    rate = KerfLaw(1e-4, heat, threshold, np.eye(3), 8).rate(power, density)
+    assert 0.0 <= rate <= energy_bound(power, density)

@@ -118,3 +118,8 @@ def test_cuts_on_a_line_are_told():
 def test_a_kerf_below_nothing_at_great_speed_is_told():
     kerfs = linear_kerfs(POWERS, SPEEDS, DENSITIES) - 0.3e-3
     assert "negative-kerf" in codes(fit_coupons(POWERS, SPEEDS, DENSITIES, kerfs))
+
+
+def test_a_threshold_below_nothing_is_told():
+    kerfs = 0.15e-3 + (POWERS + 8.0) / (DENSITIES * 900e3 * SPEEDS)
+    assert "negative-threshold" in codes(fit_coupons(POWERS, SPEEDS, DENSITIES, kerfs))
