@@ -19,7 +19,7 @@ _FORMULA_STARTS = ("=", "+", "-", "@", "\t", "\r")
 LEDGER_PARTS = ("mould", "counter_mould", "cradle", "filler", "surplus", "thickened", "offcut", "trim", "kerf", "scrap")
 _PIECE_HEADING = (
     "piece", "partner", "sweep", "half", "duty", "panel", "block", "litres", "mass kg", "billet length mm",
-    "billet width mm", "billet height mm", "speed mm/min", "code", "persons to lift",
+    "billet width mm", "billet height mm", "speed mm/min", "code", "persons to lift", "boxes",
 )  # fmt: skip
 _PLAN_DIGITS = 6  # of a length in plan.json, so that a plan read again gives the same table
 
@@ -54,6 +54,7 @@ def _piece_row(piece: Piece, sweep: Sweep, timing: SweepTiming, unit: str) -> tu
         f"{mm_per_minute(timing.planned_mm_s):.1f}",
         _text(piece.code),
         str(persons_to_lift(piece.mass_kg, max(sweep.length_mm, sweep.width_mm))),
+        _text(piece.filler),
         *_centre(piece, unit),
     )
 

@@ -58,7 +58,7 @@ class TagFacts(NamedTuple):
         if self.piece.duty is Duty.SURPLUS:
             return f"{words}, no use yet"
         if self.piece.panel is None:
-            return words
+            return f"{words}: {self.piece.filler}" if self.piece.filler else words
         return f"{words} for panel {self.piece.panel}{f', {self.strip}' if self.strip else ''}"
 
     @property

@@ -32,6 +32,16 @@ def test_what_a_square_wire_is_worth_comes_back():
     assert read_plan_text(plan_text(plan).encode(), "plan.json").job.squareness == 0.35
 
 
+def test_what_comes_out_of_a_filler_and_what_was_set_by_hand_come_back():
+    plan = sample_plan()
+    lower, upper, *others = plan.pieces
+    plan = replace(plan, pieces=(lower, replace(upper, filler="9 x packing boxes", is_set=True), *others))
+
+    back = read_plan_text(plan_text(plan).encode(), "plan.json")
+
+    assert [(piece.filler, piece.is_set) for piece in back.pieces[:2]] == [("", False), ("9 x packing boxes", True)]
+
+
 def test_the_centres_of_the_pieces_come_back_with_the_volumes_of_their_sweep():
     plan = sample_plan()
     lower, *others = plan.pieces
@@ -107,7 +117,7 @@ def test_where_the_worst_point_lies_and_how_domed_each_face_is_come_back():
         worst_at_mm=np.array([100.0, 200.0, 150.5]),
         p95_mm=0.3,
     )
-    bend = FaceBend(face="S", area_mm2=4e6, domed_mm2=1e6)
+    bend = FaceBend(face="S", area_mm2=4e6, domed_mm2=1e6, noise_mm=0.012)
     plan = replace(sample_plan(), deviations=(deviation,), bends=(bend,))
     text = plan_text(plan)
 
@@ -123,6 +133,7 @@ def test_where_the_worst_point_lies_and_how_domed_each_face_is_come_back():
     assert plan_text(read) == text
     assert len(read.deviations[0].points_mm) == 0
     assert read.bends[0].domed_percent == 25.0
+    assert read.bends[0].noise_mm == 0.012
 
 
 def test_the_sides_of_a_panel_come_back_and_an_older_plan_has_none():

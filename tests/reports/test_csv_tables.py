@@ -49,6 +49,15 @@ def test_the_centre_of_mass_stands_in_the_unit_people_read(unit, centre, cells):
     assert first[-3:] == cells
 
 
+def test_the_boxes_that_come_out_of_a_filler_stand_in_its_row():
+    plan = sample_plan()
+    plan = replace(plan, pieces=(plan.pieces[0], replace(plan.pieces[1], filler="9 x kerb"), *plan.pieces[2:]))
+
+    heading, first, second, *_ = csv.reader(StringIO(pieces_csv(plan)))
+
+    assert (first[heading.index("boxes")], second[heading.index("boxes")]) == ("", "9 x kerb")
+
+
 def test_a_centre_on_the_edge_of_rounding_reads_the_same_from_the_plan_and_from_its_file():
     """469.25 less a rounding error would print 469.2, and read again from six digits 469.3 or 469.2."""
     plan = sample_plan()

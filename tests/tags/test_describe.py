@@ -110,6 +110,14 @@ def test_a_half_of_no_panel_names_no_sides():
     assert all(edge.side == "" for edge in edges_of(piece).values())
 
 
+def test_a_filler_says_which_boxes_come_out_of_it():
+    piece = replace(sample_plan().pieces[3], duty=Duty.FILLER, panel=None, filler="9 x packing boxes")
+
+    (drawn,) = describe_tags("", "A", [piece], sample_plan().sweeps, sample_plan().blocks)
+
+    assert "FILLER: 9 x packing boxes" in words(drawn)
+
+
 def test_the_outline_of_a_panel_lies_where_the_panel_does_in_the_billet():
     """A point of the billet lies at p R^T + shift in the panel, so a corner of the panel comes back by its inverse."""
     plan = sample_plan()
