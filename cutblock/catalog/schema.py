@@ -125,6 +125,8 @@ class MachineTable(_Table):
     footer: tuple[Words, ...]
     heater_on: Words
     heater_off: Words
+    block_handling_s: NotNegative = 300.0  # common practice, no source, as are 60 s a piece
+    piece_handling_s: NotNegative = 60.0
 
     def complaints(self) -> Iterator[Complaint]:
         """Yield sizes, speeds and words that cannot work together."""

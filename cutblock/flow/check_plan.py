@@ -129,7 +129,8 @@ def wrong_accounts(plan: Plan) -> Iterator[CheckFailed]:
     if plan.hours is not None:
         said_s, found_s = dict(plan.hours.by_block_s), dict(hours.by_block_s)
         pairs = {block: (said_s.get(block), found_s.get(block)) for block in [*said_s, *found_s]}
-        pairs |= {"cutting": (plan.hours.cutting_s, hours.cutting_s), "set-ups": (plan.hours.setup_s, hours.setup_s)}
+        parts = {"cutting": "cutting", "air moves": "air", "set-ups": "setup", "turns": "turn", "handling": "handling"}
+        pairs |= {name: (getattr(plan.hours, f"{part}_s"), getattr(hours, f"{part}_s")) for name, part in parts.items()}
         yield from _wrong_values(
             "time", "h", pairs, SECONDS_PER_HOUR, _LAST_DIGIT * (2.0 * SECONDS_PER_HOUR + len(plan.sweeps))
         )

@@ -336,11 +336,13 @@ def _block(block: Block) -> schema.BlockEntry:
 
 
 def _time(spent: Hours) -> schema.TimeEntry:
-    cutting_h, setup_h = _digits(hours(spent.cutting_s)), _digits(hours(spent.setup_s))
+    parts = {
+        f"{part}_h": _digits(hours(getattr(spent, f"{part}_s")))
+        for part in ("cutting", "air", "setup", "turn", "handling")
+    }
     return schema.TimeEntry(
-        cutting_h=cutting_h,
-        setup_h=setup_h,
-        total_h=_digits(cutting_h + setup_h),  # of the digits written, so that the three add up
+        **parts,
+        total_h=_digits(sum(parts.values())),  # of the digits written, so that they add up
         blocks_h={block: _digits(hours(seconds)) for block, seconds in spent.by_block_s},
     )
 

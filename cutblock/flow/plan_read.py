@@ -72,6 +72,9 @@ def _plan(file: schema.PlanFile) -> Plan:
             cutting_s=file.time.cutting_h * SECONDS_PER_HOUR,
             setup_s=file.time.setup_h * SECONDS_PER_HOUR,
             by_block_s=tuple((block, value * SECONDS_PER_HOUR) for block, value in file.time.blocks_h.items()),
+            air_s=file.time.air_h * SECONDS_PER_HOUR,
+            turn_s=file.time.turn_h * SECONDS_PER_HOUR,
+            handling_s=file.time.handling_h * SECONDS_PER_HOUR,
         ),
         cost=Cost(
             currency=file.cost.currency,

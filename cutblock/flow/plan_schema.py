@@ -317,6 +317,9 @@ class TimeEntry(_Entry, frozen=True):
     setup_h: float
     total_h: float
     blocks_h: dict[str, float]
+    air_h: float = 0.0
+    turn_h: float = 0.0
+    handling_h: float = 0.0
 
 
 class CostEntry(_Entry, frozen=True):
@@ -412,6 +415,8 @@ class MachineEntry(_Entry, frozen=True):
     footer: tuple[str, ...]
     heater_on: str
     heater_off: str
+    block_handling_s: float = 0.0
+    piece_handling_s: float = 0.0
 
 
 class PlanFile(_Entry, frozen=True):

@@ -5,6 +5,7 @@ points of space from the billet over the block to the machine, with the rotation
 shift found from the corners of the part, and meets the towers' planes with the line through them.
 """
 
+import math
 from collections.abc import Iterator
 from typing import NamedTuple
 
@@ -157,11 +158,17 @@ def _above(position: Floats, clear_mm: float) -> Floats:
 
 
 def _air(machine: Machine, start: Floats, end: Floats, index: int) -> list[Step]:
-    """Return a move in air at the machine's air speed, or nothing where the wire already is there."""
+    """Return a move in air at the machine's air speed, or nothing where the wire already is there.
+
+    From rest and to rest the ramps take as long again as their way would at full speed; a move too short for that speed
+    gathers it over the first half of its way.
+    """
     way = float(np.hypot(*(end - start).reshape(2, 2).T).max())
     if way < STANDING_MM:
         return []
-    seconds = way / min(machine.air_speed_mm_s, machine.speed_mm_s)
+    speed = min(machine.air_speed_mm_s, machine.speed_mm_s)
+    ramps_mm = speed**2 / machine.acceleration_mm_s2
+    seconds = (way + ramps_mm) / speed if way > ramps_mm else 2.0 * math.sqrt(way / machine.acceleration_mm_s2)
     return [Step(position=tuple(end.tolist()), seconds=seconds, subject="move in air", cut_index=index)]
 
 

@@ -20,6 +20,7 @@ from cutblock.records.plan import Finding, Plan
 from cutblock.records.record import Record
 from cutblock.records.shop import Machine
 from cutblock.records.words import Severity
+from cutblock.wire.reachability import rest_to_rest
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -183,13 +184,14 @@ class _Text:
         self._position[1::2] = lift_mm
 
     def air_to(self, position: Floats) -> None:
-        """Add a move in air: timed, so that the two towers arrive together on any controller."""
+        """Add a move in air from rest to rest: timed, so that the two towers arrive together on any controller."""
         travel = np.abs(position - self._position)
         longest_mm = max(math.hypot(travel[0], travel[1]), math.hypot(travel[2], travel[3]))
         if longest_mm < STANDING_MM:
             return
         speed_mm_s = min(self._machine.air_speed_mm_s, self._machine.speed_mm_s)
-        self.cut_along(position[None, :], np.array([longest_mm / speed_mm_s]))
+        seconds = rest_to_rest([longest_mm], speed_mm_s, self._machine.acceleration_mm_s2)
+        self.cut_along(position[None, :], seconds)
 
     def cut_along(self, positions: Floats, seconds: Floats) -> None:
         """Add one timed move to each position."""

@@ -90,14 +90,17 @@ class Ledger(Record):
 class Hours(Record):
     """Machine time of the job, s."""
 
-    cutting_s: float
-    setup_s: float
+    cutting_s: float  # sweeps, trims and through cuts
+    setup_s: float  # clampings
     by_block_s: tuple[tuple[str, float], ...]  # (block id, s)
+    air_s: float = 0.0  # moves in air between cuts
+    turn_s: float = 0.0  # turning parts between clampings
+    handling_s: float = 0.0  # fetching blocks and taking pieces away
 
     @property
     def total_s(self) -> float:
-        """Cutting and set-ups together."""
-        return self.cutting_s + self.setup_s
+        """All parts together."""
+        return self.cutting_s + self.air_s + self.setup_s + self.turn_s + self.handling_s
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

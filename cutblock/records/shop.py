@@ -62,6 +62,8 @@ class Machine(Record):
     footer: tuple[str, ...]
     heater_on: str  # with {power} in W
     heater_off: str
+    block_handling_s: float = 0.0  # fetching one block and lifting it on
+    piece_handling_s: float = 0.0  # taking one piece off, tagging and stacking it
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

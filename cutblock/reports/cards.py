@@ -5,7 +5,7 @@ from typing import NamedTuple
 from cutblock.base.units import hours, length_text
 from cutblock.records.plan import Plan
 from cutblock.records.words import Severity
-from cutblock.reports.figures import count_text
+from cutblock.reports.figures import count_text, hours_text
 from cutblock.reports.markup import safe
 from cutblock.reports.summary import bound_words, cost_parts, duty_counts, finding_counts, fine_text, worst_serving
 
@@ -55,9 +55,7 @@ def _pieces(plan: Plan) -> _Card:
 def _hours(plan: Plan) -> list[_Card]:
     if plan.hours is None:
         return []
-    cutting, setup = hours(plan.hours.cutting_s), hours(plan.hours.setup_s)
-    note = f"cutting {cutting:.1f} h, set-ups and turns {setup:.1f} h"
-    return [_Card("Machine time", f"{cutting + setup:.1f} h", note)]
+    return [_Card("Machine time", f"{hours(plan.hours.total_s):.1f} h", hours_text(plan.hours))]
 
 
 def _fit(plan: Plan) -> list[_Card]:

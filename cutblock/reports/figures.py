@@ -3,7 +3,8 @@
 import re
 from collections.abc import Iterable
 
-from cutblock.base.units import length_text
+from cutblock.base.units import hours, length_text
+from cutblock.records.account import Hours
 
 # What XML 1.0 forbids in any text (W3C XML 1.0, production 2), and so in SVG.
 _FORBIDDEN = re.compile("[^\t\n\r\u0020-\ud7ff\ue000-\ufffd\U00010000-\U0010ffff]")
@@ -23,3 +24,15 @@ def count_text(count: int, one: str, many: str = "") -> str:
 def plain_text(text: str) -> str:
     """Return text without the signs that no page or picture may hold; each stands as the replacement sign."""
     return _FORBIDDEN.sub("\ufffd", text)
+
+
+def hours_text(spent: Hours) -> str:
+    """Return what the hours of a job are made of, such as "cutting 9.1 h, air moves 0.4 h, set-ups 2.0 h"."""
+    parts = {
+        "cutting": spent.cutting_s,
+        "air moves": spent.air_s,
+        "set-ups": spent.setup_s,
+        "turns": spent.turn_s,
+        "handling": spent.handling_s,
+    }
+    return ", ".join(f"{name} {hours(seconds):.1f} h" for name, seconds in parts.items() if seconds)

@@ -5,7 +5,7 @@ from collections import Counter
 from cutblock.base.units import LengthUnit, hours, length_text
 from cutblock.records.plan import Plan
 from cutblock.records.words import Duty, Severity
-from cutblock.reports.figures import count_text
+from cutblock.reports.figures import count_text, hours_text
 
 _DIGITS = 6  # of mm; deviations that differ by less are equal, whatever the order they were summed in
 
@@ -105,8 +105,7 @@ def _foam(plan: Plan) -> str:
 def _hours(plan: Plan) -> str:
     if plan.hours is None:
         return "not counted"
-    cutting, setup = hours(plan.hours.cutting_s), hours(plan.hours.setup_s)
-    return f"{cutting + setup:.1f} h: cutting {cutting:.1f} h, set-ups {setup:.1f} h"
+    return f"{hours(plan.hours.total_s):.1f} h: {hours_text(plan.hours)}"
 
 
 def _worst_fit(plan: Plan) -> str:

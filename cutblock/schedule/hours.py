@@ -1,14 +1,17 @@
-"""Machine hours of a job: cutting, moves in air, clampings and turns."""
+"""Machine hours of a job: cutting, moves in air, clampings, turns and handling."""
 
 from collections.abc import Mapping, Sequence
 from itertools import groupby, pairwise
 from typing import NamedTuple
+
+import numpy as np
 
 from cutblock.records.account import Hours
 from cutblock.records.block import Block, Cut
 from cutblock.records.shop import Conditions, Machine
 from cutblock.records.sweep import SweepTiming
 from cutblock.records.words import CutKind
+from cutblock.wire.reachability import rest_to_rest
 
 # What the machine code keeps: the wire passes this far clear of a part, and a cut down a vertical plane ends below it.
 CLEARANCE_MM = 20.0
@@ -22,30 +25,43 @@ def count_hours(
 
     A sweep takes what its timing says, a trim or through cut its way at the planned speed. In every clamping the wire
     starts at the towers' zero, goes over the part and down to where each cut starts, after the cut up again, and back
-    to zero at the end, at the machine's speed in air. Where a sweep enters and leaves is taken at half its billet's
-    height.
+    to zero at the end, from rest to rest at the machine's speed in air. Where a sweep enters and leaves is taken at
+    half its billet's height. Every block is fetched once, and both halves of every sweep are taken away.
 
     Args:
         blocks: Every block with its cuts.
         timings: Of every sweep in them.
-        machine: Its speed in air and its times of a clamping and a turn.
+        machine: Its speed and acceleration in air and its times of a clamping, a turn and of handling.
         conditions: The planned speed.
 
     Returns:
-        Cutting (air moves included) and set-up (clampings and turns) time, and both together for each block, s.
+        Cutting, air moves, clampings, turns and handling, and all together for each block, s.
     """
     seconds = {timing.sweep: timing.seconds for timing in timings}
-    cutting_s = setup_s = 0.0
-    by_block = []
+    parts = []
     for block in blocks:
         cuts = sorted(block.cuts, key=lambda cut: cut.order)
         clampings = [tuple(group) for _, group in groupby(cuts, key=lambda cut: cut.setup)]
-        cutting = sum(_clamping_seconds(block, clamping, seconds, machine, conditions) for clamping in clampings)
-        setup = _setup_seconds([clamping[0] for clamping in clampings], machine)
-        cutting_s += cutting
-        setup_s += setup
-        by_block.append((block.id, cutting + setup))
-    return Hours(cutting_s=cutting_s, setup_s=setup_s, by_block_s=tuple(by_block))
+        spent = [_clamping_seconds(block, clamping, seconds, machine, conditions) for clamping in clampings]
+        n_pieces = 2 * sum(cut.kind is CutKind.SWEEP for cut in cuts)
+        parts.append(
+            (
+                sum(cutting for cutting, _ in spent),
+                sum(air for _, air in spent),
+                len(clampings) * machine.setup_s,
+                _n_turns([clamping[0] for clamping in clampings]) * machine.turn_s,
+                machine.block_handling_s + n_pieces * machine.piece_handling_s,
+            )
+        )
+    cutting_s, air_s, setup_s, turn_s, handling_s = (float(sum(part)) for part in zip((0.0,) * 5, *parts, strict=True))
+    return Hours(
+        cutting_s=cutting_s,
+        air_s=air_s,
+        setup_s=setup_s,
+        turn_s=turn_s,
+        handling_s=handling_s,
+        by_block_s=tuple((block.id, float(sum(part))) for block, part in zip(blocks, parts, strict=True)),
+    )
 
 
 class _Way(NamedTuple):
@@ -74,23 +90,24 @@ def _cut_way(block: Block, cut: Cut, part: Cut) -> _Way:
 
 def _clamping_seconds(
     block: Block, cuts: Sequence[Cut], sweep_seconds: Mapping[str, float], machine: Machine, conditions: Conditions
-) -> float:
-    """Return the time of the cuts of one clamping and of the moves in air between them."""
+) -> tuple[float, float]:
+    """Return the time of the cuts of one clamping and that of the moves in air between them."""
     zero, clear = -machine.table_offset_mm, cuts[0].part_size_mm[2] + CLEARANCE_MM
-    position, cutting, air = zero, 0.0, 0.0
+    position, cutting, moves = zero, 0.0, []
     for cut in cuts:
         way = _cut_way(block, cut, cuts[0])
         if cut.sweep is not None:
             cutting += sweep_seconds[cut.sweep]
         else:
             cutting += (abs(way.end - way.start) + abs(way.end_up - way.start_up)) / conditions.planned_mm_s
-        air += abs(way.start - position) + abs(clear - way.start_up) + abs(clear - way.end_up)
+        moves += [way.start - position, clear - way.start_up, clear - way.end_up]
         position = way.end
-    return cutting + (air + abs(position - zero)) / min(machine.air_speed_mm_s, machine.speed_mm_s)
+    speed = min(machine.air_speed_mm_s, machine.speed_mm_s)
+    air = rest_to_rest(np.abs([*moves, position - zero]), speed, machine.acceleration_mm_s2)
+    return cutting, float(air.sum())
 
 
-def _setup_seconds(first_cuts: Sequence[Cut], machine: Machine) -> float:
-    """Return the time of clampings and of turning parts between them; a block comes to the machine unturned."""
+def _n_turns(first_cuts: Sequence[Cut]) -> int:
+    """Return how often a part is turned between clampings; a block comes to the machine unturned."""
     turned = [False, *(cut.turn for cut in first_cuts)]
-    n_turns = sum(before != after for before, after in pairwise(turned))
-    return len(first_cuts) * machine.setup_s + n_turns * machine.turn_s
+    return sum(before != after for before, after in pairwise(turned))

@@ -75,6 +75,20 @@ def stage_times(lengths: Floats, squares: Floats) -> Floats:
     return result
 
 
+def rest_to_rest(lengths: ArrayLike, speed: float, acceleration: float) -> Floats:
+    """Return the least time of straight moves from rest to rest: a trapezoid of speed, a triangle where they are short.
+
+    Args:
+        lengths: Of the moves, 0 or more.
+        speed: Largest, above 0.
+        acceleration: Largest, above 0.
+    """
+    ways = np.asarray(lengths, dtype=np.float64)
+    cruise, ramp = ways / speed, speed / acceleration
+    result: Floats = np.where(cruise >= ramp, cruise + ramp, 2.0 * np.sqrt(cruise * ramp))
+    return result
+
+
 class _Rows(NamedTuple):
     """Rows of every stage: |rate u + bend x| <= limit, in the direction of the rate; arrays (n - 1, r, b)."""
 

@@ -119,6 +119,14 @@ def test_a_machine_is_read_from_a_path_and_named_after_the_file(tmp_path):
     assert machine.span_mm == 2600.0
 
 
+def test_a_machine_without_its_own_handling_gets_the_usual_one(tmp_path):
+    path = tmp_path / "ours.toml"
+    path.write_text(MACHINE)
+    assert (load.machine(str(path)).block_handling_s, load.machine(str(path)).piece_handling_s) == (300.0, 60.0)
+    path.write_text(MACHINE + "block_handling_s = 0\npiece_handling_s = 25\n")
+    assert (load.machine(str(path)).block_handling_s, load.machine(str(path)).piece_handling_s) == (0.0, 25.0)
+
+
 @pytest.mark.parametrize(
     ("old", "new", "what"),
     [

@@ -10,6 +10,7 @@ from kit.sample import sample_plan
 from cutblock.base.errors import InputError
 from cutblock.flow.plan_json import plan_text
 from cutblock.flow.plan_read import read_plan_text
+from cutblock.records.account import Hours
 from cutblock.records.deviation import FaceBend, PanelDeviation
 from cutblock.records.panel import PanelEdge
 
@@ -53,6 +54,35 @@ def test_the_centres_of_the_pieces_come_back_with_the_volumes_of_their_sweep():
     assert back.pieces[1].centre_mm is None
     assert back.volumes[0].lower_centre_mm == (601.25, 500.0, 74.5)
     assert back.volumes[0].upper_centre_mm is None
+
+
+def test_the_hours_of_the_file_are_exactly_the_sum_of_their_parts_and_come_back():
+    hours = Hours(
+        cutting_s=1000.0 / 3.0,
+        air_s=100.1,
+        setup_s=240.0,
+        turn_s=77.7,
+        handling_s=421.3,
+        by_block_s=(("SM-B01", 1172.4),),
+    )
+    plan = replace(sample_plan(), hours=hours)
+    text = plan_text(plan)
+    time = json.loads(text)["time"]
+    parts = [time[f"{part}_h"] for part in ("cutting", "air", "setup", "turn", "handling")]
+    assert min(parts) > 0.0
+    assert time["total_h"] == pytest.approx(sum(parts), abs=1e-12)
+    back = read_plan_text(text.encode(), "plan.json").hours
+    assert (back.air_s, back.turn_s, back.handling_s) == pytest.approx((100.1, 77.7, 421.3), abs=0.01)
+
+
+def test_a_file_without_the_newer_hours_is_read_as_before():
+    entry = json.loads(plan_text(sample_plan()))
+    for part in ("air", "turn", "handling"):
+        del entry["time"][f"{part}_h"]
+    del entry["machine"]["block_handling_s"], entry["machine"]["piece_handling_s"]
+    plan = read_plan_text(json.dumps(entry).encode(), "plan.json")
+    assert plan.hours.total_s == plan.hours.cutting_s + plan.hours.setup_s
+    assert (plan.machine.block_handling_s, plan.machine.piece_handling_s) == (0.0, 0.0)
 
 
 def test_the_litres_of_the_file_sum_to_what_was_bought():

@@ -8,9 +8,9 @@ from cutblock.wire.reachability import Stages, fastest_squares, stage_times
 class Path:
     """A path q(s), s from 0 to 1, of k axes: a straight way and a few waves, the same whatever nodes are laid on it."""
 
-    def __init__(self, seed, n_axes=4, wave=0.3):
+    def __init__(self, seed, n_axes=4, wave=0.3, straight=None):
         rng = np.random.default_rng(seed)
-        self.straight = rng.normal(size=n_axes)
+        self.straight = rng.normal(size=n_axes) if straight is None else np.array(straight)
         self.sizes = wave * rng.normal(size=(3, n_axes))
         self.turns = np.pi * rng.uniform(0.5, 4.0, (3, n_axes))
         self.phases = rng.uniform(0.0, 2.0 * np.pi, (3, n_axes))

@@ -120,4 +120,7 @@ class Stand:
     def _air(self, start, end):
         way = np.hypot(*(end - start).reshape(2, 2).T).max()
         speed = min(self.machine["air_speed_mm_s"], self.machine["speed_mm_s"])
-        return [Move(end, way / speed, False)] if way > 1e-9 else []
+        # From rest to rest: up to the speed and down again, or up to the middle of a short way and down.
+        push = self.machine["acceleration_mm_s2"]
+        seconds = way / speed + speed / push if way >= speed**2 / push else 2.0 * np.sqrt(way / push)
+        return [Move(end, seconds, False)] if way > 1e-9 else []

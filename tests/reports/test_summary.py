@@ -5,7 +5,7 @@ from dataclasses import replace
 import pytest
 from kit.sample import sample_plan
 
-from cutblock.records.account import Cost
+from cutblock.records.account import Cost, Hours
 from cutblock.records.deviation import FaceBend
 from cutblock.records.words import Duty, Severity
 from cutblock.reports.figures import count_text, plain_text, size_text
@@ -22,6 +22,20 @@ def test_the_summary_names_what_people_ask_for():
     assert lines["worst fit"] == "0.600 mm at panel S1-A01 (tolerance 2 mm)"
     assert lines["cost"] == "150.00 EUR (foam 150.00)"
     assert lines["findings"] == "1 warning"
+
+
+def test_hours_name_every_part_that_was_counted():
+    hours = Hours(
+        cutting_s=7200.0,
+        air_s=1800.0,
+        setup_s=3600.0,
+        turn_s=360.0,
+        handling_s=5400.0,
+        by_block_s=(("SM-B01", 18360.0),),
+    )
+    lines = dict(summary_lines(replace(sample_plan(), hours=hours)))
+    wanted = "5.1 h: cutting 2.0 h, air moves 0.5 h, set-ups 1.0 h, turns 0.1 h, handling 1.5 h"
+    assert lines["hours"] == wanted
 
 
 def test_a_plan_without_figures_says_so():

@@ -5,7 +5,7 @@ from hypothesis import strategies as st
 from kit.paths import Path, accelerations, caps_of, fastest, stages_of
 
 from cutblock.base.errors import GeometryError
-from cutblock.wire.reachability import Stages, fastest_squares, stage_times
+from cutblock.wire.reachability import Stages, fastest_squares, rest_to_rest, stage_times
 
 
 def straight(n_nodes, length):
@@ -18,6 +18,11 @@ def caps(n_nodes, square):
     result = np.full((n_nodes, 1), square)
     result[0] = result[-1] = 0.0
     return result
+
+
+def closer_at_rest(n_nodes):
+    """Nodes from 0 to 1, closer to both ends, where a motion from and to rest is curved most."""
+    return 0.5 - 0.5 * np.cos(np.linspace(0.0, np.pi, n_nodes))
 
 
 @given(
@@ -41,12 +46,20 @@ def test_no_axis_passes_a_limit_anywhere(seed, speed, acceleration, n_nodes, n_a
     assert np.isfinite(times).all()
 
 
-@given(seed=st.integers(0, 2**32 - 1), acceleration=st.floats(0.05, 50.0))
-def test_twenty_times_the_nodes_find_no_motion_faster_by_a_five_hundredth(seed, acceleration):
-    paths = [Path(seed, wave=0.05)]
-    coarse = fastest(paths, np.linspace(0.0, 1.0, 1001), 1.0, acceleration)[2]
-    fine = fastest(paths, np.linspace(0.0, 1.0, 20001), 1.0, acceleration)[2]
-    assert coarse == pytest.approx(fine, rel=2e-3)
+@pytest.mark.parametrize("acceleration", [0.05, 2.0, 50.0])
+def test_twenty_times_the_nodes_find_no_motion_faster_by_a_five_hundredth(acceleration):
+    # As of two towers: both advance by 3 to 5, both rise and fall.
+    paths = [Path(seed, wave=0.05, straight=(4.0, 0.0, 4.0, 0.0)) for seed in range(12)]
+    coarse, fine = (fastest(paths, closer_at_rest(n), 1.0, acceleration)[2] for n in (1001, 20001))
+    np.testing.assert_allclose(coarse, fine, rtol=2e-3)
+
+
+@given(length=st.floats(0.01, 3.0), speed=st.floats(0.1, 2.0), acceleration=st.floats(0.1, 5.0))
+def test_a_straight_move_takes_what_reachability_finds_for_it(length, speed, acceleration):
+    stages = straight(401, length)._replace(lengths=length * np.diff(closer_at_rest(401))[:, None])
+    squares = fastest_squares(stages, caps(401, speed**2), acceleration)
+    time = stage_times(stages.lengths, squares).sum()
+    assert rest_to_rest(length, speed, acceleration) == pytest.approx(time, rel=2e-3)
 
 
 def test_the_time_converges_at_least_with_the_step_of_the_nodes():
