@@ -92,7 +92,7 @@ def fit_sheet(
     clearance, notes = _clearance(sheet.rows, fit, wire)
     doubts = (*coupon_doubts(fit, power, speed, errors, names), *notes, *_sheet_notes(sheet))
     scale = np.array([_MM, 1.0 / _MM, 1.0])
-    covariance = fit.law.covariance * np.outer(scale, scale)
+    covariance = np.vectorize(_digits)(fit.law.covariance * np.outer(scale, scale))
     calibration = Calibration(
         name=name,
         wire=wire.name,
@@ -101,17 +101,17 @@ def fit_sheet(
         machine=machine.name,
         grade=_grade(cuts, grade_name),
         date=_day(cuts, day, today),
-        least_kerf_mm=fit.law.least_kerf_m * _MM,
-        heat_kj_kg=fit.law.heat_j_kg / _MM,
-        threshold_w_m=fit.law.threshold_w_m,
+        least_kerf_mm=_digits(fit.law.least_kerf_m * _MM),
+        heat_kj_kg=_digits(fit.law.heat_j_kg / _MM),
+        threshold_w_m=_digits(fit.law.threshold_w_m),
         covariance=covariance,
         degrees_of_freedom=fit.law.degrees_of_freedom,
         n_coupons=len(cuts),
-        chi_square=fit.chi_square,
+        chi_square=_digits(fit.chi_square),
         density_kg_m3=(float(density.min()), float(density.max())),
         power_w_m=(float(power.min()), float(power.max())),
-        speed_mm_s=(float(speed.min()) * _MM, float(speed.max()) * _MM),
-        clearance_mm=clearance,
+        speed_mm_s=(_digits(speed.min() * _MM), _digits(speed.max() * _MM)),
+        clearance_mm=None if clearance is None else _digits(clearance),
         doubts=tuple(doubt.text for doubt in doubts if doubt.severity != "info"),
     )
     usual = float(np.median(density))
@@ -339,6 +339,11 @@ def _day(cuts: Sequence[CouponRow], given: str | None, today: str) -> str:
         return date.fromisoformat(given).isoformat()
     except ValueError:
         raise InputError(f'"{given}" is no day', "date", "Write year-month-day, such as 2026-03-02.") from None
+
+
+def _digits(value: float) -> float:
+    """Return a number to 12 digits: what follows differs from one processor to another."""
+    return float(f"{value:.12g}")
 
 
 def _three(values: Floats) -> tuple[float, float, float]:

@@ -97,7 +97,7 @@ def _conditions(plan: Plan) -> str:
     rows = [(name, f"{mm_per_minute(speed):.0f} mm/min ({speed:.2f} mm/s)") for name, speed in speeds]
     rows += [
         ("Kerf at the planned speed", f"{wire.kerf_mm:.2f} mm"),
-        ("Kerf at the slowest speed", f"{wire.widest_kerf_mm:.2f} mm"),
+        ("Kerf at the slowest speed", f"{'at most ' if wire.is_calibrated else ''}{wire.widest_kerf_mm:.2f} mm"),
         ("Density of the foam", f"{wire.density_kg_m3:g} kg/m³. Weigh a block: the speeds fall as the density rises"),
         ("Power", f"{wire.power_w_m:g} W per metre of wire"),
     ]

@@ -61,7 +61,8 @@ def _settings_text(plan: Plan) -> str:
 def _limits_text(plan: Plan) -> str:
     conditions = plan.conditions
     low, high = mm_per_minute(conditions.low_mm_s), mm_per_minute(conditions.high_mm_s)
+    kerf = f"{'at most ' if conditions.is_calibrated else ''}{conditions.widest_kerf_mm:.2f} mm"
     return (
         f"Keep between {low:.0f} and {high:.0f} mm/min ({conditions.low_mm_s:.2f} and {conditions.high_mm_s:.2f} mm/s) "
-        f"at mid-wire. At the slowest the kerf is {conditions.widest_kerf_mm:.2f} mm."
+        f"at mid-wire. At the slowest the kerf is {kerf}."
     )

@@ -121,3 +121,5 @@ def test_the_report_says_plus_or_minus_half_only_without_a_calibration(calibrate
     assert "±50 %" not in by_cuts
     assert "calibrated by &quot;shop&quot;, 11 test cuts of 2026-03-02" in by_cuts
     assert "±50 %" in usual
+    assert "at most 2.00 mm" in by_cuts
+    assert "at most 2.00 mm" not in usual

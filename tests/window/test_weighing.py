@@ -149,6 +149,7 @@ def test_the_page_of_a_calibrated_plan_names_its_test_cuts(qtbot):
     page.show_plan(sample_shown(conditions=conditions))
     assert 'Calibrated by "shop": 11 test cuts of 2026-03-02' in said(page)
     assert "Not calibrated" not in said(page)
+    assert "the kerf is at most 2.00 mm" in said(page)
 
 
 @pytest.mark.parametrize("is_calibrated", [False, True])
