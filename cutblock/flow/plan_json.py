@@ -84,6 +84,7 @@ def plan_file(plan: Plan) -> schema.PlanFile:
                 name=bend.face,
                 area_mm2=_digits(bend.area_mm2, 3),
                 domed_percent=_digits(bend.domed_percent, 3),
+                noise_mm=None if bend.noise_mm is None else _digits(bend.noise_mm, 6),
             )
             for bend in plan.bends
         ],

@@ -60,7 +60,12 @@ def _plan(file: schema.PlanFile) -> Plan:
         timings=tuple(_timing(entry) for entry in file.sweeps),
         deviations=tuple(deviation for entry in file.panels if (deviation := _deviation(entry)) is not None),
         bends=tuple(
-            FaceBend(face=entry.name, area_mm2=entry.area_mm2, domed_mm2=entry.area_mm2 * entry.domed_percent / 100.0)
+            FaceBend(
+                face=entry.name,
+                area_mm2=entry.area_mm2,
+                domed_mm2=entry.area_mm2 * entry.domed_percent / 100.0,
+                noise_mm=entry.noise_mm,
+            )
             for entry in file.faces
         ),
         blocks=tuple(_block(entry) for entry in file.blocks),

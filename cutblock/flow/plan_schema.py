@@ -105,6 +105,7 @@ class FaceEntry(_Entry, frozen=True):
     name: str
     area_mm2: float
     domed_percent: float  # curved the same way in all directions, which a straight wire only follows in strips
+    noise_mm: float | None = None  # rms distance of a mesh's vertices from the smooth face
 
 
 class ServingEntry(_Entry, frozen=True):

@@ -86,7 +86,9 @@ def compare(plan: Plan, progress: Progress) -> Plan:
 
     deviations, sweeps = settle(plan.job, plan.panels, plan.sweeps, plan.conditions, progress)
     findings = findings_of(plan.job, deviations, plan.sweeps)
-    return _with(plan, findings, sweeps=sweeps, deviations=deviations, bends=face_bends(plan.panels))
+    noises = {face.name: face.noise_mm for face in plan.faces}
+    bends = tuple(replace(bend, noise_mm=noises.get(bend.face)) for bend in face_bends(plan.panels))
+    return _with(plan, findings, sweeps=sweeps, deviations=deviations, bends=bends)
 
 
 def diagnose(plan: Plan, progress: Progress) -> Plan:

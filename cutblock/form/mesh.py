@@ -3,6 +3,7 @@
 import math
 from collections.abc import Callable
 from pathlib import Path
+from typing import NamedTuple
 
 import numpy as np
 
@@ -87,9 +88,9 @@ def faces_of_mesh(
             face_name,
             job.units,
         )
-        face, stray_mm, stray_at_mm = _face(face_name, upside)
+        face, stray = _face(face_name, upside)
         faces.append(face)
-        notes.extend(_upside_findings(upside, face, stray_mm, stray_at_mm, job))
+        notes.extend(_upside_findings(upside, face, stray, job))
     return tuple(faces), tuple(notes)
 
 
@@ -137,13 +138,14 @@ def _shell_findings(shell: Shell, name: str) -> list[Finding]:
     return notes
 
 
-def _upside_findings(upside: Upside, face: Face, stray_mm: float, stray_at_mm: Floats, job: Job) -> list[Finding]:
+def _upside_findings(upside: Upside, face: Face, stray: "_Stray", job: Job) -> list[Finding]:
     """Return what was done to the mesh, and how far its vertices stray from the surface.
 
     Raises:
         GeometryError: The noise is larger than the tolerance.
     """
     notes = []
+    noise_mm = face.noise_mm or 0.0
     if upside.was_closed:
         text = "The mesh is a closed solid; the side that faces up was taken, underside and side walls were dropped."
         notes.append(_note(Severity.INFO, "mesh-closed", face.name, text))
@@ -153,31 +155,57 @@ def _upside_findings(upside: Upside, face: Face, stray_mm: float, stray_at_mm: F
     if upside.n_cracks:
         text = f"{upside.n_cracks} cracks narrower than 0.5 mm inside the surface were closed."
         notes.append(_note(Severity.WARNING, "mesh-gaps", face.name, text))
-    if face.noise_mm > job.tolerance_mm:
+    if noise_mm > job.tolerance_mm:
         raise GeometryError(
-            f"the vertices lie {length_text(face.noise_mm, job.units, 2)} (rms) off any smooth surface of the mesh's "
+            f"the vertices lie {length_text(noise_mm, job.units, 2)} (rms) off any smooth surface of the mesh's "
             f"own fineness, more than the tolerance of {length_text(job.tolerance_mm, job.units, 2)}; the worst, "
-            f"{length_text(stray_mm, job.units, 2)}, at {place_text(stray_at_mm, job.units)}",
+            f"{length_text(stray.largest_mm, job.units, 2)}, at {place_text(stray.at_mm, job.units)}",
             f"face {face.name}",
             "Smooth the mesh, export it from the model instead of a scan, or give a wider tolerance.",
         )
-    if face.noise_mm <= 0.25 * job.tolerance_mm and stray_mm > job.tolerance_mm:
+    if noise_mm <= 0.25 * job.tolerance_mm and stray.largest_mm > job.tolerance_mm:
         text = (
-            f"A vertex lies {length_text(stray_mm, job.units, 2)} off the smooth surface through the mesh at "
-            f"{place_text(stray_at_mm, job.units)}: a crease, a tip or a spike there is rounded. Cut the face along it."
+            f"A vertex lies {length_text(stray.largest_mm, job.units, 2)} off the smooth surface through the mesh at "
+            f"{place_text(stray.at_mm, job.units)}: a crease, a tip or a spike there is rounded. Cut the face along it."
         )
         notes.append(_note(Severity.WARNING, "mesh-crease", face.name, text))
-    if face.noise_mm > 0.25 * job.tolerance_mm:
+    if noise_mm > 0.25 * job.tolerance_mm:
         text = (
-            f"The mesh's vertices lie {length_text(face.noise_mm, job.units, 2)} (rms) off any smooth surface of its "
+            f"The mesh's vertices lie {length_text(noise_mm, job.units, 2)} (rms) off any smooth surface of its "
             f"own fineness, against a tolerance of {length_text(job.tolerance_mm, job.units, 2)}."
         )
         notes.append(_note(Severity.WARNING, "mesh-noise", face.name, text))
+    notes.append(_resampled(face.name, noise_mm, stray, job.units))
     return notes
 
 
-def _face(name: str, upside: Upside) -> tuple[Face, float, Floats]:
-    """Return the smooth face, how far the worst vertex lies off it, and where in the form."""
+def _resampled(name: str, noise_mm: float, stray: "_Stray", units: str) -> Finding:
+    """Return how the mesh was resampled: order, error and noise."""
+    along, across = (length_text(step, units) for step in stray.knots_mm)
+    error, noise, largest = (
+        length_text(value, units, 3) if value >= 5e-4 else f"under {length_text(0.001, units, 3)}"
+        for value in (stray.error_mm, noise_mm, stray.largest_mm)
+    )
+    text = (
+        f"The mesh was resampled as a smooth bicubic surface, knots {along} apart along x and {across} along y. It is "
+        "of fourth order: vertices half as far apart leave a sixteenth of the error. Between the vertices it strays "
+        f"{error} or so, along its rim up to twenty times that; the vertices lie {noise} (rms) off it, at most "
+        f"{largest}."
+    )
+    return _note(Severity.INFO, "mesh-resampled", name, text)
+
+
+class _Stray(NamedTuple):
+    """How far the smooth face strays from its mesh."""
+
+    largest_mm: float  # of a vertex
+    at_mm: Floats  # that vertex, in the form
+    error_mm: float  # between the vertices, from the surface they were taken from
+    knots_mm: tuple[float, float]
+
+
+def _face(name: str, upside: Upside) -> tuple[Face, _Stray]:
+    """Return the smooth face, and how far it strays from the mesh."""
     local, triangles = upside.vertices, upside.triangles
     steps = _knot_steps(upside)
     along = _points_along_edges(local, triangles, steps)
@@ -195,7 +223,8 @@ def _face(name: str, upside: Upside) -> tuple[Face, float, Floats]:
         outline=upside.outline,
         noise_mm=math.sqrt(float((strays**2).mean())),
     )
-    return face, float(strays[worst]), upside.origin + local[worst] @ upside.axes
+    place = upside.origin + local[worst] @ upside.axes
+    return face, _Stray(float(strays[worst]), place, spline.error_mm(upside.size), spline.steps)
 
 
 def _knot_steps(upside: Upside) -> tuple[float, float]:

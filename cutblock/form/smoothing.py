@@ -24,6 +24,11 @@ _MARGIN_SHARE = 0.05  # of the size, continued on every side
 _DEGREE = 3
 
 
+# A cubic spline on knots h apart misses its curve by h^4 / 384 of the fourth derivative (de Boor, A Practical Guide to
+# Splines, chapter 5).
+_CUBIC = 384.0
+
+
 class HeightSpline(NamedTuple):
     """z(x, y) as a bicubic spline."""
 
@@ -31,6 +36,25 @@ class HeightSpline(NamedTuple):
     knots_y: Floats
     coefficients: Floats  # (n_x, n_y)
     residuals: Floats  # (m,) spline less point, mm
+
+    @property
+    def steps(self) -> tuple[float, float]:
+        """Distances of the knots along x and along y."""
+        return float(self.knots_x[1] - self.knots_x[0]), float(self.knots_y[1] - self.knots_y[0])
+
+    def error_mm(self, size: tuple[float, float]) -> float:
+        """Return about how far the spline strays from the surface its points were taken from, apart from their noise.
+
+        Fourth differences of the coefficients are h^4 times the fourth derivative; those of the splines that lie
+        inside [0, size[0]] x [0, size[1]] count.
+        """
+        counts = []
+        for knots, extent in ((self.knots_x, size[0]), (self.knots_y, size[1])):
+            starts, ends = knots[: -_DEGREE - 1], knots[_DEGREE + 1 :]
+            counts.append(np.flatnonzero((starts >= 0.0) & (ends <= extent + 1e-6)))
+        inside = self.coefficients[np.ix_(*counts)]
+        bends = (np.abs(np.diff(inside, n=4, axis=axis)) for axis in (0, 1) if inside.shape[axis] > 4)
+        return sum(float(bend.max(initial=0.0)) for bend in bends) / _CUBIC
 
 
 def spline_through(

@@ -47,6 +47,7 @@ class FaceBend(Record):
     face: str
     area_mm2: float  # of one copy
     domed_mm2: float
+    noise_mm: float | None = None  # rms distance of a mesh's vertices from the smooth face; None: not from a mesh
 
     @property
     def domed_percent(self) -> float:

@@ -35,7 +35,7 @@ class Face(Record):
     length_mm: float
     width_mm: float
     outline: tuple[Floats, ...] | None = None  # rings (n, 2) of (u, v), not closed
-    noise_mm: float = 0.0  # rms distance of the source's points from the patch
+    noise_mm: float | None = None  # rms distance of a mesh's vertices from the patch; None: not from a mesh
 
     def __post_init__(self) -> None:
         if self.outline is not None:

@@ -16,6 +16,7 @@ def summary_lines(plan: Plan) -> tuple[tuple[str, str], ...]:
         ("panels", _panels(plan)),
         ("sweeps", str(len(plan.sweeps))),
         *_strips(plan),
+        *_mesh(plan),
         ("pieces", f"{len(plan.pieces)}: {duty_counts(plan)}"),
         ("blocks", f"{len(plan.blocks)} ({bound_words(plan)})"),
         ("foam", _foam(plan)),
@@ -92,6 +93,16 @@ def _strips(plan: Plan) -> tuple[tuple[str, str], ...]:
     area = sum(bend.area_mm2 for bend in bends)
     share = f"; {100.0 * sum(bend.domed_mm2 for bend in bends) / area:.0f} % of their faces is domed" if area else ""
     return (("strips", f"{count_text(len(in_strips), 'panel')} cut in strips{share}"),)
+
+
+def _mesh(plan: Plan) -> tuple[tuple[str, str], ...]:
+    """Return how far the vertices of mesh files lie off the smooth faces through them; nothing without meshes."""
+    noisy = [(bend.noise_mm, bend.face) for bend in plan.bends if bend.noise_mm is not None]
+    if not noisy:
+        return ()
+    noise, face = max(noisy, key=lambda entry: entry[0])
+    where = f" (face {face})" if len(noisy) > 1 else ""
+    return (("mesh", f"vertices {fine_text(noise, plan.job.units)} (rms) off the smooth face{where}"),)
 
 
 def _foam(plan: Plan) -> str:

@@ -158,7 +158,7 @@ def test_where_the_worst_point_lies_and_how_domed_each_face_is_come_back():
     assert first["finished_p95_mm"] == 0.3
     assert first["samples_per_m2"] == 560.0
     assert second["worst_mm"] is None
-    assert values["faces"] == [{"name": "S", "area_mm2": 4e6, "domed_percent": 25.0}]
+    assert values["faces"] == [{"name": "S", "area_mm2": 4e6, "domed_percent": 25.0, "noise_mm": 0.012}]
     read = read_plan_text(text.encode(), "plan.json")
     assert plan_text(read) == text
     assert len(read.deviations[0].points_mm) == 0

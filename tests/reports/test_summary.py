@@ -110,3 +110,17 @@ def test_strips_and_how_domed_their_faces_are_are_told_only_where_there_are_stri
     bends = (FaceBend(face="S", area_mm2=4e6, domed_mm2=1e6), FaceBend(face="T", area_mm2=1e6, domed_mm2=0.0))
     lines = dict(summary_lines(replace(plan, sweeps=(parted, *others), bends=bends)))
     assert lines["strips"] == "2 panels cut in strips; 25 % of their faces is domed"
+
+
+def test_the_noise_of_meshes_is_told_only_where_there_are_meshes():
+    plan = sample_plan()
+    bends = (FaceBend(face="S", area_mm2=4e6, domed_mm2=0.0), FaceBend(face="T", area_mm2=1e6, domed_mm2=0.0))
+    assert "mesh" not in dict(summary_lines(replace(plan, bends=bends)))
+
+    noisy = tuple(replace(bend, noise_mm=noise) for bend, noise in zip(bends, (0.02, 0.0314), strict=True))
+    assert dict(summary_lines(replace(plan, bends=noisy)))["mesh"] == (
+        "vertices 0.031 mm (rms) off the smooth face (face T)"
+    )
+    assert dict(summary_lines(replace(plan, bends=(noisy[0], bends[1]))))["mesh"] == (
+        "vertices 0.020 mm (rms) off the smooth face"
+    )
