@@ -19,7 +19,7 @@ LARGEST_RATIO = 4.0
 
 _BATCH = 100  # sweeps worked on together: a fraction of a second
 _N_ROUNDS = 4
-_ROUNDING = 1e-9  # a limit met to this part is kept
+_STRETCH = 5e-4  # a sweep is stretched by no more than this part while single steps can be slowed instead
 _LEAST_SHARE = 0.05  # of the axes' way that a step counts for at least where mid-wire stands
 _MELT_SLACK = 0.01  # the ramps at the ends of a sweep take less than this part of a step
 
@@ -115,8 +115,8 @@ def _driven_times(courses: Courses, speeds: Floats, acceleration: float) -> Floa
     seconds = fastest_times(courses, speeds, acceleration)
     for _ in range(_N_ROUNDS):
         slowing = np.sqrt(np.maximum(1.0, _excess(courses, seconds, joints, acceleration)))
-        if slowing.max(initial=1.0) <= 1.0 + _ROUNDING:
-            return seconds
+        if slowing.max(initial=1.0) <= 1.0 + _STRETCH:
+            break
         slowed = courses.lengths / seconds
         for steps in (joints, joints + 1):
             np.minimum.at(speeds, steps[slowing > 1.0], (slowed[steps] / slowing)[slowing > 1.0])
