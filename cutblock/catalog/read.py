@@ -96,7 +96,8 @@ class TomlFile:
     def _line(self, place: Place) -> int:
         """Return the line of a top-level key, or of a key of the n-th table of an array; else of what is around it."""
         wanted = next((part for part in reversed(place) if isinstance(part, str)), "")
-        table = place[0] if len(place) > 1 and isinstance(place[1], int) else None
+        is_in_table = len(place) > 2 and isinstance(place[1], int)  # a list's item stands on the line of its key
+        table = place[0] if is_in_table else None
         wanted_table = int(place[1]) + 1 if table is not None and len(place) > 1 else 0
         n_tables, header_line = 0, 1
         for number, line in enumerate(self._text.splitlines(), start=1):

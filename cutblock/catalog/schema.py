@@ -1,5 +1,6 @@
 """The shape of the catalogue's TOML files: every key, its type and the range it must lie in."""
 
+import re
 from collections.abc import Iterator
 from datetime import date
 from typing import Annotated
@@ -22,6 +23,12 @@ Complaint = tuple[str, str, str]
 
 _Row = tuple[float, float, float]
 _NEEDED_WORDS = ("G21", "G90", "G61")
+# What a header may say beside them: plane, no offsets, no cycle, inverse time, the plain work system.
+_ALLOWED_CODES = {"17", "18", "19", "40", "49", "54", "80", "93", *(word[1:] for word in _NEEDED_WORDS)}
+_ENDS = ("M2", "M02", "M30", "%")
+_WORDS_OF_CODE = re.compile(r"%|([A-Z][-+]?[0-9]*\.?[0-9]+ ?)+")
+_LEAST_TABLE_HEIGHT_MM = 10.0  # the wire goes below the part, into the slats it lies on
+_LEAST_TABLE_OFFSET_MM = 20.0  # the wire goes down before the part
 
 
 class _Table(msgspec.Struct, forbid_unknown_fields=True, kw_only=True):
@@ -137,6 +144,12 @@ class MachineTable(_Table):
         if not 0.0 <= self.table_height_mm < self.lift_mm:
             text = f"{self.table_height_mm:g} mm leaves no lift"
             yield "table_height_mm", text, "Give the table's top above the towers' zero, less than lift_mm."
+        if self.table_height_mm < _LEAST_TABLE_HEIGHT_MM:
+            text = f"{self.table_height_mm:g} mm leaves no room for the wire below the part"
+            yield "table_height_mm", text, f"Lay parts on slats; give their top, {_LEAST_TABLE_HEIGHT_MM:g} mm or more."
+        if self.table_offset_mm < _LEAST_TABLE_OFFSET_MM:
+            text = f"{self.table_offset_mm:g} mm leaves no room for the wire before the part"
+            yield "table_offset_mm", text, f"Clamp parts further along; give {_LEAST_TABLE_OFFSET_MM:g} mm or more."
         if self.longest_wire_mm < self.span_mm:
             text = f"{self.longest_wire_mm:g} mm is shorter than the span of {self.span_mm:g} mm"
             yield "longest_wire_mm", text, "The wire is at least as long as the towers are apart."
@@ -157,6 +170,34 @@ class MachineTable(_Table):
             yield "heater_on", "has no {power}", 'Say where the power in W goes, such as "M3 S{power}".'
         if "{" in self.heater_on.replace("{power}", ""):
             yield "heater_on", "has a brace that is not {power}", 'Write it like "M3 S{power}".'
+        if not self.footer or self.footer[-1] not in _ENDS:
+            yield "footer", "does not end the program", f"Let its last word be one of {', '.join(_ENDS)}."
+        yield from self._code_complaints()
+
+    def _code_complaints(self) -> Iterator[Complaint]:
+        """Yield words that would move the wire, let it stand hot, change the units or end the program too early."""
+        heater_on = self.heater_on.replace("{power}", "100.0")
+        lines = [("header", line) for line in self.header] + [("footer", line) for line in self.footer]
+        for key, line in [*lines, ("heater_on", heater_on), ("heater_off", self.heater_off)]:
+            if _WORDS_OF_CODE.fullmatch(line) is None:
+                yield key, f'"{line}" is not made of words of a letter and a number', 'Write it like "M3 S100".'
+                continue
+            codes = re.findall(r"([A-Z])0*([0-9.]+)", line)
+            for letter, number in codes:
+                if letter == "G" and (key != "header" or number not in _ALLOWED_CODES):
+                    yield key, f"G{number} has no place there", "The program itself moves the wire and sets its modes."
+                if letter in self.axes or (letter == "M" and number in {"0", "1"}):
+                    yield key, f"{letter}{number} moves or stops the machine", "The program itself does that."
+                if letter == "M" and number in {"2", "30"} and (key, line) != ("footer", self.footer_end):
+                    yield key, f"{letter}{number} ends the program there", "Put the end word last in the footer."
+        if self.heater_off.split()[:1] == self.heater_on.split()[:1]:
+            yield "heater_off", f'"{self.heater_off}" begins like heater_on', "Give the word that switches the heat off."
+
+    @property
+    def footer_end(self) -> str:
+        """The word that ends the program; a percent sign may follow it."""
+        words = [word for word in self.footer if word != "%"]
+        return words[-1] if words else "%"
 
 
 class CalibrationTable(_Table):

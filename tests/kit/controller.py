@@ -1,7 +1,7 @@
 """Run as a script: hands programs to the interpreter of a CNC controller and prints what it would do, a JSON for each.
 
 Arguments: the folder the controller's packages are unpacked in, a parameter file that exists, the letters of the axes,
-the programs. The interpreter works in inches; the lines printed are in mm and mm/min.
+the programs. The interpreter works in inches, and in degrees for A B C; what is printed is in mm and mm/min.
 """
 
 import json
@@ -56,7 +56,9 @@ class Canon:
         self._move("rapid", position)
 
     def _move(self, kind, position):
-        values = [value * INCH_MM for value in position]
+        values = [
+            value if letter in "ABC" else value * INCH_MM for letter, value in zip(LETTERS, position, strict=True)
+        ]
         others = [value for index, value in enumerate(values) if index not in self.places]
         modes = [self.state.spindle, self.state.feed_mode, self.state.path_mode, self.state.units]
         self.calls.append([kind, [values[index] for index in self.places], others, self.feed, modes])

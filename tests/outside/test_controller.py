@@ -8,15 +8,19 @@ import json
 import os
 import subprocess
 import sys
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
 import pytest
 from kit.machining import billet_plan, cut, cuts_plan, roomy_machine, roomy_plan, skew_sweep, timing_of
+from kit.odd_machine import odd_machine
 from kit.sample import sample_sweep
 from kit.scenario_plans import NAMES
 from kit.standing import Stand, set_ups
 
+from cutblock.flow.folder import read_plan
+from cutblock.flow.plan_json import plan_text
 from cutblock.machinecode.programs import write_programs
 
 CONTROLLER = os.environ.get("CUTBLOCK_CONTROLLER", "")
@@ -191,3 +195,25 @@ def test_the_controller_runs_every_file_of_every_scenario_as_the_plan_has_it(jud
         assert {tuple(row[4][1:]) for row in rows} == {(930, 610, 210)}  # inverse time, exact path, millimetres
         assert {call[1] for call in judged["calls"] if call[0] == "pause"} <= {5}  # every pause with a cold wire
         assert not [call for call in judged["calls"] if call[0] == "dwell"]
+
+
+def test_the_controller_runs_the_programs_of_a_machine_of_other_letters_and_words(
+    judge_files, scenario_folder, tmp_path
+):
+    machine = odd_machine(tmp_path)
+    plan = replace(read_plan(scenario_folder("weir-baffles")), machine=machine)
+    programs = write_programs(plan)
+    files = [tmp_path / program.name for program in programs]
+    for path, program in zip(files, programs, strict=True):
+        path.write_text(program.text)
+    values = json.loads(plan_text(plan))
+
+    told = judge_files(*files, axes="".join(machine.axes))
+
+    for judged, program, set_up in zip(told, programs, set_ups(values), strict=True):
+        rows = moves(judged)
+        wanted = Stand(values, set_up, program.text).moves()
+        assert judged["has_ended"]
+        assert [row[0] for row in rows] == ["rapid"] + ["feed"] * (len(wanted) - 1)
+        read, planned = np.array([row[1] for row in rows]), np.array([move.position for move in wanted])
+        np.testing.assert_allclose(read, planned, rtol=0.0, atol=0.5e-5 + 1e-9)
