@@ -190,8 +190,9 @@ class MachineTable(_Table):
                     yield key, f"{letter}{number} moves or stops the machine", "The program itself does that."
                 if letter == "M" and number in {"2", "30"} and (key, line) != ("footer", self.footer_end):
                     yield key, f"{letter}{number} ends the program there", "Put the end word last in the footer."
-        if self.heater_off.split()[:1] == self.heater_on.split()[:1]:
-            yield "heater_off", f'"{self.heater_off}" begins like heater_on', "Give the word that switches the heat off."
+        heating = re.escape(self.heater_on).replace(re.escape("{power}"), "([0-9.]*[1-9][0-9.]*)")
+        if re.fullmatch(heating, self.heater_off):
+            yield "heater_off", f'"{self.heater_off}" heats the wire', "Give the word that switches the heat off."
 
     @property
     def footer_end(self) -> str:

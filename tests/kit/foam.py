@@ -40,11 +40,11 @@ def touched_foam(stand, text, wire_mm):
             others = [box for box in boxes if spared is None or not is_same(box, spared)]
             found += [(number, line, box) for box in others if gap(position, target, box, stand) < wire_mm / 2]
             position = target
+        elif line == stand.machine["heater_off"]:
+            boxes = parted(boxes, stand, cut) if is_hot else boxes
+            is_hot = False
         elif line.startswith(heat):
             is_hot = True
-        elif line == stand.machine["heater_off"] and is_hot:
-            is_hot = False
-            boxes = parted(boxes, stand, cut)
         elif line == "M0":
             boxes = left_by_hand(boxes, stand, cut, pause)
     return found

@@ -89,11 +89,15 @@ WRONG = [
     ("heater_on", '"M3 S{power} G4 P2"', "G4 has no place"),
     ("heater_on", '"M3 S{power} X1"', "X1 moves"),
     ("heater_on", '"heat {power}"', "not made of words"),
-    ("heater_off", '"M3 S0"', "begins like heater_on"),
+    ("heater_off", '"M3 S10"', "heats the wire"),
     ("heater_off", '"M0"', "stops the machine"),
     ("heater_off", '"aus"', "not made of words"),
     ("decimals", "9", "whole number <= 6"),
 ]
+
+
+def test_no_power_at_all_is_a_word_that_switches_the_heat_off(tmp_path):
+    assert load.machine(str(written_with(tmp_path, "heater_off", '"M3 S0"'))).heater_off == "M3 S0"
 
 
 def written_with(tmp_path, key, value):
