@@ -3,6 +3,8 @@ import xml.etree.ElementTree as ET
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 from kit.coupon_sheets import sheet_text
 from kit.coupons import HEAT_J_KG, THRESHOLD_W_M
 
@@ -215,6 +217,28 @@ def test_a_calibration_that_cannot_be_written_leaves_no_picture_of_it(fitted, tm
     left = sorted(path.name for path in (tmp_path / "out").iterdir())
     assert left == (["shop.toml"] if earlier is None else ["shop.svg", "shop.toml"])
     assert earlier is None or (tmp_path / "out" / "shop.svg").read_bytes() == earlier
+
+
+@given(
+    edits=st.lists(
+        st.tuples(st.integers(0, 800), st.integers(0, 12), st.text(st.characters(codec="utf-8"), max_size=4)),
+        min_size=1,
+        max_size=4,
+    )
+)
+@settings(suppress_health_check=[HealthCheck.function_scoped_fixture])
+def test_a_sheet_damaged_anyhow_is_fitted_or_refused(tmp_path, edits):
+    text = sheet_text(onset_mm_s=4.0)
+    for place, length, put in edits:
+        text = text[:place] + put + text[place + length :]
+    path = tmp_path / "damaged.csv"
+    path.write_text(text, encoding="utf-8", newline="")
+    try:
+        found = fit_sheet(path, "shop", "2030-01-01")
+    except InputError:
+        return
+    assert np.isfinite(found.calibration.covariance).all()
+    ET.fromstring(found.picture)
 
 
 @pytest.mark.parametrize("name", ["", "a/b", "..", "x.toml", " x", "a" * 61, "naïve", "a\nb"])
