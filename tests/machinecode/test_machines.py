@@ -164,3 +164,12 @@ def test_a_machine_too_small_for_the_job_is_told_with_piece_ruling_axis_and_reme
         for number in uncuttable:
             assert not list((tmp_path / "plan" / "cuts").glob(f"WB-B01-S{int(number):02d}.ngc"))
     assert any(subject in text and words in text and remedy in text for text in told), told[:3]
+
+
+def test_the_machine_shown_to_contributors_is_one_that_can_be_read_and_cuts(tmp_path, scenario_folder):
+    text = (SCENARIOS.parent / "DEVELOPERS.md").read_text()
+    path = tmp_path / "ours.toml"
+    path.write_text(text.split("```toml\n")[1].split("```")[0])
+    plan = replace(read_plan(scenario_folder("weir-baffles")), machine=load.machine(str(path)))
+
+    assert len(write_programs(plan)) == len(set_ups(json.loads(plan_text(plan))))
