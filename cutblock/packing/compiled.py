@@ -11,16 +11,18 @@ from collections.abc import Callable
 from types import ModuleType
 from typing import Any
 
-from cutblock.packing import kernels, moves, recursion
+from cutblock.packing import cover, kernels, moves, recursion
 from cutblock.packing.sequences import Make
 
 # In the order they call each other; numba looks a called function up by its name when the caller is compiled.
 _COMPILED = {
     kernels: ("find_place", "choose_order", "set_rests", "set_least", "open_block", "put", "begin", "prune", "fill"),
     moves: (
-        "draw", "choose_blocks", "take_out", "disturb", "offer_kinds", "weigh", "keep", "is_kept", "one", "search",
+        "draw", "choose_blocks", "take_out", "disturb", "offer_kinds", "weigh", "keep", "find_key", "remember",
+        "is_kept", "one", "search",
     ),
     recursion: ("best_cut", "decide", "recur"),
+    cover: ("reprice", "score_of", "choose"),
 }  # fmt: skip
 _WAIT = 0.02  # s between two looks at the compiling thread
 
@@ -33,14 +35,19 @@ class Inner(Make):
         begin: `kernels.begin` likewise.
         search: `moves.search` likewise.
         recur: `recursion.recur` likewise.
+        reprice: `cover.reprice` likewise.
+        choose: `cover.choose` likewise.
     """
 
-    def __init__(self, filling: ModuleType, moving: ModuleType, laying: ModuleType, is_compiled: bool) -> None:
+    def __init__(self, modules: tuple[ModuleType, ...], is_compiled: bool) -> None:
         super().__init__(is_compiled)
+        filling, moving, laying, covering = modules
         self.fill: Any = filling.fill
         self.begin: Any = filling.begin
         self.search: Any = moving.search
         self.recur: Any = laying.recur
+        self.reprice: Any = covering.reprice
+        self.choose: Any = covering.choose
 
 
 class Gear:
@@ -103,7 +110,7 @@ class _Workshop:
             tell()
 
 
-_PLAIN = Inner(kernels, moves, recursion, is_compiled=False)
+_PLAIN = Inner((kernels, moves, recursion, cover), is_compiled=False)
 _WORKSHOP = _Workshop()
 
 
@@ -131,8 +138,7 @@ def _copies(is_cached: bool) -> Inner:
             made[name] = numba.njit(cache=is_cached, nogil=True)(getattr(copy, name))
             setattr(copy, name, made[name])
         copies.append(copy)
-    filling, moving, laying = copies
-    return Inner(filling, moving, laying, is_compiled=True)
+    return Inner(tuple(copies), is_compiled=True)
 
 
 def _copy(module: ModuleType) -> ModuleType:

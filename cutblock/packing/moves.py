@@ -4,7 +4,7 @@ Every function runs as it stands on lists of Python numbers, and compiled by num
 """
 
 from cutblock.packing.kernels import N_MODES, N_RULES, begin, fill
-from cutblock.packing.sequences import Goods, Integers, Reals, State, Trial
+from cutblock.packing.sequences import Goods, Integers, Reals, State, Store, Trial
 
 
 def draw(state: State, dice: Reals) -> float:
@@ -143,6 +143,44 @@ def keep(n_taken: int, n_chosen: int, n_new: int, pool: Integers, state: State, 
         target.turned[cell], target.order[cell] = source.turned[cell], source.order[cell]
 
 
+def find_key(key: int, store: Store) -> int:
+    """Return where a key stands in the table, or the free place where it would."""
+    size = len(store.table)
+    place = key % size
+    while store.table[place] >= 0 and store.key[store.table[place]] != key:
+        place = (place + 1) % size
+    return place
+
+
+def remember(n_taken: int, n_new: int, trial: Trial, goods: Goods, store: Store) -> None:
+    """Put the well filled blocks of a move into the store, those that are not yet there."""
+    sequence, layout = trial.sequence, trial.layout
+    for block in range(n_new):
+        kind = trial.desk.kind[block]
+        if trial.filled[block] < store.least[0] * goods.kind_volumes[kind]:
+            continue
+        key, n_members = store.kind_keys[kind], 0
+        for i in range(n_taken):
+            if layout.block[sequence[i]] == block:
+                key ^= store.keys[sequence[i]]
+                n_members += 1
+        number, entry = store.n[0], store.n[1]
+        if number + 1 >= len(store.start) or entry + n_members > len(store.cell):
+            return
+        place = find_key(key, store)
+        if store.table[place] >= 0:
+            continue
+        store.table[place], store.key[number], store.kind[number] = number, key, kind
+        for i in range(n_taken):
+            cell = sequence[i]
+            if layout.block[cell] == block:
+                store.cell[entry], store.slot[entry] = cell, layout.slot[cell]
+                store.turned[entry], store.order[entry] = layout.turned[cell], layout.order[cell]
+                entry += 1
+        store.n[0], store.n[1] = number + 1, entry
+        store.start[number + 1] = entry
+
+
 def is_kept(is_emptying: bool, change: Reals, late: float, score: Reals) -> bool:
     """Return whether a move is kept: late acceptance on the volume without a place, or on money, blocks and fill."""
     if is_emptying:
@@ -168,6 +206,7 @@ def search(
     late: Reals,
     change: Reals,
     dice: Reals,
+    store: Store,
 ) -> int:
     """Ruin a few blocks and recreate them, many times; return the number of moves made.
 
@@ -182,7 +221,7 @@ def search(
             return move
         if state.counts[2] + 4 * n_cells + 64 > len(dice):
             return move
-        one(is_emptying, bases, state, trial, goods, late, change, dice)
+        one(is_emptying, bases, state, trial, goods, late, change, dice, store)
     return n_moves
 
 
@@ -195,6 +234,7 @@ def one(
     late: Reals,
     change: Reals,
     dice: Reals,
+    store: Store,
 ) -> None:
     """Make one move."""
     counts = state.counts
@@ -229,6 +269,7 @@ def one(
                 trial.desk.kind[n_new] = kind
                 n_new += 1
     weigh(n_taken, n_chosen, n_new, state, trial, goods, change)
+    remember(n_taken, n_new, trial, goods, store)
     for i in range(n_chosen):
         trial.is_chosen[trial.chosen[i]] = 0
     place = counts[3] % len(late)

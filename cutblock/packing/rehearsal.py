@@ -9,7 +9,7 @@ from cutblock.packing.construct import construct
 from cutblock.packing.effort import Effort
 from cutblock.packing.lattice import make_task
 from cutblock.packing.patterns import Recursion
-from cutblock.packing.search import improve
+from cutblock.packing.search import Search, improve
 
 
 def rehearse(inner: Inner) -> None:
@@ -19,4 +19,6 @@ def rehearse(inner: Inner) -> None:
     gear = Gear(inner)
     start = construct(task, gear, (0.0, 0), silent)
     improve(task, gear, start, (0.0, 0), 0, Effort(10, None), silent)
+    search = Search(task, gear, 0, Effort(10, None), (0.0, 0))
+    search.covered(start)
     Recursion(distinct_cells(task)[0], task.kinds, gear).worths(np.ones(len(sizes)))

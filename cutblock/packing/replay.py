@@ -2,6 +2,7 @@
 
 import numpy as np
 
+from cutblock.base.arrays import Ints
 from cutblock.packing.construct import Solution
 from cutblock.packing.kernels import ORDERS
 from cutblock.packing.lattice import Task
@@ -18,18 +19,24 @@ def block_trees(task: Task, solution: Solution) -> list[Part]:
         if solution.layout[2, cells[0]] < 0:
             trees.append(solution.trees[solution.layout[1, cells[0]]])
         else:
-            trees.append(_replayed(task, kind, cells, solution))
+            trees.append(replayed(task, kind, cells, solution.layout[2:, cells]))
     return trees
 
 
-def _replayed(task: Task, kind: int, members: list[int], solution: Solution) -> Part:
-    """Return the tree of one block by cutting its billets out of its free boxes again."""
+def replayed(task: Task, kind: int, members: list[int], ways: Ints) -> Part:
+    """Return the tree of one block by cutting its billets out of its free boxes again.
+
+    Args:
+        task: What is packed.
+        kind: Of the block.
+        members: Billets as they are placed.
+        ways: (3, n) slot, turned and order of each.
+    """
     skin = int(task.skins[kind])
     x, y, z = (task.kinds[kind] - task.kerf).tolist()
     root = Part((skin, skin, skin), (x, y, z))
     slots = {0: root}
-    for place, cell in enumerate(members):
-        slot, is_turned, order = solution.layout[2:, cell].tolist()
+    for place, (cell, (slot, is_turned, order)) in enumerate(zip(members, ways.T.tolist(), strict=True)):
         x, y, z = (task.cells[cell] - task.kerf).tolist()
         size = (y, x, z) if is_turned else (x, y, z)
         *rests, billet = cut_out(slots.pop(slot), size, ORDERS[order], task.kerf)

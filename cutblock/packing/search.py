@@ -15,11 +15,13 @@ from cutblock.packing.compiled import Gear, Inner
 from cutblock.packing.construct import Solution, evaluate, sort_keys
 from cutblock.packing.effort import Effort
 from cutblock.packing.lattice import Task
+from cutblock.packing.memory import cover, demand_fill, new_store, remember_plan
 from cutblock.packing.sequences import (
     Goods,
     Integers,
     Reals,
     State,
+    Store,
     Trial,
     cells_of,
     kinds_of,
@@ -32,18 +34,21 @@ _MOVES_A_TURN = 2000
 _LATE_FILL = 50
 _LATE_EMPTYING = 100
 _DICE = 1 << 16
+
+_COVER_MOVES = 500  # what a plan from the store counts for
 _FIRST_SLICE = 8  # moves before the first look at the clock
 _SLICE_TIME = 0.03  # s between two looks
 
 
 class _Fixed(NamedTuple):
-    """What a search reads, and room for its moves."""
+    """What a search reads, room for its moves, and the blocks it has filled well."""
 
     goods: Goods
     trial: Trial
     bases: Integers
     change: Reals
     target: Reals
+    store: Store
 
 
 class Search:
@@ -73,6 +78,7 @@ class Search:
             inner.integers(np.concatenate(sort_keys(task))),
             reals(np.zeros(5)),
             reals([target[0], float(target[1])]),
+            new_store(task, inner, self.generator),
         )
         self.n_slice = _FIRST_SLICE
         self.dice = self.roll()
@@ -142,9 +148,11 @@ class Search:
             progress(self.effort.fraction, text)
             state, late = self.shift(state, late)
             wanted = min(self.n_slice, n_moves - done, self.effort.left)
-            goods, trial, bases, change, target = self.fixed
+            goods, trial, bases, change, target, store = self.fixed
             before = self.effort.elapsed
-            made = self.inner.search(is_emptying, wanted, target, bases, state, trial, goods, late, change, self.dice)
+            made = self.inner.search(
+                is_emptying, wanted, target, bases, state, trial, goods, late, change, self.dice, store
+            )
             # How many moves are made at once changes nothing but how often the clock is looked at.
             if self.effort.elapsed - before < _SLICE_TIME and made == wanted:
                 self.n_slice *= 2
@@ -158,6 +166,17 @@ class Search:
                 self.dice = self.roll()
                 state.counts[2] = 0
         return state
+
+    def know(self, plan: Solution) -> None:
+        """Remember the blocks of a plan, and as well filled ones from now on."""
+        demand_fill(self.task, self.fixed.store, plan)
+
+    def covered(self, plan: Solution) -> Solution | None:
+        """Return a cheaper plan of blocks filled so far, perhaps with billets left over."""
+        goods, store = self.fixed.goods, self.fixed.store
+        remember_plan(self.task, store, plan, self.inner)
+        self.effort.spend(_COVER_MOVES)
+        return cover(self.task, store, goods.kinds, goods.weights, plan, self.inner)
 
 
 def improve(
@@ -191,13 +210,19 @@ def improve(
             state = search.run(search.state_of(best), True, _MOVES_A_TURN, progress, text)
             best = _better(best, search.solution_of(state, best.trees))
             continue
+        search.know(best)
         state = search.run(search.state_of(best), False, _MOVES_A_TURN, progress, text)
         best = _better(best, search.solution_of(state, best.trees))
-        if not is_at(best, target):
-            state = search.state_of(_emptied(task, best, search.generator))
-            state = search.run(state, True, _MOVES_A_TURN, progress, told(task, best, target))
-            if state.counts[1] == 0:
-                best = _better(best, search.solution_of(state, best.trees))
+        if is_at(best, target) or effort.is_spent:
+            break
+        gap = search.covered(best)
+        if gap is not None and not gap.n_missing:
+            best = _better(best, gap)
+            continue
+        start = gap or _emptied(task, best, search.generator)
+        state = search.run(search.state_of(start), True, _MOVES_A_TURN, progress, told(task, best, target))
+        if state.counts[1] == 0:
+            best = _better(best, search.solution_of(state, start.trees))
     return best
 
 

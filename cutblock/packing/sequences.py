@@ -112,6 +112,23 @@ class Goods(NamedTuple):
     weights: Reals  # money, or 1, for each kind
 
 
+class Store(NamedTuple):
+    """Blocks that were filled well at some time: what lies in them and where, one after the other."""
+
+    keys: Integers  # of the billets: the key of a block is made from those of its billets
+    kind_keys: Integers
+    n: Integers  # (2,) blocks, entries
+    start: Integers  # of each block its first entry, and one more
+    kind: Integers
+    cell: Integers  # of each entry, as placed
+    slot: Integers
+    turned: Integers
+    order: Integers
+    table: Integers  # the blocks by their keys
+    key: Integers  # of each block
+    least: Reals  # (1,) fill from which a block is remembered
+
+
 class Trial(NamedTuple):
     """Room to work in for one move: the billets taken out, how they are put back, and the blocks concerned."""
 

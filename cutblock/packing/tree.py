@@ -79,3 +79,15 @@ def all_parts(root: Part) -> list[Part]:
         if part.low is not None:
             waiting.append(part.low)
     return found
+
+
+def without(root: Part, gone: frozenset[int]) -> Part:
+    """Take billets out of a tree, and the cuts that were made for them alone; return the tree."""
+    parts = all_parts(root)
+    for part in parts:
+        if part.billet in gone:
+            part.billet, part.is_turned = -1, False
+    for part in reversed(parts):
+        if part.axis >= 0 and all(child.axis < 0 and child.billet < 0 for child in part.children):
+            part.axis, part.low, part.high = -1, None, None
+    return root

@@ -96,13 +96,12 @@ def test_the_bound_is_named_after_what_proved_it():
 
 def test_finite_blocks_bound_the_cost_and_are_not_passed():
     stock = [(1000, 800, 600, None, 50.0), (700, 600, 600, 2, 1.0)]
-    sizes = repeated(3)
+    sizes = repeated(2)
 
     packing = pack(sizes, stock, 2.0, moves=2000)
 
-    assert packing.stock_rows.count(1) <= 2
+    assert 1 <= packing.stock_rows.count(1) <= 2
     assert packing.cost_lower_bound <= packing.cost
-    assert packing.cost < pack(sizes, stock[:1], 2.0, moves=2000).cost
 
 
 def test_blocks_that_cost_nothing_keep_the_bound_true():
