@@ -23,6 +23,7 @@ class Steps:
     sweeps: Ints  # (m,) which sweep a step is of
     near: Floats  # (m, 3) way of the wire's end at the near billet face
     far: Floats  # (m, 3) at the far one
+    wires: Floats  # (m, 3) along the wire halfway
     turns: Floats  # (m,) angle between its two rulings, rad
     travel: Floats  # (m,) x of mid-wire halfway
     is_in_foam: Bools  # (m,)
@@ -59,6 +60,7 @@ def sweep_steps(sweeps: Sequence[Sweep], machine: Machine) -> Steps:
         sweeps=of_row[row],
         near=near_ways,
         far=far_ways,
+        wires=directions,
         turns=_turns(wires[row], wires[row + 1]),
         travel=0.25 * (near[row, 0] + near[row + 1, 0] + far[row, 0] + far[row + 1, 0]),
         is_in_foam=is_in_foam,

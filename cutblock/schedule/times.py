@@ -11,6 +11,7 @@ from cutblock.records.plan import Finding
 from cutblock.records.shop import Conditions, Machine
 from cutblock.records.sweep import Sweep, SweepTiming
 from cutblock.records.words import Severity
+from cutblock.schedule.melting import melt_findings
 from cutblock.schedule.passes import Steps, sweep_steps
 from cutblock.schedule.stages import Courses, fastest_times
 
@@ -21,7 +22,6 @@ _BATCH = 100  # sweeps worked on together: a fraction of a second
 _N_ROUNDS = 4
 _STRETCH = 5e-4  # a sweep is stretched by no more than this part while single steps can be slowed instead
 _LEAST_SHARE = 0.05  # of the axes' way that a step counts for at least where mid-wire stands
-_MELT_SLACK = 0.01  # the ramps at the ends of a sweep take less than this part of a step
 
 
 def time_sweeps(
@@ -74,7 +74,7 @@ def time_sweeps(
                 )
             )
         findings += _ratio_findings(batch, steps, all_ratios, ratios)
-        findings += _melt_findings(batch, steps, seconds, conditions)
+        findings += melt_findings(batch, steps, seconds, conditions, machine)
     return tuple(timed), tuple(timings), tuple(findings)
 
 
@@ -175,25 +175,4 @@ def _ratio_findings(sweeps: Sequence[Sweep], steps: Steps, all_ratios: Floats, r
         )
         severity = Severity.ERROR if is_error else Severity.WARNING
         findings.append(Finding(severity=severity, code="uneven-ends", subject=sweeps[index].id, text=text))
-    return findings
-
-
-def _melt_findings(sweeps: Sequence[Sweep], steps: Steps, seconds: Floats, conditions: Conditions) -> list[Finding]:
-    """Return where part of the wire in foam is slower than the over-melt limit."""
-    slowest = steps.moves.least / seconds
-    is_slow = steps.is_in_foam & (slowest < conditions.low_mm_s * (1.0 - _MELT_SLACK))
-    findings = []
-    for index in np.unique(steps.sweeps[is_slow]).tolist():
-        rows = np.flatnonzero(is_slow & (steps.sweeps == index))
-        worst = rows[np.argmin(slowest[rows])]
-        place_mm = steps.moves.least_at[worst] * sweeps[index].width_mm
-        speed = max(float(slowest[worst]), 1e-3)
-        kerf_mm = conditions.least_kerf_mm + conditions.kerf_rate_mm2_s / speed
-        text = (
-            f"From {steps.travel[rows[0]]:.0f} to {steps.travel[rows[-1]]:.0f} mm of the travel the wire falls to"
-            f" {speed:.2f} mm/s at {place_mm:.0f} mm from the near face, under the {conditions.low_mm_s:.2f} mm/s that"
-            f" keep the kerf at {conditions.widest_kerf_mm:g} mm: up to {kerf_mm:.1f} mm may melt there."
-            " Divide the panel or lay the wire the other way."
-        )
-        findings.append(Finding(severity=Severity.WARNING, code="over-melt", subject=sweeps[index].id, text=text))
     return findings

@@ -35,7 +35,7 @@ def wavy_sweep(seed):
 
 def plain_squares(lengths, starts, ends, bends, caps, limit):
     """The same reachability for one path, (n - 1, k) rates and bends, row after row."""
-    n_stages, n_axes = bends.shape  # noqa: RUF059
+    n_stages = len(bends)
     rows = []
     for stage in range(n_stages):
         doubled = 2.0 * lengths[stage]

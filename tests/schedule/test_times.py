@@ -197,8 +197,7 @@ def test_a_fast_end_runs_at_the_contact_limit_and_the_slow_one_melts_too_much():
     assert set(found) == {"uneven-ends", "over-melt"}
     assert {finding.severity for finding in findings} == {"warning"}
     assert {finding.subject for finding in findings} == {sweep.id}
-    assert "at 0 mm from the near face" in found["over-melt"].text
-    assert found["over-melt"].text.startswith("From 10 to 1190 mm")
+    assert "from ruling 2 to 62 (10 to 1190 mm of the travel) at the near face down to" in found["over-melt"].text
 
 
 def test_ends_too_uneven_are_an_error():
@@ -218,7 +217,7 @@ def test_a_pivot_inside_the_wire_is_found_though_both_ends_run():
     assert normal_speed(sweep, timing, 1.0).min() > CONDITIONS.low_mm_s * 0.5
     text = next(finding for finding in findings if finding.code == "over-melt").text
     # The heights of the two ends change by 80 up and 20 down: mid-way they cancel at 0.8 of the width.
-    place = float(text.split(" at ")[1].split(" mm")[0])
+    place = float(text.split(" travel) at ")[1].split(" mm")[0])
     assert place == pytest.approx(800.0, abs=30.0)
 
 
