@@ -19,13 +19,17 @@ def run_grid(chosen: argparse.Namespace) -> int:
     Returns:
         0, or 1 when even the best grid leaves panels that cannot be cut.
     """
+    from cutblock.flow.grid_pairs import search_pairing_grid
     from cutblock.flow.grid_search import SMALLER_CELLS, search_grid
     from cutblock.flow.jobfile import read_job
 
     job = read_job(job_path(chosen.job))
     progress = terminal_progress()
     shares = SMALLER_CELLS if chosen.smaller else (1.0,)
-    found = search_grid(job, chosen.face or "", n_angles=chosen.angles, cell_shares=shares, progress=progress)
+    if chosen.pairs:
+        found = search_pairing_grid(job, chosen.face or "", progress=progress)
+    else:
+        found = search_grid(job, chosen.face or "", n_angles=chosen.angles, cell_shares=shares, progress=progress)
     if chosen.json:
         print(json.dumps(_values(found, job), indent=1))
     else:
@@ -62,11 +66,24 @@ def _entry(candidate: GridCandidate, found: GridSearch, job: Job) -> dict[str, o
 
 
 def _print_table(found: GridSearch, job: Job) -> None:
-    print(f"Face {found.face}: {found.n_angles} angles tried on {found.n_trials} trial panels; the best grids, whole:")
-    rows = [_HEAD, *(_row(number, one, found, job) for number, one in enumerate(found.candidates, 1))]
-    widths = [max(len(row[column]) for row in rows) for column in range(len(_HEAD))]
+    if found.present.n_paired is None:
+        print(
+            f"Face {found.face}: {found.n_angles} angles tried on {found.n_trials} trial panels; the best grids, whole:"
+        )
+        head: tuple[str, ...] = _HEAD
+    else:
+        print(f"Face {found.face}: grids by the symmetries of the form, whole, the least foam first:")
+        head = (*_HEAD, "paired", "foam")
+    rows = [head, *(_row(number, one, found, job) for number, one in enumerate(found.candidates, 1))]
+    widths = [max(len(row[column]) for row in rows) for column in range(len(head))]
     for row in rows:
         print("  " + "  ".join(text.rjust(width) for text, width in zip(row, widths, strict=True)).rstrip())
+    for number, one in enumerate(found.candidates, 1):
+        if one.reason:
+            print(f"  {number}: {one.reason}.")
+    if found.present.n_paired is not None and len(found.candidates) == 1:
+        print("  The face has no symmetry by which the halves of a cut could serve two panels each.")
+        return
     best = found.candidates[0]
     if best == found.present:
         print("  The grid of the job (*) is the best that was found.")
@@ -90,4 +107,5 @@ def _row(number: int, one: GridCandidate, found: GridSearch, job: Job) -> tuple[
         str(one.n_uncut),
         length_text(one.worst_mm, unit, extra_decimals=fine),
         length_text(one.skew_mm, unit),
+        *(() if one.n_paired is None else (str(one.n_paired), f"{one.billet_litres:.0f} L")),
     )

@@ -168,6 +168,9 @@ def _parser() -> argparse.ArgumentParser:
     grid.add_argument("--face", metavar="NAME", help="the face; needed where the job has several")
     grid.add_argument("--angles", type=_angles, default=12, metavar="N", help="angles tried at first (12)")
     grid.add_argument("--smaller", action="store_true", help="try smaller cells too, down to 60 %% of the job's")
+    grid.add_argument(
+        "--pairs", action="store_true", help="look for grids whose panels pair up, by the symmetries of the form"
+    )
     grid.add_argument("--json", action="store_true", help="print what was found as JSON")
 
     wire = commands.add_parser(

@@ -76,7 +76,7 @@ def search_grid(
     from cutblock.flow.steps import take_form
 
     plan = take_form(start_plan(job, Settings()), part_of(progress, 0.0, 0.1))
-    face, spec = _face_of(plan, face_name)
+    face, spec = face_of(plan, face_name)
     if spec.cell_mm is None:
         raise InputError(
             f'face "{face.name}" has no size of panels to search with', spec.place, "Give panels = { length, width }."
@@ -84,7 +84,7 @@ def search_grid(
     search = _Search(plan, face, spec)
     tried = search.angles(n_angles, cell_shares, part_of(progress, 0.1, 0.5))
     grids = search.phases(tried, n_whole, part_of(progress, 0.5, 0.6))
-    present = search.whole(spec, part_of(progress, 0.6, 0.65))
+    present = whole_grid(plan, face, spec, part_of(progress, 0.6, 0.65))
     found = [present]
     for number, (n_cells, grid) in enumerate(grids):
         fewest = min((one.n_sweeps for one in found if not one.n_uncut), default=None)
@@ -92,7 +92,7 @@ def search_grid(
             continue  # every panel takes a sweep at least
         report = part_of(progress, 0.65 + 0.35 * number / len(grids), 0.65 + 0.35 * (number + 1) / len(grids))
         try:
-            found.append(search.whole(grid, report))
+            found.append(whole_grid(plan, face, grid, report))
         except GeometryError:
             continue  # a cell falls apart or folds: no grid to recommend
     found.sort(key=lambda candidate: _rank(candidate, job.tolerance_mm))
@@ -121,7 +121,7 @@ def _rank(candidate: GridCandidate, tolerance_mm: float) -> tuple[float, ...]:
     )
 
 
-def _face_of(plan: Plan, name: str) -> tuple[Face, FaceSpec]:
+def face_of(plan: Plan, name: str) -> tuple[Face, FaceSpec]:
     """Return a face with its table of the job; the pieces of one mesh are named after the table and numbered."""
     faces = {face.name: face for face in plan.faces}
     if not name and len(faces) == 1:
@@ -272,31 +272,59 @@ class _Search:
         grids.sort(key=lambda grid: grid[:2])
         return [grid[2:] for grid in grids[:n_whole]]
 
-    def whole(self, spec: FaceSpec, progress: Progress) -> GridCandidate:
-        """Return what a plan of this face alone with a grid would be; raises GeometryError where it cannot be cut."""
-        from cutblock.panels.divide import divide_faces
-        from cutblock.sweeps.fitting import fit_panels
 
-        spec = replace(spec, count=1)
-        job = replace(self._job, faces=(spec,))
-        face = replace(self._face, name=spec.name)
-        panels, _ = divide_faces(job, (face,), part_of(progress, 0.0, 0.2))
-        try:
-            sweeps, _ = fit_panels(job, panels, self._plan.conditions, part_of(progress, 0.2, 1.0))
-        except NotCuttable:
-            sweeps = ()
-        cut = {sweep.serving[0].panel for sweep in sweeps}
-        assert spec.cell_mm is not None
-        return GridCandidate(
-            angle_deg=None if not spec.is_grid_set else round(math.degrees(spec.angle_rad or 0.0), 2),
-            phase_mm=spec.phase_mm or (0.0, 0.0),
-            cell_mm=spec.cell_mm,
-            n_panels=len(panels),
-            n_sweeps=len(sweeps),
-            n_uncut=len(panels) - len(cut),
-            worst_mm=max((sweep.serving[0].max_mm for sweep in sweeps), default=0.0),
-            skew_mm=max((sweep.skew_mm for sweep in sweeps), default=0.0),
-        )
+def whole_grid(
+    plan: Plan, face: Face, spec: FaceSpec, progress: Progress, *, is_paired: bool = False, reason: str = ""
+) -> GridCandidate:
+    """Return what a plan of one face alone with a grid would be.
+
+    Args:
+        plan: With its form read.
+        face: The face.
+        spec: Its table of the job, with the grid.
+        progress: Called several times a second.
+        is_paired: Whether halves are paired too.
+        reason: Why panels of this grid pair up.
+
+    Raises:
+        GeometryError: The face cannot be divided so.
+    """
+    from functools import partial
+
+    from cutblock.pairing.match import pair_sweeps
+    from cutblock.panels.divide import divide_faces
+    from cutblock.sweeps.fitting import fit_panels
+    from cutblock.sweeps.shared import fit_shared
+
+    spec = replace(spec, count=1)
+    job = replace(plan.job, faces=(spec,), locks=(), fillers=())
+    face = replace(face, name=spec.name)
+    panels, _ = divide_faces(job, (face,), part_of(progress, 0.0, 0.2))
+    try:
+        sweeps, _ = fit_panels(job, panels, plan.conditions, part_of(progress, 0.2, 0.8 if is_paired else 1.0))
+    except NotCuttable:
+        sweeps = ()
+    cut = {sweep.serving[0].panel for sweep in sweeps}
+    n_paired, billets = None, None
+    if is_paired:
+        both = partial(fit_shared, job, panels, plan.conditions)
+        sweeps, _, _ = pair_sweeps(job, panels, sweeps, plan.conditions, part_of(progress, 0.8, 1.0), fit_shared=both)
+        n_paired = len({panel for sweep in sweeps if len(sweep.serving) > 1 for panel in sweep.serves})
+        billets = round(sum(sweep.length_mm * sweep.width_mm * sweep.height_mm for sweep in sweeps) * 1e-6, 3)
+    assert spec.cell_mm is not None
+    return GridCandidate(
+        angle_deg=None if not spec.is_grid_set else round(math.degrees(spec.angle_rad or 0.0), 2),
+        phase_mm=spec.phase_mm or (0.0, 0.0),
+        cell_mm=spec.cell_mm,
+        n_panels=len(panels),
+        n_sweeps=len(sweeps),
+        n_uncut=len(panels) - len(cut),
+        worst_mm=max((serving.max_mm for sweep in sweeps for serving in sweep.serving), default=0.0),
+        skew_mm=max((sweep.skew_mm for sweep in sweeps), default=0.0),
+        n_paired=n_paired,
+        billet_litres=billets,
+        reason=reason,
+    )
 
 
 def _best_first(one: _Tried) -> tuple[_Score, tuple[float, float], float, float]:

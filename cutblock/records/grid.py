@@ -17,6 +17,9 @@ class GridCandidate(Record):
     n_uncut: int  # panels that no sweep within the tolerance makes
     worst_mm: float  # largest deviation of a finished face, of the panels that can be cut
     skew_mm: float  # largest of any sweep
+    n_paired: int | None = None  # panels that share a cut; None: not looked at
+    billet_litres: float | None = None  # of all billets, after pairing
+    reason: str = ""  # why panels of this grid pair up
 
     @property
     def n_strips(self) -> int:

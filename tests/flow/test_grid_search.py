@@ -14,7 +14,7 @@ from cutblock.base.progress import silent
 from cutblock.cli.grid import panels_text
 from cutblock.cli.main import main
 from cutblock.flow.chain import start_plan
-from cutblock.flow.grid_search import SMALLER_CELLS, _face_of, search_grid
+from cutblock.flow.grid_search import SMALLER_CELLS, face_of, search_grid
 from cutblock.flow.jobfile import read_job
 from cutblock.flow.steps import divide, fit, take_form
 from cutblock.records.grid import GridCandidate
@@ -200,7 +200,7 @@ def test_a_piece_of_a_mesh_is_found_under_the_table_it_was_named_after(tmp_path)
     specs = tuple(replace(spec, name=name) for name in ("R", "R2", "R2X"))
     plan = replace(plan, faces=faces, job=replace(plan.job, faces=specs))
 
-    assert _face_of(plan, "R22")[1].name == "R2"
-    assert _face_of(plan, "R2X")[1].name == "R2X"
+    assert face_of(plan, "R22")[1].name == "R2"
+    assert face_of(plan, "R2X")[1].name == "R2X"
     with pytest.raises(InputError, match=r"several faces.*Name one of R21, R22, R2X"):
-        _face_of(plan, "")
+        face_of(plan, "")
