@@ -80,10 +80,9 @@ class Ledger(Record):
         share = 100.0 / self.bought_mm3 if self.bought_mm3 else 0.0
         parts = [f"{name} {volume * share:.1f} %" for name, volume in named if volume > 0.0]
         made_of = f": {', '.join(parts)}" if parts else ""
-        return (
-            f"Waste is the {self.waste_percent:.1f} % of the foam bought that goes into no half with a duty{made_of};"
-            f" the {self.offcut_mm3 * share:.1f} % kept as offcuts is not in it."
-        )
+        kept = f"; the {self.offcut_mm3 * share:.1f} % kept as offcuts is not in it" if self.offcut_mm3 > 0.0 else ""
+        waste = f"the {self.waste_percent:.1f} % of the foam bought that goes into no half with a duty"
+        return f"Waste is {waste}{made_of}{kept}."
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
