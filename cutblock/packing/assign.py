@@ -10,7 +10,7 @@ import numpy as np
 
 from cutblock.base.errors import StockError
 from cutblock.base.progress import Progress, part_of, silent
-from cutblock.packing.finish import IsOffcut, Laid, best_of, lay, subtask, tries_for, ways_to_cut
+from cutblock.packing.finish import LEAST_TRIES, IsOffcut, Laid, best_of, lay, subtask, tries_for, ways_to_cut
 from cutblock.packing.kinds import Kinds
 from cutblock.packing.lattice import Task
 from cutblock.packing.packer import Packing, pack_task
@@ -136,7 +136,8 @@ class _Desk:
         """Return the best way to cut the billets of a block out of it, on whichever face it stands."""
         pool = self.task.pool_of[laid.kind]
         kinds = [laid.kind, *(k for k in np.flatnonzero(self.task.pool_of == pool).tolist() if k != laid.kind)]
-        found = [laid, *ways_to_cut(self.task, laid.billets, kinds, self.n_tries, self.is_offcut)]
+        n_tries = self.n_tries if self.job.most_setups is None else max(LEAST_TRIES, self.n_tries)
+        found = [laid, *ways_to_cut(self.task, laid.billets, kinds, n_tries, self.is_offcut)]
         return best_of(found, self.job.most_setups)
 
     def _within_limit(self, laid: Laid) -> list[Laid]:
@@ -161,7 +162,9 @@ class _Desk:
         best: Laid | None = None
         fewest = 0
         for billet in billets:
-            found = list(ways_to_cut(self.task, [*chosen, billet], kinds, self.n_tries, self.is_offcut))
+            found = list(
+                ways_to_cut(self.task, [*chosen, billet], kinds, max(LEAST_TRIES, self.n_tries), self.is_offcut)
+            )
             one = best_of(found, most_setups) if found else None
             if one is not None and one.n_setups <= most_setups:
                 best, chosen = one, [*chosen, billet]
@@ -201,7 +204,9 @@ class _Desk:
             ]
             is_bought = not self.kinds.kinds[laid.kind].spec.is_offcut
             found = (
-                list(ways_to_cut(self.task, laid.billets, offcuts, self.n_tries, self.is_offcut)) if is_bought else []
+                list(ways_to_cut(self.task, laid.billets, offcuts, max(LEAST_TRIES, self.n_tries), self.is_offcut))
+                if is_bought
+                else []
             )
             most = self.job.most_setups
             allowed = [one for one in found if most is None or one.n_setups <= most]

@@ -21,7 +21,8 @@ from cutblock.packing.tree import Part, all_parts
 from cutblock.packing.trims import with_trims
 
 _PLACINGS = 8_000  # billets placed by all tries of a job together; about half a second
-_LEAST_TRIES = 4
+_MOST_BILLETS = 2_000
+LEAST_TRIES = 4
 
 Rank = tuple[int, int, int, int]  # scrap, minus the largest offcut, area cut, set-ups
 IsOffcut = Callable[[Part, int], bool]  # a part without a billet, and the skin of its block
@@ -53,8 +54,10 @@ class Laid:
 
 
 def tries_for(n_billets: int) -> int:
-    """Return how many ways each block of a job may be laid out."""
-    return max(_LEAST_TRIES, min(N_RULES * N_MODES * 6, _PLACINGS // max(1, n_billets)))
+    """Return how many more ways to lay out each block of a job are tried; none where there are very many billets."""
+    if n_billets > _MOST_BILLETS:
+        return 0
+    return max(LEAST_TRIES, min(N_RULES * N_MODES * 6, _PLACINGS // max(1, n_billets)))
 
 
 def subtask(task: Task, billets: Sequence[int], kinds: Sequence[int] | None = None) -> Task:

@@ -46,6 +46,7 @@ CUT_COLUMNS = (
     Column("At", tip="Where the wire's slab begins, in the frame of the raw block"),
     Column("Speed, mm/min", is_number=True),
     Column("Sweep, min", is_number=True, tip="Time of a sweep, run-in and run-out included"),
+    Column("Support", tip="What comes free there: support it before the wire is through"),
     Column("Part, mm", tip="Length × width × height of the part that is cut"),
     Column("Part at, mm", tip="Its lower corner in the raw block: along, across, up"),
 )
@@ -66,6 +67,7 @@ LEDGER_COLUMNS = (
 )
 FINDING_COLUMNS = (Column("Severity"), Column("Where"), Column("What"))
 
+_SIDES = {"start": "at the start", "end": "at the end", "top": "on top", "bottom": "below"}
 _SEVERITIES = {
     Severity.ERROR: ("Error", VERMILLION, 0),
     Severity.WARNING: ("Warning", YELLOW, 1),
@@ -117,6 +119,9 @@ def cut_rows(plan: Plan, block: Block) -> Iterator[Row]:
     """
     by_sweep = {timing.sweep: timing for timing in plan.timings}
     flat_mm_s = plan.conditions.planned_mm_s
+    if block.bought_mm is not None:
+        face = size_text((block.length_mm, block.width_mm))
+        yield Row("stand", (Cell(f"First stand the block on its {face} mm face"),), is_heading=True)
     for setup, cuts in groupby(block.cuts, key=lambda cut: cut.setup):
         for number, cut in enumerate(cuts):
             if number == 0:
@@ -261,6 +266,7 @@ def _cut_row(cut: Cut, timing: SweepTiming | None, flat_mm_s: float) -> Row:
             Cell(place),
             _number(mm_per_minute(speed_mm_s), 0),
             time,
+            Cell(", ".join(_SIDES[freed.side] for freed in cut.frees)),
             Cell(size_text(cut.part_size_mm)),
             Cell(size_text(cut.part_at_mm).replace(" × ", ", ")),
         ),

@@ -6,6 +6,7 @@ from hypothesis import strategies as st
 from kit.sample import sample_panel, sample_plan, sample_sweep
 from kit.shown import grid_plan
 
+from cutblock.records.block import Freed
 from cutblock.records.plan import Finding
 from cutblock.records.words import Severity
 from cutblock.window import rows
@@ -73,9 +74,22 @@ def test_the_cut_list_gives_order_place_and_speed_under_a_heading_for_each_set_u
 
     assert found[0] == ["Set-up 1: as laid, part 2500 × 1250 × 700 mm"]
     assert found[5] == ["Set-up 2: turned 90°, part 2470 × 1250 × 670 mm"]
-    assert found[6] == ["5", "trim", "y = 13.8 mm", "159", "", "2470 × 1250 × 670", "15, 0, 15"]
+    assert found[6] == ["5", "trim", "y = 13.8 mm", "159", "", "", "2470 × 1250 × 670", "15, 0, 15"]
     assert ["sweep", "SM-S1-A01", "159", "7.8"] in [row[1:5] for row in found]
     assert len([row for row in found if len(row) == 1]) == len({cut.setup for cut in plan.blocks[0].cuts})
+
+
+def test_the_cut_list_says_what_to_support_and_on_which_face_the_block_stands():
+    plan = sample_plan()
+    freed = Freed(side="end", at_mm=(1216.2, 15.0, 15.0), size_mm=(1268.8, 1220.0, 670.0))
+    cuts = tuple(replace(cut, frees=(freed,)) if cut.order == 7 else cut for cut in plan.blocks[0].cuts)
+    block = replace(plan.blocks[0], cuts=cuts, bought_mm=(1250.0, 2500.0, 700.0))
+
+    found = [texts(row) for row in rows.cut_rows(plan, block)]
+
+    assert found[0] == ["First stand the block on its 2500 × 1250 mm face"]
+    support = column(rows.CUT_COLUMNS, "Support")
+    assert {row[0]: row[support] for row in found if len(row) > 1 and row[support]} == {"7": "at the end"}
 
 
 def test_a_block_says_how_much_of_it_is_used_and_what_is_left():
