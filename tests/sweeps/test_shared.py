@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
-from kit.conoids import LENGTH, WIDTH, conoid, hypar
+from kit.conoids import LENGTH, WIDTH, conoid, hypar, make
 from kit.sample import sample_conditions, sample_job
 
 from cutblock.base.errors import Cancelled
@@ -15,6 +15,7 @@ from cutblock.pairing.match import pair_sweeps
 from cutblock.pairing.shapes import TURNS
 from cutblock.records.couple import Couple, shared_tolerance_mm
 from cutblock.records.words import Favour, Half, Severity
+from cutblock.sweeps.fitting import fit_panels
 from cutblock.sweeps.shared import fit_shared, shared_findings
 from cutblock.sweeps.validity import check_sweep
 
@@ -239,3 +240,21 @@ def test_fitting_can_be_stopped():
 
 def test_no_couples_are_no_sweeps():
     assert fit_shared(sample_job(), (), NO_KERF, []) == ()
+
+
+def test_the_wire_of_a_shared_cut_may_run_the_other_way_than_that_of_its_own_sweep():
+    """A waves along x, its partner more along y: a straight wire meets the mean of both better along x than along y."""
+    k, m = 2.0 * np.pi / LENGTH, 2.0 * np.pi / WIDTH
+    a, _ = make("A", lambda x, y: 0.3 * np.sin(k * x), lambda x, y: 0.3 * k * np.cos(k * x), lambda x, y: 0 * x)
+    b, _ = make("B", lambda x, y: 2.8 * np.sin(m * y), lambda x, y: 0 * x, lambda x, y: 2.8 * m * np.cos(m * y))
+    job = sample_job()
+    sweeps, _ = fit_panels(job, (a, b), NO_KERF)
+    assert [sweep.wire_along for sweep in sweeps] == ["y", "x"]
+
+    (shared,), _, _ = pair([(a, sweeps[0]), (b, sweeps[1])])
+
+    assert shared.serves == ("A", "B")
+    assert shared.wire_along == "x"
+    for serving, panel in zip(shared.serving, (a, b), strict=True):
+        assert np.abs(off(shared, serving, panel)).max() == pytest.approx(serving.max_mm, abs=1e-6)
+        assert serving.max_mm <= 2.0
