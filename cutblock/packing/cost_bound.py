@@ -12,6 +12,7 @@ from math import gcd
 import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
+from cutblock.base.progress import Progress, part_of, silent
 from cutblock.packing.bound import Bound, Product, Products, distinct_cells, fitting, sample_of, whole
 from cutblock.packing.lattice import Task
 
@@ -91,7 +92,7 @@ class _Answer:
     count_prices: Floats
 
 
-def mixed_bound(task: Task) -> Bound:
+def mixed_bound(task: Task, progress: Progress = silent) -> Bound:
     """Return the bound for a task with several kinds of block."""
     cells, copies = distinct_cells(task)
     fits = np.column_stack([_fits(cells, kind) for kind in task.kinds])
@@ -103,16 +104,23 @@ def mixed_bound(task: Task) -> Bound:
     useful = np.flatnonzero(programme.fits.any(axis=0)).tolist()
     for kind in useful:
         programme.add_best(kind, programme.copies, 0.0)
-    cost = None if task.prices is None else next_price(task.prices, _least(everything, programme, task.prices, _ROUNDS))
+    cost = None
+    if task.prices is not None:
+        least = _least(everything, programme, task.prices, _ROUNDS, part_of(progress, 0.0, 0.8))
+        cost = next_price(task.prices, least)
     # With prices the products that bound the money bound the number of blocks nearly as well.
-    blocks = _least(everything, programme, np.ones(len(task.kinds)), _ROUNDS if cost is None else _MORE_ROUNDS)
+    n_rounds = _ROUNDS if cost is None else _MORE_ROUNDS
+    blocks = _least(everything, programme, np.ones(len(task.kinds)), n_rounds, part_of(progress, 0.8, 1.0))
     return Bound(max(1, whole(blocks)), cost, PROOF)
 
 
-def _least(everything: "_Everything", programme: _Programme, weights: Floats, n_rounds: int) -> float:
+def _least(
+    everything: "_Everything", programme: _Programme, weights: Floats, n_rounds: int, progress: Progress
+) -> float:
     """Return the least weight of blocks; where the counts given cannot suffice, that of unlimited ones."""
     best = 0.0
-    for _ in range(n_rounds):
+    for i in range(n_rounds):
+        progress(i / n_rounds, "Finding what no packing can undercut")
         answer = programme.solve(weights)
         if answer is None:
             programme.upper = [None] * len(programme.upper)

@@ -6,14 +6,15 @@ What the prices prove, whatever patterns are known yet, is the bound of Farley (
 numbers come from diving: patterns the programme wants at least once are cut, and the rest is worked out again.
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from cutblock.base.arrays import Floats, Ints
-from cutblock.base.progress import Progress, silent
+from cutblock.base.progress import Progress
 from cutblock.packing.bound import Bound, distinct_cells, whole
-from cutblock.packing.compiled import Gear
+from cutblock.packing.compiled import Gear, plain
 from cutblock.packing.construct import Solution, construct, evaluate
 from cutblock.packing.cost_bound import next_price
 from cutblock.packing.effort import Effort
@@ -29,7 +30,8 @@ _MOST_ROUNDS = 400
 _GAP = 2e-4  # between the programme and the bound, of the programme
 _SMOOTHING = 0.5
 _REST_MOVES = 600
-GENERATION_MOVES = 2000  # what is usually enough for the rounds and the plans
+_USUAL_MOVES = 2000  # what is usually enough for the rounds and the plans
+_PLAIN_WORK = 2.5e6  # steps of the recursion, once for each type, without the compiler in less than a second
 _ROUNDING = 1e-6
 _SHARES = (0.04, 0.0)  # of the money, left to the search when diving ends
 
@@ -104,19 +106,19 @@ class Generation:
         limits = np.where(task.is_finite, task.counts, np.inf).astype(np.float64)
         self.master = _Master(task.weights, limits, task.pool_of)
 
-    def start(self) -> None:
+    def start(self, tell: Callable[[], None]) -> None:
         """Know at least one pattern for every type."""
         for number in range(len(self.types)):
             gains = np.zeros(len(self.types))
             gains[number] = 1.0
-            self._add(self.recursion.worths(gains))
+            self._add(self.recursion.worths(gains, tell))
 
     def _add(self, worths: Floats) -> int:
         kinds = np.flatnonzero(worths > 0.0)
         return sum(self.master.add(int(kind), self.recursion.pattern(int(kind)), len(self.types)) for kind in kinds)
 
-    def run_round(self) -> None:
-        """Solve the programme once and look for better patterns."""
+    def run_round(self, tell: Callable[[], None]) -> None:
+        """Solve the programme once and look for better patterns, telling now and then."""
         self.n_rounds += 1
         demand = self.copies.astype(np.float64)
         solved = self.master.solve(demand, self.master.limits)
@@ -126,14 +128,14 @@ class Generation:
         x, prices, count_prices = solved
         cost = float(self.master.weights[self.master.kinds] @ x)
         smooth = prices if self.center is None else _SMOOTHING * self.center + (1.0 - _SMOOTHING) * prices
-        if self._price(smooth, demand, count_prices) == 0:
-            added = self._price(prices, demand, count_prices)
+        if self._price(smooth, demand, count_prices, tell) == 0:
+            added = self._price(prices, demand, count_prices, tell)
             self.is_done = added == 0
         self.is_done |= cost - self.bound <= _GAP * cost or self.n_rounds >= _MOST_ROUNDS
 
-    def _price(self, prices: Floats, demand: Floats, count_prices: Floats) -> int:
+    def _price(self, prices: Floats, demand: Floats, count_prices: Floats, tell: Callable[[], None]) -> int:
         """Look for patterns with some prices; return how many are new."""
-        worths = self.recursion.worths(prices)
+        worths = self.recursion.worths(prices, tell)
         weights, limits, pool_of = self.task.weights, self.master.limits, self.task.pool_of
         is_finite = np.isfinite(limits)[pool_of]
         # Scaled until no block that is always there holds more than it costs; the others pay for their count.
@@ -147,15 +149,15 @@ class Generation:
             self.bound, self.center = proven, prices
         return self._add(np.where(worths > weights + count_prices[pool_of] + 1e-9, worths, 0.0))
 
-    def plan(self, share: float, seed: int, progress: Progress) -> Solution:
+    def plan(self, share: float, seed: int, tell: Callable[[], None]) -> Solution:
         """Return a plan in whole blocks: patterns as the programme wants them, then a search for what is left.
 
         Args:
             share: Of the programme's money, what is left to the search.
             seed: Of the search.
-            progress: Told now and then.
+            tell: Called now and then.
         """
-        chosen = self._dive(share, progress)
+        chosen = self._dive(share, tell)
         stock: list[list[int]] = [[] for _ in self.types]
         for cell, number in reversed(list(enumerate(self._type_of_cells().tolist()))):
             stock[number].append(cell)
@@ -165,21 +167,21 @@ class Generation:
         ]
         trees = [(kind, tree) for kind, tree in laid if tree is not None]
         rest = np.array(sorted(cell for cells in stock for cell in cells), dtype=np.int64)
-        return with_rest(self.task, self.gear, trees, rest, seed, progress)
+        return with_rest(self.task, self.gear, trees, rest, seed, tell)
 
     def _type_of_cells(self) -> Ints:
         rows = np.column_stack([self.task.cells, self.task.may_turn])
         table = {tuple(row): number for number, row in enumerate(self.types.tolist())}
         return np.array([table[tuple(row)] for row in rows.tolist()], dtype=np.int64)
 
-    def _dive(self, share: float, progress: Progress) -> list[int]:
+    def _dive(self, share: float, tell: Callable[[], None]) -> list[int]:
         """Return patterns to be cut, by number; some again and again."""
         weights = self.master.weights[self.master.kinds]
         demand, limits = self.copies.astype(np.float64), self.master.limits.copy()
         chosen: list[int] = []
         least = None
         while demand.any():
-            progress(0.0, "Choosing patterns")
+            tell()
             solved = self.master.solve(demand, limits)
             if solved is None:
                 break
@@ -197,6 +199,14 @@ class Generation:
                 demand = np.maximum(0.0, demand - n * self.master.columns[column])
                 limits[self.task.pool_of[self.master.kinds[column]]] -= n
         return chosen
+
+
+def usual_generation(task: Task) -> int:
+    """Return the moves column generation takes where it is a matter of a second even without the compiler; else 0."""
+    types = distinct_cells(task)[0]
+    recursion = Recursion(types, task.kinds, Gear(plain())) if repeats(task) else None
+    is_quick = recursion is not None and recursion.is_small and recursion.work * len(types) <= _PLAIN_WORK
+    return _USUAL_MOVES if is_quick else 0
 
 
 def repeats(task: Task) -> bool:
@@ -222,17 +232,22 @@ def generate(
     generation = Generation(task, gear)
     if not generation.is_of_use:
         return start, bound
-    generation.start()
-    while not generation.is_done and not effort.is_spent:
+    if generation.recursion.work * len(generation.types) > _PLAIN_WORK:
+        gear.ask_for()
+
+    def tell() -> None:
         progress(effort.fraction, f"Generating patterns, round {generation.n_rounds + 1}")
-        generation.run_round()
+
+    generation.start(tell)
+    while not generation.is_done and not effort.is_spent:
+        generation.run_round(tell)
         effort.spend(_MOVES_A_ROUND)
     bound = _tightened(task, bound, generation.bound)
     best = start
     for share in _SHARES if generation.is_done else ():
         if effort.left < _REST_MOVES or effort.is_spent:
             break
-        plan = generation.plan(share, seed, progress)
+        plan = generation.plan(share, seed, tell)
         effort.spend(_REST_MOVES)
         if plan.value < best.value:
             best = plan
@@ -255,7 +270,7 @@ def _tightened(task: Task, bound: Bound, proven: float) -> Bound:
 
 
 def with_rest(
-    task: Task, gear: Gear, trees: list[tuple[int, Part]], rest: Ints, seed: int, progress: Progress
+    task: Task, gear: Gear, trees: list[tuple[int, Part]], rest: Ints, seed: int, tell: Callable[[], None]
 ) -> Solution:
     """Return a plan of given trees, with their kinds, and of the billets in none of them packed by a short search."""
     layout = np.full((5, len(task.cells)), -1, dtype=np.int64)
@@ -271,9 +286,9 @@ def with_rest(
         may_turn=task.may_turn[rest],
         counts=np.minimum(np.maximum(counts, 0), len(rest)),
     )
-    other = construct(small, gear, (0.0, 0), silent)
+    other = construct(small, gear, (0.0, 0), lambda _fraction, _text: tell())
     if len(rest):
-        other = improve(small, gear, other, (0.0, 0), seed, Effort(_REST_MOVES, None), progress)
+        other = improve(small, gear, other, (0.0, 0), seed, Effort(_REST_MOVES, None), lambda _fraction, _text: tell())
     layout[:, rest] = other.layout
     layout[0, rest] = np.where(other.layout[0] >= 0, other.layout[0] + len(trees), -1)
     kinds = np.concatenate([np.array([kind for kind, _ in trees], dtype=np.int64), other.kinds])

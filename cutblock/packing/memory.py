@@ -5,6 +5,7 @@ once (Monaci and Toth, "A set-covering-based heuristic approach for bin-packing 
 18, 2006).
 """
 
+from collections.abc import Callable
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,7 +14,7 @@ from cutblock.base.arrays import Floats, Ints
 from cutblock.packing.compiled import Inner
 from cutblock.packing.construct import Solution, evaluate
 from cutblock.packing.lattice import Task
-from cutblock.packing.replay import replayed
+from cutblock.packing.replay import nobody, replayed
 from cutblock.packing.sequences import Kinds, Make, Reals, Store
 from cutblock.packing.tree import Part, without
 
@@ -122,16 +123,26 @@ def _fields(blocks: _Blocks) -> tuple[Ints, Ints, Ints, Ints]:
     return blocks.lengths, blocks.kinds, blocks.keys, blocks.entries
 
 
-def cover(task: Task, store: Store, kinds: Kinds, weights: Reals, plan: Solution, inner: Inner) -> Solution | None:
+def cover(
+    task: Task,
+    store: Store,
+    kinds: Kinds,
+    weights: Reals,
+    plan: Solution,
+    inner: Inner,
+    tell: Callable[[], None] = nobody,
+) -> Solution | None:
     """Return a plan of stored blocks that is cheaper than a given plan; billets may be left without a place.
 
-    The store then keeps the blocks most likely to be of use.
+    The store then keeps the blocks most likely to be of use. `tell` is called now and then.
     """
     aim = _next_below(task, plan)
     n = len(task.cells)
     prices = inner.reals(_first_prices(task, aim))
     slope, reduced, scale = inner.reals(np.zeros(n)), inner.reals(np.zeros(_MOST_BLOCKS)), inner.reals([1.0])
-    inner.reprice(_FIRST_STEPS, aim, weights, store, prices, reduced, slope, scale)
+    for _ in range(_FIRST_STEPS // _STEPS):
+        tell()
+        inner.reprice(_STEPS, aim, weights, store, prices, reduced, slope, scale)
     everything = _blocks_of(store)
     order = np.argsort(np.array(reduced[: len(everything.lengths)]), kind="stable")
     _refill(store, everything.part(order[:_MOST_TRIED]), inner)
@@ -139,6 +150,7 @@ def cover(task: Task, store: Store, kinds: Kinds, weights: Reals, plan: Solution
     best, least = None, np.inf
     is_covered, chosen = inner.integers(np.zeros(n)), inner.integers(np.zeros(len(plan.kinds) + 8))
     for _ in range(_CHOICES):
+        tell()
         inner.reprice(_STEPS, aim, weights, store, prices, reduced, slope, scale)
         counts = inner.integers(task.counts)
         n_chosen = inner.choose(aim, weights, kinds, store, prices, is_covered, chosen, counts)

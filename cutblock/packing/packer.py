@@ -15,7 +15,7 @@ from cutblock.packing.columns import stack_columns
 from cutblock.packing.compiled import Gear
 from cutblock.packing.construct import Solution, construct
 from cutblock.packing.effort import Effort
-from cutblock.packing.generation import GENERATION_MOVES, generate, repeats
+from cutblock.packing.generation import generate, repeats, usual_generation
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task
 from cutblock.packing.replay import block_trees
 from cutblock.packing.search import improve, is_at, told
@@ -153,9 +153,9 @@ def pack_task(task: Task, seed: int, moves: int | None, seconds: float | None, p
     _check_effort(moves, seconds)
     effort = Effort(moves, seconds)
     progress(0.0, "Finding what no packing can undercut")
-    bound = lower_bound(task)
+    bound = lower_bound(task, part_of(progress, 0.0, 0.1))
     solution, bound = _solve(task, bound, seed, effort, part_of(progress, 0.1, 1.0))
-    return _packing(task, solution, bound, effort.n_moves)
+    return _packing(task, solution, bound, effort.n_moves, progress)
 
 
 def _solve(task: Task, bound: Bound, seed: int, effort: Effort, progress: Progress) -> tuple[Solution, Bound]:
@@ -167,7 +167,7 @@ def _solve(task: Task, bound: Bound, seed: int, effort: Effort, progress: Progre
         if stacked is not None and stacked.value < start.value:
             start = stacked
     if effort.moves is None and effort.seconds is None:
-        effort.moves = usual_moves(start) + (GENERATION_MOVES if repeats(task) else 0)
+        effort.moves = usual_moves(start) + usual_generation(task)
     progress(0.3, told(task, start, target))
     if effort.left * _billets_a_move(start) > _LONG_PLACINGS:
         gear.ask_for()
@@ -250,8 +250,8 @@ def _stock_row(row: Iterable[float | None]) -> tuple[float, float, float, int | 
     return length, width, height, None if count is None else int(count), price
 
 
-def _packing(task: Task, solution: Solution, bound: Bound, n_moves: int) -> Packing:
-    trees = block_trees(task, solution)
+def _packing(task: Task, solution: Solution, bound: Bound, n_moves: int, progress: Progress) -> Packing:
+    trees = block_trees(task, solution, lambda: progress(1.0, "Laying the cuts out"))
     placements = [
         Placement(part.billet, block, row, *_mm(part.at), part.is_turned)
         for block, (row, root) in enumerate(zip(solution.kinds.tolist(), trees, strict=True))

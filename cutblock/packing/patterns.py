@@ -1,6 +1,8 @@
 """Patterns: guillotine layouts of one block that hold the most of what is asked for."""
 
+from collections.abc import Callable
 from dataclasses import dataclass, field
+from itertools import pairwise
 
 import numpy as np
 
@@ -8,10 +10,12 @@ from cutblock.base.arrays import Floats, Ints
 from cutblock.packing.compiled import Gear, Inner
 from cutblock.packing.lattice import Task
 from cutblock.packing.recursion import FIRST_CUT, Raster
+from cutblock.packing.replay import nobody
 from cutblock.packing.tree import Part, cut_off, cut_out
 
 _MOST_WORK = 4e7  # steps of one recursion
 _MOST_PLACES = 3000  # on one axis
+_WORK_A_PART = {False: 2e5, True: 2e7}  # steps between two reports, plain and compiled
 
 
 @dataclass(frozen=True, slots=True)
@@ -53,6 +57,7 @@ class Recursion:
         types: (g, 4) distinct billets.
         kinds: (m, 3) inflated usable sizes of the kinds of block.
         places: Places for cuts on each axis.
+        work: Steps of one run.
         is_small: Whether it is quick enough to be run again and again.
     """
 
@@ -60,6 +65,7 @@ class Recursion:
     kinds: Ints
     gear: Gear
     places: list[Ints] = field(init=False)
+    work: float = field(init=False)
     is_small: bool = field(init=False)
 
     def __post_init__(self) -> None:
@@ -69,8 +75,8 @@ class Recursion:
             for axis, other in enumerate((1, 0, 2))
         ]
         lengths = [len(places) for places in self.places]
-        work = float(np.prod([float(n) for n in lengths])) * sum(lengths) / 4.0
-        self.is_small = work <= _MOST_WORK and 0 < max(lengths) <= _MOST_PLACES
+        self.work = float(np.prod([float(n) for n in lengths])) * sum(lengths) / 4.0
+        self.is_small = self.work <= _MOST_WORK and 0 < max(lengths) <= _MOST_PLACES
         if self.is_small:
             self._prepare(self.gear.inner())
 
@@ -108,13 +114,19 @@ class Recursion:
             return -1
         return (place[0] * n_y + place[1]) * n_z + place[2]
 
-    def worths(self, gains: Floats) -> Floats:
-        """Return what the best pattern of each kind of block is worth, (m,), when the types are worth `gains` (g,)."""
+    def worths(self, gains: Floats, tell: Callable[[], None] = nobody) -> Floats:
+        """Return what the best pattern of each kind of block is worth, (m,), when the types are worth `gains` (g,).
+
+        `tell` is called now and then; it may raise.
+        """
         if self.gear.inner() is not self.inner:
             self._prepare(self.gear.inner())
-        self.inner.recur(
-            self.raster, self.starts, self.inner.reals(gains[self.owner]), self.codes, self.value, self.choice
-        )
+        weighed, n_boxes = self.inner.reals(gains[self.owner]), len(self.value)
+        n_parts = 1 + int(self.work / _WORK_A_PART[self.inner.is_compiled])
+        stops = [part * n_boxes // n_parts for part in range(n_parts + 1)]
+        for first, last in pairwise(stops):
+            tell()
+            self.inner.recur(first, last, self.raster, self.starts, weighed, self.codes, self.value, self.choice)
         return np.array([self.value[box] if box >= 0 else 0.0 for box in self.whole])
 
     def pattern(self, kind: int) -> Pattern:

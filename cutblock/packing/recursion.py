@@ -44,33 +44,39 @@ def best_cut(value: Reals, first: int, step: int, n_cuts: int, down: Integers, r
     return found
 
 
-def recur(raster: Raster, starts: Integers, gains: Reals, codes: Integers, value: Reals, choice: Integers) -> int:
-    """Work out the best layout of the boxes of all places.
+def recur(
+    first: int,
+    last: int,
+    raster: Raster,
+    starts: Integers,
+    gains: Reals,
+    codes: Integers,
+    value: Reals,
+    choice: Integers,
+) -> None:
+    """Work out the best layout of some of the boxes of all places; those before them are worked out already.
 
     Args:
+        first: Number of the first box; 0 begins anew.
+        last: Number to stop before.
         raster: The places for cuts.
         starts: For each type, and turned, the number of the least box it fits, (ix * ny + iy) * nz + iz; -1 for none.
         gains: What each of them is worth.
         codes: The choice that each is.
         value: Written: the worth of the best layout of each box.
         choice: Written: what is done with it first.
-
-    Returns:
-        The number of boxes.
     """
-    n_x, n_y, n_z = raster.n[0], raster.n[1], raster.n[2]
-    n_boxes = n_x * n_y * n_z
-    for box in range(n_boxes):
-        value[box] = 0.0
-        choice[box] = 0
-    for item in range(len(starts)):
-        box = starts[item]
-        if box >= 0 and gains[item] > value[box]:
-            value[box] = gains[item]
-            choice[box] = codes[item]
-    for box in range(n_boxes):
+    if first == 0:
+        for box in range(len(value)):
+            value[box] = 0.0
+            choice[box] = 0
+        for item in range(len(starts)):
+            box = starts[item]
+            if box >= 0 and gains[item] > value[box]:
+                value[box] = gains[item]
+                choice[box] = codes[item]
+    for box in range(first, last):
         decide(box, raster, value, choice)
-    return n_boxes
 
 
 def decide(box: int, raster: Raster, value: Reals, choice: Integers) -> None:

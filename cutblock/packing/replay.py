@@ -1,5 +1,7 @@
 """From the numbers of the inner loops to the trees of through cuts they mean."""
 
+from collections.abc import Callable
+
 import numpy as np
 
 from cutblock.base.arrays import Ints
@@ -8,14 +10,22 @@ from cutblock.packing.kernels import ORDERS
 from cutblock.packing.lattice import Task
 from cutblock.packing.tree import Part, cut_out
 
+_BLOCKS_A_REPORT = 100
 
-def block_trees(task: Task, solution: Solution) -> list[Part]:
-    """Return the tree of cuts of every block, from its usable box down."""
+
+def nobody() -> None:
+    """Tell nobody."""
+
+
+def block_trees(task: Task, solution: Solution, tell: Callable[[], None] = nobody) -> list[Part]:
+    """Return the tree of cuts of every block, from its usable box down; `tell` is called now and then."""
     members: list[list[int]] = [[] for _ in solution.kinds]
     for cell in np.argsort(solution.layout[1], kind="stable").tolist():
         members[solution.layout[0, cell]].append(cell)
-    trees = []
+    trees: list[Part] = []
     for kind, cells in zip(solution.kinds.tolist(), members, strict=True):
+        if len(trees) % _BLOCKS_A_REPORT == 0:
+            tell()
         if solution.layout[2, cells[0]] < 0:
             trees.append(solution.trees[solution.layout[1, cells[0]]])
         else:

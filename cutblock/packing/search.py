@@ -6,6 +6,8 @@ goal-driven ruin and recreate of Gardeyn and Wauters, European Journal of Operat
 move by late acceptance. Random numbers come from the seed alone, so the same number of moves gives the same plan.
 """
 
+from collections.abc import Callable
+from functools import partial
 from typing import NamedTuple
 
 import numpy as np
@@ -16,6 +18,7 @@ from cutblock.packing.construct import Solution, evaluate, sort_keys
 from cutblock.packing.effort import Effort
 from cutblock.packing.lattice import Task
 from cutblock.packing.memory import cover, demand_fill, new_store, remember_plan
+from cutblock.packing.replay import nobody
 from cutblock.packing.sequences import (
     Goods,
     Integers,
@@ -171,12 +174,12 @@ class Search:
         """Remember the blocks of a plan, and as well filled ones from now on."""
         demand_fill(self.task, self.fixed.store, plan)
 
-    def covered(self, plan: Solution) -> Solution | None:
+    def covered(self, plan: Solution, tell: Callable[[], None] = nobody) -> Solution | None:
         """Return a cheaper plan of blocks filled so far, perhaps with billets left over."""
         goods, store = self.fixed.goods, self.fixed.store
         remember_plan(self.task, store, plan, self.inner)
         self.effort.spend(_COVER_MOVES)
-        return cover(self.task, store, goods.kinds, goods.weights, plan, self.inner)
+        return cover(self.task, store, goods.kinds, goods.weights, plan, self.inner, tell)
 
 
 def improve(
@@ -215,12 +218,13 @@ def improve(
         best = _better(best, search.solution_of(state, best.trees))
         if is_at(best, target) or effort.is_spent:
             break
-        gap = search.covered(best)
+        text = told(task, best, target)
+        gap = search.covered(best, partial(progress, effort.fraction, text))
         if gap is not None and not gap.n_missing:
             best = _better(best, gap)
             continue
         start = gap or _emptied(task, best, search.generator)
-        state = search.run(search.state_of(start), True, _MOVES_A_TURN, progress, told(task, best, target))
+        state = search.run(search.state_of(start), True, _MOVES_A_TURN, progress, text)
         if state.counts[1] == 0:
             best = _better(best, search.solution_of(state, start.trees))
     return best

@@ -6,7 +6,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from cutblock.base.errors import StockError
+from cutblock.base.errors import Cancelled, StockError
 from cutblock.base.progress import silent
 from cutblock.packing import pack
 from cutblock.packing.bound import distinct_cells, lower_bound
@@ -162,3 +162,24 @@ def test_patterns_leave_billets_a_kerf_apart():
     for i, j in itertools.combinations(range(len(sizes)), 2):
         if blocks[i] == blocks[j]:
             assert np.maximum(low[i] - low[j] - size[j], low[j] - low[i] - size[i]).max() >= 3.0 - 1e-9
+
+
+def test_column_generation_tells_how_far_it_is_and_can_be_stopped_anywhere():
+    sizes = repeated(4)
+    stock = [(1000, 800, 600, None, 50.0), (700, 600, 600, None, 28.0)]
+    told = []
+    pack(sizes, stock, 2.0, moves=2000, progress=lambda fraction, text: told.append((fraction, text)))
+    shares = [fraction for fraction, _ in told]
+    assert shares == sorted(shares)
+    assert any(text.startswith("Generating patterns") for _, text in told)
+
+    for last in range(1, len(told), max(1, len(told) // 12)):
+        left = [last]
+
+        def stop(fraction, text, left=left):
+            left[0] -= 1
+            if left[0] <= 0:
+                raise Cancelled
+
+        with pytest.raises(Cancelled):
+            pack(sizes, stock, 2.0, moves=2000, progress=stop)

@@ -164,7 +164,7 @@ def test_a_search_is_cancelled_wherever_it_is():
         def stop(fraction, text, left=left):
             left[0] -= 1
             if left[0] <= 0:
-                raise Cancelled("stopped", "")
+                raise Cancelled
 
         with pytest.raises(Cancelled):
             pack(boxes, [(side, side, side, None, None)], 0.0, may_turn=False, seconds=5.0, progress=stop)
