@@ -11,8 +11,10 @@ from cutblock.base.errors import NotCuttable
 from cutblock.base.progress import Progress, part_of
 from cutblock.records.piece import Piece
 from cutblock.records.plan import Finding, Plan
-from cutblock.records.sweep import Sweep
+from cutblock.records.sweep import Sweep, SweepTiming
 from cutblock.records.words import Severity
+
+Timed = tuple[tuple[Sweep, ...], tuple[SweepTiming, ...], tuple[Finding, ...]]
 
 
 def take_form(plan: Plan, progress: Progress) -> Plan:
@@ -70,14 +72,22 @@ def pair(plan: Plan, progress: Progress) -> Plan:
 
 def set_speeds(plan: Plan, progress: Progress) -> Plan:
     """Settle the speed along every sweep and the kerf at both ends that follows, and fit the sweeps for that kerf."""
+    from cutblock.schedule.entry import entry_findings, wire_entry
     from cutblock.schedule.times import time_sweeps
     from cutblock.sweeps.kerf_pass import refit_for_kerf
 
-    timed, timings, findings = time_sweeps(plan.sweeps, plan.conditions, plan.machine, part_of(progress, 0.0, 0.4))
+    warming_s = wire_entry(plan.conditions, plan.wire).warming_s
+
+    def timed_sweeps(sweeps: tuple[Sweep, ...], low: float, high: float) -> Timed:
+        share = part_of(progress, low, high)
+        return time_sweeps(sweeps, plan.conditions, plan.machine, share, warming_s=warming_s)
+
+    timed, timings, findings = timed_sweeps(plan.sweeps, 0.0, 0.4)
     sweeps, notes = refit_for_kerf(plan.job, plan.panels, timed, plan.conditions, part_of(progress, 0.4, 0.6))
     if any(old is not new for old, new in zip(timed, sweeps, strict=True)):
-        sweeps, timings, findings = time_sweeps(sweeps, plan.conditions, plan.machine, part_of(progress, 0.6, 1.0))
-    return _with(plan, findings + notes, sweeps=sweeps, timings=timings)
+        sweeps, timings, findings = timed_sweeps(sweeps, 0.6, 1.0)
+    entering = entry_findings(plan.job, plan.wire, sweeps, timings, plan.conditions)
+    return _with(plan, findings + entering + notes, sweeps=sweeps, timings=timings)
 
 
 def compare(plan: Plan, progress: Progress) -> Plan:

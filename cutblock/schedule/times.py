@@ -25,7 +25,12 @@ _LEAST_SHARE = 0.05  # of the axes' way that a step counts for at least where mi
 
 
 def time_sweeps(
-    sweeps: Sequence[Sweep], conditions: Conditions, machine: Machine, progress: Progress = silent
+    sweeps: Sequence[Sweep],
+    conditions: Conditions,
+    machine: Machine,
+    progress: Progress = silent,
+    *,
+    warming_s: float = 0.0,
 ) -> tuple[tuple[Sweep, ...], tuple[SweepTiming, ...], tuple[Finding, ...]]:
     """Settle the speed along every sweep and the kerf at both billet faces that follows.
 
@@ -39,6 +44,7 @@ def time_sweeps(
         conditions: The kerf rate and the speed window.
         machine: Its towers, speed and acceleration.
         progress: Told now and then.
+        warming_s: From heater on to the wire's heat in the cut; the run-in before the foam is slowed towards it.
 
     Returns:
         The sweeps with `kerf_mm` at the near and the far face, the mean over the foam; their timings; and findings:
@@ -52,7 +58,7 @@ def time_sweeps(
         progress(first / len(sweeps), "Setting speeds")
         batch = sweeps[first : first + _BATCH]
         steps = sweep_steps(batch, machine)
-        seconds = step_times(steps, conditions, machine)
+        seconds = step_times(steps, conditions, machine, warming_s)
         near_kerfs = _mean_kerfs(steps, seconds, steps.near_moves, steps.near_shares, conditions)
         far_kerfs = _mean_kerfs(steps, seconds, steps.far_moves, steps.far_shares, conditions)
         all_ratios = _end_ratios(steps)
@@ -78,21 +84,35 @@ def time_sweeps(
     return tuple(timed), tuple(timings), tuple(findings)
 
 
-def step_times(steps: Steps, conditions: Conditions, machine: Machine) -> Floats:
+def step_times(steps: Steps, conditions: Conditions, machine: Machine, warming_s: float = 0.0) -> Floats:
     """Return the seconds each step takes, (m,): the shortest that keep every limit.
 
     Every sweep starts and ends at rest in air. Until the last of the wire has left the foam, mid-wire keeps to the
-    planned speed and the faster end to the contact limit, also before the foam, where the wire comes up to heat; behind
-    it the towers keep to the speed of moves in air.
+    planned speed and the faster end to the contact limit, also before the foam, where the wire comes up to heat: where
+    that takes longer, the run-in does too, down to the over-melt limit. Behind the foam the towers keep to the speed of
+    moves in air.
     """
     lengths = np.maximum(steps.middle, _LEAST_SHARE * np.abs(steps.axes).max(axis=1))
     axes = np.abs(steps.axes).max(axis=1) / machine.speed_mm_s
     cutting = np.maximum(steps.middle / conditions.planned_mm_s, steps.moves.largest / conditions.high_mm_s)
     air_mm = np.linalg.norm(steps.axes.reshape(len(axes), -1, 2), axis=2).max(axis=1)
+    cutting = cutting * _run_in_stretches(steps, cutting, conditions, warming_s)
     leaving = air_mm / min(machine.air_speed_mm_s, machine.speed_mm_s)
     least = np.maximum(np.where(_is_behind_foam(steps), leaving, cutting), axes)
     courses = Courses(steps.firsts, steps.sweeps, lengths, steps.axes)
     return _driven_times(courses, lengths / least, machine.acceleration_mm_s2)
+
+
+def _run_in_stretches(steps: Steps, seconds: Floats, conditions: Conditions, warming_s: float) -> Floats:
+    """Return how many times as long each step takes for the wire to come up to heat before the foam, (m,) from 1."""
+    numbers = np.arange(len(seconds))
+    first = np.minimum.reduceat(np.where(steps.is_in_foam, numbers, len(seconds)), steps.firsts[:-1])
+    is_before = numbers < first[steps.sweeps]
+    run_ins = np.add.reduceat(np.where(is_before, seconds, 0.0), steps.firsts[:-1])
+    wanted = np.divide(warming_s, run_ins, out=np.ones_like(run_ins), where=run_ins > 0.0)
+    stretches = np.clip(wanted, 1.0, max(conditions.planned_mm_s / conditions.low_mm_s, 1.0))
+    result: Floats = np.where(is_before, stretches[steps.sweeps], 1.0)
+    return result
 
 
 def _is_behind_foam(steps: Steps) -> Bools:
