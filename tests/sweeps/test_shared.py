@@ -258,3 +258,28 @@ def test_the_wire_of_a_shared_cut_may_run_the_other_way_than_that_of_its_own_swe
     for serving, panel in zip(shared.serving, (a, b), strict=True):
         assert np.abs(off(shared, serving, panel)).max() == pytest.approx(serving.max_mm, abs=1e-6)
         assert serving.max_mm <= 2.0
+
+
+def test_how_high_the_panels_lie_in_the_form_changes_nothing():
+    a, b, higher = (
+        conoid("A", 40.0),
+        conoid("B", 43.0, is_turned=True),
+        conoid("B", 43.0, is_turned=True, shift_mm=90.0),
+    )
+
+    level, lifted = fit(a, b, tolerance_mm=5.0), fit(a, higher, tolerance_mm=5.0)
+
+    assert lifted.serving[0].max_mm == pytest.approx(level.serving[0].max_mm, abs=0.005)
+    np.testing.assert_allclose(lifted.near, level.near, atol=0.005)
+
+
+@pytest.mark.parametrize("favour", [Favour.LOWER, Favour.UPPER])
+def test_a_wide_kerf_is_taken_off_along_the_normals_of_steep_faces(favour):
+    """Half of 6 mm along the normal of a face as steep as 1 : 1.2 is 3.9 mm upright, not 3."""
+    conditions = sample_conditions(kerf_mm=6.0, least_kerf_mm=6.0)
+    a, b = conoid("A", 140.0), conoid("B", 140.0, is_turned=True)
+    assert a[0].normals[:, 2].min() < 0.78
+
+    shared = fit(a, b, conditions=conditions, favour=favour, tolerance_mm=8.0)
+
+    assert shared.serving[0].fit_max_mm < 0.25
