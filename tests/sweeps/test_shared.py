@@ -283,3 +283,22 @@ def test_a_wide_kerf_is_taken_off_along_the_normals_of_steep_faces(favour):
     shared = fit(a, b, conditions=conditions, favour=favour, tolerance_mm=8.0)
 
     assert shared.serving[0].fit_max_mm < 0.25
+
+
+def test_the_lower_half_strays_alike_to_both_sides():
+    """A flat panel and one with a hump, which no wire follows: the sheet between them is set to the middle."""
+    k, m = np.pi / LENGTH, np.pi / WIDTH
+    a, _ = make("A", lambda x, y: 0 * x, lambda x, y: 0 * x, lambda x, y: 0 * x)
+    hump, made = make(
+        "B",
+        lambda x, y: -6.0 * np.sin(k * x) * np.sin(m * y),
+        lambda x, y: -6.0 * k * np.cos(k * x) * np.sin(m * y),
+        lambda x, y: -6.0 * m * np.sin(k * x) * np.cos(m * y),
+    )
+    flat = make("A", lambda x, y: 0 * x, lambda x, y: 0 * x, lambda x, y: 0 * x)[1]
+
+    shared = fit((a, flat), (hump, made), tolerance_mm=5.0)
+
+    deviations = off(shared, shared.serving[0], a)
+    assert deviations.max() > 0.5
+    assert deviations.max() == pytest.approx(-deviations.min(), abs=0.005)
