@@ -147,6 +147,31 @@ def test_a_job_with_every_wish_gives_a_folder_that_proves_itself_and_reads_back(
     assert all(cut["frees"] for block in file["blocks"] for cut in block["cuts"] if cut["kind"] == "sweep")
 
 
+def test_the_account_of_blocks_grades_and_job_sums_to_the_thousandth_of_a_litre(tmp_path):
+    better = (
+        '[[foam.block]]\nlength = 2200\nwidth = 1050\nheight = 600\ngrade = "EPS 150"\nsubstitute = true\nprice = 220\n'
+    )
+    text = JOB.replace("price = 150", "price = 150\ncount = 1").replace("[cutting]", f"{better}[cutting]")
+    _, file = made(tmp_path, text.replace("count = 12", "count = 40"))
+
+    accounts = file["ledger_parts"]
+    rows = [*accounts["blocks"], *accounts["grades"], accounts["job"]]
+    names = ("trim", "kerf", "mould", "counter_mould", "cradle", "filler", "surplus", "thickened", "offcut", "scrap")
+    for row in rows:
+        assert sum(row[name] for name in names) == row["bought"]
+        assert row["scrap_clean"] + row["scrap_coated"] == row["scrap"]
+        assert (row["scrap_coated"], row["coated_later"] > 0) == (0, True)
+    for name in ("bought", *names):
+        assert sum(row[name] for row in accounts["blocks"]) == accounts["job"][name]
+        assert sum(row[name] for row in accounts["grades"]) == accounts["job"][name]
+    assert [row["name"] for row in accounts["grades"]] == ["EPS 100", "EPS 150"]
+    weights = {row["name"]: row["bought_kg"] / row["bought"] * 1e6 for row in accounts["grades"]}
+    assert weights == pytest.approx({"EPS 100": 20.0, "EPS 150": 25.0}, rel=1e-6)
+    assert accounts["job"]["bought"] == pytest.approx(1000.0 * file["ledger"]["bought_litres"])
+    masses = {piece["block"]: piece["mass_kg"] / piece["litres"] * 1000.0 for piece in file["pieces"]}
+    assert sorted({round(mass, 3) for mass in masses.values()}) == [20.0, 25.0]
+
+
 def test_slack_shows_as_a_line_of_its_own_and_as_no_saving(tmp_path):
     _, plain = made(tmp_path / "plain", JOB)
     _, taken = made(tmp_path / "taken", with_keys(foam='slack = "backs"'))

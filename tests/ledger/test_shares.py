@@ -130,7 +130,8 @@ def test_the_account_of_ten_thousand_random_plans_is_exact():
 
 
 def test_grades_and_the_job_are_sums_of_their_blocks():
-    blocks, volumes, pieces, _ = random_plan(random.Random(3))
+    dice = random.Random(3)
+    blocks, volumes, pieces, _ = next(found for _ in range(99) if len((found := random_plan(dice))[0]) == 2)
     blocks = [replace(block, density_kg_m3=25.0 if block.grade == "EPS 150" else None) for block in blocks]
     accounts = accounts_of(blocks, volumes, pieces, 20.0, is_coated=True)
 

@@ -10,6 +10,9 @@ from kit.sample import sample_conditions, sample_job, sample_pieces, sample_swee
 from cutblock.base.errors import CheckFailed, InputError, StockError
 from cutblock.packing.blocks import pack_sweeps
 from cutblock.packing.rules import wrong_by_the_job
+from cutblock.packing.setups import Pass
+from cutblock.packing.supports import freed_by
+from cutblock.packing.tree import Part, cut_off
 from cutblock.packing.verify import verify_block
 from cutblock.records.job import Pin, StockSpec
 from cutblock.records.plan import Settings
@@ -183,3 +186,17 @@ def test_the_upper_half_lies_loose_after_every_form_sweep_and_trims_free_no_part
             assert [freed.side for freed in cut.frees] == ["top"]
         if cut.kind == "trim":
             assert cut.frees == ()
+
+
+def test_of_a_level_cut_only_what_lies_on_top_comes_free_and_of_a_cut_down_both_sides_may():
+    level, down = Part((0, 0, 0), (900, 500, 400)), Part((0, 0, 0), (900, 500, 400))
+    cut_off(level, 2, 150, 10)
+    cut_off(down, 0, 300, 10)
+
+    assert [(part.side, part.size_mm[2]) for part in freed_by([Pass(level, 1, False)], 0)] == [("top", 2.4)]
+    assert [(part.side, part.size_mm[0]) for part in freed_by([Pass(down, 1, False)], 0)] == [
+        ("start", 3.0),
+        ("end", 5.9),
+    ]
+    goes_on = [Pass(down, 1, False), Pass(down.low, 1, False)]
+    assert [part.side for part in freed_by(goes_on, 0)] == ["end"]

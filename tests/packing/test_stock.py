@@ -1,5 +1,6 @@
 """Blocks on other faces, offcuts of earlier jobs, better grades, several sizes and prices."""
 
+import random
 from dataclasses import replace
 
 import pytest
@@ -76,6 +77,15 @@ def test_blocks_that_may_stand_come_out_and_are_counted_once(sizes, count):
 
     proved(job, stock)
     assert sum(block.stock == 0 for block in stock.blocks) <= count
+
+
+def test_one_block_stands_one_way_only():
+    # One billet fits the block as it lies, the others as it stands; there is one block, and a dear one that holds all.
+    sizes = [(2300.0, 950.0, 560.0), *TALL]
+    rows = [spec(count=1, price=100.0, stands=True), spec(3000.0, 1250.0, 1050.0, line=30, price=900.0)]
+    job, stock = packed(sizes, rows, moves=200)
+
+    assert sorted(block.stock for block in proved(job, stock).blocks) == [0, 1]
 
 
 def test_an_offcut_is_used_before_a_block_is_bought_and_says_where_it_was_kept():
@@ -226,3 +236,28 @@ def test_a_block_may_not_stand_where_the_job_does_not_say_so():
 
     assert list(wrong_by_the_job(job, stock.blocks, ())) == []
     assert len(list(wrong_by_the_job(flat, stock.blocks, ()))) == 1
+
+
+@given(
+    sizes=st.lists(st.tuples(*[st.sampled_from([250.0, 400.0, 560.0])] * 3), min_size=2, max_size=10),
+    seed=st.integers(0, 99),
+)
+@settings(deadline=None)
+def test_the_order_the_billets_are_given_in_changes_no_total(sizes, seed):
+    rows = [
+        offcut(700.0, 600.0, 450.0),
+        spec(price=100.0, stands=True),
+        spec(1300.0, 900.0, 400.0, price=40.0, line=30),
+    ]
+    shuffled = sizes.copy()
+    random.Random(seed).shuffle(shuffled)
+
+    totals = []
+    for order in (sizes, shuffled):
+        job, stock = packed(order, rows, moves=40)
+        lengths = {sweep.id: (sweep.length_mm, sweep.width_mm, sweep.height_mm) for sweep in stock.sweeps}
+        volumes = [verify_block(block, lengths) for block in proved(job, stock).blocks]
+        totals.append(
+            (sorted(block.stock for block in stock.blocks), stock.n_blocks_bound, stock.cost_bound, sorted(volumes))
+        )
+    assert totals[0] == totals[1]
