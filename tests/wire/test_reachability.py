@@ -1,6 +1,6 @@
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import example, given
 from hypothesis import strategies as st
 from kit.paths import Path, accelerations, caps_of, fastest, stages_of
 
@@ -32,6 +32,7 @@ def closer_at_rest(n_nodes):
     n_nodes=st.integers(3, 80),
     n_axes=st.integers(1, 8),
 )
+@example(seed=15, speed=1.0, acceleration=1.0, n_nodes=20, n_axes=1)  # an axis turns back within a long stage
 def test_no_axis_passes_a_limit_anywhere(seed, speed, acceleration, n_nodes, n_axes):
     paths = [Path(seed + number, n_axes) for number in range(3)]
     nodes = np.sort(np.concatenate([[0.0, 1.0], np.random.default_rng(seed).uniform(0.0, 1.0, n_nodes - 2)]))
