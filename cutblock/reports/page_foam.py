@@ -31,7 +31,9 @@ def foam_body(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
     body = _table(_sum(block_ledgers[block.id] for block in plan.blocks))
     if len(grades) > 1:
         body += "".join(f"{paragraph(grade)}{_table(_sum(ledgers))}" for grade, ledgers in grades.items())
-    words = f"{paragraph(_used_words(ledger))}{paragraph(ledger.waste_words)}{paragraph(_scrap_words(plan))}"
+    words = (
+        f"{paragraph(_used_words(ledger))}{paragraph(ledger.waste_words)}{paragraph(_scrap_words(plan, block_ledgers))}"
+    )
     return f"{svg_text(ledger_drawing(ledger))}{words}{body}"
 
 
@@ -67,13 +69,15 @@ def _used_words(ledger: Ledger) -> str:
     )
 
 
-def _scrap_words(plan: Plan) -> str:
+def _scrap_words(plan: Plan, block_ledgers: Mapping[str, Ledger]) -> str:
     """Return what bin the scrap goes into: clean and coated foam are kept apart."""
-    ledger, density = plan.ledger, plan.conditions.density_kg_m3
-    scrap_mm3 = 0.0 if ledger is None else ledger.scrap_mm3
+    scrap_mm3 = {block.id: block_ledgers[block.id].scrap_mm3 for block in plan.blocks}
+    weight_kg = sum(
+        mass_kg(scrap_mm3[block.id], block.density_kg_m3 or plan.conditions.density_kg_m3) for block in plan.blocks
+    )
     words = (
-        f"The scrap, {litres(scrap_mm3):,.1f} litres or about {mass_kg(scrap_mm3, density):.1f} kg, is all clean foam,"
-        " which makers take back: leftovers never get a coat, and pieces are trimmed to their outline before they do."
+        f"The scrap, {litres(sum(scrap_mm3.values())):,.1f} litres or about {weight_kg:.1f} kg, is all clean foam,"
+        " which makers take back: leftovers are never coated, and pieces are trimmed to their outline before they are."
     )
     if plan.job.coat_mm <= 0.0:
         return words
