@@ -18,7 +18,7 @@ from cutblock.packing.kinds import Kind, Kinds, kinds_of_stock
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task, steps_up
 from cutblock.packing.nearest import refuse_what_only_a_flag_forbids
 from cutblock.packing.rules import wrong_by_the_job
-from cutblock.packing.setups import Pass, order_passes
+from cutblock.packing.setups import Pass
 from cutblock.packing.slack import take_up_slack
 from cutblock.packing.supports import freed_by
 from cutblock.packing.told import stock_findings
@@ -189,12 +189,13 @@ class _Makers:
     def block(self, name: str, laid: Laid) -> Block:
         """Return the record of one block."""
         kind, skin = self.kinds.kinds[laid.kind], int(self.task.skins[laid.kind])
+        passes = laid.passes
         if self.job.takes_up_slack:
             most = int(steps_up(min(self.job.least_offcut_mm)))
             take_up_slack(laid.tree, most, self._may_thicken)
             self._thicken(laid.tree)
-        root, _ = whole_cuts(self.task, laid.kind, laid.tree, self.is_offcut)
-        leaves = [part for part in all_parts(root) if part.axis < 0]
+            passes = whole_cuts(self.task, laid.kind, laid.tree, self.is_offcut)
+        leaves = [part for part in all_parts(passes[0].part) if part.axis < 0]
         row = kind.rows[self.used.get(kind.pool, 0)] if kind.count is not None else kind.rows[0]
         self.used[kind.pool] = self.used.get(kind.pool, 0) + 1
         spec = self.job.stock[row]
@@ -217,7 +218,7 @@ class _Makers:
                 for part in leaves
                 if part.billet >= 0
             ),
-            cuts=self._numbered(order_passes(root)),
+            cuts=self._numbered(passes),
             offcuts=tuple(
                 Offcut(size_mm=_triple(part.size), at_mm=_triple(part.at))
                 for part in leaves

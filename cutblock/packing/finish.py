@@ -16,7 +16,7 @@ from cutblock.packing.kernels import N_MODES, N_RULES
 from cutblock.packing.lattice import Task
 from cutblock.packing.replay import block_trees
 from cutblock.packing.sequences import cells_of, kinds_of, new_desk, new_layout
-from cutblock.packing.setups import order_passes
+from cutblock.packing.setups import Pass, order_passes
 from cutblock.packing.tree import Part, all_parts
 from cutblock.packing.trims import with_trims
 
@@ -35,11 +35,13 @@ class Laid:
     Attributes:
         kind: The kind of block in its task.
         tree: The tree of cuts of its usable box; billets by their number in the whole task.
+        passes: The passes of the wire that cut the raw block, in order.
         rank: What it is compared by; the smaller the better.
     """
 
     kind: int
     tree: Part
+    passes: list[Pass]
     rank: Rank
 
     @property
@@ -90,7 +92,7 @@ def subtask(task: Task, billets: Sequence[int], kinds: Sequence[int] | None = No
 def lay(task: Task, kind: int, tree: Part, is_offcut: IsOffcut) -> Laid:
     """Return a block with the tree of its cuts and its rank."""
     skin = int(task.skins[kind])
-    _, n_setups = whole_cuts(task, kind, tree, is_offcut)  # which cuts what is too long to be turned, so it comes first
+    passes = whole_cuts(task, kind, tree, is_offcut)  # which cuts what is too long to be turned, so it comes first
     scrap = largest = area = 0
     for part in all_parts(tree):
         x, y, z = part.size
@@ -100,29 +102,26 @@ def lay(task: Task, kind: int, tree: Part, is_offcut: IsOffcut) -> Laid:
             largest = max(largest, x * y * z)
         elif part.billet < 0:
             scrap += x * y * z
-    return Laid(kind, tree, (scrap, -largest, area, n_setups))
+    return Laid(kind, tree, passes, (scrap, -largest, area, _last_setup(passes)))
 
 
-def whole_cuts(task: Task, kind: int, tree: Part, is_offcut: IsOffcut) -> tuple[Part, int]:
-    """Return the tree of all cuts of a raw block, its skin trims included, and the set-ups it takes."""
+def whole_cuts(task: Task, kind: int, tree: Part, is_offcut: IsOffcut) -> list[Pass]:
+    """Return the passes that cut a raw block, its skin trims included, in an order of few set-ups."""
     x, y, z = task.raw[kind].tolist()
     skin, reach = int(task.skins[kind]), task.reach - task.kerf
 
     def is_wanted(part: Part) -> bool:
         return is_offcut(part, skin)
 
-    root = with_trims(tree, (x, y, z), skin, task.kerf, reach, is_wanted)
-    n_setups = _last_setup(root)
+    passes = order_passes(with_trims(tree, (x, y, z), skin, task.kerf, reach, is_wanted))
     if skin > 0 and x <= reach:
-        other = with_trims(tree, (x, y, z), skin, task.kerf, reach, is_wanted, is_side_first=True)
-        n_others = _last_setup(other)
-        if n_others < n_setups:
-            return other, n_others
-    return root, n_setups
+        others = order_passes(with_trims(tree, (x, y, z), skin, task.kerf, reach, is_wanted, is_side_first=True))
+        if _last_setup(others) < _last_setup(passes):
+            return others
+    return passes
 
 
-def _last_setup(root: Part) -> int:
-    passes = order_passes(root)
+def _last_setup(passes: Sequence[Pass]) -> int:
     return passes[-1].setup if passes else 0
 
 

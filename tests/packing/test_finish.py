@@ -50,8 +50,8 @@ def test_of_equal_scrap_the_largest_offcut_comes_first_then_the_least_cut_area()
 def test_a_limit_on_set_ups_comes_before_all():
     task, whole, split = two_ways()
     cheap, dear = lay(task, 0, whole, keeps(10_000)), lay(task, 0, split, keeps(10_000))
-    quick = type(dear)(0, dear.tree, (*dear.rank[:3], 1))
-    slow = type(cheap)(0, cheap.tree, (*cheap.rank[:3], 4))
+    quick = type(dear)(0, dear.tree, dear.passes, (*dear.rank[:3], 1))
+    slow = type(cheap)(0, cheap.tree, cheap.passes, (*cheap.rank[:3], 4))
 
     assert best_of([slow, quick], None) is slow
     assert best_of([slow, quick], 3) is quick
