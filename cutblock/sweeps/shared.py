@@ -132,8 +132,10 @@ class _Try:
         self._turn, self._shift = _way(couple)
         self._field = height_field(other.heights_mm, other.length_mm, other.width_mm)
         gaps = self._above(self._panel.samples_mm[:, :2]) - self._panel.samples_mm[:, 2]
-        # How high either half lies above its bottom is free, so the middle of the gaps does not count.
-        self._half_gap_mm = float(((gaps - _middle_of(gaps)) * self._panel.normals[:, 2]).max() / 2.0)
+        # How high either half lies above its bottom is free, so the faces are brought together first.
+        lift = -_middle_of(gaps)
+        self._shift = self._shift + np.array([0.0, 0.0, lift])
+        self._half_gap_mm = float(((gaps + lift) * self._panel.normals[:, 2]).max() / 2.0)
         self._points = other.samples_mm @ self._turn + self._shift
         self._normals = -other.normals @ self._turn
         self._heights = self._mean()

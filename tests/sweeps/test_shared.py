@@ -260,14 +260,13 @@ def test_the_wire_of_a_shared_cut_may_run_the_other_way_than_that_of_its_own_swe
         assert serving.max_mm <= 2.0
 
 
-def test_how_high_the_panels_lie_in_the_form_changes_nothing():
-    a, b, higher = (
-        conoid("A", 40.0),
-        conoid("B", 43.0, is_turned=True),
-        conoid("B", 43.0, is_turned=True, shift_mm=90.0),
-    )
+def test_how_high_the_panels_lie_in_their_billets_changes_nothing():
+    a, (panel, sweep) = conoid("A", 140.0), conoid("B", 143.0, is_turned=True)
+    up = np.array([0.0, 150.0])
+    lower = replace(sweep.serving[0], shift_mm=sweep.serving[0].shift_mm - [0.0, 0.0, 150.0])
+    higher = replace(sweep, near=sweep.near + up, far=sweep.far + up, serving=(lower,))
 
-    level, lifted = fit(a, b, tolerance_mm=5.0), fit(a, higher, tolerance_mm=5.0)
+    level, lifted = fit(a, (panel, sweep), tolerance_mm=5.0), fit(a, (panel, higher), tolerance_mm=5.0)
 
     assert lifted.serving[0].max_mm == pytest.approx(level.serving[0].max_mm, abs=0.005)
     np.testing.assert_allclose(lifted.near, level.near, atol=0.005)
