@@ -98,6 +98,28 @@ def test_without_the_keys_a_job_is_as_it_was(tmp_path):
     assert (job.takes_up_slack, job.most_setups, job.no_turn, job.pins) == (False, None, (), ())
 
 
+def test_blocks_of_a_grade_that_may_stand_stand_unless_their_row_says_otherwise(tmp_path, monkeypatch):
+    monkeypatch.setenv("XDG_CONFIG_HOME", str(tmp_path / "config"))
+    grade = """[[grade]]
+name = "Even foam"
+density_kg_m3 = 20.0
+density_low_kg_m3 = 18.0
+density_high_kg_m3 = 22.0
+strength_kpa = 100.0
+bending_kpa = 150.0
+stand = true
+"""
+    (tmp_path / "config" / "cutblock").mkdir(parents=True)
+    (tmp_path / "config" / "cutblock" / "grades.toml").write_text(grade)
+
+    own, told = (
+        read_job(write(tmp_path, with_keys(block=block).replace("EPS 100", "Even foam"))).stock[0].stands
+        for block in ("", "stand = false")
+    )
+
+    assert (own, told) == (True, False)
+
+
 PIN = '[[pin]]\nblock = "ST-B01"\nsweeps = ["ST-S1-A01"]\n'
 WRONG = [
     ({"cutting": "setups = 0"}, "setups"),
