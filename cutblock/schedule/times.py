@@ -143,6 +143,9 @@ def _driven_times(courses: Courses, speeds: Floats, acceleration: float) -> Floa
         seconds = fastest_times(courses, speeds, acceleration)
     worst = np.ones(len(courses.firsts) - 1)
     np.maximum.at(worst, courses.sweeps[joints], _excess(courses, seconds, joints, acceleration))
+    for ends in (courses.firsts[:-1], courses.firsts[1:] - 1):
+        from_rest = np.abs(courses.axes[ends]).max(axis=1) / (0.5 * seconds[ends] ** 2 * acceleration)
+        worst = np.maximum(worst, from_rest)
     result: Floats = seconds * np.sqrt(worst)[courses.sweeps]
     return result
 
