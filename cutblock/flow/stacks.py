@@ -15,7 +15,7 @@ from cutblock.base.arrays import Floats
 from cutblock.base.errors import CheckFailed, InputError, StockError
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.base.units import length_text
-from cutblock.pairing.stacks import Attempt, Nest, StackRule, group_stacks
+from cutblock.pairing.stacks import Attempt, Nest, Rails, StackRule, group_stacks
 from cutblock.records.block import Block
 from cutblock.records.duties import DutyLock
 from cutblock.records.job import Job
@@ -75,8 +75,8 @@ def offer_stacks(
     lost = Counter(piece.duty for piece in now.pieces if piece.half is Half.UPPER and piece.sweep in gone)
     stacks = []
     for number, nest in enumerate(nests):
-        progress(0.84 + 0.06 * number / len(nests), "Measuring shells")
-        stacks.append(_stack(own, nest, rule, f"{job.id}-S{number + 1:02d}", foam, seconds))
+        report = part_of(progress, 0.84 + 0.06 * number / len(nests), 0.84 + 0.06 * (number + 1) / len(nests))
+        stacks.append(_stack(own, nest, rule, f"{job.id}-S{number + 1:02d}", foam, seconds, report))
     offer = StackOffer(
         shell_mm=shell,
         is_even=is_even,
@@ -199,57 +199,44 @@ def _try(own: Sequence[Sweep], nearest: Attempt | None) -> StackTry | None:
     )
 
 
-def _stack(own: Plan, nest: Nest, rule: StackRule, name: str, foam: Floats, seconds: Floats) -> Stack:
+def _stack(
+    own: Plan, nest: Nest, rule: StackRule, name: str, foam: Floats, seconds: Floats, progress: Progress
+) -> Stack:
     """Return the record of one stack, its shells measured.
 
     Raises:
         CheckFailed: A shell is thinner than wanted, or the wire leaves the billet: an error of ours.
     """
-    from cutblock.geometry.apart import least_distance
     from cutblock.geometry.nest_volumes import nest_volumes
-    from cutblock.geometry.rails import sheet_range
 
-    length, width, height = nest.size_mm
     sweeps = [own.sweeps[number] for number in nest.members]
-    kerfs = [
-        sweep.kerf_mm[::-1] if turned else sweep.kerf_mm for sweep, turned in zip(sweeps, nest.is_turned, strict=True)
-    ]
-    rails, kerfs = list(nest.rails), list(kerfs)
-    times = {timing.sweep: timing.seconds for timing in own.timings}
-    cut_s = math.fsum(times[sweep.id] for sweep in sweeps)
+    turns = zip(sweeps, nest.is_turned, strict=True)
+    kerfs = [(sweep.kerf_mm[1], sweep.kerf_mm[0]) if is_turned else sweep.kerf_mm for sweep, is_turned in turns]
+    rails = list(nest.rails)
+    cut = list(sweeps)
     if rule.is_even:
         rails.insert(0, (rails[0][0] - [0.0, nest.base_mm], rails[0][1] - [0.0, nest.base_mm]))
         kerfs.insert(0, kerfs[0])
-        cut_s += times[sweeps[0].id]
-    spans = [sheet_range(*pair, width, length) for pair in rails]
-    if spans[0][0] < max(kerfs[0]) / 2.0 or spans[-1][1] + max(kerfs[-1]) / 2.0 > height:
-        raise CheckFailed("the wire would leave the billet", name)
-    leasts = [
-        least_distance(below, above, length, width) - (max(under) + max(over)) / 2.0
-        for below, above, under, over in zip(rails[:-1], rails[1:], kerfs[:-1], kerfs[1:], strict=True)
-    ]
-    if not rule.is_even:
-        leasts.insert(0, spans[0][0] - max(kerfs[0]) / 2.0)
-    if min(leasts) < rule.shell_mm - _THICKNESS_MM:
-        raise CheckFailed(f"a shell is {min(leasts):.3f} mm thick, not {rule.shell_mm:.3f} mm", name)
+        cut.append(sweeps[0])
+    leasts = _proved_leasts(nest, rails, kerfs, rule, name, progress)
     insides = [(sweep.length_mm, sweep.width_mm) for sweep in sweeps]
     volumes = nest_volumes(rails, kerfs, nest.size_mm, insides, has_back=not rule.is_even)
     rises = [nest.base_mm, *np.diff(nest.levels_mm).tolist()]
+    times = {timing.sweep: timing.seconds for timing in own.timings}
+    length, width, height = nest.size_mm
     return Stack(
         id=name,
         members=tuple(
             StackMember(
                 sweep=sweep.id,
                 panel=sweep.serving[0].panel,
-                is_turned=turned,
-                level_mm=level,
-                spacing_mm=rise,
-                least_mm=least,
-                volume_mm3=volume,
+                is_turned=nest.is_turned[place],
+                level_mm=nest.levels_mm[place],
+                spacing_mm=rises[place],
+                least_mm=leasts[place],
+                volume_mm3=volumes.shells_mm3[place],
             )
-            for sweep, turned, level, rise, least, volume in zip(
-                sweeps, nest.is_turned, nest.levels_mm, rises, leasts, volumes.shells_mm3, strict=True
-            )
+            for place, sweep in enumerate(sweeps)
         ),
         length_mm=length,
         width_mm=width,
@@ -259,8 +246,48 @@ def _stack(own: Plan, nest: Nest, rule: StackRule, name: str, foam: Floats, seco
         rest_mm3=volumes.rest_mm3,
         rounding_mm3=volumes.rounding_mm3,
         seconds_now=math.fsum(seconds[list(nest.members)]),
-        seconds=cut_s,
+        seconds=math.fsum(times[sweep.id] for sweep in cut),
     )
+
+
+def _proved_leasts(
+    nest: Nest,
+    rails: Sequence[Rails],
+    kerfs_mm: Sequence[tuple[float, float]],
+    rule: StackRule,
+    name: str,
+    progress: Progress,
+) -> list[float]:
+    """Return how thick every shell is where it is thinnest, from below, looked for point by point.
+
+    Args:
+        nest: The stack.
+        rails: Of every cut, from below.
+        kerfs_mm: Of every cut, at its ends.
+        rule: What was asked for.
+        name: Of the stack.
+        progress: Told shell by shell.
+
+    Raises:
+        CheckFailed: A shell is too thin, or the wire leaves the billet.
+    """
+    from cutblock.geometry.apart import least_distance
+    from cutblock.geometry.rails import sheet_range
+
+    length, width, height = nest.size_mm
+    halves = [max(kerf) / 2.0 for kerf in kerfs_mm]
+    low = sheet_range(*rails[0], width, length)[0] - halves[0]
+    high = sheet_range(*rails[-1], width, length)[1] + halves[-1]
+    if low < 0.0 or high > height:
+        raise CheckFailed(f"the wire would leave the billet: {low:.3f} to {high:.3f} of {height:.3f} mm", name)
+    leasts = [] if rule.is_even else [low]
+    for place in range(1, len(rails)):
+        progress(place / len(rails), "Measuring shells")
+        apart = least_distance(rails[place - 1], rails[place], length, width)
+        leasts.append(apart - halves[place - 1] - halves[place])
+    if min(leasts) < rule.shell_mm - _THICKNESS_MM:
+        raise CheckFailed(f"a shell is {min(leasts):.3f} mm thick, not {rule.shell_mm:.3f} mm", name)
+    return leasts
 
 
 def _packed(

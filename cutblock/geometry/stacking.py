@@ -6,9 +6,11 @@ faster than the slopes along y allow, which are bounded cell by cell; lines are 
 1972, Shubert 1972) until what may lie between them does not count.
 """
 
+from typing import NamedTuple
+
 import numpy as np
 
-from cutblock.base.arrays import Bools, Floats, Ints
+from cutblock.base.arrays import Floats, Ints
 from cutblock.base.errors import GeometryError
 from cutblock.base.tolerances import PLAN_MM
 
@@ -63,7 +65,7 @@ def widened_rails(
 def steepest_slope(near: Floats, far: Floats, length_mm: float, width_mm: float) -> float:
     """Return a bound of the sheet's slope (rise by run, any direction) over [0, length] x [0, width].
 
-    In a cell the slope along x runs monotonously from rail to rail, and for each of its values the slope along y
+    In a cell the slope along x runs monotonously across, and for each of its values the slope along y
     runs linearly from ruling to ruling, so their values at the corners bound both.
 
     Args:
@@ -72,24 +74,41 @@ def steepest_slope(near: Floats, far: Floats, length_mm: float, width_mm: float)
         length_mm: Of the footprint.
         width_mm: Of the footprint.
     """
-    along, across, is_over = _cell_slopes(near, far, length_mm, width_mm)
-    squares = (along**2).max(axis=0) + (across**2).max(axis=(0, 1))
-    return float(np.sqrt(squares[is_over].max()))
+    cells = _cells_over(near, far, length_mm, width_mm)
+    squares = (cells.along**2).max(axis=0) + (cells.across**2).max(axis=(0, 1))
+    return float(np.sqrt(squares.max()))
 
 
-def _cell_slopes(near: Floats, far: Floats, length_mm: float, width_mm: float) -> tuple[Floats, Floats, Bools]:
-    """Return the slopes along x at both rails (2, c), those along y at the corners (2, 2, c), which cells count (c,).
+class _Cells(NamedTuple):
+    """The cells from ruling to ruling that lie over the footprint, as far across as they do."""
 
-    The first axis of the slopes along y is the ruling, the second the rail whose slope along x goes into them.
-    """
-    steps = np.diff(np.stack([near, far]), axis=1)
-    along = steps[..., 1] / steps[..., 0]
+    along: Floats  # (2, c) slopes along x at both ends across
+    across: Floats  # (2, 2, c) slopes along y: on both rulings, for the slope along x at both ends
+    first_x: Floats  # (c,)
+    last_x: Floats
+
+
+def _cells_over(near: Floats, far: Floats, length_mm: float, width_mm: float) -> _Cells:
+    """Return the cells over [0, length] x [0, width]."""
     skews, rises = (far - near).T
-    ends = np.stack([np.arange(len(near) - 1), np.arange(1, len(near))])
-    across: Floats = (rises[ends][:, None] - along[None] * skews[ends][:, None]) / width_mm
-    first = np.minimum(near[:-1, 0], far[:-1, 0])
-    last = np.maximum(near[1:, 0], far[1:, 0])
-    return along, across, (last >= 0.0) & (first <= length_mm)
+    low, high = np.zeros(len(near) - 1), np.ones(len(near) - 1)
+    # A cell's first ruling must pass before the end of the footprint, its second one behind the start.
+    for over, rate in ((near[:-1, 0] - length_mm, skews[:-1]), (-near[1:, 0], -skews[1:])):
+        with np.errstate(divide="ignore", invalid="ignore"):
+            crossing = -over / rate
+        high = np.where(rate > 0.0, np.minimum(high, crossing), high)
+        low = np.where(rate < 0.0, np.maximum(low, crossing), low)
+        low = np.where((rate == 0.0) & (over > 0.0), np.inf, low)
+    is_over = low <= high
+    places = np.stack([low, high])[:, is_over]
+    begins, ends = (
+        near[rows][is_over] + places[..., None] * (far - near)[rows][is_over]
+        for rows in (slice(None, -1), slice(1, None))
+    )
+    along = (ends - begins)[..., 1] / (ends - begins)[..., 0]
+    both = np.stack([np.flatnonzero(is_over), np.flatnonzero(is_over) + 1])
+    across: Floats = (rises[both][:, None] - along[None] * skews[both][:, None]) / width_mm
+    return _Cells(along, across, begins[..., 0].min(axis=0), ends[..., 0].max(axis=0))
 
 
 def largest_rise(
@@ -156,9 +175,7 @@ def _slope_differences(
 
 
 def _slope_range(near: Floats, far: Floats, length_mm: float, width_mm: float, edges: Floats) -> tuple[Floats, Floats]:
-    _, across, _ = _cell_slopes(near, far, length_mm, width_mm)
-    least, most = across.min(axis=(0, 1)), across.max(axis=(0, 1))
-    first = np.minimum(near[:-1, 0], far[:-1, 0])
-    last = np.maximum(near[1:, 0], far[1:, 0])
-    is_in = (last >= edges[:-1, None]) & (first <= edges[1:, None])
+    cells = _cells_over(near, far, length_mm, width_mm)
+    least, most = cells.across.min(axis=(0, 1)), cells.across.max(axis=(0, 1))
+    is_in = (cells.last_x >= edges[:-1, None]) & (cells.first_x <= edges[1:, None])
     return np.where(is_in, least, np.inf).min(axis=1), np.where(is_in, most, -np.inf).max(axis=1)

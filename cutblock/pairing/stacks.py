@@ -5,7 +5,7 @@ Stacks are grown shell by shell by cheapest insertion (Rosenkrantz, Stearns and 
 only saved when both of them are in stacks.
 """
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from itertools import pairwise
 from typing import NamedTuple
 
@@ -107,18 +107,18 @@ def group_stacks(
     Returns:
         The stacks in the order of their first sweeps, and the attempt that came nearest where there is none.
     """
-    search = _Search(sweeps, foam_mm3, rule)
     free: list[int] = np.flatnonzero(is_free).tolist()
-    nests: list[Nest] = []
     n_free = max(1, len(free))
+    search = _Search(sweeps, foam_mm3, rule, lambda: progress(1.0 - len(free) / n_free, "Stacking shells"))
+    nests: list[Nest] = []
     while free:
-        progress(1.0 - len(free) / n_free, "Stacking shells")
+        search.report()
         nest = search.settled(search.grown(free))
         if nest is None:
             free.pop(0)
             continue
         nests.append(nest)
-        free = [number for number in free if number not in nest.members]
+        free[:] = [number for number in free if number not in nest.members]
     nests = search.whole_units(nests, units)
     nests.sort(key=lambda nest: min(nest.members))
     return tuple(nests), None if nests else search.nearest
@@ -127,8 +127,10 @@ def group_stacks(
 class _Search:
     """The sheets of the sweeps, compared as far as asked for."""
 
-    def __init__(self, sweeps: Sequence[Sweep], foam_mm3: Floats, rule: StackRule) -> None:
-        self.rule, self.foam = rule, foam_mm3
+    def __init__(
+        self, sweeps: Sequence[Sweep], foam_mm3: Floats, rule: StackRule, report: Callable[[], None] = lambda: None
+    ) -> None:
+        self.rule, self.foam, self.report = rule, foam_mm3, report
         self.nearest: Attempt | None = None
         self.sizes = np.array([(sweep.length_mm, sweep.width_mm) for sweep in sweeps]).reshape(-1, 2)
         self.along = np.array([sweep.wire_along for sweep in sweeps])
@@ -307,6 +309,7 @@ class _Search:
         keys = [(near.tobytes(), far.tobytes()) for near, far in rails]
         steps = np.zeros((len(chosen), len(chosen)))
         for below in range(len(chosen)):
+            self.report()
             for above in range(len(chosen)):
                 key = (keys[below], keys[above], size)
                 if keys[below] == keys[above]:
