@@ -100,18 +100,22 @@ class _Desk:
         """Return the blocks of a packing, counted off the stock."""
         laid = []
         for kind, tree in zip(packing.stock_rows, packing.trees, strict=True):
-            _rename(tree, billets)
             self.left[self.task.pool_of[kind]] -= 1
-            laid.append(lay(self.task, kind, tree, self.is_offcut))
+            laid.append(self._lay(tree, billets, kind))
         return laid
 
     def _pinned(self, pin: Pin, billets: list[int]) -> Laid:
-        """Return the block that holds just these billets."""
-        packing = self._packed(billets, None, None, silent)
-        if packing.n_blocks != 1:
-            raise self._too_many(pin, billets, packing)
-        (laid,) = self._laid(packing, billets)
-        finished = self._finished(laid)
+        """Return the block that holds just these billets: the cheapest that does."""
+        kinds = [kind for kind in self._by_price() if self.left[self.task.pool_of[kind]] > 0]
+        for price in dict.fromkeys(self.task.weights[kinds].tolist()):
+            found: list[Laid] = []
+            for kind in (kind for kind in kinds if self.task.weights[kind] == price):
+                found += self._in_one(billets, kind)
+            if found:
+                finished = best_of(found, self.job.most_setups)
+                break
+        else:
+            raise self._too_many(pin, billets, kinds)
         most = self.job.most_setups
         if most is not None and finished.n_setups > most:
             raise StockError(
@@ -119,15 +123,43 @@ class _Desk:
                 pin.place,
                 f"Set cutting.setups to {finished.n_setups}, or take sweeps out of the pin.",
             )
+        self.left[self.task.pool_of[finished.kind]] -= 1
         return finished
 
-    def _too_many(self, pin: Pin, billets: list[int], packing: Packing) -> StockError:
-        held = [[row.billet for row in packing.placements if row.block == block] for block in range(packing.n_blocks)]
-        most = max(held, key=lambda members: (len(members), -members[0]))
-        stay = [pin.sweeps[place] for place in most]
-        go = [pin.sweeps[place] for place in range(len(billets)) if place not in most]
+    def _in_one(self, billets: list[int], kind: int) -> list[Laid]:
+        """Return ways to cut all these billets from one block of a kind, searched for where no quick one is found."""
+        if not self.task.fits[billets, kind].all():
+            return []
+        n_tries = max(LEAST_TRIES, self.n_tries)
+        found = list(ways_to_cut(self.task, billets, [kind], n_tries, self.is_offcut))
+        if found:
+            return found
+        packing = self._alone(billets, kind)
+        return [self._lay(tree, billets, kind) for tree in packing.trees] if packing.n_blocks == 1 else []
+
+    def _alone(self, billets: list[int], kind: int) -> Packing:
+        """Return a packing of billets in blocks of one kind, however many."""
+        return pack_task(subtask(self.task, billets, [kind]), self.settings.seed, None, None, silent)
+
+    def _lay(self, tree: Part, billets: Sequence[int], kind: int) -> Laid:
+        _rename(tree, billets)
+        return lay(self.task, kind, tree, self.is_offcut)
+
+    def _too_many(self, pin: Pin, billets: list[int], kinds: Sequence[int]) -> StockError:
+        """Return the error that names as many of the billets as one block holds, and the others."""
+        stay: list[int] = []
+        for kind in kinds:
+            fitting = [place for place, billet in enumerate(billets) if self.task.fits[billet, kind]]
+            if len(fitting) > len(stay):
+                rows = self._alone([billets[place] for place in fitting], kind).placements
+                held = [
+                    [fitting[row.billet] for row in rows if row.block == block] for block in {r.block for r in rows}
+                ]
+                stay = max((stay, *held), key=len)
+        would = f"; {_named([pin.sweeps[place] for place in stay])} would" if stay else ""
+        go = [name for place, name in enumerate(pin.sweeps) if place not in stay]
         return StockError(
-            f"the {len(billets)} billets pinned to {pin.block} do not come out of one block; {_named(stay)} would",
+            f"the {len(billets)} billets pinned to {pin.block} do not come out of one block that is left{would}",
             pin.place,
             f"Take {_named(go)} out of the pin, or give a larger block.",
         )

@@ -77,12 +77,22 @@ def test_a_plan_made_again_with_a_block_pinned_keeps_that_block(chosen, number):
     assert sorted(i for members in held(found).values() for i in members) == list(range(1, 9))
 
 
+def test_pinned_billets_stay_together_though_two_small_blocks_were_cheaper():
+    rows = (spec(price=100.0), spec(1200.0, 700.0, 400.0, line=30, price=10.0))
+    _, found = packed(SMALL[:2], rows, pins=(pin("SM-B01", 1, 2),))
+
+    assert held(found) == {"SM-B01": [1, 2]}
+    assert found.cost_bound <= found.blocks[0].price == 100.0
+
+
 def test_a_pin_of_too_many_billets_says_which_would_come_out_of_one_block():
     with pytest.raises(StockError) as caught:
         packed([(1100.0, 1200.0, 600.0)] * 3, pins=(pin("SM-B01", 1, 2, 3),))
 
     assert caught.value.subject == "job.toml:90"
-    assert "the 3 billets pinned to SM-B01 do not come out of one block; SM-S-A01, SM-S-A02 would" in str(caught.value)
+    assert "the 3 billets pinned to SM-B01 do not come out of one block that is left; SM-S-A01, SM-S-A02 would" in str(
+        caught.value
+    )
     assert "Take SM-S-A03 out of the pin" in caught.value.remedy
 
 
