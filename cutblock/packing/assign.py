@@ -152,17 +152,20 @@ class _Desk:
             fitting = [place for place, billet in enumerate(billets) if self.task.fits[billet, kind]]
             if len(fitting) > len(stay):
                 rows = self._alone([billets[place] for place in fitting], kind).placements
-                held = [
-                    [fitting[row.billet] for row in rows if row.block == block] for block in {r.block for r in rows}
-                ]
+                n_blocks = 1 + max(row.block for row in rows)
+                held = [[fitting[row.billet] for row in rows if row.block == block] for block in range(n_blocks)]
                 stay = max((stay, *held), key=len)
         would = f"; {_named([pin.sweeps[place] for place in stay])} would" if stay else ""
         go = [name for place, name in enumerate(pin.sweeps) if place not in stay]
-        return StockError(
-            f"the {len(billets)} billets pinned to {pin.block} do not come out of one block that is left{would}",
-            pin.place,
-            f"Take {_named(go)} out of the pin, or give a larger block.",
-        )
+        if len(billets) == 1:
+            what, remedy = (
+                f"no block that holds {_named(pin.sweeps)} is left for {pin.block}",
+                "Give one more that does",
+            )
+        else:
+            what = f"the {len(billets)} billets pinned to {pin.block} do not come out of one block that is left{would}"
+            remedy = f"Take {_named(go)} out of the pin, or give a larger block"
+        return StockError(what, pin.place, f"{remedy}.")
 
     def _finished(self, laid: Laid) -> Laid:
         """Return the best way to cut the billets of a block out of it, on whichever face it stands."""

@@ -96,6 +96,11 @@ def test_a_pin_of_too_many_billets_says_which_would_come_out_of_one_block():
     assert "Take SM-S-A03 out of the pin" in caught.value.remedy
 
 
+def test_a_pin_for_which_no_block_is_left_says_so():
+    with pytest.raises(StockError, match="no block that holds SM-S-A02 is left for SM-B02"):
+        packed(SMALL[:2], (spec(count=1),), pins=(pin("SM-B01", 1), pin("SM-B02", 2)))
+
+
 def test_a_pin_of_a_sweep_that_is_not_there_names_the_nearest():
     with pytest.raises(InputError) as caught:
         packed(SMALL, pins=(Pin(block="SM-B01", sweeps=("SM-S-A9",), place="job.toml:90"),))
