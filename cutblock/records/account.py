@@ -78,7 +78,7 @@ class Ledger(Record):
             ("backs thicker than needed", self.thickened_mm3),
         )
         share = 100.0 / self.bought_mm3 if self.bought_mm3 else 0.0
-        parts = [f"{name} {volume * share:.1f} %" for name, volume in named if volume > 0.0]
+        parts = [f"{name} {volume * share:.1f} %" for name, volume in named if volume * share >= 0.05]
         made_of = f": {', '.join(parts)}" if parts else ""
         kept = f"; the {self.offcut_mm3 * share:.1f} % kept as offcuts is not in it" if self.offcut_mm3 > 0.0 else ""
         waste = f"the {self.waste_percent:.1f} % of the foam bought that goes into no half with a duty"

@@ -38,6 +38,7 @@ MEASURES = {
     "billet_used_percent": billet_used_percent,
     "used_percent": lambda plan: plan["ledger"]["used_percent"],
     "waste_percent": lambda plan: plan["ledger"]["waste_percent"],
+    "scrap_litres": lambda plan: plan["ledger"]["scrap_litres"],
     "surplus_litres": lambda plan: plan["ledger"]["surplus_litres"],
     "worst_fit_mm": lambda plan: max(panel["fit_max_mm"] for panel in plan["panels"]),
     "worst_finished_mm": lambda plan: max(panel["finished_max_mm"] for panel in plan["panels"]),
