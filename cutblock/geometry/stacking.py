@@ -65,8 +65,8 @@ def widened_rails(
 def steepest_slope(near: Floats, far: Floats, length_mm: float, width_mm: float) -> float:
     """Return a bound of the sheet's slope (rise by run, any direction) over [0, length] x [0, width].
 
-    In a cell the slope along x runs monotonously across, and for each of its values the slope along y
-    runs linearly from ruling to ruling, so their values at the corners bound both.
+    In a cell the slope along x runs monotonously across, and for each of its values the slope along y runs linearly
+    from ruling to ruling, so their values at the corners of what lies over the footprint bound both.
 
     Args:
         near: (n, 2) x and z of the rail at y = 0, x rising strictly, covering the footprint.
@@ -83,7 +83,7 @@ class _Cells(NamedTuple):
     """The cells from ruling to ruling that lie over the footprint, as far across as they do."""
 
     along: Floats  # (2, c) slopes along x at both ends across
-    across: Floats  # (2, 2, c) slopes along y: on both rulings, for the slope along x at both ends
+    across: Floats  # (2, 2, c) slopes along y: where the cell begins and ends, for the slope along x at both ends
     first_x: Floats  # (c,)
     last_x: Floats
 
@@ -105,9 +105,13 @@ def _cells_over(near: Floats, far: Floats, length_mm: float, width_mm: float) ->
         near[rows][is_over] + places[..., None] * (far - near)[rows][is_over]
         for rows in (slice(None, -1), slice(1, None))
     )
-    along = (ends - begins)[..., 1] / (ends - begins)[..., 0]
-    both = np.stack([np.flatnonzero(is_over), np.flatnonzero(is_over) + 1])
-    across: Floats = (rises[both][:, None] - along[None] * skews[both][:, None]) / width_mm
+    steps = ends - begins
+    along = steps[..., 1] / steps[..., 0]
+    # So far into the cell the footprint begins and ends; that too runs monotonously across.
+    inside = np.clip(np.array([0.0, length_mm])[:, None, None] - begins[..., 0], 0.0, steps[..., 0]) / steps[..., 0]
+    parts = np.stack([inside[0].min(axis=0), inside[1].max(axis=0)])[:, None]
+    skew, rise = (some[:-1][is_over] + parts * np.diff(some)[is_over] for some in (skews, rises))
+    across: Floats = (rise - along[None] * skew) / width_mm
     return _Cells(along, across, begins[..., 0].min(axis=0), ends[..., 0].max(axis=0))
 
 
