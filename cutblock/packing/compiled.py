@@ -7,7 +7,9 @@ does not matter when the one takes over from the other.
 import importlib.util
 import sys
 import threading
+import zlib
 from collections.abc import Callable
+from pathlib import Path
 from types import ModuleType
 from typing import Any
 
@@ -16,7 +18,9 @@ from cutblock.packing.sequences import Make
 
 # In the order they call each other; numba looks a called function up by its name when the caller is compiled.
 _COMPILED = {
-    kernels: ("find_place", "choose_order", "set_rests", "set_least", "open_block", "put", "begin", "prune", "fill"),
+    kernels: (
+        "suit", "find_place", "choose_order", "set_rests", "set_least", "open_block", "put", "begin", "prune", "fill",
+    ),
     moves: (
         "draw", "choose_blocks", "take_out", "disturb", "offer_kinds", "weigh", "keep", "find_key", "remember",
         "is_kept", "one", "search",
@@ -129,16 +133,25 @@ def compiled() -> Inner | None:
 def _copies(is_cached: bool) -> Inner:
     """Return copies of the modules, each function of which is compiled at its first call."""
     numba: Any = importlib.import_module("numba")
+    digest = _digest()
     made: dict[str, Any] = {}
     copies: list[ModuleType] = []
     for module, names in _COMPILED.items():
         copy = _copy(module)
         vars(copy).update({name: function for name, function in made.items() if hasattr(copy, name)})
         for name in names:
-            made[name] = numba.njit(cache=is_cached, nogil=True)(getattr(copy, name))
+            function = getattr(copy, name)
+            function.__qualname__ = f"{name}_{digest}"
+            made[name] = numba.njit(cache=is_cached, nogil=True, error_model="numpy")(function)
             setattr(copy, name, made[name])
         copies.append(copy)
     return Inner(tuple(copies), is_compiled=True)
+
+
+def _digest() -> str:
+    """Return a digest of all loops; numba keeps what it compiles by name and would miss a change in another module."""
+    sources = [Path(str(module.__file__)).read_bytes() for module in _COMPILED]
+    return format(zlib.crc32(b"".join(sources)), "08x")
 
 
 def _copy(module: ModuleType) -> ModuleType:

@@ -12,9 +12,23 @@ from cutblock.packing.sequences import MOST_FREE, Cells, Desk, Integers, Kinds, 
 
 # The six orders of cutting a billet out of the corner of a free box: which axes are cut first, second and third.
 ORDERS = ((0, 1, 2), (0, 2, 1), (1, 0, 2), (1, 2, 0), (2, 0, 1), (2, 1, 0))
+AXES = (0, 1, 2, 0, 2, 1, 1, 0, 2, 1, 2, 0, 2, 0, 1, 2, 1, 0)
 
 N_RULES = 4  # which free box: 0 the smallest, 1 the tightest gap, 2 the least faces of the gaps, 3 the first block
 N_MODES = 3  # 0 any order of cuts; 1 whole slabs are cut off first; 2 whole columns are
+
+
+def suit(rule: int, block: int, x: int, y: int, z: int, size_x: int, size_y: int, size_z: int) -> tuple[int, int]:
+    """Return how ill a free box suits a billet by a rule, and the faces of the gaps, which settle a tie."""
+    gap_x, gap_y, gap_z = x - size_x, y - size_y, z - size_z
+    tie = gap_x * gap_y + gap_y * gap_z + gap_z * gap_x
+    if rule == 2:
+        return tie, tie
+    if rule == 0:
+        return x * y * z, tie
+    if rule == 1:
+        return min(gap_x, gap_y, gap_z), tie
+    return block, tie
 
 
 def find_place(
@@ -28,29 +42,18 @@ def find_place(
     least = least_tie = 1 << 62
     free_x, free_y, free_z, free_block = desk.x, desk.y, desk.z, desk.block
     for j in range(first, n_free):
-        gap_z = free_z[j] - size_z
-        if gap_z < 0:
+        if free_z[j] < size_z:
             continue
         x = free_x[j]
         y = free_y[j]
-        for turned in range(1 + may_turn):
-            if turned:
-                gap_x, gap_y = x - size_y, y - size_x
-            else:
-                gap_x, gap_y = x - size_x, y - size_y
-            if gap_x < 0 or gap_y < 0:
-                continue
-            tie = gap_x * gap_y + gap_y * gap_z + gap_z * gap_x
-            if rule == 2:
-                score = tie
-            elif rule == 0:
-                score = x * y * free_z[j]
-            elif rule == 1:
-                score = min(gap_x, gap_y, gap_z)
-            else:
-                score = free_block[j]
+        if size_x <= x and size_y <= y:
+            score, tie = suit(rule, free_block[j], x, y, free_z[j], size_x, size_y, size_z)
             if score < least or (score == least and tie < least_tie):
-                least, least_tie, best = score, tie, 2 * j + turned
+                least, least_tie, best = score, tie, 2 * j
+        if may_turn and size_y <= x and size_x <= y:
+            score, tie = suit(rule, free_block[j], x, y, free_z[j], size_y, size_x, size_z)
+            if score < least or (score == least and tie < least_tie):
+                least, least_tie, best = score, tie, 2 * j + 1
     return best
 
 
@@ -91,18 +94,22 @@ def choose_order(allowed: int, is_long: bool, x: int, y: int, z: int, size_x: in
 
 
 def set_rests(order: int, x: int, y: int, z: int, size_x: int, size_y: int, size_z: int, rest: Integers) -> None:
-    """Write the sizes of the three rests left by cutting a billet out of the corner of the box x, y, z."""
+    """Write the sizes of the three rests left by cutting a billet out of the corner of the box x, y, z.
+
+    What is cut first along an axis keeps the box's sizes on the axes not yet cut.
+    """
+    wide_x, wide_y, wide_z = x, y, z
     for place in range(3):
-        axis = ORDERS[order][place]
-        rest[3 * place] = x - size_x if axis == 0 else x
-        rest[3 * place + 1] = y - size_y if axis == 1 else y
-        rest[3 * place + 2] = z - size_z if axis == 2 else z
+        axis = AXES[3 * order + place]
         if axis == 0:
-            x = size_x
+            rest[3 * place], rest[3 * place + 1], rest[3 * place + 2] = x - size_x, wide_y, wide_z
+            wide_x = size_x
         elif axis == 1:
-            y = size_y
+            rest[3 * place], rest[3 * place + 1], rest[3 * place + 2] = wide_x, y - size_y, wide_z
+            wide_y = size_y
         else:
-            z = size_z
+            rest[3 * place], rest[3 * place + 1], rest[3 * place + 2] = wide_x, wide_y, z - size_z
+            wide_z = size_z
 
 
 def set_least(sequence: Integers, n_cells: int, cells: Cells, least: Integers) -> None:

@@ -42,6 +42,22 @@ def test_rectangles_of_berkey_and_wang_come_close_to_the_best_known(may_turn):
     assert found <= 1.02 * known
 
 
+@pytest.mark.parametrize("may_turn", [False, True])
+def test_a_public_library_without_the_guillotine_rule_needs_no_fewer_rectangles(may_turn):
+    """The heuristics of rectpack (a public Python library) on the same instances; the better of two counts."""
+    rectpack = pytest.importorskip("rectpack")
+    for instance in published("rectangles_class_01_06")["instances"][3::60]:
+        sizes = flat(instance["items"])
+        found = pack(sizes, [(*instance["bin"], 1, None, None)], 0.0, may_turn=may_turn, moves=1500)
+        for algorithm in (rectpack.MaxRectsBssf, rectpack.GuillotineBssfSas):
+            packer = rectpack.newPacker(pack_algo=algorithm, rotation=may_turn)
+            packer.add_bin(*instance["bin"], count=len(sizes))
+            for width, depth, _ in sizes:
+                packer.add_rect(width, depth)
+            packer.pack()
+            assert found.n_blocks <= len(packer), instance["name"]
+
+
 def test_the_class_generator_gives_the_published_boxes():
     """Martello, Pisinger and Vigo, Operations Research 48 (2000): first boxes of every class and size."""
     for group in published("boxes_classes")["groups"]:

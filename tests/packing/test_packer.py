@@ -2,6 +2,7 @@ import numpy as np
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
+from kit.boxes import made_up_job
 
 from cutblock.base.errors import InputError, StockError
 from cutblock.packing import pack
@@ -266,3 +267,19 @@ def test_one_footprint_in_many_heights_keeps_every_law(heights, sides, moves):
     assert (gaps[same] >= 1.2 - 1e-9).all()
     assert (corners[:, :3] >= 15.0 - 1e-9).all()
     assert packing.lower_bound <= packing.n_blocks
+
+
+def test_many_billets_forget_small_free_boxes_and_stay_near_the_bound():
+    # More free boxes come up than are remembered.
+    sizes = made_up_job(3000)
+
+    packing = pack(sizes, [(4000.0, 1200.0, 1000.0, None, None)], 3.0, 10.0, moves=0)
+
+    corners, blocks = boxes_of(packing, sizes)
+    assert packing.lower_bound <= packing.n_blocks <= 1.2 * packing.lower_bound
+    for block in range(packing.n_blocks):
+        inside = corners[blocks == block]
+        gaps = np.maximum(inside[:, None, :3] - inside[None, :, 3:], inside[None, :, :3] - inside[:, None, 3:])
+        widest = gaps.max(axis=2)
+        np.fill_diagonal(widest, 9.0)
+        assert (widest >= 3.0 - 1e-9).all()
