@@ -50,7 +50,8 @@ def count_hours(
                 sum(air for _, air in spent),
                 len(clampings) * machine.setup_s,
                 _n_turns([clamping[0] for clamping in clampings]) * machine.turn_s,
-                machine.block_handling_s + n_pieces * machine.piece_handling_s,
+                # A block that stands on another face is handled once more to stand it there.
+                (1 if block.bought_mm is None else 2) * machine.block_handling_s + n_pieces * machine.piece_handling_s,
             )
         )
     cutting_s, air_s, setup_s, turn_s, handling_s = (float(sum(part)) for part in zip((0.0,) * 5, *parts, strict=True))

@@ -106,3 +106,14 @@ def test_faster_air_moves_save_time_up_to_the_speed_of_the_axes():
 
 def test_weak_towers_take_longer_in_air():
     assert hours_of(cut(), acceleration_mm_s2=20.0).air_s > hours_of(cut()).air_s
+
+
+def test_a_block_that_stands_on_another_face_is_handled_once_more():
+    block = block_of(cut(at_mm=100.0))
+    stood = replace(block, bought_mm=(1250.0, 2500.0, 700.0))
+    machine = sample_machine(block_handling_s=300.0)
+
+    plain, more = (count_hours([one], TIMINGS, machine, CONDITIONS) for one in (block, stood))
+
+    assert more.handling_s == plain.handling_s + 300.0
+    assert more.total_s == plain.total_s + 300.0
