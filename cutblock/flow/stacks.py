@@ -308,11 +308,25 @@ def _packed(
     ]
     sweeps = (*(sweep for sweep in now.sweeps if sweep.id not in gone), *billets)
     pieces = (*(piece for piece in now.pieces if piece.sweep not in gone), *_pieces(billets))
+    job = replace(job, no_turn=_unturned(job, sweeps, offer.stacks, own.sweeps))
     try:
         after = pack_sweeps(job, sweeps, pieces, conditions, settings, part_of(progress, 0.5, 1.0))
     except StockError as error:
         return replace(offer, refusal=str(error))
     return replace(offer, n_blocks=len(after.blocks), price=_price(after.blocks))
+
+
+def _unturned(job: Job, sweeps: Sequence[Sweep], stacks: Sequence[Stack], own: Sequence[Sweep]) -> tuple[str, ...]:
+    """Return the sweeps and stacks whose billets keep their length along the block: a stack if a member does."""
+    from cutblock.packing.asked import locked
+
+    rest = [sweep for sweep in sweeps if sweep.id not in {stack.id for stack in stacks}]
+    is_locked = locked(job, (*rest, *own)).tolist()
+    held = {sweep.id for sweep, is_held in zip(own, is_locked[len(rest) :], strict=True) if is_held}
+    return (
+        *(sweep.id for sweep, is_held in zip(rest, is_locked, strict=False) if is_held),
+        *(stack.id for stack in stacks if any(member.sweep in held for member in stack.members)),
+    )
 
 
 def _pieces(billets: Sequence[Sweep]) -> list[Piece]:

@@ -8,9 +8,10 @@ import pytest
 from kit.height_jobs import job_over
 
 import cutblock
-from cutblock.base.errors import Cancelled, CheckFailed, InputError
+from cutblock.base.errors import Cancelled, CheckFailed, InputError, StockError
 from cutblock.cli.main import main
 from cutblock.flow.stacks import offer_stacks
+from cutblock.packing.blocks import PackedStock
 from cutblock.records.duties import PairLock
 from cutblock.records.job import Pin
 from cutblock.records.words import Duty
@@ -170,6 +171,27 @@ def test_a_pinned_sweep_stays_in_its_block(saddles):
 
     assert {member.panel for stack in held.stacks for member in stack.members} == {"S-A01", "S-B01", "S-B02", "S-C01"}
     assert held.left_out == (("pinned to a block", 1),)
+
+
+def test_a_stack_keeps_its_length_along_the_block_where_a_member_must(saddles, small, monkeypatch):
+    job = replace(cutblock.read_job(saddles), no_turn=("GS-S-A02", "S-B01"))
+    asked = []
+
+    def refuse(job, sweeps, pieces, *rest):
+        asked.append(job.no_turn)
+        raise StockError("there are too few blocks", "foam.block", "Give more.")
+
+    packed = "cutblock.packing.blocks.pack_sweeps"
+    with monkeypatch.context() as patch:
+        patch.setattr(packed, lambda job, sweeps, *rest: before if len(sweeps) == 3 else refuse(job, sweeps, *rest))
+        before = PackedStock(
+            blocks=(), sweeps=(), pieces=(), n_blocks_bound=0, bound_proof="", cost_bound=None, moves=0, findings=()
+        )
+        offer = offer_stacks(job)
+
+    assert asked == [("GS-S-B01", "GS-S01")]
+    assert offer.refusal.startswith("foam.block: there are too few blocks")
+    assert offer_stacks(job).n_blocks == small.n_blocks
 
 
 def test_shells_too_thin_or_too_thick_are_refused(saddles):
