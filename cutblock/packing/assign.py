@@ -94,7 +94,13 @@ class _Desk:
     def _packed(self, billets: list[int], moves: int | None, seconds: float | None, progress: Progress) -> Packing:
         small = subtask(self.task, billets)
         small = replace(small, counts=np.minimum(self.left, len(billets)))
-        return pack_task(small, self.settings.seed, moves, seconds, progress)
+        try:
+            return pack_task(small, self.settings.seed, moves, seconds, progress)
+        except StockError as error:
+            if (self.left == self.task.counts).all():
+                raise
+            remedy = f"{error.remedy.partition(', ')[0].rstrip('.')}, beside what the pinned blocks take."
+            raise StockError(error.message, error.subject, remedy) from error
 
     def _laid(self, packing: Packing, billets: list[int]) -> list[Laid]:
         """Return the blocks of a packing, counted off the stock."""

@@ -96,6 +96,13 @@ def test_a_pin_of_too_many_billets_says_which_would_come_out_of_one_block():
     assert "Take SM-S-A03 out of the pin" in caught.value.remedy
 
 
+def test_blocks_short_beside_pinned_ones_are_told_without_a_false_sum():
+    with pytest.raises(StockError) as caught:
+        packed(SMALL[:4], (spec(count=1),), pins=(pin("SM-B01", 1),))
+
+    assert caught.value.remedy == "Give 1 more of 2400 x 1250 x 700 mm, beside what the pinned blocks take."
+
+
 def test_a_pin_for_which_no_block_is_left_says_so():
     with pytest.raises(StockError, match="no block that holds SM-S-A02 is left for SM-B02"):
         packed(SMALL[:2], (spec(count=1),), pins=(pin("SM-B01", 1), pin("SM-B02", 2)))
