@@ -152,10 +152,13 @@ def _measure_thickened(plan: Plan, sweeps: tuple[Sweep, ...], pieces: tuple[Piec
 
 
 def try_machine(plan: Plan, progress: Progress) -> Plan:
-    """Find every set-up that the job's machine cannot cut."""
+    """Split set-ups that the job's machine can only cut apart, and find every one that it cannot cut at all."""
     from cutblock.machinecode.programs import find_uncuttable
+    from cutblock.machinecode.splitting import split_setups
 
     progress(0.0, "Trying every set-up on the machine")
+    plan = replace(plan, blocks=split_setups(plan))
+    progress(0.5, "Trying every set-up on the machine")
     return _with(plan, find_uncuttable(plan))
 
 

@@ -80,19 +80,25 @@ def find_uncuttable(plan: Plan) -> tuple[Finding, ...]:
     except CutblockError as error:
         return (_finding(plan.machine.name, error),)
     sources = plan_sources(plan)
-    findings = []
-    for block in plan.blocks:
-        findings += _block_findings(plan, block, sources)
-    return tuple(findings)
+    return tuple(
+        _finding(block.id, error) for block in plan.blocks for error in block_troubles(plan, block, sources).values()
+    )
 
 
-def _block_findings(plan: Plan, block: Block, sources: Sources) -> list[Finding]:
+def block_troubles(plan: Plan, block: Block, sources: Sources) -> dict[int, CutblockError]:
+    """Return why the machine cannot cut them, for each set-up of a block that it cannot; 0 stands for all of them.
+
+    Args:
+        plan: Its job, machine and cutting conditions.
+        block: Of the plan, or one of its own with its cuts in other set-ups.
+        sources: From `plan_sources`.
+    """
     try:
         setups = clampings(block)
     except CutblockError as error:
-        return [_finding(block.id, error)]
-    troubles = [_trouble(plan, clamping, sources) for clamping in setups]
-    return [_finding(block.id, error) for error in troubles if error is not None]
+        return {0: error}
+    troubles = {clamping.number: _trouble(plan, clamping, sources) for clamping in setups}
+    return {number: error for number, error in troubles.items() if error is not None}
 
 
 def _trouble(plan: Plan, clamping: Clamping, sources: Sources) -> CutblockError | None:
