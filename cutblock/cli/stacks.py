@@ -176,7 +176,8 @@ def _job_text(offer: StackOffer) -> str:
     if offer.refusal:
         text += f"The blocks do not do with the stacks: {offer.refusal} "
     else:
-        text += f"Blocks: {offer.n_blocks_now} now, {offer.n_blocks} with stacks{_price_text(offer)}. "
+        text += f"Blocks: {offer.n_blocks_now} now, {offer.n_blocks} with stacks{_price_text(offer)}"
+        text += ". " if offer.n_blocks < offer.n_blocks_now else ", so no less foam is bought. "
     return text + (
         f"Cutting the stacked panels takes {hours(seconds_now):.2f} h now and {hours(seconds):.2f} h stacked; "
         "through cuts and set-ups are in neither."

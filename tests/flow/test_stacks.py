@@ -235,6 +235,7 @@ def test_the_command_tells_what_is_saved_and_what_is_given_up(saddles, small, tm
     assert f"{small.saved_mm3 / 1e6:.1f} L" in told
     assert "licensed engineer and the local codes" in told
     assert "Scrap in the stacks" in told
+    assert "Blocks: 1 now, 1 with stacks, so no less foam is bought." in told
     assert (tmp_path / "out" / "stacks.csv").read_text() == stacks_csv(small, "mm")
 
 
