@@ -1,11 +1,13 @@
 """Reads a program back and holds every line of it against the plan."""
 
+import itertools
+
 import numpy as np
 
 from cutblock.base.arrays import Floats
 from cutblock.base.errors import CheckFailed, CutblockError
 from cutblock.machinecode.clamping import clampings
-from cutblock.machinecode.expected import Boxes, Step, expected_steps
+from cutblock.machinecode.expected import AIR, Boxes, Step, expected_steps
 from cutblock.machinecode.passes import choose_place, plan_sources
 from cutblock.machinecode.reader import Line, read_program
 from cutblock.machinecode.rules import find_block, heater_words
@@ -49,6 +51,7 @@ def check_program(plan: Plan, name: str, text: str) -> None:
         raise _failure(name, shorter + 1, f"the file {says} where the plan {wants}")
     moves = [(line, step) for line, step in zip(lines, steps, strict=True) if line.motion == "1"]
     _check_limits(moves, plan.machine, name)
+    _check_accelerations(moves, plan.machine, name)
     _check_cold_moves(lines, steps, boxes, plan, name)
 
 
@@ -129,6 +132,24 @@ def _check_limits(moves: list[tuple[Line, Step]], machine: Machine, name: str) -
         if bad.any():
             line = moves[int(np.argmax(bad))][0]
             raise _failure(name, line.number, f'"{line.text}" {trouble}')
+
+
+def _check_accelerations(moves: list[tuple[Line, Step]], machine: Machine, name: str) -> None:
+    """Hold the changes of speed within every sweep against the machine, each spread over half of both steps."""
+    positions = np.array([line.values for line, _ in moves])
+    seconds = 60.0 / np.array([line.feed for line, _ in moves])
+    subjects = [step.subject for _, step in moves]
+    # Of three positions in a row the two steps between belong to one sweep where the last two moves do.
+    is_joint = np.array([a == b != AIR for a, b in itertools.pairwise(subjects[1:])], dtype=np.bool_)
+    speeds = np.diff(positions, axis=0) / seconds[1:, None]
+    changes = np.abs(np.diff(speeds, axis=0)).max(axis=1, initial=0.0)
+    digit = 10.0**-machine.decimals
+    shortest = np.minimum(seconds[1:-1], seconds[2:])
+    most = machine.acceleration_mm_s2 * 0.5 * (seconds[1:-1] + seconds[2:]) * (1.0 + _SPEED_RELATIVE)
+    bad = is_joint & (changes > most + 2.0 * digit / shortest)
+    if bad.any():
+        line = moves[int(np.argmax(bad)) + 2][0]
+        raise _failure(name, line.number, f'"{line.text}" changes the speed of an axis faster than it can')
 
 
 def _check_cold_moves(lines: tuple[Line, ...], steps: tuple[Step, ...], boxes: Boxes, plan: Plan, name: str) -> None:

@@ -29,6 +29,7 @@ from cutblock.records.plan import Plan
 from cutblock.records.shop import Machine
 from cutblock.records.words import CutKind
 
+AIR = "move in air"  # what a move between cuts is for
 _QUARTER = np.array([[0.0, 1.0, 0.0], [-1.0, 0.0, 0.0], [0.0, 0.0, 1.0]])  # +y to the travel, +x towards the near tower
 
 
@@ -169,7 +170,7 @@ def _air(machine: Machine, start: Floats, end: Floats, index: int) -> list[Step]
     speed = min(machine.air_speed_mm_s, machine.speed_mm_s)
     ramps_mm = speed**2 / machine.acceleration_mm_s2
     seconds = (way + ramps_mm) / speed if way > ramps_mm else 2.0 * math.sqrt(way / machine.acceleration_mm_s2)
-    return [Step(position=tuple(end.tolist()), seconds=seconds, subject="move in air", cut_index=index)]
+    return [Step(position=tuple(end.tolist()), seconds=seconds, subject=AIR, cut_index=index)]
 
 
 def _rulings(subject: str, wire: Floats, seconds: Floats, index: int) -> Iterator[Step]:

@@ -188,6 +188,19 @@ def test_limits_are_held_even_if_the_writer_forgets_them(monkeypatch, changes, w
         write_programs(replace(plan, machine=replace(plan.machine, **changes)))
 
 
+def test_a_step_so_fast_that_no_tower_can_take_it_up_is_found():
+    plan = PLANS["sweep"]
+    (timing,) = plan.timings
+    machine = replace(plan.machine, acceleration_mm_s2=0.1)
+    write_programs(replace(plan, machine=machine))
+
+    seconds = timing.step_seconds.copy()
+    seconds[len(seconds) // 2] *= 0.2
+    hasty = replace(timing, step_seconds=seconds, seconds=float(seconds.sum()))
+    with pytest.raises(CheckFailed, match="changes the speed of an axis faster than it can"):
+        write_programs(replace(plan, machine=machine, timings=(hasty,)))
+
+
 def read_with_steps(plan):
     (program,) = write_programs(plan)
     (block,) = plan.blocks
