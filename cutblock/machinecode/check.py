@@ -138,9 +138,9 @@ def _check_accelerations(moves: list[tuple[Line, Step]], machine: Machine, name:
     """Hold the changes of speed within every sweep against the machine, each spread over half of both steps."""
     positions = np.array([line.values for line, _ in moves])
     seconds = 60.0 / np.array([line.feed for line, _ in moves])
-    subjects = [step.subject for _, step in moves]
+    cuts = [-1 if step.subject == AIR else step.cut_index for _, step in moves]
     # Of three positions in a row the two steps between belong to one sweep where the last two moves do.
-    is_joint = np.array([a == b != AIR for a, b in itertools.pairwise(subjects[1:])], dtype=np.bool_)
+    is_joint = np.array([one == other >= 0 for one, other in itertools.pairwise(cuts[1:])], dtype=np.bool_)
     speeds = np.diff(positions, axis=0) / seconds[1:, None]
     changes = np.abs(np.diff(speeds, axis=0)).max(axis=1, initial=0.0)
     digit = 10.0**-machine.decimals
