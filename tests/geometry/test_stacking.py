@@ -1,6 +1,6 @@
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from cutblock.base.errors import GeometryError
@@ -33,15 +33,30 @@ def heights(rails, width, n=241):
     return sheet_heights(*rails, width, x, y)
 
 
+def largest_difference(above, below):
+    """Return the largest difference on a raster, looked at more and more closely about its ten highest points."""
+    x, y = np.meshgrid(np.linspace(0.0, LENGTH, 241), np.linspace(0.0, WIDTH, 241), indexing="ij")
+    reach, most = np.array([LENGTH, WIDTH]) / 240.0, np.array([LENGTH, WIDTH])
+    at = np.stack([x.ravel(), y.ravel()], axis=1)
+    steps = np.stack(np.meshgrid(np.linspace(-1.0, 1.0, 9), np.linspace(-1.0, 1.0, 9)), axis=-1).reshape(-1, 2)
+    for _ in range(12):
+        difference = sheet_heights(*above, WIDTH, *at.T) - sheet_heights(*below, WIDTH, *at.T)
+        best = at[np.argsort(difference)[-10:]]
+        at = np.clip(best[:, None] + reach * steps, 0.0, most).reshape(-1, 2)
+        reach = reach / 3.0
+    return float(difference.max())
+
+
+@example(first=305, second=699)  # highest at a ruling between the points of a raster
 @given(first=st.integers(0, 10_000), second=st.integers(0, 10_000))
 def test_the_largest_rise_bounds_every_point_closely(first, second):
     above, below = sheet(first), sheet(second)
 
     rise = largest_rise(above, below, *SIZE)
 
-    sampled = (heights(above, WIDTH) - heights(below, WIDTH)).max()
+    sampled = largest_difference(above, below)
     assert sampled <= rise + 1e-9
-    assert rise <= sampled + 0.02 + 0.05  # what the bound allows, and what a 5 x 4 mm raster misses
+    assert rise <= sampled + 0.02 + 1e-3  # what the bound allows
 
 
 def test_the_largest_rise_of_planes_is_at_a_corner():
