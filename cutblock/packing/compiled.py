@@ -9,6 +9,7 @@ import sys
 import threading
 import zlib
 from collections.abc import Callable
+from itertools import product
 from pathlib import Path
 from types import ModuleType
 from typing import Any
@@ -28,6 +29,7 @@ _COMPILED = {
     recursion: ("best_cut", "decide", "recur"),
     cover: ("reprice", "score_of", "choose"),
 }  # fmt: skip
+_OWNING = frozenset({"prune", "fill", "one", "search"})  # make arrays, or call what does
 _WAIT = 0.02  # s between two looks at the compiling thread
 
 
@@ -96,16 +98,20 @@ class _Workshop:
                 self.thread.start()
 
     def make(self) -> None:
-        """Compile every function by running a small task."""
+        """Compile every function by running a small task; where nothing can be compiled the plain loops stay in use."""
         from cutblock.packing.rehearsal import rehearse
 
-        inner = _copies(is_cached=True)
-        try:
-            rehearse(inner)
-        except RuntimeError:  # numba finds no folder to keep the compiled code in
-            inner = _copies(is_cached=False)
-            rehearse(inner)
-        self.ready = inner
+        numba: Any = importlib.import_module("numba")
+        # No folder to keep compiled code in; an option numba does not know; code it cannot compile.
+        failures = (RuntimeError, KeyError, numba.errors.NumbaError)
+        for is_lean, is_cached in product((True, False), (True, False)):
+            try:
+                inner = _copies(numba, is_cached, is_lean)
+                rehearse(inner)
+            except failures:
+                continue
+            self.ready = inner
+            return
 
     def wait(self, tell: Callable[[], None]) -> None:
         """Wait until they are ready, telling now and then."""
@@ -130,10 +136,12 @@ def compiled() -> Inner | None:
     return _WORKSHOP.ready
 
 
-def _copies(is_cached: bool) -> Inner:
-    """Return copies of the modules, each function of which is compiled at its first call."""
-    numba: Any = importlib.import_module("numba")
-    digest = _digest()
+def _copies(numba: Any, is_cached: bool, is_lean: bool) -> Inner:  # noqa: ANN401 - a module without types
+    """Return copies of the modules, each function of which is compiled at its first call.
+
+    Lean functions do not count the references to the arrays in their tuples, which takes longer than their work.
+    """
+    digest = f"{_digest()}_{is_lean:d}"
     made: dict[str, Any] = {}
     copies: list[ModuleType] = []
     for module, names in _COMPILED.items():
@@ -142,7 +150,8 @@ def _copies(is_cached: bool) -> Inner:
         for name in names:
             function = getattr(copy, name)
             function.__qualname__ = f"{name}_{digest}"
-            made[name] = numba.njit(cache=is_cached, nogil=True, error_model="numpy")(function)
+            options = {} if name in _OWNING or not is_lean else {"_nrt": False}
+            made[name] = numba.njit(cache=is_cached, nogil=True, error_model="numpy", **options)(function)
             setattr(copy, name, made[name])
         copies.append(copy)
     return Inner(tuple(copies), is_compiled=True)

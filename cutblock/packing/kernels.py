@@ -18,9 +18,8 @@ N_RULES = 4  # which free box: 0 the smallest, 1 the tightest gap, 2 the least f
 N_MODES = 3  # 0 any order of cuts; 1 whole slabs are cut off first; 2 whole columns are
 
 
-def suit(rule: int, block: int, x: int, y: int, z: int, size_x: int, size_y: int, size_z: int) -> tuple[int, int]:
-    """Return how ill a free box suits a billet by a rule, and the faces of the gaps, which settle a tie."""
-    gap_x, gap_y, gap_z = x - size_x, y - size_y, z - size_z
+def suit(rule: int, block: int, x: int, y: int, z: int, gap_x: int, gap_y: int, gap_z: int) -> tuple[int, int]:
+    """Return how ill a free box suits a billet by a rule, and the faces of the gaps beside it, which settle a tie."""
     tie = gap_x * gap_y + gap_y * gap_z + gap_z * gap_x
     if rule == 2:
         return tie, tie
@@ -42,18 +41,19 @@ def find_place(
     least = least_tie = 1 << 62
     free_x, free_y, free_z, free_block = desk.x, desk.y, desk.z, desk.block
     for j in range(first, n_free):
-        if free_z[j] < size_z:
-            continue
-        x = free_x[j]
-        y = free_y[j]
-        if size_x <= x and size_y <= y:
-            score, tie = suit(rule, free_block[j], x, y, free_z[j], size_x, size_y, size_z)
+        x, y, gap_z = free_x[j], free_y[j], free_z[j] - size_z
+        # One comparison for all three gaps: their bits together are negative where one of them is.
+        gap_x, gap_y = x - size_x, y - size_y
+        if gap_x | gap_y | gap_z >= 0:
+            score, tie = suit(rule, free_block[j], x, y, free_z[j], gap_x, gap_y, gap_z)
             if score < least or (score == least and tie < least_tie):
                 least, least_tie, best = score, tie, 2 * j
-        if may_turn and size_y <= x and size_x <= y:
-            score, tie = suit(rule, free_block[j], x, y, free_z[j], size_y, size_x, size_z)
-            if score < least or (score == least and tie < least_tie):
-                least, least_tie, best = score, tie, 2 * j + 1
+        if may_turn:
+            gap_x, gap_y = x - size_y, y - size_x
+            if gap_x | gap_y | gap_z >= 0:
+                score, tie = suit(rule, free_block[j], x, y, free_z[j], gap_x, gap_y, gap_z)
+                if score < least or (score == least and tie < least_tie):
+                    least, least_tie, best = score, tie, 2 * j + 1
     return best
 
 
