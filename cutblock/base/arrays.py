@@ -21,14 +21,41 @@ def floats(values: ArrayLike, shape: tuple[int | None, ...], name: str) -> Float
         name: What the values are, for the message.
 
     Raises:
-        GeometryError: The shape is another or a value is not finite.
+        GeometryError: They are no real numbers, the shape is another or a value is not finite.
     """
-    array = np.asarray(values, dtype=np.float64)
+    array = as_floats(values, name)
     _check_shape(array, shape, name)
     if not np.isfinite(array).all():
         row = int(np.argwhere(~np.isfinite(array))[0][0])
         raise GeometryError(f"{name} has a value that is not a finite number", f"row {row + 1}", "Give plain numbers.")
     return array
+
+
+def as_floats(values: ArrayLike, name: str) -> Floats:
+    """Return `values` as float64 of whatever shape.
+
+    Args:
+        values: Anything numpy takes.
+        name: What the values are, for the message.
+
+    Raises:
+        GeometryError: They are text, complex or rows of unequal length.
+    """
+    try:
+        array = np.asarray(values)
+        if array.dtype.kind in "cSUMm":
+            raise TypeError(array.dtype)
+        return np.asarray(array, dtype=np.float64)
+    except (TypeError, ValueError) as error:
+        raise GeometryError(f"{name} is no array of numbers", name, "Give plain numbers.") from error
+
+
+def one_number(value: ArrayLike, name: str) -> float:
+    """Return one number as a float, which may be any; raises like `as_floats`, and where it is not one number."""
+    array = as_floats(value, name)
+    if array.size != 1:
+        raise GeometryError(f"{name} is {array.size} numbers, wanted one", name, "Give one plain number.")
+    return float(array.ravel()[0])
 
 
 def frozen_floats(values: ArrayLike, shape: tuple[int | None, ...], name: str) -> Floats:

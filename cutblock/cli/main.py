@@ -210,14 +210,20 @@ def _parser() -> argparse.ArgumentParser:
 
 
 def _count(text: str) -> int:
-    value = int(text)
+    try:
+        value = int(text)
+    except ValueError:
+        raise argparse.ArgumentTypeError(f'"{text}" is no whole number') from None
     if value < 0:
         raise argparse.ArgumentTypeError(f"{text} is below 0")
     return value
 
 
 def _length(text: str) -> float:
-    value = float(text)
+    try:
+        value = float(text)
+    except ValueError:
+        raise argparse.ArgumentTypeError(f'"{text}" is no number') from None
     if not 0.0 < value < float("inf"):
         raise argparse.ArgumentTypeError(f"{text} is no length over 0")
     return value

@@ -5,7 +5,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from cutblock.base.arrays import Bools, Floats, Ints
+from cutblock.base.arrays import Bools, Floats, Ints, as_floats, one_number
 from cutblock.base.errors import GeometryError
 from cutblock.geometry.deviation import deviation_measures, face_deviation
 from cutblock.geometry.fit_lawson import polish
@@ -78,8 +78,10 @@ def fit_ruled(
         True
     """
     for value, name in ((length_mm, "length"), (width_mm, "width"), (tolerance_mm, "tolerance")):
-        if not (np.isfinite(value) and value > 0.0):
+        if not (np.isfinite(one_number(value, name)) and value > 0.0):
             raise GeometryError(f"the {name} is {value:g} mm", name, "Give a number over 0.")
+    if not callable(height):
+        raise GeometryError("height is no function", "height", "Give a function of x and y that returns z.")
     grid, field = _sampled(height, length_mm, width_mm)
     patch = Patch(
         heights_mm=grid,
@@ -133,7 +135,7 @@ def _measured(curves: SheetFit, length_mm: float, width_mm: float, samples: Floa
 
 def _called(height: Callable[[Floats, Floats], Floats], x: Floats, y: Floats) -> Floats:
     """Return the heights at x and y, checked."""
-    values = np.asarray(height(x, y), dtype=np.float64)
+    values = as_floats(height(x, y), "height")
     if values.shape not in ((), x.shape):
         raise GeometryError(
             f"height gave an array of shape {values.shape} for points of shape {x.shape}",

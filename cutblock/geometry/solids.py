@@ -251,7 +251,11 @@ def _rings(outline: Floats | Sequence[Floats] | None) -> list[Floats]:
     """Return the rings of an outline, each checked."""
     if outline is None:
         return []
-    is_one_ring = np.ndim(outline[0]) == 1
+    if len(outline) == 0:
+        raise GeometryError(
+            "the outline has no ring", "outline", "Leave it out or give a ring of three points or more."
+        )
+    is_one_ring = np.ndim(outline[0]) < 2 and np.ndim(outline[0]) != 0 and np.ndim(outline[0][0]) == 0
     rings = [floats(ring, (None, 2), "outline") for ring in ([outline] if is_one_ring else outline)]
     for ring in rings:
         if len(ring) < 3:

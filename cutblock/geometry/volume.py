@@ -11,7 +11,7 @@ from typing import NamedTuple
 
 import numpy as np
 
-from cutblock.base.arrays import Floats, floats
+from cutblock.base.arrays import Floats, floats, one_number
 from cutblock.base.errors import GeometryError
 from cutblock.base.tolerances import PLAN_MM
 
@@ -47,8 +47,8 @@ def check_rails(near: Floats, far: Floats, width_mm: float) -> tuple[Floats, Flo
         )
     if len(near) < 2:
         raise GeometryError(f"a sweep needs at least 2 rulings, not {len(near)}", "rails")
-    if not (np.isfinite(width_mm) and width_mm > 0.0):
-        raise GeometryError(f"the width is {width_mm:g} mm; it must be over 0", "rails")
+    if not (np.isfinite(one_number(width_mm, "width")) and width_mm > 0.0):
+        raise GeometryError(f"the width is {one_number(width_mm, 'width'):g} mm; it must be over 0", "rails")
     for name, rail in (("near", near), ("far", far)):
         steps = np.diff(rail[:, 0])
         if (steps <= 0.0).any():

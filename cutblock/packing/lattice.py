@@ -10,7 +10,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import ArrayLike
 
-from cutblock.base.arrays import Bools, Floats, Ints
+from cutblock.base.arrays import Bools, Floats, Ints, as_floats, one_number
 from cutblock.base.errors import InputError, StockError
 
 STEPS_PER_MM = 100
@@ -135,7 +135,7 @@ def make_task(
     rows = stock_names or tuple(f"stock row {i}" for i in range(len(stock)))
     kerf, skins = _kerf_and_skins(kerf_mm, skins_mm, len(stock))
     raw, counts, is_finite, prices = _stock(stock, rows, len(sizes))
-    turns: Bools = np.broadcast_to(np.asarray(may_turn, dtype=np.bool_), (len(sizes),)).copy()
+    turns: Bools = _one_or_each(as_floats(may_turn, "may_turn"), len(sizes), "may_turn") != 0.0
     cells = steps_up(sizes) + kerf
     is_swapped = turns & (cells[:, 1] > cells[:, 0])
     cells[is_swapped] = cells[is_swapped][:, [1, 0, 2]]
@@ -148,8 +148,17 @@ def make_task(
     return task
 
 
+def _one_or_each(values: Floats, n: int, name: str) -> Floats:
+    """Return n values, from one for all or one for each."""
+    if values.ndim > 1 or values.size not in (1, n):
+        raise InputError(
+            f"{name} has {values.size} values, wanted one or {n}", name, "Give one for all or one for each."
+        )
+    return np.broadcast_to(values, (n,))
+
+
 def _sizes(sizes_mm: ArrayLike) -> Floats:
-    sizes = np.asarray(sizes_mm, dtype=np.float64)
+    sizes = as_floats(sizes_mm, "sizes_mm")
     if sizes.size == 0:
         return np.zeros((0, 3))
     if sizes.ndim != 2 or sizes.shape[1] != 3:
@@ -167,9 +176,9 @@ def _sizes(sizes_mm: ArrayLike) -> Floats:
 
 
 def _kerf_and_skins(kerf_mm: float, skins_mm: ArrayLike, n_kinds: int) -> tuple[int, Ints]:
-    if not (np.isfinite(kerf_mm) and kerf_mm >= 0.0):
+    if not (np.isfinite(one_number(kerf_mm, "kerf_mm")) and kerf_mm >= 0.0):
         raise InputError(f"the kerf is {kerf_mm:g} mm", "kerf_mm", "Give a number of mm, 0 or more.")
-    skins = np.broadcast_to(np.asarray(skins_mm, dtype=np.float64), (n_kinds,))
+    skins = _one_or_each(as_floats(skins_mm, "skin_mm"), n_kinds, "skin_mm")
     if not (np.isfinite(skins) & (skins >= 0.0)).all():
         raise InputError("the skin is not a number of mm, 0 or more", "skin_mm", "Give 0 for a block without skin.")
     return int(steps_up(kerf_mm)), steps_up(skins)

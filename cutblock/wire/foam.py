@@ -5,7 +5,7 @@ from typing import TypedDict
 import numpy as np
 from numpy.typing import ArrayLike
 
-from cutblock.base.arrays import Floats
+from cutblock.base.arrays import Floats, as_floats
 from cutblock.base.errors import InputError
 
 COLLAPSE_TEMPERATURE_C = 150.0  # beads collapse from 110 degC, fastest up to 150 degC
@@ -76,8 +76,27 @@ def not_negative(values: ArrayLike, name: str) -> Floats:
     return _checked(values, name, "of 0 or more", is_zero_allowed=True)
 
 
+def check_broadcast(**arrays: ArrayLike) -> None:
+    """Check that arrays go together element by element.
+
+    Args:
+        arrays: Each under what it is called, with _ for spaces.
+
+    Raises:
+        InputError: Their shapes do not broadcast.
+    """
+    shapes = {name.replace("_", " "): as_floats(array, name.replace("_", " ")).shape for name, array in arrays.items()}
+    try:
+        np.broadcast_shapes(*shapes.values())
+    except ValueError as error:
+        told = ", ".join(f"{name} {shape}" for name, shape in shapes.items() if shape)
+        raise InputError(
+            f"the shapes do not go together: {told}", next(iter(shapes)), "Give numbers or arrays of one shape."
+        ) from error
+
+
 def _checked(values: ArrayLike, name: str, wanted: str, *, is_zero_allowed: bool) -> Floats:
-    array = np.asarray(values, dtype=np.float64)
+    array = as_floats(values, name)
     is_good = np.isfinite(array) & ((array >= 0.0) if is_zero_allowed else (array > 0.0))
     if not is_good.all():
         worst = float(array[~is_good].flat[0])

@@ -9,7 +9,7 @@ from typing import Unpack
 import numpy as np
 from numpy.typing import ArrayLike
 
-from cutblock.base.arrays import Bools, Floats, Ints
+from cutblock.base.arrays import Bools, Floats, Ints, as_floats
 from cutblock.base.errors import InputError
 from cutblock.wire.foam import (
     AMBIENT_C,
@@ -18,6 +18,7 @@ from cutblock.wire.foam import (
     EXTRA_HEAT_J_KG,
     HEAT_CAPACITY_J_KGK,
     FoamHeat,
+    check_broadcast,
     foam_conductivity,
     not_negative,
     positive,
@@ -74,6 +75,15 @@ def kerf_rate(
         2.9104
     """
     power = not_negative(power_w_m, "power")
+    check_broadcast(
+        power=power,
+        density=density_kg_m3,
+        collapse_temperature=collapse_temperature_c,
+        ambient_temperature=ambient_c,
+        heat_capacity=heat_capacity_j_kgk,
+        extra_heat=extra_heat_j_kg,
+        efficiency=efficiency,
+    )
     conductivity, rise, share = _checked_foam(density_kg_m3, collapse_temperature_c, ambient_c, efficiency)
     heat_capacity = positive(heat_capacity_j_kgk, "heat capacity")
     extra_heat = not_negative(extra_heat_j_kg, "extra heat")
@@ -211,8 +221,8 @@ def _checked_foam(
     density_kg_m3: ArrayLike, collapse_temperature_c: ArrayLike, ambient_c: ArrayLike, efficiency: ArrayLike
 ) -> tuple[Floats, Floats, Floats]:
     """Return conductivity at the mean temperature, temperature rise and efficiency."""
-    collapse = np.asarray(collapse_temperature_c, dtype=np.float64)
-    ambient = np.asarray(ambient_c, dtype=np.float64)
+    collapse = as_floats(collapse_temperature_c, "collapse temperature")
+    ambient = as_floats(ambient_c, "ambient temperature")
     rise = positive(collapse - ambient, "rise to the collapse temperature")
     share = positive(efficiency, "efficiency")
     if (share > 1.0).any():

@@ -7,7 +7,7 @@ from numpy.typing import ArrayLike
 
 from cutblock.base.arrays import Floats
 from cutblock.base.errors import InputError
-from cutblock.wire.foam import FoamHeat, not_negative, positive
+from cutblock.wire.foam import FoamHeat, check_broadcast, not_negative, positive
 from cutblock.wire.kerf import LEAST_KERF_M, kerf_rate
 
 CLEARANCE_M = 0.25e-3  # the safe end of 0.15 to 0.25 mm a side: melt film and the relief of the beads
@@ -54,6 +54,7 @@ def speed_window(
     """
     narrow, wide = positive(kerf_min_m, "narrowest kerf"), positive(kerf_max_m, "widest kerf")
     least = not_negative(least_kerf_m, "least kerf")
+    check_broadcast(narrowest_kerf=narrow, widest_kerf=wide, least_kerf=least, power=power_w_m, density=density_kg_m3)
     if not (np.all(narrow > least) and np.all(wide >= narrow)):
         raise InputError(
             f"narrowest kerf {_mm(narrow)} mm and widest kerf {_mm(wide)} mm do not rise above {_mm(least)} mm in turn",

@@ -1,7 +1,7 @@
 import numpy as np
 import pytest
 
-from cutblock.base.arrays import floats, frozen_floats, frozen_integers
+from cutblock.base.arrays import as_floats, floats, frozen_floats, frozen_integers, one_number
 from cutblock.base.errors import GeometryError
 
 
@@ -49,3 +49,15 @@ def test_a_read_only_view_of_a_writable_array_is_copied():
     given[0] = 5.0
 
     assert frozen[0] == 0.0
+
+
+@pytest.mark.parametrize("values", ["abc", ["1", "2"], [[0.0, 1.0], [2.0]], [1.0 + 1.0j], [{}]])
+def test_what_is_no_array_of_numbers_is_refused_by_its_name(values):
+    with pytest.raises(GeometryError, match="points is no array of numbers"):
+        as_floats(values, "points")
+
+
+def test_a_list_where_one_number_is_wanted_is_refused():
+    with pytest.raises(GeometryError, match="width is 2 numbers, wanted one"):
+        one_number([1.0, 2.0], "width")
+    assert one_number(np.float32(2.5), "width") == 2.5

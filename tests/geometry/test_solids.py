@@ -223,3 +223,10 @@ def test_rails_trimmed_at_a_ruling_all_but_in_the_end_plane_still_run_forward():
 
     assert all((np.diff(rail[:, 0]) > 0.0).all() for rail in trimmed)
     assert trimmed[0][-1, 0] == trimmed[1][-1, 0] == 1200.0
+
+
+@pytest.mark.parametrize("outline", [[], "abc", [[0.0, 0.0], [1.0]]])
+def test_an_outline_that_is_no_ring_is_refused(outline):
+    rail = [[0.0, 100.0], [600.0, 120.0]]
+    with pytest.raises(GeometryError, match="outline"):
+        split_billet(rail, rail, (600.0, 400.0, 300.0), outline)

@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from cutblock.base.errors import InputError
+from cutblock.base.errors import CutblockError, InputError
 from cutblock.wire.kerf import (
     energy_bound,
     is_extrapolated,
@@ -18,6 +18,7 @@ from cutblock.wire.kerf import (
     universal_root,
 )
 from cutblock.wire.line_source import half_width, heat_number
+from cutblock.wire.speed import speed_window
 
 powers = st.floats(5.0, 400.0)
 densities = st.floats(8.0, 60.0)
@@ -145,3 +146,15 @@ def test_the_package_loads_scipy_only_when_asked():
     code = "import sys, cutblock.wire; print('scipy' in sys.modules, 'cutblock.wire.kerf' in sys.modules)"
     answer = subprocess.run([sys.executable, "-c", code], capture_output=True, text=True, check=True)
     assert answer.stdout.split() == ["False", "False"]
+
+
+def test_arrays_that_do_not_go_together_are_refused_by_their_names_and_shapes():
+    with pytest.raises(InputError, match=r"power \(2,\), density \(3,\)"):
+        kerf_rate([40.0, 60.0], [15.0, 20.0, 25.0])
+    with pytest.raises(InputError, match=r"narrowest kerf \(2,\), density \(3,\)"):
+        speed_window(60.0, [15.0, 20.0, 25.0], [0.9e-3, 1.0e-3], 2e-3)
+
+
+def test_text_instead_of_a_number_is_refused_by_its_name():
+    with pytest.raises(CutblockError, match="power is no array of numbers"):
+        kerf_rate("sixty", 20.0)
