@@ -12,7 +12,7 @@ from cutblock.base.errors import Cancelled, CheckFailed, InputError, StockError
 from cutblock.cli.main import main
 from cutblock.flow.stacks import offer_stacks
 from cutblock.packing.blocks import PackedStock
-from cutblock.records.duties import PairLock
+from cutblock.records.duties import PairLock, SingleLock
 from cutblock.records.job import Pin
 from cutblock.records.words import Duty
 from cutblock.reports.stacks import stacks_csv
@@ -134,12 +134,15 @@ def test_half_of_a_shared_billet_counts_for_each_panel(saddles, small):
         for sweep in plan.sweeps
         for panel in sweep.serves
     }
+    seconds = {timing.sweep: timing.seconds for timing in plan.timings}
+    times = {panel: seconds[sweep.id] / len(sweep.serves) for sweep in plan.sweeps for panel in sweep.serves}
     assert any(len(sweep.serves) == 2 for sweep in plan.sweeps)
 
     assert small.stacks
     for stack in small.stacks:
         panels = [member.panel for member in stack.members]
         assert stack.foam_now_mm3 == pytest.approx(sum(shares[panel] for panel in panels), rel=1e-12)
+        assert stack.seconds_now == pytest.approx(sum(times[panel] for panel in panels), rel=1e-12)
     stacked = {member.panel for stack in small.stacks for member in stack.members}
     for sweep in plan.sweeps:
         assert len(stacked & set(sweep.serves)) in (0, len(sweep.serves))
@@ -147,10 +150,11 @@ def test_half_of_a_shared_billet_counts_for_each_panel(saddles, small):
 
 def test_halves_with_a_duty_that_would_be_missing_are_counted(tmp_path):
     job = cutblock.read_job(job_file(tmp_path, dome, (1200.0, 500.0)))
-    offer = offer_stacks(replace(job, unpaired=Duty.CRADLE))
+    alone = (SingleLock(panels=("S-A01",)),)  # stays as it is
+    offer = offer_stacks(replace(job, unpaired=Duty.CRADLE, locks=alone))
 
-    assert offer.lost == ((Duty.CRADLE, 4),)
-    assert sum(len(stack.members) for stack in offer.stacks) == 4
+    assert {member.panel for stack in offer.stacks for member in stack.members} == {"S-A02"}
+    assert offer.lost == ((Duty.CRADLE, 2),)
 
 
 def test_what_is_set_by_hand_or_cast_closed_is_left_out(saddles, small):

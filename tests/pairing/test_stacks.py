@@ -186,6 +186,25 @@ def test_steep_sheets_need_room_for_the_towers_too():
     assert highest[0] > 500.0
 
 
+def test_a_sheet_that_leans_needs_room_at_its_higher_tower():
+    lean, tool = 0.35, replace(PLAN.machine, lift_mm=1100.0)
+    nests, _ = stacks_of([sweep(lambda x, y: lean * y + 0.0 * x)] * 10, machine=tool)
+
+    rise = lean * (tool.span_mm - WIDTH) / 2.0  # midway between the towers
+    assert nests
+    assert max(nest.size_mm[2] for nest in nests) <= 1100.0 - tool.table_height_mm - rise + COVER_MM + KERF / 2.0
+
+
+def test_a_billet_rounded_up_to_whole_mm_must_fit_too():
+    sweeps = [sweep(saddle(0.2)) for _ in range(6)]
+    ((whole,), _) = stacks_of(sweeps)
+
+    nests, _ = stacks_of(sweeps, rooms_mm=((2470.0, 1220.0, whole.size_mm[2] - 0.001),))
+
+    assert nests
+    assert all(nest.size_mm[2] < whole.size_mm[2] for nest in nests)
+
+
 def test_footprints_that_differ_by_more_than_two_per_cent_do_not_nest():
     assert len(stacks_of([sweep(wave()), sweep(wave(), length=LENGTH * 1.019)])[0]) == 1
     nests, nearest = stacks_of([sweep(wave()), sweep(wave(), length=LENGTH * 1.021)])
