@@ -7,7 +7,7 @@ import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints, as_floats, one_number
 from cutblock.base.errors import GeometryError
-from cutblock.geometry.deviation import deviation_measures, face_deviation
+from cutblock.geometry.deviation import deviation_measures
 from cutblock.geometry.fit_lawson import polish
 from cutblock.geometry.fit_minimax import DENSE_NODES, least_largest
 from cutblock.geometry.fit_refine import N_CONTROLS, N_ROUNDS, N_STEPS, Fits, improve, knots_of, recentre, refine
@@ -15,6 +15,7 @@ from cutblock.geometry.fit_start import Paths, best_paths
 from cutblock.geometry.fit_target import Patch, Target, make_target
 from cutblock.geometry.heights import HeightField, height_field
 from cutblock.geometry.rails import SheetFit, polyline_rails
+from cutblock.geometry.ruled import sheet_normals
 
 BATCH = 64
 FINE_CONTROLS = 32
@@ -40,7 +41,7 @@ PROGRAMME_REACH = 1.6
 class RuledFit:
     """A ruled fit over [0, length] x [0, width]: row i of `near` (at y = 0) and `far` (at y = width) is ruling i.
 
-    Deviations are along the surface's normal, of the sheet between the polyline rails, over a dense grid.
+    Deviations are distances of the sheet between the polyline rails from the surface, over a dense grid of the sheet.
     """
 
     near: Floats  # (n, 2) x and z, mm, x rising; starts at or before 0, ends at or behind the length
@@ -94,13 +95,11 @@ def fit_ruled(
         strip_high_y_mm=width_mm,
     )
     x, y = np.meshgrid(np.linspace(0.0, length_mm, 97), np.linspace(0.0, width_mm, 81), indexing="ij")
-    samples = np.stack([x.ravel(), y.ravel(), _called(height, x, y).ravel()], axis=1)
-    normals = field.normals(samples[:, 0], samples[:, 1])[1]
     curves = fit_patches([patch], tolerance_mm, is_polished=False, n_controls=FINE_CONTROLS)[0]
-    fit = _measured(curves, length_mm, width_mm, samples, normals)
+    fit = _measured(curves, field, x, y)
     if fit.max_mm > NEARLY * tolerance_mm:
         for curves in _closest(patch, tolerance_mm):
-            polished = _measured(curves, length_mm, width_mm, samples, normals)
+            polished = _measured(curves, field, x, y)
             fit = polished if polished.max_mm < fit.max_mm else fit
             if fit.max_mm <= tolerance_mm:
                 break
@@ -124,11 +123,12 @@ def _closest(patch: Patch, tolerance_mm: float) -> Iterator[SheetFit]:
             yield fit_patches([patch], tolerance_mm, polish_until=0.0, has_programmes=has_programmes, starts=start)[0]
 
 
-def _measured(curves: SheetFit, length_mm: float, width_mm: float, samples: Floats, normals: Floats) -> RuledFit:
-    """Return curves with their polyline rails and the deviations of the sheet between those."""
-    near, far = polyline_rails(curves, 0.0, length_mm, FINE_SAG_MM, most_rulings=2001, decimals=None)
-    deviations = face_deviation(near, far, width_mm, samples, normals)
-    largest, rms, p95 = deviation_measures(deviations, np.ones(len(samples)))
+def _measured(curves: SheetFit, field: HeightField, x: Floats, y: Floats) -> RuledFit:
+    """Return curves with their polyline rails and the distances of the sheet above plan points from the surface."""
+    near, far = polyline_rails(curves, 0.0, field.length_mm, FINE_SAG_MM, most_rulings=2001, decimals=None)
+    z = sheet_normals(near, far, field.width_mm, x, y)[0]
+    deviations = field.distances(np.stack([x, y, z], axis=-1).reshape(-1, 3))
+    largest, rms, p95 = deviation_measures(deviations, np.ones(len(deviations)))
     skew = float(np.abs(far[:, 0] - near[:, 0]).max())
     return RuledFit(near=near, far=far, max_mm=largest, rms_mm=rms, p95_mm=p95, skew_mm=skew, curves=curves)
 

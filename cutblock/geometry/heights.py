@@ -9,6 +9,9 @@ from numpy.typing import ArrayLike
 from cutblock.base.arrays import Bools, Floats, floats
 from cutblock.base.errors import GeometryError
 
+_N_FEET = 30
+_SETTLED_MM = 1e-7
+
 
 @lru_cache(maxsize=64)
 def spline_matrix(n: int) -> Floats:
@@ -126,6 +129,27 @@ class HeightField:
         normals = np.stack([-z_x, -z_y, np.ones_like(z)], axis=-1)
         normals /= np.linalg.norm(normals, axis=-1, keepdims=True)
         return z, normals
+
+    def distances(self, points: Floats) -> Floats:
+        """Return how far points lie from the surface, (m,) mm, positive above it.
+
+        The foot of each point is found by fixed-point iteration along the normal at the foot before; it converges while
+        the distance is smaller than the least radius of curvature.
+
+        Args:
+            points: (m, 3).
+        """
+        distances = np.zeros(len(points))
+        normals = np.zeros_like(points)
+        for _ in range(_N_FEET):
+            foot = points - distances[:, None] * normals
+            z, normals = self.normals(foot[:, 0], foot[:, 1])
+            nearer = distances + (foot[:, 2] - z) * normals[:, 2]
+            moved = float(np.abs(nearer - distances).max(initial=0.0))
+            distances = nearer
+            if moved < _SETTLED_MM:
+                break
+        return distances
 
     def grid(self, order_x: int = 0, order_y: int = 0) -> Floats:
         """Return the partial derivative of the given orders (0 to 2) at the grid points, (n_x, n_y)."""

@@ -87,3 +87,12 @@ def test_unusable_grids_are_refused_in_plain_words():
         height_field(np.zeros((3, 3)), 0.0, 10.0)
     with pytest.raises(GeometryError, match="not a finite"):
         height_field(np.full((3, 3), np.nan), 10.0, 10.0)
+
+
+def test_distances_to_a_cylinder_are_those_to_its_axis_less_its_radius():
+    x = np.linspace(0.0, 800.0, 161)
+    heights = np.repeat(np.sqrt(2000.0**2 - (x - 400.0) ** 2)[:, None], 9, axis=1)
+    field = height_field(heights, 800.0, 600.0)
+    points = np.array([[100.0, 50.0, 1990.0], [400.0, 300.0, 1970.0], [700.0, 20.0, 2010.0]])
+    wanted = np.hypot(points[:, 0] - 400.0, points[:, 2]) - 2000.0
+    np.testing.assert_allclose(field.distances(points), wanted, atol=1e-5)
