@@ -106,6 +106,7 @@ def wrong_accounts(plan: Plan) -> Iterator[CheckFailed]:
     """Yield litres, hours and money that do not follow from the blocks, the sweeps and the prices."""
     from cutblock.ledger.account import account_job
     from cutblock.ledger.cost import count_cost
+    from cutblock.machinecode.programs import air_seconds
     from cutblock.schedule.hours import count_hours
 
     counted = account_job(plan.blocks, plan.volumes, plan.pieces, plan.n_blocks_bound)
@@ -125,7 +126,7 @@ def wrong_accounts(plan: Plan) -> Iterator[CheckFailed]:
     if plan.n_blocks_bound > len(plan.blocks):
         text = f"no packing should need fewer than {plan.n_blocks_bound} blocks, and the plan has {len(plan.blocks)}."
         yield CheckFailed(text, "ledger")
-    hours = count_hours(plan.blocks, plan.timings, plan.machine, plan.conditions)
+    hours = count_hours(plan.blocks, plan.timings, plan.machine, plan.conditions, air_seconds(plan))
     if plan.hours is not None:
         said_s, found_s = dict(plan.hours.by_block_s), dict(hours.by_block_s)
         pairs = {block: (said_s.get(block), found_s.get(block)) for block in [*said_s, *found_s]}

@@ -1,7 +1,7 @@
 """What a millimetre is worth: the plan made again with other tolerances, and with other panel sizes.
 
 Every point is a plan made by the same steps and the same effort as `cutblock plan`, so that the point of the job as it
-stands has the plan's own numbers. Only what changes no number is left out: maps, diagnosis and machine code.
+stands has the plan's own numbers. Only what changes no number is left out: maps and diagnosis.
 """
 
 from collections.abc import Callable, Iterator
@@ -96,7 +96,15 @@ def _point(plan: Plan, progress: Progress, is_job: bool) -> CurvePoint:
         is_job=is_job,
         n_panels=len(plan.panels),
     )
-    chain: tuple[_Step, ...] = (steps.fit, steps.pair, steps.set_speeds, steps.measure, steps.pack, steps.account)
+    chain: tuple[_Step, ...] = (
+        steps.fit,
+        steps.pair,
+        steps.set_speeds,
+        steps.measure,
+        steps.pack,
+        steps.try_machine,
+        steps.account,
+    )
     try:
         for number, step in enumerate(chain):
             plan = step(plan, part_of(progress, number / len(chain), (number + 1) / len(chain)))

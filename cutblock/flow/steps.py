@@ -166,10 +166,11 @@ def account(plan: Plan, progress: Progress) -> Plan:
     """Count hours, litres and money."""
     from cutblock.ledger.account import account_job
     from cutblock.ledger.cost import count_cost
+    from cutblock.machinecode.programs import air_seconds
     from cutblock.schedule.hours import count_hours
 
     progress(0.0, "Counting hours and litres")
-    hours = count_hours(plan.blocks, plan.timings, plan.machine, plan.conditions)
+    hours = count_hours(plan.blocks, plan.timings, plan.machine, plan.conditions, air_seconds(plan))
     ledger = account_job(plan.blocks, plan.volumes, plan.pieces, plan.n_blocks_bound)
     cost = count_cost(plan.job, plan.blocks, hours, plan.cost_bound)
     return replace(plan, hours=hours, ledger=ledger, cost=cost)

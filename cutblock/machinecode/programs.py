@@ -10,6 +10,7 @@ from cutblock.base.errors import CutblockError
 from cutblock.base.progress import Progress, silent
 from cutblock.machinecode.check import check_program
 from cutblock.machinecode.clamping import Clamping, clampings
+from cutblock.machinecode.expected import AIR, expected_steps
 from cutblock.machinecode.limits import check_machine, check_part, check_pass
 from cutblock.machinecode.passes import Pass, Sources, choose_place, clamping_passes, plan_sources
 from cutblock.machinecode.placing import Place
@@ -83,6 +84,24 @@ def find_uncuttable(plan: Plan) -> tuple[Finding, ...]:
     return tuple(
         _finding(block.id, error) for block in plan.blocks for error in block_troubles(plan, block, sources).values()
     )
+
+
+def air_seconds(plan: Plan) -> dict[tuple[str, int], float]:
+    """Return the time of all moves in air of every set-up this machine can cut, s, by block and set-up.
+
+    Args:
+        plan: With its sweeps timed and its blocks packed.
+    """
+    sources = plan_sources(plan)
+    found = {}
+    for block in plan.blocks:
+        troubles = block_troubles(plan, block, sources)
+        for clamping in clampings(block) if 0 not in troubles else ():
+            if clamping.number not in troubles:
+                place = choose_place(plan, clamping, sources)
+                steps, _ = expected_steps(plan, block, clamping, place)
+                found[block.id, clamping.number] = sum(step.seconds for step in steps if step.subject == AIR)
+    return found
 
 
 def block_troubles(plan: Plan, block: Block, sources: Sources) -> dict[int, CutblockError]:

@@ -19,7 +19,11 @@ BELOW_MM = 5.0
 
 
 def count_hours(
-    blocks: Sequence[Block], timings: Sequence[SweepTiming], machine: Machine, conditions: Conditions
+    blocks: Sequence[Block],
+    timings: Sequence[SweepTiming],
+    machine: Machine,
+    conditions: Conditions,
+    coded_air_s: Mapping[tuple[str, int], float] | None = None,
 ) -> Hours:
     """Count the machine time of a job.
 
@@ -33,6 +37,8 @@ def count_hours(
         timings: Of every sweep in them.
         machine: Its speed and acceleration in air and its times of a clamping, a turn and of handling.
         conditions: The planned speed.
+        coded_air_s: Time of the moves in air by block and set-up, as the machine code has them; those of a set-up that
+            is missing are counted as above.
 
     Returns:
         Cutting, air moves, clampings, turns and handling, and all together for each block, s.
@@ -43,11 +49,15 @@ def count_hours(
         cuts = sorted(block.cuts, key=lambda cut: cut.order)
         clampings = [tuple(group) for _, group in groupby(cuts, key=lambda cut: cut.setup)]
         spent = [_clamping_seconds(block, clamping, seconds, machine, conditions) for clamping in clampings]
+        known = coded_air_s or {}
+        airs = [
+            known.get((block.id, clamping[0].setup), air) for clamping, (_, air) in zip(clampings, spent, strict=True)
+        ]
         n_pieces = 2 * sum(cut.kind is CutKind.SWEEP for cut in cuts)
         parts.append(
             (
                 sum(cutting for cutting, _ in spent),
-                sum(air for _, air in spent),
+                sum(airs),
                 len(clampings) * machine.setup_s,
                 _n_turns([clamping[0] for clamping in clampings]) * machine.turn_s,
                 # A block that stands on another face is handled once more to stand it there.

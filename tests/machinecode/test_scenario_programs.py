@@ -123,3 +123,9 @@ def test_the_look_at_the_foam_finds_moves_that_are_too_low_or_beside_the_slot_or
     assert touched_in(plan, programs, lowered) == len(programs)
     assert touched_in(plan, programs, lambda text: shifted(left_standing(text))) >= sum(is_upright) > 0
     assert touched_in(plan, programs, lambda text: text.replace("\nM3 S", "\n(no heat) M3 S")) == len(programs)
+
+
+def test_the_hours_of_cutting_and_of_air_moves_are_those_of_the_programs(written):
+    plan, programs = written
+    seconds = sum(moves_of(text)[1].sum() for _, text in programs)
+    assert plan["time"]["cutting_h"] + plan["time"]["air_h"] == pytest.approx(seconds / 3600.0, rel=1e-5)
