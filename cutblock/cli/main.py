@@ -1,6 +1,8 @@
 """The command line: commands, exit codes and how errors are told."""
 
 import argparse
+import contextlib
+import errno
 import sys
 import traceback
 from collections.abc import Sequence
@@ -9,6 +11,7 @@ import cutblock
 from cutblock.base.errors import Cancelled, CutblockError
 from cutblock.cli.wire_words import add_coupon_words, add_wire_words
 
+_FULL = {errno.ENOSPC, errno.EDQUOT, errno.EIO}  # of what is printed: no room, no quota, no disk
 EXIT_CLEAN, EXIT_FINDINGS, EXIT_INPUT, EXIT_BUG, EXIT_CANCELLED = 0, 1, 2, 3, 130
 
 
@@ -23,7 +26,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
     """
     chosen = _parser().parse_args(arguments)
     try:
-        return _run(chosen)
+        return _printed(_run(chosen))
     except CutblockError as error:
         print(f"cutblock: {error}", file=sys.stderr)
         return EXIT_INPUT
@@ -33,12 +36,32 @@ def main(arguments: Sequence[str] | None = None) -> int:
     except BrokenPipeError:
         sys.stderr.close()
         return EXIT_CLEAN
+    except OSError as error:
+        if error.errno not in _FULL:
+            return _tell_bug()
+        _close_output()
+        print(f"cutblock: what it prints cannot be written ({error.strerror}).", file=sys.stderr)
+        return EXIT_INPUT
     except Exception:  # noqa: BLE001 - the one place where a bug is caught and shown with its text
-        traceback.print_exc()
-        print(
-            "cutblock: this is a bug in the program, not in your files. Please report the text above.", file=sys.stderr
-        )
-        return EXIT_BUG
+        return _tell_bug()
+
+
+def _printed(code: int) -> int:
+    """Return the exit code once all that was printed is out."""
+    sys.stdout.flush()
+    return code
+
+
+def _tell_bug() -> int:
+    traceback.print_exc()
+    print("cutblock: this is a bug in the program, not in your files. Please report the text above.", file=sys.stderr)
+    return EXIT_BUG
+
+
+def _close_output() -> None:
+    """Let go of what could not be printed, which the end of the program would try again."""
+    with contextlib.suppress(OSError):
+        sys.stdout.close()
 
 
 def _run(chosen: argparse.Namespace) -> int:

@@ -13,12 +13,14 @@ from cutblock.base.arrays import Floats, Ints, floats
 from cutblock.base.errors import GeometryError
 from cutblock.base.tolerances import PLAN_MM
 from cutblock.geometry.fan import fan_connectivity, fan_vertices, sheet_grid, trim_rails
+from cutblock.geometry.outline import area_of_rings
 from cutblock.geometry.plan_clip import boundary_edges, clip, closed_triangles, drop_unused
 from cutblock.geometry.volume import check_cover, check_rails
 
 if TYPE_CHECKING:
     from manifold3d import Manifold
 
+_LEAST_OUTLINE_MM2 = 1e-6
 _SPARE = 0.05  # a cutter reaches this part of the billet's size past it
 
 Size = tuple[float, float, float]
@@ -260,6 +262,11 @@ def _rings(outline: Floats | Sequence[Floats] | None) -> list[Floats]:
     for ring in rings:
         if len(ring) < 3:
             raise GeometryError(f"a ring of the outline has {len(ring)} points; it needs 3", "outline")
+    area = area_of_rings(tuple(rings))
+    if not area.is_valid:
+        raise GeometryError("the outline crosses itself", "outline", "Give its corners in order round it, then holes.")
+    if not area.area > _LEAST_OUTLINE_MM2:
+        raise GeometryError("the outline encloses nothing", "outline", "Give lengths in mm.")
     return rings
 
 

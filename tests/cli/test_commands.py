@@ -3,6 +3,7 @@ import os
 import pty
 import subprocess
 import sys
+from pathlib import Path
 
 import pytest
 
@@ -255,3 +256,15 @@ def test_findings_alike_are_told_once_with_their_number(capsys):
         "  warning: S-0: Look. (and 1 more like this)",
         "  warning: S-1: Look.",
     ]
+
+
+def test_a_full_disk_behind_the_output_is_told_and_is_no_bug():
+    if not Path("/dev/full").exists():
+        pytest.skip("this system has no /dev/full")
+    words = [sys.executable, "-m", "cutblock", "wire", "--density", "20", "--power", "60", "--diameter", "0.4"]
+    with Path("/dev/full").open("w") as full:
+        done = subprocess.run(words, stdout=full, stderr=subprocess.PIPE, text=True, check=False)
+
+    assert done.returncode == 2
+    assert done.stderr.count("\n") == 1
+    assert "cannot be written" in done.stderr

@@ -230,3 +230,17 @@ def test_an_outline_that_is_no_ring_is_refused(outline):
     rail = [[0.0, 100.0], [600.0, 120.0]]
     with pytest.raises(GeometryError, match="outline"):
         split_billet(rail, rail, (600.0, 400.0, 300.0), outline)
+
+
+@pytest.mark.parametrize(
+    ("outline", "words"),
+    [
+        ([[0, 0], [1200, 1000], [1200, 0], [0, 1000]], "crosses itself"),
+        ([[0, 0], [1e-9, 0], [0, 1e-9]], "encloses nothing"),
+        ([[[0, 0], [1200, 0], [1200, 1000]], [[0, 900], [50, 900], [50, 950]]], "crosses itself"),
+    ],
+)
+def test_an_outline_that_is_no_region_is_refused(outline, words):
+    rail = np.array([[0.0, 200.0], [1200.0, 260.0]])
+    with pytest.raises(GeometryError, match=words):
+        split_billet(rail, rail, (1200, 1000, 500), outline)
