@@ -265,7 +265,7 @@ def test_no_stack_is_told_with_what_came_nearest(tmp_path, capsys):
 
 @pytest.mark.parametrize(
     ("words", "told"),
-    [(("--shell", "x"), "invalid"), (("--shell", "0"), "no length over 0"), (("--shell", "5"), "break")],
+    [(("--shell", "x"), "no number"), (("--shell", "0"), "no length over 0"), (("--shell", "5"), "break")],
 )
 def test_a_shell_that_is_none_ends_with_2(saddles, words, told, capsys):
     try:
