@@ -11,7 +11,6 @@ from dataclasses import dataclass
 import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
-from cutblock.base.progress import Progress, silent
 from cutblock.packing.dual_functions import AxisFunctions, Rule, axis_functions, functions_at
 from cutblock.packing.lattice import Task
 
@@ -39,14 +38,8 @@ class Bound:
     proof: str
 
 
-def lower_bound(task: Task, progress: Progress = silent) -> Bound:
-    """Return the blocks and the money no packing of the task goes under, and what proves it."""
-    if len(task.cells) == 0:
-        return Bound(0, None if task.prices is None else 0.0, "nothing to pack")
-    if len(task.kinds) > 1:
-        from cutblock.packing.cost_bound import mixed_bound
-
-        return mixed_bound(task, progress)
+def single_bound(task: Task) -> Bound:
+    """Return the blocks and the money no packing of one kind of block goes under, and what proves it."""
     cells, copies = distinct_cells(task)
     by_volume = whole(volume_share(task, 0))
     by_functions = whole(Products(cells, task.kinds[0]).best(copies.astype(np.float64))[0])

@@ -13,7 +13,7 @@ import numpy as np
 
 from cutblock.base.arrays import Bools, Floats, Ints
 from cutblock.base.progress import Progress, part_of, silent
-from cutblock.packing.bound import Bound, Product, Products, distinct_cells, fitting, sample_of, whole
+from cutblock.packing.bound import Bound, Product, Products, distinct_cells, fitting, sample_of, single_bound, whole
 from cutblock.packing.lattice import Task
 
 _ROUNDS, _MORE_ROUNDS = 12, 3
@@ -90,6 +90,13 @@ class _Answer:
     blocks: Floats
     row_prices: Floats
     count_prices: Floats
+
+
+def lower_bound(task: Task, progress: Progress = silent) -> Bound:
+    """Return the blocks and the money no packing of the task goes under, and what proves it."""
+    if len(task.cells) == 0:
+        return Bound(0, None if task.prices is None else 0.0, "nothing to pack")
+    return single_bound(task) if len(task.kinds) == 1 else mixed_bound(task, progress)
 
 
 def mixed_bound(task: Task, progress: Progress = silent) -> Bound:

@@ -10,10 +10,11 @@ from numpy.typing import ArrayLike
 from cutblock.base.arrays import Ints
 from cutblock.base.errors import InputError, StockError
 from cutblock.base.progress import Progress, part_of, silent
-from cutblock.packing.bound import Bound, lower_bound
+from cutblock.packing.bound import Bound
 from cutblock.packing.columns import stack_columns
 from cutblock.packing.compiled import Gear
 from cutblock.packing.construct import Solution, construct
+from cutblock.packing.cost_bound import lower_bound
 from cutblock.packing.effort import Effort
 from cutblock.packing.generation import generate, repeats, usual_generation
 from cutblock.packing.lattice import STEPS_PER_MM, Task, make_task

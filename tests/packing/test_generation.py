@@ -9,9 +9,10 @@ from hypothesis import strategies as st
 from cutblock.base.errors import Cancelled, StockError
 from cutblock.base.progress import silent
 from cutblock.packing import pack
-from cutblock.packing.bound import distinct_cells, lower_bound
+from cutblock.packing.bound import distinct_cells
 from cutblock.packing.compiled import Gear, compiled, plain
 from cutblock.packing.construct import construct
+from cutblock.packing.cost_bound import lower_bound
 from cutblock.packing.effort import Effort
 from cutblock.packing.generation import PROOF, generate, repeats
 from cutblock.packing.lattice import make_task
