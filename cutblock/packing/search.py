@@ -35,7 +35,7 @@ from cutblock.packing.tree import Part
 
 _MOVES_A_TURN = 2000
 _LATE_FILL = 50
-_LATE_EMPTYING = 100
+_LATE_EMPTYING = 20
 _DICE = 1 << 16
 
 _COVER_MOVES = 500  # what a plan from the store counts for
