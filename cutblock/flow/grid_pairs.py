@@ -13,7 +13,7 @@ from cutblock.base.arrays import Floats
 from cutblock.base.errors import GeometryError, InputError
 from cutblock.base.progress import Progress, part_of, silent
 from cutblock.base.units import length_text
-from cutblock.flow.grid_search import face_of, whole_grid
+from cutblock.flow.grid_search import whole_grid, with_cells
 from cutblock.geometry.symmetry import (
     N_SAMPLES,
     Glide,
@@ -24,7 +24,6 @@ from cutblock.geometry.symmetry import (
 from cutblock.records.form import Face
 from cutblock.records.grid import GridCandidate, GridSearch
 from cutblock.records.job import FaceSpec, Job
-from cutblock.records.plan import Settings
 
 N_WHOLE = 4  # grids that are divided, fitted and paired whole
 LEAST_LIKENESS = 0.995
@@ -60,17 +59,9 @@ def search_pairing_grid(
         InputError: There is no such face, or it has no cell size to search with.
         CutblockError: The form cannot be read.
     """
-    from cutblock.flow.chain import start_plan
-    from cutblock.flow.steps import take_form
-
-    plan = take_form(start_plan(job, Settings()), part_of(progress, 0.0, 0.1))
-    face, spec = face_of(plan, face_name)
-    if spec.cell_mm is None:
-        raise InputError(
-            f'face "{face.name}" has no size of panels to search with', spec.place, "Give panels = { length, width }."
-        )
+    plan, face, spec, cell_mm = with_cells(job, face_name, part_of(progress, 0.0, 0.1))
     progress(0.1, "Looking for symmetry")
-    ideas = _ideas(face, spec, spec.cell_mm, job.units)[:n_whole]
+    ideas = _ideas(face, spec, cell_mm, job.units)[:n_whole]
     step = 0.9 / (len(ideas) + 1)
     present = whole_grid(plan, face, spec, part_of(progress, 0.1, 0.1 + step), is_paired=True)
     found = [present]

@@ -72,15 +72,7 @@ def search_grid(
         InputError: There is no such face, or it has no cell size to search with.
         CutblockError: The form cannot be read.
     """
-    from cutblock.flow.chain import start_plan
-    from cutblock.flow.steps import take_form
-
-    plan = take_form(start_plan(job, Settings()), part_of(progress, 0.0, 0.1))
-    face, spec = face_of(plan, face_name)
-    if spec.cell_mm is None:
-        raise InputError(
-            f'face "{face.name}" has no size of panels to search with', spec.place, "Give panels = { length, width }."
-        )
+    plan, face, spec, _ = with_cells(job, face_name, part_of(progress, 0.0, 0.1))
     search = _Search(plan, face, spec)
     tried = search.angles(n_angles, cell_shares, part_of(progress, 0.1, 0.5))
     grids = search.phases(tried, n_whole, part_of(progress, 0.5, 0.6))
@@ -119,6 +111,25 @@ def _rank(candidate: GridCandidate, tolerance_mm: float) -> tuple[float, ...]:
         x,
         y,
     )
+
+
+def with_cells(job: Job, face_name: str, progress: Progress) -> tuple[Plan, Face, FaceSpec, tuple[float, float]]:
+    """Return the plan with its form read, one face of it with its table of the job, and the size of its cells, mm.
+
+    Raises:
+        InputError: There is no such face, or it has no cell size to search with.
+        CutblockError: The form cannot be read.
+    """
+    from cutblock.flow.chain import start_plan
+    from cutblock.flow.steps import take_form
+
+    plan = take_form(start_plan(job, Settings()), progress)
+    face, spec = face_of(plan, face_name)
+    if spec.cell_mm is None:
+        raise InputError(
+            f'face "{face.name}" has no size of panels to search with', spec.place, "Give panels = { length, width }."
+        )
+    return plan, face, spec, spec.cell_mm
 
 
 def face_of(plan: Plan, name: str) -> tuple[Face, FaceSpec]:
