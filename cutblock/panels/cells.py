@@ -16,6 +16,7 @@ from cutblock.records.job import FaceSpec
 from cutblock.records.plan import Finding
 from cutblock.records.words import Severity
 
+_THINNEST_MM = 0.01  # a sliver thinner than this is none
 NARROWEST_MM = 20.0  # a narrower strip of foam is no mould
 SMALLEST_SHARE = 0.01  # of a cell; less is merged with a neighbour
 # A cell may be this part of the wanted one larger: float32 meshes and rounded CSV rows are that far off their sizes.
@@ -221,11 +222,15 @@ def _merge_slivers(
     slivers: list[tuple[int, Area]],
     units: str,
 ) -> tuple[Finding, ...]:
-    """Join every sliver to the panel it shares the longest edge with; changes `kept`."""
+    """Join every sliver to the panel it shares the longest edge with; changes `kept`.
+
+    What is thinner than rounding leaves between a hardly turned grid and the face's edge is no foam, and is left.
+    """
     import shapely
 
     findings = []
-    waiting = sorted(slivers, key=lambda item: (-item[1].area, item[0]))
+    solid = [item for item in slivers if item[1].area > 0.5 * _THINNEST_MM * item[1].length]
+    waiting = sorted(solid, key=lambda item: (-item[1].area, item[0]))
     while waiting:
         left = []
         for index, sliver in waiting:

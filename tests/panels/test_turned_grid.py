@@ -43,6 +43,7 @@ def test_a_grid_at_angle_0_is_the_even_one_where_cells_go_into_the_face():
 
 @settings(max_examples=10, deadline=None)
 @example(angle_deg=0.0, x=0.0, y=0.0625)
+@example(angle_deg=1e-5, x=1e-9, y=1e-9)
 @given(angle_deg=st.floats(-180.0, 180.0), x=st.floats(-2000.0, 2000.0), y=st.floats(-2000.0, 2000.0))
 def test_the_cells_of_a_turned_grid_cover_the_face_once(angle_deg, x, y):
     job = job_of(WAVES, cell_mm=CELL, angle_rad=math.radians(angle_deg), phase_mm=(x, y))
@@ -50,7 +51,9 @@ def test_the_cells_of_a_turned_grid_cover_the_face_once(angle_deg, x, y):
     cells, _ = cells_of(face, job.faces[0], "mm", silent)
 
     whole = CELL[0] * CELL[1]
-    assert sum(whole if cell.area is None else cell.area.area for cell in cells) == pytest.approx(4800 * 3000, rel=1e-9)
+    covered = sum(whole if cell.area is None else cell.area.area for cell in cells)
+    # Slivers thinner than 0.01 mm along the face's edge are left.
+    assert covered == pytest.approx(4800 * 3000, abs=0.01 * 2 * (4800 + 3000))
     assert len({cell.name for cell in cells}) == len(cells)
 
 
